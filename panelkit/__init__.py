@@ -1,0 +1,1 @@
+"""panelkit: small, priced biomarker panels with honest accuracy."""

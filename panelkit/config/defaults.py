@@ -1,0 +1,129 @@
+"""Every default of panelkit, and the only place where one is written down.
+
+Signatures, the study file's sections and the commented study file all read these
+values; `tests/config/test_defaults.py` compares the three. Standard library only,
+so that a signature can use a default without loading the study file's machinery.
+"""
+
+from dataclasses import dataclass
+from decimal import Decimal
+from typing import Final, Literal
+
+__all__ = [
+    "ACCURACY",
+    "CHOICE",
+    "COHORT",
+    "ENGINE",
+    "PANELS",
+    "PLATFORM",
+    "PREPARATION",
+    "PROGRAMME",
+    "SEED",
+    "SHORTLIST",
+]
+
+SEED: Final = 1
+
+
+@dataclass(frozen=True, slots=True)
+class _Cohort:
+    orientation: Literal["auto", "samples-in-rows", "features-in-rows"] = "auto"
+    max_bad_cells: int = 100
+    """Non-numeric cells read as missing; more than these are an error."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Preparation:
+    log2_offset: float = 1.0
+    max_missing_share: float = 0.5
+    """A feature missing in more than this share of training rows is left out."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Engine:
+    n_penalties: int = 100
+    penalty_floor_wide: float = 0.01
+    """Last relative penalty when there are more features than rows."""
+    penalty_floor_tall: float = 0.0001
+    tol: float = 1e-6
+    max_steps: int = 200
+    """Newton steps for one penalty before a refit counts as not converged."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Shortlist:
+    subsamples: int = 100
+    threshold: float = 0.75
+    false_markers: float = 1.0
+    candidates: int = 25
+    n_penalties: int = 40
+    penalty_floor: float = 0.1
+    companion_correlation: float = 0.8
+
+
+@dataclass(frozen=True, slots=True)
+class _Panels:
+    sizes: tuple[int, ...] = (1, 2, 3, 4, 5, 6, 8, 10, 12, 15, 20, 25)
+    makers: tuple[str, ...] = ("frequency", "univariate")
+
+
+@dataclass(frozen=True, slots=True)
+class _Accuracy:
+    folds: int = 5
+    repeats: int = 5
+    inner_folds: int = 5
+    inner_subsamples: int = 40
+    ridge_penalties: tuple[float, ...] = (
+        1.0, 0.3, 0.1, 0.03, 0.01, 0.003,
+    )  # fmt: skip
+    metric: Literal["auc"] = "auc"
+    confidence: float = 0.95
+
+
+@dataclass(frozen=True, slots=True)
+class _Choice:
+    rule: Literal["smallest-within-one-se"] = "smallest-within-one-se"
+
+
+@dataclass(frozen=True, slots=True)
+class _Programme:
+    horizon_months: int = 12
+    deliveries: int = 1
+    repeat_rate: Decimal = Decimal(0)
+    repeat_mode: Literal["none", "once", "until"] = "once"
+    collection_cost: Decimal = Decimal(0)
+    missing_price: Literal["refuse", "bound", "impute", "exclude"] = "bound"
+
+
+@dataclass(frozen=True, slots=True)
+class _Platform:
+    plex: int = 1
+    replicates: int = 1
+    controls_per_pool: int = 0
+    controls_per_run: int = 0
+    groups: int | Literal["auto", "each"] = "auto"
+    refs_scope: Literal["panel", "pool"] = "panel"
+    setup: Decimal = Decimal(0)
+    pool_setup: Decimal = Decimal(0)
+    run_cost: Decimal = Decimal(0)
+    position_cost: Decimal = Decimal(0)
+    sample_cost: Decimal = Decimal(0)
+    prep_positions: int = 0
+    prep_cost: Decimal = Decimal(0)
+    overage: Decimal = Decimal(0)
+    lot_months: int = 0
+    lot_cost: Decimal = Decimal(0)
+    run_budget: Decimal = Decimal(0)
+    slot_budget: Decimal = Decimal(0)
+    max_positions_per_sample: int = 0
+
+
+COHORT: Final = _Cohort()
+PREPARATION: Final = _Preparation()
+ENGINE: Final = _Engine()
+SHORTLIST: Final = _Shortlist()
+PANELS: Final = _Panels()
+ACCURACY: Final = _Accuracy()
+CHOICE: Final = _Choice()
+PROGRAMME: Final = _Programme()
+PLATFORM: Final = _Platform()

@@ -1,0 +1,289 @@
+"""The whole procedure, learnt on some rows and applied to others.
+
+Everything that looks at data is learnt again here from the training rows: fills and
+filters, frequencies, candidates, panels, tuning, coefficients. A fold runs it with
+its training rows; the printed panels come from running it with all rows.
+"""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from panelkit.config import ACCURACY
+from panelkit.costing.makers import evidence_of, maker_named
+from panelkit.costing.tuning import (
+    Tuning,
+    choose_within_one_se,
+    judge,
+    tune_ridge,
+)
+from panelkit.fits import (
+    fit_panels,
+    kernel_matrix,
+    ridge_predictions,
+    standardised,
+)
+from panelkit.preparation import DesignView, Recipe
+from panelkit.records import Stability, SubsamplePlan
+from panelkit.stability import ShortlistRules, select_markers
+
+__all__ = ["Learnt", "Procedure", "ProcedureData", "Selected", "Split"]
+
+RIDGE_PAIRS = 4  # pairs that tune ridge on all features
+RIDGE_PENALTIES = np.logspace(0.5, -3.5, 9)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ProcedureData:
+    """The data that a procedure works on, shared by all folds.
+
+    Attributes
+    ----------
+    base : ndarray of shape (n_features, n_samples)
+        After the per-sample steps.
+    y, weights : ndarray of shape (n_samples,)
+        Outcome and observation weights.
+    subjects : ndarray of shape (n_samples,), int64
+        Subject codes.
+    barred : ndarray of shape (n_features,), object
+        Reason why a feature may not be used, or ``""``.
+    always : ndarray of int64
+        Features that are candidates whatever happens.
+    """
+
+    base: NDArray[np.floating[Any]]
+    y: NDArray[np.float64]
+    weights: NDArray[np.float64]
+    subjects: NDArray[np.int64]
+    barred: NDArray[np.object_]
+    always: NDArray[np.int64]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Split:
+    """Rows that teach and rows that are tested, with all that was drawn for them.
+
+    Attributes
+    ----------
+    training, test : ndarray of int64
+        Rows; `test` may be empty.
+    pairs : SubsamplePlan
+        Complementary pairs of the training rows.
+    inner : tuple of Split
+        Inner folds of the training rows.
+    """
+
+    training: NDArray[np.int64]
+    test: NDArray[np.int64]
+    pairs: SubsamplePlan
+    inner: "tuple[Split, ...]" = ()
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Selected:
+    """Preparation, stability and panels of some training rows.
+
+    Attributes
+    ----------
+    view : DesignView
+        Preparation learnt on the training rows.
+    stability : Stability
+        Frequencies, shortlist, candidates.
+    panels : list of ndarray of int64
+        One a maker and size, makers first.
+    """
+
+    view: DesignView
+    stability: Stability
+    panels: list[NDArray[np.int64]]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Learnt:
+    """What a procedure learnt from its training rows.
+
+    Attributes
+    ----------
+    selected : Selected
+        Preparation, stability, panels.
+    tuning : Tuning
+        Judgement of the inner folds.
+    chosen : tuple of int
+        Maker and size position that the primary rule takes.
+    penalties : ndarray of shape (n_panels,)
+        Ridge penalty of each panel.
+    log_odds : ndarray of shape (n_panels, n_test)
+        Predictions for the test rows.
+    """
+
+    selected: Selected
+    tuning: Tuning
+    chosen: tuple[int, int]
+    penalties: NDArray[np.float64]
+    log_odds: NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class Procedure:
+    """Recipe, shortlist rules, makers and sizes: what is repeated in every fold.
+
+    Attributes
+    ----------
+    recipe : Recipe
+        Preparation.
+    rules : ShortlistRules
+        Stability selection and candidates.
+    makers : sequence of str
+        Names of makers.
+    sizes : sequence of int
+        Panel sizes, ascending.
+    ridge_penalties : sequence of float
+        Ridge penalties of the refits, largest first.
+    """
+
+    recipe: Recipe
+    rules: ShortlistRules
+    makers: Sequence[str]
+    sizes: Sequence[int]
+    ridge_penalties: Sequence[float] = ACCURACY.ridge_penalties
+
+    def learn(self, data: ProcedureData, split: Split, threads: int = 1) -> Learnt:
+        """Learn everything from the training rows and predict the test rows.
+
+        Parameters
+        ----------
+        data : ProcedureData
+            Shared data.
+        split : Split
+            Which rows teach, which are tested; inner folds for tuning.
+        threads : int
+            Threads of the engine.
+
+        Returns
+        -------
+        Learnt
+            Panels, predictions, and what led to them.
+
+        Raises
+        ------
+        FitError
+            A fit that is not possible or did not converge.
+        """
+        selected = self.select(data, split, threads)
+        tuning = self._tune(data, split, threads)
+        penalties = np.array(self.ridge_penalties)[tuning.best.ravel()]
+        n_folds = len(split.inner)
+        return Learnt(
+            selected=selected,
+            tuning=tuning,
+            chosen=choose_within_one_se(tuning.area, 1.0 / (n_folds - 1)),
+            penalties=penalties,
+            log_odds=_predict(selected, data, split, penalties[:, None])[:, 0],
+        )
+
+    def select(self, data: ProcedureData, split: Split, threads: int = 1) -> Selected:
+        """Learn preparation, stability and panels from the training rows.
+
+        Raises
+        ------
+        FitError
+            A fit that is not possible or did not converge.
+        """
+        state = self.recipe.learn(data.base, split.training, data.barred)
+        view = self.recipe.view(state, data.base)
+        stability = select_markers(
+            view,
+            data.y,
+            split.training,
+            data.subjects,
+            data.weights,
+            split.pairs,
+            self.rules,
+            always=data.always,
+            threads=threads,
+        )
+        evidence = evidence_of(stability)
+        panels = [
+            maker_named(name)(evidence, size)
+            for name in self.makers
+            for size in self.sizes
+        ]
+        return Selected(view, stability, panels)
+
+    def _tune(self, data: ProcedureData, split: Split, threads: int) -> Tuning:
+        """Repeat the selection in the inner folds and judge it there."""
+        shape = (len(self.makers), len(self.sizes))
+        grid = np.tile(np.array(self.ridge_penalties), (shape[0] * shape[1], 1))
+        log_odds = [
+            _predict(self.select(data, inner, threads), data, inner, grid)
+            for inner in split.inner
+        ]
+        return judge(
+            log_odds,
+            [data.y[inner.test] for inner in split.inner],
+            [data.weights[inner.test] for inner in split.inner],
+            shape,
+        )
+
+    def ridge_on_all(
+        self, data: ProcedureData, split: Split, view: DesignView
+    ) -> NDArray[np.float64]:
+        """Return log-odds of the test rows by ridge on all included features.
+
+        Raises
+        ------
+        FitError
+            No convergence.
+        """
+        kernel = kernel_matrix(view, split.training, data.weights)
+        best = tune_ridge(
+            kernel, data.y, data.weights, split.pairs, RIDGE_PAIRS, RIDGE_PENALTIES
+        )
+        # A ridge penalty on the mean loss is 1 / (n * prior variance): it shrinks
+        # with the number of rows.
+        ratio = len(split.pairs.rows[0]) / len(split.training)
+        predicted = ridge_predictions(
+            kernel,
+            data.y,
+            data.weights,
+            split.training,
+            split.test,
+            RIDGE_PENALTIES[best : best + 1] * ratio,
+        )
+        log_odds: NDArray[np.float64] = predicted[0]
+        return log_odds
+
+
+def _predict(
+    selected: Selected,
+    data: ProcedureData,
+    split: Split,
+    penalties: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Refit each panel on the training rows; return log-odds of the test rows.
+
+    penalties: (panels, penalties); returns (panels, penalties, test rows).
+    """
+    training, test = split.training, split.test
+    panels = selected.panels
+    features = np.unique(np.concatenate(panels))
+    rows = np.concatenate([training, test])
+    n = len(training)
+    Z, _mean, _deviation = standardised(
+        selected.view.columns(features, rows), np.arange(n), data.weights[training]
+    )
+    taught, tested = Z[:, :n].copy(), Z[:, n:].copy()
+    log_odds = np.empty((len(panels), penalties.shape[1], len(test)))
+    for p, panel in enumerate(panels):
+        fits = fit_panels(
+            taught,
+            [np.searchsorted(features, panel)],
+            data.y[training],
+            data.weights[training],
+            penalties[p],
+        )
+        log_odds[p] = fits.linear_predictors(tested)[0]
+    return log_odds

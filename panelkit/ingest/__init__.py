@@ -1,0 +1,14 @@
+"""Files in, a checked cohort out."""
+
+from panelkit.ingest.checks import check_cohort
+from panelkit.ingest.cohort_reader import read_cohort
+from panelkit.ingest.price_list import read_price_list
+from panelkit.ingest.scale import ScaleGuess, guess_scale
+
+__all__ = [
+    "ScaleGuess",
+    "check_cohort",
+    "guess_scale",
+    "read_cohort",
+    "read_price_list",
+]

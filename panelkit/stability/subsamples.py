@@ -1,0 +1,79 @@
+"""Complementary pairs: two halves of the subjects, stratified by outcome."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from panelkit.errors import FitError
+from panelkit.records import SubsamplePlan
+
+__all__ = ["draw_pairs"]
+
+SMALLEST_CLASS = 4  # subjects: two in each half
+
+
+def draw_pairs(
+    rows: NDArray[np.int64],
+    subjects: NDArray[np.int64],
+    y: NDArray[np.float64],
+    n_pairs: int,
+    generator: np.random.Generator,
+) -> SubsamplePlan:
+    """Draw complementary pairs of subsamples of the given rows.
+
+    Within each class half of the subjects go to either side with all their rows; the
+    odd one of a class, drawn by chance, sits out that pair.
+
+    Parameters
+    ----------
+    rows : ndarray of int64
+        Rows that may be used (a fold's training rows).
+    subjects : ndarray of shape (n_samples,), int64
+        Subject of each sample.
+    y : ndarray of shape (n_samples,)
+        Outcome, 0 and 1; a subject counts with the class of its first row.
+    n_pairs : int
+        Number of pairs.
+    generator : numpy.random.Generator
+        From the seed tree.
+
+    Returns
+    -------
+    SubsamplePlan
+        2 * n_pairs subsamples.
+
+    Raises
+    ------
+    FitError
+        Fewer than four subjects in a class.
+
+    References
+    ----------
+    Meinshausen & Buhlmann 2010, JRSS-B 72:417; Shah & Samworth 2013, JRSS-B 75:55.
+    Stratified halves are outside the independent sampling of their theorems.
+    """
+    own, first = np.unique(subjects[rows], return_index=True)
+    classes = [own[y[rows][first] == value] for value in (0.0, 1.0)]
+    smallest = min(len(members) for members in classes)
+    if smallest < SMALLEST_CLASS:
+        raise FitError(
+            code="too-few-for-halves",
+            where="subsamples",
+            what=f"a class with {smallest} subjects cannot be halved",
+            accepted=f"at least {SMALLEST_CLASS} subjects of each class in every "
+            "training set",
+            next_step="Use fewer folds, or more samples of the smaller class",
+        )
+    halves: list[NDArray[np.int64]] = []
+    for _pair in range(n_pairs):
+        left: list[NDArray[np.int64]] = []
+        right: list[NDArray[np.int64]] = []
+        for members in classes:
+            mixed = generator.permutation(members)
+            half = len(mixed) // 2
+            left.append(mixed[:half])
+            right.append(mixed[half : 2 * half])
+        halves.extend(
+            rows[np.isin(subjects[rows], np.concatenate(side))]
+            for side in (left, right)
+        )
+    return SubsamplePlan(tuple(halves))
