@@ -1,5 +1,6 @@
 """The study file and every default."""
 
+from panelkit.config.currency import MINOR_DIGITS
 from panelkit.config.defaults import (
     ACCURACY,
     CHOICE,
@@ -12,10 +13,8 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
 )
+from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
-    FAMILY_PRESETS,
-    MINOR_DIGITS,
-    USUAL_REFERENCES,
     PlatformSection,
     ProgrammeSection,
     platform_section,
@@ -23,6 +22,18 @@ from panelkit.config.programme import (
     read_platform_file,
     read_programme_file,
 )
+from panelkit.config.study import (
+    AccuracySection,
+    ChoiceSection,
+    CohortSection,
+    PanelsSection,
+    PreparationSection,
+    ShortlistSection,
+    StatementSection,
+    Study,
+    read_study,
+)
+from panelkit.config.template import TEMPLATE_SECTIONS, study_text
 
 __all__ = [
     "ACCURACY",
@@ -37,11 +48,22 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",
+    "AccuracySection",
+    "ChoiceSection",
+    "CohortSection",
+    "PanelsSection",
     "PlatformSection",
+    "PreparationSection",
     "ProgrammeSection",
+    "ShortlistSection",
+    "StatementSection",
+    "Study",
     "platform_section",
     "programme_section",
     "read_platform_file",
     "read_programme_file",
+    "read_study",
+    "study_text",
 ]

@@ -48,6 +48,8 @@ class _Engine:
     tol: float = 1e-6
     max_steps: int = 200
     """Newton steps for one penalty before a refit counts as not converged."""
+    ridge_penalties: tuple[float, ...] = (1.0, 0.3, 0.1, 0.03, 0.01, 0.003)
+    """Ridge penalties of panel refits; the inner folds choose one."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,9 +75,6 @@ class _Accuracy:
     repeats: int = 5
     inner_folds: int = 5
     inner_subsamples: int = 40
-    ridge_penalties: tuple[float, ...] = (
-        1.0, 0.3, 0.1, 0.03, 0.01, 0.003,
-    )  # fmt: skip
     metric: Literal["auc"] = "auc"
     confidence: float = 0.95
 

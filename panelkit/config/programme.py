@@ -1,32 +1,26 @@
 """The programme and the platforms of a study: what to measure, how, at what price."""
 
-import difflib
-import tomllib
 from collections.abc import Mapping
 from decimal import Decimal, InvalidOperation
 from itertools import pairwise
 from pathlib import Path
-from types import MappingProxyType
-from typing import Annotated, Any, Final, Literal, NoReturn, Self, TypeVar
+from typing import Annotated, Any, Final, Literal, Self
 
 from pydantic import (
-    BaseModel,
     BeforeValidator,
-    ConfigDict,
     Field,
     ModelWrapValidatorHandler,
-    ValidationError,
     ValidationInfo,
     model_validator,
 )
 
+from panelkit.config.currency import MINOR_DIGITS
 from panelkit.config.defaults import PLATFORM, PROGRAMME
+from panelkit.config.presets import FAMILY_PRESETS, Family
+from panelkit.config.sections import Section, check_section, read_toml
 from panelkit.errors import StudyFileError, name_some
 
 __all__ = [
-    "FAMILY_PRESETS",
-    "MINOR_DIGITS",
-    "USUAL_REFERENCES",
     "PlatformSection",
     "ProgrammeSection",
     "platform_section",
@@ -35,148 +29,7 @@ __all__ = [
     "read_programme_file",
 ]
 
-_TWO_DIGITS = """
-AED AFN ALL AMD AOA ARS AUD AWG AZN BAM BBD BDT BMD BND BOB BOV BRL BSD BTN BWP BYN
-BZD CAD CDF CHE CHF CHW CNY COP COU CRC CUP CVE CZK DKK DOP DZD EGP ERN ETB EUR FJD
-FKP GBP GEL GHS GIP GMD GTQ GYD HKD HNL HTG HUF IDR ILS INR IRR JMD KES KGS KHR KPW
-KYD KZT LAK LBP LKR LRD LSL MAD MDL MGA MKD MMK MNT MOP MRU MUR MVR MWK MXN MXV MYR
-MZN NAD NGN NIO NOK NPR NZD PAB PEN PGK PHP PKR PLN QAR RON RSD RUB SAR SBD SCR SDG
-SEK SGD SHP SLE SOS SRD SSP STN SVC SYP SZL THB TJS TMT TOP TRY TTD TWD TZS UAH USD
-USN UYU UZS VED VES WST XCD XCG YER ZAR ZMW ZWG
-"""
-_OTHER_DIGITS = {
-    0: "BIF CLP DJF GNF ISK JPY KMF KRW PYG RWF UGX UYI VND VUV XAF XOF XPF",
-    3: "BHD IQD JOD KWD LYD OMR TND",
-    4: "CLF UYW",
-}
-
-MINOR_DIGITS: Final[Mapping[str, int]] = MappingProxyType(
-    {code: 2 for code in _TWO_DIGITS.split()}
-    | {code: n for n, codes in _OTHER_DIGITS.items() for code in codes.split()}
-)
-"""Digits of the minor unit by ISO 4217 code. Codes without a minor unit (metals,
-units of account) and the test codes are left out: nothing is priced in them."""
-
-FAMILY_PRESETS: Final[Mapping[str, Mapping[str, Any]]] = MappingProxyType(
-    {
-        "rt-qpcr": {
-            "positions": 384,
-            "plex": 1,
-            "replicates": 2,
-            "controls_per_pool": 2,
-            "controls_per_run": 0,
-            "groups": "auto",
-            "refs_scope": "panel",
-            "overage": "0.10",
-            "repeat_rate": "0.04",
-        },
-        "dpcr": {
-            "positions": 96,
-            "plex": 2,
-            "replicates": 1,
-            "controls_per_pool": 2,
-            "controls_per_run": 0,
-            "groups": "auto",
-            "refs_scope": "pool",
-            "overage": "0.10",
-            "repeat_rate": "0.03",
-        },
-        "amplicon": {
-            "positions": 384,
-            "plex": 400,
-            "replicates": 1,
-            "controls_per_pool": 4,
-            "controls_per_run": 0,
-            "groups": 1,
-            "refs_scope": "pool",
-            "overage": "0.10",
-            "repeat_rate": "0.03",
-        },
-        "probe-count": {  # the number of positions has no usual value
-            "plex": 96,
-            "replicates": 1,
-            "controls_per_pool": 1,
-            "controls_per_run": 0,
-            "groups": 1,
-            "refs_scope": "pool",
-            "overage": 0,
-            "repeat_rate": "0.03",
-        },
-        "multiplex-immuno": {
-            "positions": 96,
-            "plex": 12,
-            "replicates": 2,
-            "controls_per_pool": 20,
-            "controls_per_run": 0,
-            "groups": "each",
-            "refs_scope": "pool",
-            "overage": "0.05",
-            "repeat_rate": "0.03",
-        },
-        "elisa": {
-            "positions": 96,
-            "plex": 1,
-            "replicates": 2,
-            "controls_per_pool": 20,
-            "controls_per_run": 0,
-            "groups": "each",
-            "refs_scope": "panel",
-            "overage": "0.10",
-            "repeat_rate": "0.05",
-        },
-        "targeted-ms": {
-            "positions": 96,
-            "plex": 100,
-            "replicates": 1,
-            "controls_per_pool": 16,
-            "controls_per_run": 0,
-            "groups": "each",
-            "refs_scope": "panel",
-            "overage": "0.05",
-            "repeat_rate": "0.03",
-        },
-        "metabolomics": {
-            "positions": 96,
-            "plex": 100,
-            "replicates": 1,
-            "controls_per_pool": 18,
-            "controls_per_run": 0,
-            "groups": "each",
-            "refs_scope": "panel",
-            "overage": "0.05",
-            "repeat_rate": "0.03",
-        },
-    }
-)
-"""Common geometry by family: an editable hint that fills only keys left out."""
-
-USUAL_REFERENCES: Final[Mapping[str, int]] = MappingProxyType(
-    {
-        "rt-qpcr": 3,
-        "dpcr": 1,
-        "amplicon": 4,
-        "probe-count": 6,
-        "multiplex-immuno": 0,
-        "elisa": 0,
-        "targeted-ms": 0,
-        "metabolomics": 0,
-    }
-)
-"""Number of reference assays usually planned, by family."""
-
-Family = Literal[
-    "rt-qpcr",
-    "dpcr",
-    "amplicon",
-    "probe-count",
-    "multiplex-immuno",
-    "elisa",
-    "targeted-ms",
-    "metabolomics",
-]
-
 MAX_COUNT: Final = 10**9
-MAX_SHOWN: Final = 60
 MAX_EXPONENT: Final = 15  # beyond it an amount is a typing error, and exact sums crawl
 
 
@@ -316,11 +169,7 @@ PositionCost = Annotated[
 ]
 
 
-class _Section(BaseModel):
-    model_config = ConfigDict(frozen=True, extra="forbid")
-
-
-class ProgrammeSection(_Section):
+class ProgrammeSection(Section):
     """What is to be measured: ``[programme]`` of a study.
 
     Attributes
@@ -355,7 +204,7 @@ class ProgrammeSection(_Section):
     )
 
 
-class PlatformSection(_Section):
+class PlatformSection(Section):
     """How panels are measured: one ``[platform.NAME]`` of a study.
 
     Keys left out take the family's usual value where there is one, else the
@@ -510,7 +359,7 @@ def programme_section(
     StudyFileError
         If a key is unknown, missing, or holds what it does not accept.
     """
-    return _section(ProgrammeSection, values, where)
+    return check_section(ProgrammeSection, values, where)
 
 
 def platform_section(
@@ -535,58 +384,7 @@ def platform_section(
     StudyFileError
         If a key is unknown, missing, or holds what it does not accept.
     """
-    return _section(PlatformSection, values, where)
-
-
-S = TypeVar("S", bound=_Section)
-
-
-def _section(kind: type[S], values: object, where: str) -> S:
-    if isinstance(values, kind):
-        return values
-    try:
-        return kind.model_validate(values, context={"where": where})
-    except ValidationError as error:
-        _refuse(error, kind, where)
-
-
-def _refuse(error: ValidationError, kind: type[BaseModel], where: str) -> NoReturn:
-    first = error.errors(include_url=False)[0]
-    key = ".".join(str(part) for part in first["loc"])
-    here = f"{where}, key '{key}'" if key else where
-    if first["type"] == "extra_forbidden":
-        _refuse_key(key, list(kind.model_fields), where)
-    if first["type"] == "missing":
-        raise StudyFileError(
-            code="key-missing",
-            where=here,
-            what="a value is needed (got none)",
-            accepted="the key has no default",
-            next_step=f"Add {key}",
-        ) from None
-    message, given = first["msg"].removeprefix("Input should be "), first["input"]
-    got = str(given) if isinstance(given, Decimal) else repr(given)
-    if len(got) > MAX_SHOWN:
-        got = f"{got[:MAX_SHOWN]}..."
-    raise StudyFileError(
-        code="value-refused",
-        where=here,
-        what=f"the value cannot be used (got {got})",
-        accepted=f"accepted is {message}",
-        next_step="Correct the value",
-    ) from None
-
-
-def _refuse_key(key: str, known: list[str], where: str) -> NoReturn:
-    near = difflib.get_close_matches(key, known, n=1)
-    hint = f"perhaps '{near[0]}' is meant; " if near else ""
-    raise StudyFileError(
-        code="key-unknown",
-        where=f"{where}, key '{key}'",
-        what=f"no such key is known (got {key!r})",
-        accepted=f"{hint}known are {name_some(known, len(known))}",
-        next_step="Rename or remove the key",
-    ) from None
+    return check_section(PlatformSection, values, where)
 
 
 _FILE_KEYS = ("programme", "platform", "kit")
@@ -611,7 +409,7 @@ def read_programme_file(path: str | Path) -> ProgrammeSection:
     StudyFileError
         If the file cannot be read, or its ``[programme]`` cannot be used.
     """
-    tables = _read_toml(path)
+    tables = read_toml(path, _FILE_KEYS)
     if "programme" not in tables:
         raise StudyFileError(
             code="programme-missing",
@@ -642,7 +440,7 @@ def read_platform_file(path: str | Path) -> dict[str, PlatformSection]:
         If the file cannot be read, describes kits (which are not priced yet), or
         one of its platforms cannot be used.
     """
-    tables = _read_toml(path)
+    tables = read_toml(path, _FILE_KEYS)
     if "kit" in tables:
         raise StudyFileError(
             code="kits-not-priced",
@@ -667,31 +465,3 @@ def read_platform_file(path: str | Path) -> dict[str, PlatformSection]:
         name: platform_section(table, f"{path}, [platform.{name}]")
         for name, table in platforms.items()
     }
-
-
-def _read_toml(path: str | Path) -> dict[str, Any]:
-    try:
-        text = Path(path).read_text(encoding="utf-8")
-    except (OSError, UnicodeDecodeError) as error:
-        raise StudyFileError(
-            code="file-unreadable",
-            where=str(path),
-            what=f"the file cannot be read (got {error})",
-            accepted="a readable TOML file in UTF-8",
-            next_step="Check the path and the file",
-        ) from None
-    try:
-        # A binary float would move an amount that is written as a decimal.
-        tables = tomllib.loads(text, parse_float=Decimal)
-    except (ValueError, ArithmeticError) as error:  # also a number out of all bounds
-        raise StudyFileError(
-            code="toml-unreadable",
-            where=str(path),
-            what=f"the file is not valid TOML (got {error})",
-            accepted="TOML as in the commented study files",
-            next_step="Correct the place named",
-        ) from None
-    for key in tables:
-        if key not in _FILE_KEYS:
-            _refuse_key(key, list(_FILE_KEYS), str(path))
-    return tables

@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from panelkit.config import ACCURACY
+from panelkit.config import ENGINE
 from panelkit.costing.makers import evidence_of, maker_named
 from panelkit.costing.tuning import (
     Tuning,
@@ -148,7 +148,7 @@ class Procedure:
     rules: ShortlistRules
     makers: Sequence[str]
     sizes: Sequence[int]
-    ridge_penalties: Sequence[float] = ACCURACY.ridge_penalties
+    ridge_penalties: Sequence[float] = ENGINE.ridge_penalties
 
     def learn(self, data: ProcedureData, split: Split, threads: int = 1) -> Learnt:
         """Learn everything from the training rows and predict the test rows.

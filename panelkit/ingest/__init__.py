@@ -1,5 +1,6 @@
 """Files in, a checked cohort out."""
 
+from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
 from panelkit.ingest.cohort_reader import read_cohort
 from panelkit.ingest.price_list import read_price_list
@@ -9,6 +10,7 @@ __all__ = [
     "ScaleGuess",
     "check_cohort",
     "guess_scale",
+    "is_missing",
     "read_cohort",
     "read_price_list",
 ]

@@ -28,6 +28,7 @@ from panelkit.records.prices import (
     PriceList,
     check_price_columns,
 )
+from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
 from panelkit.records.stability import (
     ErrorBound,
@@ -66,6 +67,7 @@ __all__ = [
     "RecipeState",
     "Record",
     "RuleChoice",
+    "RunRecord",
     "RunSummary",
     "Severity",
     "ShortlistTable",

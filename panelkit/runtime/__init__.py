@@ -10,6 +10,7 @@ from panelkit.runtime.blocks import (
 )
 from panelkit.runtime.files import hash_of_file, write_whole
 from panelkit.runtime.progress import Listener, Progress, silent
+from panelkit.runtime.run_folder import RunFolder, json_bytes
 from panelkit.runtime.seeds import generator
 from panelkit.runtime.threads import thread_count
 
@@ -20,9 +21,11 @@ __all__ = [
     "Listener",
     "MemoryStore",
     "Progress",
+    "RunFolder",
     "StageKey",
     "generator",
     "hash_of_file",
+    "json_bytes",
     "map_blocks",
     "silent",
     "thread_count",

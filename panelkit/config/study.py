@@ -1,0 +1,457 @@
+"""The study file: one TOML file that says everything a run depends on."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from decimal import Decimal
+from pathlib import Path
+from typing import Annotated, Any, Literal
+
+from pydantic import BeforeValidator, Field
+
+from panelkit.config.defaults import (
+    ACCURACY,
+    CHOICE,
+    COHORT,
+    PANELS,
+    PREPARATION,
+    SEED,
+    SHORTLIST,
+)
+from panelkit.config.programme import (
+    PlatformSection,
+    ProgrammeSection,
+    platform_section,
+    programme_section,
+    read_platform_file,
+)
+from panelkit.config.sections import Section, check_section, read_toml, refuse_key
+from panelkit.errors import StudyFileError
+
+__all__ = [
+    "AccuracySection",
+    "ChoiceSection",
+    "CohortSection",
+    "PanelsSection",
+    "PreparationSection",
+    "ShortlistSection",
+    "StatementSection",
+    "Study",
+    "read_study",
+]
+
+
+def _text(value: object) -> object:
+    """Let a number or a truth value stand for a class of the sample sheet."""
+    return str(value) if isinstance(value, int | Decimal) else value
+
+
+def _number(value: object) -> object:
+    """TOML decimals arrive as Decimal; statistics want floats."""
+    return float(value) if isinstance(value, Decimal) else value
+
+
+def _ascending(value: object) -> object:
+    if isinstance(value, list) and value != sorted(set(value)):
+        raise ValueError("ascending, each size once")
+    return value
+
+
+Number = Annotated[float, BeforeValidator(_number)]
+Share = Annotated[float, Field(gt=0, lt=1), BeforeValidator(_number)]
+ClassName = Annotated[str, BeforeValidator(_text)]
+Size = Annotated[int, Field(ge=1, le=1000)]
+
+
+class CohortSection(Section):
+    """``[cohort]``: files, outcome, and how samples belong together.
+
+    Attributes
+    ----------
+    expression : str
+        The expression matrix: CSV or TSV (plain or .gz) or .h5ad.
+    samples : str or None
+        The sample sheet; an .h5ad file brings its own.
+    features : str or None
+        Optional feature sheet with the columns feature, symbol, role.
+    outcome : str or None
+        A column of the sample sheet.
+    positive : str
+        The class that scores point to.
+    negative : str or None
+        The other class; samples of further classes are then left out and counted.
+    time, event : str or None
+        Survival outcomes; not built yet and refused.
+    keep : mapping
+        Row filters: column to a list of values, or to ``{ min, max }``.
+    subject, site, batch, replicate_of : str or None
+        Columns of the sample sheet.
+    covariates, nuisance : tuple of str
+        Columns that are checked against the outcome.
+    accept : mapping of str to str
+        Code of a `stop` finding to the written reason for going on all the same.
+    orientation : str
+        ``auto`` decides by the ids of the sample sheet.
+    max_bad_cells : int
+        Cells that are no numbers and are read as missing; more are an error.
+    """
+
+    expression: str
+    samples: str | None = None
+    features: str | None = None
+    outcome: str | None = None
+    positive: ClassName | None = None
+    negative: ClassName | None = None
+    time: str | None = None
+    event: str | None = None
+    keep: Mapping[str, Any] = Field(default_factory=dict)
+    subject: str | None = None
+    site: str | None = None
+    batch: str | None = None
+    replicate_of: str | None = None
+    covariates: tuple[str, ...] = ()
+    nuisance: tuple[str, ...] = ()
+    accept: Mapping[str, str] = Field(default_factory=dict)
+    orientation: Literal["auto", "samples-in-rows", "features-in-rows"] = (
+        COHORT.orientation
+    )
+    max_bad_cells: int = Field(default=COHORT.max_bad_cells, ge=0)
+
+
+class PreparationSection(Section):
+    """``[preparation]``: what is done to the values before anything is fitted.
+
+    Attributes
+    ----------
+    discovery : tuple of str or None
+        Steps in order: log2, filter, median-fill. None follows the scale finding.
+    log2_offset : float
+        Added before the logarithm.
+    max_missing_share : float
+        Features missing in a larger share of the training rows are left out.
+    """
+
+    discovery: tuple[str, ...] | None = None
+    log2_offset: Annotated[float, Field(ge=0), BeforeValidator(_number)] = (
+        PREPARATION.log2_offset
+    )
+    max_missing_share: Annotated[float, Field(ge=0, le=1), BeforeValidator(_number)] = (
+        PREPARATION.max_missing_share
+    )
+
+
+class ShortlistSection(Section):
+    """``[shortlist]``: stability selection.
+
+    Attributes
+    ----------
+    subsamples : int
+        Halves in all, an even number: complementary pairs.
+    threshold : float
+        Selection frequency from which a feature is shortlisted.
+    false_markers : float
+        Tolerated expected number of low-chance features in the shortlist.
+    markers_per_subsample : int or None
+        Given: the bound on false markers follows from it.
+    candidates : int
+        Companion groups, and univariate features, that panels may be built from.
+    always, never : tuple of str
+        Features that are candidates whatever happens; features never used.
+    companion_correlation : float
+        Smallest absolute correlation of companions.
+    n_penalties, penalty_floor : int, float
+        Penalties of each path, and the last one relative to the largest.
+    """
+
+    subsamples: int = Field(default=SHORTLIST.subsamples, ge=4, le=100_000)
+    threshold: Annotated[float, Field(gt=0.5, le=1), BeforeValidator(_number)] = (
+        SHORTLIST.threshold
+    )
+    false_markers: Annotated[float, Field(gt=0), BeforeValidator(_number)] = (
+        SHORTLIST.false_markers
+    )
+    markers_per_subsample: Size | None = None
+    candidates: int = Field(default=SHORTLIST.candidates, ge=1, le=1000)
+    always: tuple[str, ...] = ()
+    never: tuple[str, ...] = ()
+    companion_correlation: Share = SHORTLIST.companion_correlation
+    n_penalties: int = Field(default=SHORTLIST.n_penalties, ge=2, le=1000)
+    penalty_floor: Share = SHORTLIST.penalty_floor
+
+
+class PanelsSection(Section):
+    """``[panels]``: which panels are built, and what they are priced by.
+
+    Attributes
+    ----------
+    sizes : tuple of int
+        Markers a panel, ascending.
+    makers : tuple of str
+        Procedures that propose panels: frequency, univariate.
+    prices : str or None
+        Price list (CSV).
+    platforms : tuple of str
+        Platform files (TOML), beside any ``[platform.NAME]`` of the study file.
+    """
+
+    sizes: Annotated[tuple[Size, ...], BeforeValidator(_ascending)] = Field(
+        default=PANELS.sizes, min_length=1
+    )
+    makers: tuple[str, ...] = Field(default=PANELS.makers, min_length=1)
+    prices: str | None = None
+    platforms: tuple[str, ...] = ()
+
+
+class AccuracySection(Section):
+    """``[accuracy]``: how honest accuracy is estimated.
+
+    Attributes
+    ----------
+    folds, repeats : int
+        Outer folds, and how often they are drawn anew.
+    inner_folds : int
+        Inner folds that tune penalties and choose the size for the headline.
+    inner_subsamples : int
+        Halves of the stability selection inside an inner fold, an even number.
+    metric : {"auc"}
+        Area under the ROC curve.
+    confidence : float
+        Of the intervals.
+    """
+
+    folds: int = Field(default=ACCURACY.folds, ge=2, le=100)
+    repeats: int = Field(default=ACCURACY.repeats, ge=1, le=1000)
+    inner_folds: int = Field(default=ACCURACY.inner_folds, ge=2, le=20)
+    inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
+    metric: Literal["auc"] = ACCURACY.metric
+    confidence: Share = ACCURACY.confidence
+
+
+class PrimaryRule(Section):
+    """``primary`` of ``[choice]``: the rule declared before the run.
+
+    Attributes
+    ----------
+    rule : str
+        ``smallest-within-one-se``.
+    """
+
+    rule: Literal["smallest-within-one-se"]
+
+
+class ChoiceSection(Section):
+    """``[choice]``: which panel is taken.
+
+    Attributes
+    ----------
+    primary : PrimaryRule or None
+        None: the default rule is used and the headline says exploratory.
+    """
+
+    primary: PrimaryRule | None = None
+
+    @property
+    def rule(self) -> str:
+        """Name of the rule that is used."""
+        return CHOICE.rule if self.primary is None else self.primary.rule
+
+
+class StatementSection(Section):
+    """``[statement]``: texts for the report; an empty one is shown as missing.
+
+    Attributes
+    ----------
+    intended_use, population, specimen, reference_standard, blinding, registration, \
+ethics : str
+        In the study's own words.
+    """
+
+    intended_use: str = ""
+    population: str = ""
+    specimen: str = ""
+    reference_standard: str = ""
+    blinding: str = ""
+    registration: str = ""
+    ethics: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Study:
+    """A checked study file.
+
+    Attributes
+    ----------
+    path : Path
+        Where it was read; its relative paths are relative to this file's folder.
+    seed : int
+        Root of every random draw.
+    cohort, preparation, shortlist, panels, accuracy, choice, statement : Section
+        The tables, defaults filled in.
+    programme : ProgrammeSection or None
+        None: nothing is priced.
+    platforms : mapping of str to PlatformSection
+        From the study file and from platform files.
+    """
+
+    path: Path
+    seed: int
+    cohort: CohortSection
+    preparation: PreparationSection
+    shortlist: ShortlistSection
+    panels: PanelsSection
+    accuracy: AccuracySection
+    choice: ChoiceSection
+    statement: StatementSection
+    programme: ProgrammeSection | None
+    platforms: Mapping[str, PlatformSection]
+
+    def file(self, name: str) -> Path:
+        """Return the path of a file that the study names."""
+        return self.path.parent / name
+
+    def effective(self) -> dict[str, Any]:
+        """Return every setting that determines results, plain and sorted.
+
+        File names are left out, since the record holds the files' hashes.
+        """
+        tables: dict[str, Any] = {"seed": self.seed}
+        for name in ("preparation", "shortlist", "panels", "accuracy", "choice"):
+            section: Section = getattr(self, name)
+            tables[name] = section.model_dump(mode="json")
+        cohort = self.cohort.model_dump(mode="json")
+        for name in ("expression", "samples", "features"):
+            cohort.pop(name)
+        tables["cohort"] = cohort
+        for name in ("prices", "platforms"):
+            tables["panels"].pop(name)
+        if self.programme is not None:
+            written = self.programme.model_dump(mode="json", exclude_unset=True)
+            tables["programme"] = written
+        tables["platform"] = {
+            name: platform.model_dump(mode="json", exclude_unset=True)
+            for name, platform in sorted(self.platforms.items())
+        }
+        return tables
+
+
+_TABLES: dict[str, type[Section]] = {
+    "cohort": CohortSection,
+    "preparation": PreparationSection,
+    "shortlist": ShortlistSection,
+    "panels": PanelsSection,
+    "accuracy": AccuracySection,
+    "choice": ChoiceSection,
+    "statement": StatementSection,
+}
+_KEYS = ("seed", *_TABLES, "programme", "platform")
+
+
+def read_study(path: str | Path) -> Study:
+    """Return the checked study file.
+
+    Parameters
+    ----------
+    path : str or Path
+        A TOML file.
+
+    Returns
+    -------
+    Study
+        Frozen, defaults filled in, platform files read.
+
+    Raises
+    ------
+    StudyFileError
+        If the file cannot be read, a key is unknown or missing, or a value is not
+        accepted.
+    """
+    tables = read_toml(path, _KEYS)
+    if "cohort" not in tables:
+        raise StudyFileError(
+            code="cohort-table-missing",
+            where=str(path),
+            what="the file has no table [cohort]",
+            accepted="a study file with at least [cohort] expression, samples, outcome "
+            "and positive",
+            next_step="Write one with `panelkit draft EXPRESSION SAMPLES`",
+        )
+    seed = tables.get("seed", SEED)
+    if not isinstance(seed, int) or isinstance(seed, bool) or seed < 0:
+        raise StudyFileError(
+            code="seed-not-whole",
+            where=f"{path}, key 'seed'",
+            what=f"the value is no seed (got {seed!r})",
+            accepted="a whole number of at least 0",
+            next_step="Correct the value",
+        )
+    sections: dict[str, Any] = {
+        name: check_section(kind, tables.get(name, {}), f"{path}, [{name}]")
+        for name, kind in _TABLES.items()
+    }
+    for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
+        _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
+    programme = None
+    if "programme" in tables:
+        programme = programme_section(tables["programme"], f"{path}, [programme]")
+    study = Study(
+        path=Path(path),
+        seed=seed,
+        programme=programme,
+        platforms=_platforms(Path(path), tables, sections["panels"]),
+        **sections,
+    )
+    _check_pricing(study)
+    return study
+
+
+def _check_even(number: int, where: str) -> None:
+    if number % 2:
+        raise StudyFileError(
+            code="subsamples-odd",
+            where=where,
+            what=f"subsamples come in pairs (got {number})",
+            accepted="an even number of at least 4",
+            next_step=f"Write {number + 1}",
+        )
+
+
+def _platforms(
+    path: Path, tables: Mapping[str, Any], panels: PanelsSection
+) -> dict[str, PlatformSection]:
+    """Return the platforms of the study file and of the files that it names."""
+    own = tables.get("platform", {})
+    if not isinstance(own, dict):
+        refuse_key("platform", ["platform.NAME"], str(path))
+    platforms = {
+        name: platform_section(table, f"{path}, [platform.{name}]")
+        for name, table in own.items()
+    }
+    for name in panels.platforms:
+        for key, section in read_platform_file(path.parent / name).items():
+            if key in platforms:
+                raise StudyFileError(
+                    code="platform-twice",
+                    where=f"{path.parent / name}, [platform.{key}]",
+                    what=f"a platform of that name is there already (got {key!r})",
+                    accepted="each platform once",
+                    next_step="Rename or remove one of them",
+                )
+            platforms[key] = section
+    return platforms
+
+
+def _check_pricing(study: Study) -> None:
+    """Refuse half of a price: programme, platforms and prices go together."""
+    parts = {
+        "[programme]": study.programme is not None,
+        "[panels] platforms or [platform.NAME]": bool(study.platforms),
+        "[panels] prices": study.panels.prices is not None,
+    }
+    missing = [name for name, there in parts.items() if not there]
+    if missing and len(missing) < len(parts):
+        raise StudyFileError(
+            code="pricing-incomplete",
+            where=str(study.path),
+            what=f"panels cannot be priced without {' and '.join(missing)}",
+            accepted="[programme], platforms and prices together, or none of them",
+            next_step=f"Add {missing[0]}, or remove the others",
+        )

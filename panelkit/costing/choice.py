@@ -1,0 +1,160 @@
+"""Which panel is taken: every rule side by side, the primary first."""
+
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from panelkit.costing.frontier import Judge
+from panelkit.costing.honest_accuracy import HonestAccuracy
+from panelkit.costing.tuning import DECIMALS, within_one_se
+from panelkit.metrics import corrected_se, naive_se
+from panelkit.records import Choice, Frontier, FrontierRow, Headline, RuleChoice
+
+__all__ = ["choose"]
+
+SMALLEST = "smallest-within-one-se"
+CHEAPEST = "cheapest-within-one-se"
+
+
+def choose(
+    frontier: Frontier,
+    per_fold: NDArray[np.float64],
+    accuracy: HonestAccuracy,
+    judge: Judge,
+    declared: bool,
+) -> tuple[Choice, Frontier]:
+    """Return the headline with every rule's choice, and the frontier marked by it.
+
+    Parameters
+    ----------
+    frontier : Frontier
+        All rows.
+    per_fold : ndarray of shape (n_folds in all, n_rows)
+        Their areas within test folds.
+    accuracy : HonestAccuracy
+        For the nested figure of the primary rule.
+    judge : Judge
+        Outcome, subjects, folds.
+    declared : bool
+        Whether the study file declares the primary rule.
+
+    Returns
+    -------
+    choice : Choice
+        Headline and rules.
+    frontier : Frontier
+        With `chosen_by` filled in.
+
+    References
+    ----------
+    Breiman, Friedman, Olshen & Stone 1984, section 3.4.3; Nadeau & Bengio 2003.
+    """
+    near = within_one_se(per_fold, judge.test_to_train)
+    best = int(np.nanmean(per_fold, axis=0).round(DECIMALS).argmax())
+    rows = [row for row, within in zip(frontier.rows, near, strict=True) if within]
+    picks = {SMALLEST: min(rows, key=_by_size)}
+    priced = [row for row in rows if row.cost_total is not None]
+    if priced:
+        picks[CHEAPEST] = min(priced, key=_by_cost)
+    rules = [
+        _rule(rule, row, frontier.rows[best], per_fold, frontier, judge)
+        for rule, row in picks.items()
+    ]
+    marked = tuple(
+        replace(
+            row,
+            chosen_by=";".join(rule for rule, pick in picks.items() if pick is row),
+        )
+        for row in frontier.rows
+    )
+    return Choice(_headline(accuracy, judge, declared), rules), Frontier(marked)
+
+
+def _by_size(row: FrontierRow) -> tuple[float, float, float]:
+    cost = float("inf") if row.cost_total is None else float(row.cost_total)
+    return row.size, -round(row.metric, DECIMALS), cost
+
+
+def _by_cost(row: FrontierRow) -> tuple[float, float, float]:
+    return float(row.cost_total or 0), row.size, -round(row.metric, DECIMALS)
+
+
+def _rule(
+    rule: str,
+    row: FrontierRow,
+    best: FrontierRow,
+    per_fold: NDArray[np.float64],
+    frontier: Frontier,
+    judge: Judge,
+) -> RuleChoice:
+    position = {each.panel: k for k, each in enumerate(frontier.rows)}
+    difference = per_fold[:, position[best.panel]] - per_fold[:, position[row.panel]]
+    gap = float(np.nanmean(difference))
+    se = corrected_se(difference, judge.test_to_train)
+    figures = {
+        "metric": row.metric,
+        "best_metric": best.metric,
+        "difference_to_best": gap,
+        "difference_se_corrected": 0.0 if np.isnan(se) else se,
+        "difference_se_naive": float(np.nan_to_num(naive_se(difference))),
+        "size": float(row.size),
+    }
+    kind = "smallest" if rule == SMALLEST else "cheapest"
+    if row is best:
+        why = (
+            "It is also the most accurate one on the curve; more markers were not "
+            "shown to help."
+        )
+    else:
+        why = (
+            f"The most accurate one on the curve, {best.panel}, reaches "
+            f"{best.metric:.3f}: {gap:.3f} more, within one standard error of that "
+            f"difference ({figures['difference_se_corrected']:.3f}, corrected for "
+            "overlapping training sets). Being within one standard error is no proof "
+            "of equal accuracy."
+        )
+    markers = "1 marker" if row.size == 1 else f"{row.size} markers"
+    return RuleChoice(
+        rule=rule,
+        primary=rule == SMALLEST,
+        panel=row.panel,
+        figures=figures,
+        sentence=(
+            f"The {kind} panel within one standard error of the best has {markers} "
+            f"(maker {row.maker}): the procedure reaches an area under the ROC curve "
+            f"of {row.metric:.3f} ({_interval(row.metric_low, row.metric_high)}). {why}"
+        ),
+    )
+
+
+def _interval(low: float, high: float) -> str:
+    if np.isnan(low) or np.isnan(high):
+        return "no interval could be estimated"
+    return f"{low:.3f} to {high:.3f}"
+
+
+def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headline:
+    area = judge.area(accuracy.primary)
+    folds = judge.folds
+    sizes = accuracy.chosen.size
+    sentence = (
+        "Letting the rule choose maker and size anew inside every training set gives "
+        f"an area under the ROC curve of {area.mean:.3f} "
+        f"({_interval(area.low, area.high)}) on people whom the training had not "
+        f"seen. The {folds.n_repeats * folds.n_folds} training sets chose "
+        f"{int(sizes.min())} to {int(sizes.max())} markers, "
+        f"{float(np.median(sizes)):g} at the median."
+    )
+    if not declared:
+        sentence = "Exploratory: the study file declares no primary rule. " + sentence
+    return Headline(
+        metric_of=(
+            f"the whole procedure with the rule {SMALLEST}, not of the printed panel"
+        ),
+        metric=area.mean,
+        metric_low=area.low,
+        metric_high=area.high,
+        declared=declared,
+        sentence=sentence,
+    )

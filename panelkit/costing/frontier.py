@@ -1,0 +1,155 @@
+"""The frontier: every maker and size with its honest accuracy and its price."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from decimal import Decimal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from panelkit.costing.honest_accuracy import HonestAccuracy
+from panelkit.costing.panel_prices import PanelPricer
+from panelkit.costing.tuning import DECIMALS
+from panelkit.metrics import (
+    CrossValidated,
+    calibration_slope,
+    corrected_se,
+    cross_validated_auc,
+    naive_se,
+)
+from panelkit.records import FoldPlan, Frontier, FrontierRow, OutOfFold
+
+__all__ = ["Judge", "build_frontier", "panel_name"]
+
+
+def panel_name(maker: str, size: int) -> str:
+    """Return the name of a row of the frontier."""
+    return f"{maker}-{size}"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Judge:
+    """What out-of-fold predictions are judged by.
+
+    Attributes
+    ----------
+    y : ndarray of shape (n_samples,)
+        Outcome, 0 and 1.
+    subjects : ndarray of shape (n_samples,), int64
+        Subject codes.
+    folds : FoldPlan
+        Outer folds.
+    confidence : float
+        Of intervals.
+    """
+
+    y: NDArray[np.float64]
+    subjects: NDArray[np.int64]
+    folds: FoldPlan
+    confidence: float
+
+    @property
+    def test_to_train(self) -> float:
+        """Ratio of test to training samples."""
+        return 1.0 / (self.folds.n_folds - 1)
+
+    def area(self, predictions: OutOfFold) -> CrossValidated:
+        """Return the area under the ROC curve within test folds."""
+        return cross_validated_auc(
+            predictions.log_odds,
+            self.y,
+            self.folds.test_fold,
+            self.subjects,
+            self.confidence,
+        )
+
+    def slope(self, predictions: OutOfFold) -> float:
+        """Return the out-of-fold calibration slope, mean over repeats; NaN if none."""
+        slopes = [calibration_slope(row, self.y) for row in predictions.log_odds]
+        return float(np.mean(slopes))
+
+
+def build_frontier(
+    accuracy: HonestAccuracy,
+    judge: Judge,
+    panels: Sequence[NDArray[np.int64]],
+    features: NDArray[np.object_],
+    pricer: PanelPricer | None,
+) -> tuple[Frontier, NDArray[np.float64]]:
+    """Return the frontier and the area of each row in each fold.
+
+    Parameters
+    ----------
+    accuracy : HonestAccuracy
+        Out-of-fold predictions.
+    judge : Judge
+        Outcome, subjects, folds.
+    panels : sequence of ndarray of int64
+        Panels learnt on all rows, in the order of ``accuracy.panels``.
+    features : ndarray of shape (n_features,), object
+        Feature ids.
+    pricer : PanelPricer or None
+        None: nothing is priced.
+
+    Returns
+    -------
+    frontier : Frontier
+        A row a maker and size.
+    per_fold : ndarray of shape (n_folds in all, n_rows)
+        Areas within test folds.
+    """
+    rows, folds = [], []
+    for predictions, panel in zip(accuracy.panels, panels, strict=True):
+        area = judge.area(predictions)
+        markers = tuple(str(features[j]) for j in panel)
+        costs = pricer.costs(markers) if pricer is not None else ()
+        cheapest = costs[0] if costs else None
+        folds.append(area.per_fold.ravel())
+        rows.append(
+            FrontierRow(
+                panel=panel_name(predictions.maker, predictions.size),
+                maker=predictions.maker,
+                size=predictions.size,
+                markers=markers,
+                metric_of="procedure",
+                metric=area.mean,
+                metric_low=area.low,
+                metric_high=area.high,
+                metric_se_naive=naive_se(area.per_fold),
+                metric_se_corrected=corrected_se(area.per_fold, judge.test_to_train),
+                slope=judge.slope(predictions),
+                cost_total=cheapest.total if cheapest else None,
+                cost_per_result=cheapest.cost_per_result if cheapest else None,
+                cost_total_high=cheapest.total_high if cheapest else None,
+                platform=cheapest.platform if cheapest else "",
+                on_frontier=False,
+            )
+        )
+    return Frontier(_mark(rows, pricer is not None)), np.array(folds).T
+
+
+def _mark(rows: list[FrontierRow], priced: bool) -> tuple[FrontierRow, ...]:
+    """Mark the rows that no other row dominates.
+
+    By cost and accuracy where panels are priced, else by size and accuracy; accuracy
+    is compared after rounding, so that two machines agree.
+    """
+
+    def effort(row: FrontierRow) -> Decimal | None:
+        return row.cost_total if priced else Decimal(row.size)
+
+    def dominates(a: FrontierRow, b: FrontierRow) -> bool:
+        less, more = effort(a), effort(b)
+        if less is None or more is None:
+            return False
+        gain, loss = round(a.metric, DECIMALS), round(b.metric, DECIMALS)
+        return less <= more and gain >= loss and (less < more or gain > loss)
+
+    return tuple(
+        replace(
+            row,
+            on_frontier=effort(row) is not None
+            and not any(dominates(other, row) for other in rows),
+        )
+        for row in rows
+    )

@@ -1,0 +1,71 @@
+"""What a panel costs on each platform."""
+
+from collections.abc import Mapping, Sequence
+
+from panelkit.config import PlatformSection, ProgrammeSection
+from panelkit.costing.programme_cost import programme_cost
+from panelkit.errors import NoPanelError
+from panelkit.records import PanelCost, PriceList
+
+__all__ = ["PanelPricer"]
+
+
+class PanelPricer:
+    """Prices marker sets on all platforms; each set is priced once.
+
+    Parameters
+    ----------
+    programme : ProgrammeSection
+        Samples, currency, repeats.
+    platforms : mapping of str to PlatformSection
+        Where panels may be run.
+    prices : PriceList
+        Quotes of all platforms.
+    """
+
+    def __init__(
+        self,
+        programme: ProgrammeSection,
+        platforms: Mapping[str, PlatformSection],
+        prices: PriceList,
+    ) -> None:
+        self._programme = programme
+        self._platforms = platforms
+        self._prices = prices
+        self._known: dict[frozenset[str], tuple[PanelCost, ...]] = {}
+
+    def costs(self, markers: Sequence[str]) -> tuple[PanelCost, ...]:
+        """Return the panel's cost on each platform where it can be run, cheapest first.
+
+        Parameters
+        ----------
+        markers : sequence of str
+            Features of the panel.
+
+        Returns
+        -------
+        tuple of PanelCost
+            Empty where no platform can run the panel; equals by platform order.
+
+        Raises
+        ------
+        InputDataError
+            A price that is needed is missing.
+        """
+        key = frozenset(markers)
+        if key not in self._known:
+            found = [self._cost(markers, name) for name in self._platforms]
+            able = [cost for cost in found if cost is not None]
+            self._known[key] = tuple(sorted(able, key=lambda cost: cost.total))
+        return self._known[key]
+
+    def _cost(self, markers: Sequence[str], platform: str) -> PanelCost | None:
+        try:
+            return programme_cost(
+                self._programme,
+                self._platforms[platform],
+                self._prices.for_panel(list(markers), platform),
+                quotes=self._prices.quotes(platform),
+            )
+        except NoPanelError:
+            return None

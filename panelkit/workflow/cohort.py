@@ -1,0 +1,155 @@
+"""From a study file to its cohort and its prices."""
+
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from panelkit.config import Study
+from panelkit.costing import PanelPricer
+from panelkit.errors import InputDataError, StudyFileError, name_some
+from panelkit.ingest import read_cohort, read_price_list
+from panelkit.records import Cohort, Findings
+from panelkit.runtime import hash_of_file
+
+__all__ = [
+    "barred_features",
+    "feature_positions",
+    "load_cohort",
+    "load_prices",
+    "refuse_stops",
+]
+
+
+def load_cohort(study: Study) -> Cohort:
+    """Return the checked cohort of a study.
+
+    Raises
+    ------
+    StudyFileError
+        The study names no outcome.
+    InputDataError
+        The data cannot be used.
+    """
+    section = study.cohort
+    if section.outcome is None and section.time is None:
+        raise StudyFileError(
+            code="outcome-missing",
+            where=f"{study.path}, [cohort], key 'outcome'",
+            what="no outcome is named",
+            accepted="a column of the sample sheet, with its positive class",
+            next_step="Add outcome and positive",
+        )
+
+    def path(name: str | None) -> Path | None:
+        return None if name is None else study.file(name)
+
+    return read_cohort(
+        study.file(section.expression),
+        path(section.samples),
+        outcome=section.outcome,
+        positive=section.positive,
+        negative=section.negative,
+        time=section.time,
+        event=section.event,
+        subject=section.subject,
+        site=section.site,
+        batch=section.batch,
+        replicate_of=section.replicate_of,
+        features=path(section.features),
+        keep=section.keep or None,
+        orientation=section.orientation,
+        covariates=section.covariates,
+        nuisance=section.nuisance,
+        max_bad_cells=section.max_bad_cells,
+    )
+
+
+def refuse_stops(findings: Findings) -> None:
+    """Refuse to go on while there is a `stop` finding.
+
+    Raises
+    ------
+    InputDataError
+        A finding says that results would mislead.
+    """
+    if stops := findings.of("stop"):
+        first = stops[0]
+        raise InputDataError(
+            code=first.code,
+            where=first.where,
+            what=f"results would mislead: {first.message.rstrip('.')}",
+            accepted="a cohort without a `stop` finding, or a written reason for each",
+            next_step=f"{first.next_step.rstrip('.')}; or write the reason as [cohort] "
+            f'accept = {{ "{first.code}" = "..." }}',
+        )
+
+
+def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findings]:
+    """Return what prices panels, the hashes of its files, and what was noticed.
+
+    Raises
+    ------
+    InputDataError
+        The price list cannot be used.
+    """
+    if study.programme is None or study.panels.prices is None:
+        return None, {}, Findings()
+    path = study.file(study.panels.prices)
+    prices = read_price_list(path)
+    unknown = [name for name in study.platforms if name not in prices.platforms]
+    if unknown:
+        raise InputDataError(
+            code="platform-without-prices",
+            where=f"{path}, column 'platform'",
+            what=f"no row for platform {name_some(unknown)}",
+            accepted="rows for every platform of the study (the list has "
+            f"{name_some(prices.platforms)})",
+            next_step="Add a row for each marker, or one with marker '*'",
+        )
+    hashes = {"prices": hash_of_file(path)}
+    pricer = PanelPricer(study.programme, study.platforms, prices)
+    return pricer, hashes, prices.findings
+
+
+def feature_positions(
+    cohort: Cohort, names: tuple[str, ...], where: str
+) -> NDArray[np.int64]:
+    """Return the positions of features by their ids.
+
+    Raises
+    ------
+    InputDataError
+        An id that the matrix does not have.
+    """
+    known = {name: k for k, name in enumerate(cohort.features)}
+    unknown = [name for name in names if name not in known]
+    if unknown:
+        raise InputDataError(
+            code="unknown-feature",
+            where=where,
+            what=f"the matrix has no feature {name_some(unknown)}",
+            accepted="feature ids as the expression matrix writes them",
+            next_step="Correct the ids",
+        )
+    return np.array([known[name] for name in names], np.int64)
+
+
+def barred_features(study: Study, cohort: Cohort) -> NDArray[np.object_]:
+    """Return why each feature may not enter a panel, ``""`` for those that may.
+
+    Raises
+    ------
+    InputDataError
+        The study bars a feature that the matrix does not have.
+    """
+    reasons = np.full(cohort.n_features, "", object)
+    roles = cohort.feature_columns.get("role")
+    if roles is not None:
+        for role in ("control", "reference"):
+            reasons[roles == role] = f"its role is {role}"
+    where = f"{study.path}, [shortlist], key 'never'"
+    reasons[feature_positions(cohort, study.shortlist.never, where)] = (
+        "named under [shortlist] never"
+    )
+    return reasons

@@ -1,0 +1,46 @@
+"""The run record: what determines results."""
+
+import platform
+from collections.abc import Mapping
+from dataclasses import asdict
+from importlib.metadata import version
+
+from panelkit.config import Study
+from panelkit.records import RunRecord
+from panelkit.runtime import json_bytes
+
+__all__ = ["record_bytes", "run_record"]
+
+LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
+
+
+def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
+    """Return the record of a run.
+
+    Parameters
+    ----------
+    study : Study
+        Its effective settings enter, not its text.
+    inputs : mapping of str to str
+        Role of each input file to its SHA-256.
+
+    Returns
+    -------
+    RunRecord
+        Equal for equal results.
+    """
+    return RunRecord(
+        format=1,
+        panelkit=version("panelkit"),
+        study=study.effective(),
+        inputs=dict(sorted(inputs.items())),
+        versions={
+            "python": platform.python_version(),
+            **{name: version(name) for name in LIBRARIES},
+        },
+    )
+
+
+def record_bytes(record: RunRecord) -> bytes:
+    """Return the content of ``record.json``."""
+    return json_bytes(asdict(record))
