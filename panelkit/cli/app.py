@@ -75,7 +75,7 @@ def main(arguments: list[str] | None = None) -> None:
         sys.exit(2)
     except (click.Abort, KeyboardInterrupt):
         click.echo(
-            "Interrupted. Finished folds are kept: the same command goes on from there.",
+            "Interrupted. Finished folds are kept: run the same command to go on.",
             err=True,
         )
         sys.exit(Interrupted.exit_code)

@@ -1,0 +1,101 @@
+"""What is repeated in every fold, as a study asks for it."""
+
+from panelkit.config import Study
+from panelkit.costing import Procedure, ProcedureData
+from panelkit.errors import InputDataError, StudyFileError
+from panelkit.ingest import guess_scale
+from panelkit.preparation import Recipe, default_steps
+from panelkit.records import Cohort, Finding
+from panelkit.stability import ShortlistRules
+from panelkit.workflow.cohort import barred_features, feature_positions
+
+__all__ = ["procedure_of"]
+
+
+def procedure_of(
+    plan: Study, cohort: Cohort
+) -> tuple[Procedure, ProcedureData, list[Finding]]:
+    """Return what is repeated in every fold, and the data it is repeated on.
+
+    Parameters
+    ----------
+    plan : Study
+        Recipe, rules, makers, sizes.
+    cohort : Cohort
+        With an outcome.
+
+    Returns
+    -------
+    procedure : Procedure
+        Sizes above the number of candidates are left out.
+    data : ProcedureData
+        The matrix after the per-sample steps.
+    findings : list of Finding
+        What was left out.
+
+    Raises
+    ------
+    InputDataError
+        The cohort has no outcome, or not a feature that the study names.
+    StudyFileError
+        No size is possible.
+    """
+    if cohort.outcome is None:
+        raise InputDataError(
+            code="outcome-missing",
+            where="cohort",
+            what="it has no outcome",
+            accepted="a binary outcome",
+            next_step="Name outcome and positive",
+        )
+    steps = plan.preparation.discovery
+    if steps is None:
+        steps = default_steps(guess_scale(cohort.values).kind)
+    recipe = Recipe(
+        steps, plan.preparation.log2_offset, plan.preparation.max_missing_share
+    )
+    section = plan.shortlist
+    rules = ShortlistRules(
+        threshold=section.threshold,
+        false_markers=section.false_markers,
+        markers_per_subsample=section.markers_per_subsample,
+        candidates=section.candidates,
+        companion_correlation=section.companion_correlation,
+        n_penalties=section.n_penalties,
+        penalty_floor=section.penalty_floor,
+    )
+    barred = barred_features(plan, cohort)
+    data = ProcedureData(
+        base=recipe.base(cohort.values),
+        y=cohort.outcome.values,
+        weights=cohort.design.weights,
+        subjects=cohort.design.subject,
+        barred=barred,
+        always=feature_positions(
+            cohort, section.always, f"{plan.path}, [shortlist], key 'always'"
+        ),
+    )
+    usable = min(section.candidates, int((barred == "").sum()))
+    sizes = tuple(size for size in plan.panels.sizes if size <= usable)
+    if not sizes:
+        raise StudyFileError(
+            code="sizes-too-large",
+            where=f"{plan.path}, [panels], key 'sizes'",
+            what=f"every size is above {usable}",
+            accepted=f"sizes up to {usable}, the number of candidates that there "
+            "surely are",
+            next_step="Name smaller sizes, or raise [shortlist] candidates",
+        )
+    finding = []
+    if left := [size for size in plan.panels.sizes if size > usable]:
+        finding.append(
+            Finding(
+                "sizes-left-out",
+                "info",
+                "[panels] sizes",
+                f"sizes {', '.join(map(str, left))} are above the {usable} candidates "
+                "that there surely are, and were left out",
+                "Raise [shortlist] candidates to have them",
+            )
+        )
+    return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding

@@ -1,0 +1,99 @@
+"""A run's results as the report and the terminal show them."""
+
+from panelkit.config import Study
+from panelkit.costing import (
+    Draws,
+    HonestAccuracy,
+    Judge,
+    PanelPricer,
+    Procedure,
+    ProcedureData,
+    Selected,
+    build_frontier,
+    choose,
+    compare,
+)
+from panelkit.records import Cohort, Findings, PanelCost, RunRecord, RunSummary
+from panelkit.workflow.shortlist import shortlist_table
+
+__all__ = ["summarise"]
+
+
+def summarise(  # noqa: PLR0913 - everything that a report shows comes together here
+    plan: Study,
+    cohort: Cohort,
+    record: RunRecord,
+    findings: Findings,
+    procedure: Procedure,
+    data: ProcedureData,
+    draws: Draws,
+    selected: Selected,
+    accuracy: HonestAccuracy,
+    pricer: PanelPricer | None,
+) -> RunSummary:
+    """Return everything that a report shows of a run, ready-made.
+
+    Raises
+    ------
+    InputDataError
+        A price that is needed is missing.
+    """
+    confidence = plan.accuracy.confidence
+    judge = Judge(data.y, data.subjects, draws.folds, confidence)
+    frontier, per_fold = build_frontier(
+        accuracy, judge, selected.panels, cohort.features, pricer
+    )
+    choice, frontier = choose(
+        frontier, per_fold, accuracy, judge, plan.choice.primary is not None
+    )
+    costs: tuple[PanelCost, ...] = ()
+    if pricer is not None:
+        taken = {row.panel: row for row in frontier.rows}[choice.rules[0].panel]
+        costs = pricer.costs(taken.markers)
+    n_included = int(selected.view.included.sum())
+    return RunSummary(
+        study=plan.path.name,
+        outcome=_outcome_words(cohort),
+        n_samples=cohort.n_samples,
+        n_subjects=cohort.design.n_subjects,
+        n_features=cohort.n_features,
+        scheme=_scheme(plan),
+        preparation=procedure.recipe.steps,
+        findings=findings,
+        flow=cohort.flow,
+        bound=selected.stability.bound,
+        shortlist=shortlist_table(data, selected, cohort.features, confidence),
+        frontier=frontier,
+        choice=choice,
+        comparators=compare(accuracy, judge, n_included),
+        costs=costs,
+        statement=plan.statement.model_dump(),
+        provenance={
+            "panelkit": record.panelkit,
+            "seed": str(plan.seed),
+            **{f"input: {role}": digest for role, digest in record.inputs.items()},
+            **record.versions,
+        },
+    )
+
+
+def _outcome_words(cohort: Cohort) -> str:
+    outcome = cohort.outcome
+    if outcome is None:
+        return ""
+    n_positive = int(outcome.values.sum())
+    return (
+        f"{outcome.column}: {outcome.positive} ({n_positive} samples) against "
+        f"{outcome.negative} ({len(outcome.values) - n_positive})"
+    )
+
+
+def _scheme(plan: Study) -> str:
+    section = plan.accuracy
+    return (
+        f"{section.folds} folds, drawn {section.repeats} times, stratified by outcome "
+        "and grouped by subject; preparation, shortlist, candidates, panels, tuning "
+        f"and coefficients learnt anew in every fold, with {section.inner_folds} inner "
+        "folds for tuning and for the primary rule; area under the ROC curve within "
+        "test folds, averaged"
+    )

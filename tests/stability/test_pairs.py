@@ -1,0 +1,105 @@
+"""Complementary pairs: disjoint subjects, halves of each class, all rows of a subject."""
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from panelkit.errors import FitError
+from panelkit.stability import draw_pairs
+
+
+def drawn(seed, n_controls, n_cases, rows_per_subject, n_pairs=3, share=1.0):
+    """Return rows, subjects, classes and the pairs drawn for them."""
+    draws = np.random.default_rng(seed)
+    classes = np.repeat([0.0, 1.0], [n_controls, n_cases])
+    labels = draws.permutation(1000)[: len(classes)]  # codes with gaps
+    counts = draws.integers(1, rows_per_subject + 1, len(classes))
+    order = draws.permutation(counts.sum())
+    subjects = np.repeat(labels, counts)[order]
+    y = np.repeat(classes, counts)[order]
+    kept = draws.permutation(len(y))[: int(np.ceil(share * len(y)))]
+    rows = np.sort(kept)
+    plan = draw_pairs(rows, subjects, y, n_pairs, np.random.default_rng(seed))
+    return rows, subjects, y, plan
+
+
+@settings(derandomize=True, deadline=None, max_examples=60, database=None)
+@given(
+    seed=st.integers(0, 10_000),
+    n_controls=st.integers(4, 15),
+    n_cases=st.integers(4, 15),
+    rows_per_subject=st.integers(1, 3),
+)
+def test_what_holds_for_every_draw(seed, n_controls, n_cases, rows_per_subject):
+    rows, subjects, y, plan = drawn(seed, n_controls, n_cases, rows_per_subject)
+    assert plan.n_pairs == 3
+    assert len(plan.rows) == 6
+    of_class = [np.unique(subjects[rows][y[rows] == c]) for c in (0.0, 1.0)]
+    for b in range(3):
+        left, right = plan.rows[2 * b], plan.rows[2 * b + 1]
+        sides = [np.unique(subjects[side]) for side in (left, right)]
+        assert not np.intersect1d(*sides).size
+        for side, own in zip((left, right), sides, strict=True):
+            assert (np.diff(side) > 0).all()
+            assert np.isin(side, rows).all()
+            # every row of a subject that is in
+            assert np.isin(subjects[rows], own).sum() == len(side)
+            for members in of_class:
+                assert np.isin(own, members).sum() == len(members) // 2
+
+
+def test_rows_that_may_not_be_used_are_not():
+    rows, _, _, plan = drawn(1, 12, 12, 3, share=0.7)
+    assert np.isin(np.concatenate(plan.rows), rows).all()
+
+
+def test_the_odd_one_out_changes_by_chance():
+    rows, subjects, _, plan = drawn(2, 7, 9, 1, n_pairs=200)
+    absent = {}
+    for b in range(200):
+        used = np.concatenate(plan.rows[2 * b : 2 * b + 2])
+        for subject in np.setdiff1d(subjects[rows], subjects[used]):
+            absent[int(subject)] = absent.get(int(subject), 0) + 1
+    assert len(absent) == 16  # everybody sits out at times
+    assert sum(absent.values()) == 400  # one of each class in each pair
+    assert max(absent.values()) < 200 / 7 * 2
+
+
+def test_every_subject_is_as_often_left_as_right():
+    # a biased split (say, always the first half left) would show in the shares
+    _, subjects, _, plan = drawn(3, 10, 10, 1, n_pairs=400)
+    left = np.concatenate([subjects[side] for side in plan.rows[0::2]])
+    counts = np.unique(left, return_counts=True)[1]
+    assert len(counts) == 20
+    assert abs(counts / 400 - 0.5).max() < 0.1  # 4 standard errors
+
+
+def test_same_generator_same_pairs():
+    one, other = drawn(4, 9, 9, 2)[3], drawn(4, 9, 9, 2)[3]
+    for a, b in zip(one.rows, other.rows, strict=True):
+        assert a.tolist() == b.tolist()
+
+
+def test_pairs_differ_from_each_other():
+    plan = drawn(5, 12, 12, 1, n_pairs=20)[3]
+    assert len({side.tobytes() for side in plan.rows}) == 40
+
+
+def test_four_subjects_of_each_class_are_needed():
+    rows = np.arange(20)
+    y = np.repeat([0.0, 1.0], [17, 3])
+    with pytest.raises(FitError) as caught:
+        draw_pairs(rows, rows, y, 2, np.random.default_rng(0))
+    assert caught.value.code == "too-few-for-halves"
+    assert "3 subjects" in caught.value.what
+    y[16] = 1.0
+    plan = draw_pairs(rows, rows, y, 2, np.random.default_rng(0))
+    assert all(y[side].sum() == 2 for side in plan.rows)
+
+
+def test_many_rows_of_few_subjects_do_not_pass_for_many():
+    subjects = np.repeat([0, 1, 2, 3, 4, 5, 6], 10)
+    y = np.repeat([0.0, 1.0], [40, 30])  # three subjects are cases
+    with pytest.raises(FitError):
+        draw_pairs(np.arange(70), subjects, y, 2, np.random.default_rng(0))
