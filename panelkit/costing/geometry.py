@@ -260,16 +260,8 @@ def _group_numbers(platform: PlatformSection, n_pools: int) -> Sequence[int]:
         return range(1, n_pools + 1)
     if platform.groups == "each":
         return (n_pools,)
-    if platform.groups > n_pools:
-        raise StudyFileError(
-            code="groups-exceed-pools",
-            where="platform, key 'groups'",
-            what=f"there are more groups than pools (got {platform.groups} groups, "
-            f"{n_pools} pools)",
-            accepted=f"'auto', 'each', or 1 to {n_pools} for this panel",
-            next_step="Lower groups or let 'auto' choose",
-        )
-    return (platform.groups,)
+    # A small panel cannot be spread over more runs than it has pools.
+    return (min(platform.groups, n_pools),)
 
 
 def _positions_per_run(platform: PlatformSection, pools: Iterable[Pool]) -> int:

@@ -566,8 +566,8 @@ def _findings(platform: PlatformSection, panel: _Panel) -> Findings:
                 code="assay-status-unknown",
                 severity="warning",
                 where="price list, column 'status'",
-                message=f"{len(unknown)} assays of the panel are not known to work "
-                f"on the platform: {name_some(unknown)}",
+                message=f"of the panel's {len(panel.assays)} assays it is not known "
+                f"whether the platform can run {name_some(unknown)}",
                 next_step="Ask whether they can be made, then write ok or no",
             )
         )

@@ -109,8 +109,8 @@ def _missing(cohort: Cohort, survey: _Survey) -> list[Finding]:
                     code=f"{kind}-mostly-missing",
                     severity="warning",
                     where=WHERE,
-                    message=f"{hit.sum():,} of {len(names):,} {kind} lack more "
-                    f"than {percent(limit)} of their values: {quoted(names[hit])}",
+                    message=f"more than {percent(limit)} of the values are missing "
+                    f"in {hit.sum():,} of {len(names):,} {kind}: {quoted(names[hit])}",
                     next_step="Leave them out unless missing means below detection.",
                 )
             )

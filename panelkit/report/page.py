@@ -143,6 +143,7 @@ def _environment() -> Environment:
         lstrip_blocks=True,
     )
     environment.filters.update(
+        by_group=wording.by_group,
         decimals=wording.decimals,
         id=wording.identifier,
         interval=wording.interval,

@@ -2,12 +2,15 @@
 
 import math
 import unicodedata
+from collections.abc import Sequence
 from decimal import Decimal
+from itertools import groupby
 
 from markupsafe import Markup, escape
 
 __all__ = [
     "NO_INTERVAL",
+    "by_group",
     "decimals",
     "identifier",
     "interval",
@@ -91,6 +94,15 @@ def three_figures(value: float) -> str:
     if abs(value) >= 999.5:
         return f"{value:,.0f}"
     return f"{value:#.3g}".rstrip(".")
+
+
+def by_group(numbers: Sequence[int]) -> str:
+    """Return numbers with runs of equals counted: ``3 x 189, 1 x 94``."""
+    runs = [(number, len(list(group))) for number, group in groupby(numbers)]
+    return ", ".join(
+        f"{number:,}" if count == 1 else f"{count} x {number:,}"
+        for number, count in runs
+    )
 
 
 def decimals(value: float, places: int = 3) -> str:

@@ -486,7 +486,6 @@ def test_programme_is_refused(keys, code):
         ({"groups": "all"}, StudyFileError, "groups-refused"),
         ({"groups": 0}, StudyFileError, "groups-refused"),
         ({"groups": True}, StudyFileError, "groups-refused"),
-        ({"groups": 3}, StudyFileError, "groups-exceed-pools"),
         ({"family": "qpcr"}, StudyFileError, "value-refused"),
         ({"overhead": 3}, StudyFileError, "key-unknown"),
         ({"run_budget": 3}, StudyFileError, "slot-budget-missing"),

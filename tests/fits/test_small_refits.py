@@ -127,7 +127,7 @@ def test_columns_are_standardised_by_training_rows_alone(cohort):
     spread = np.average((X[training] - expected) ** 2, axis=0, weights=weights)
     assert mean == pytest.approx(expected)
     assert deviation == pytest.approx(np.sqrt(spread))
-    assert Z == pytest.approx(((X - expected) / np.sqrt(spread)).T)
+    assert pytest.approx(((X - expected) / np.sqrt(spread)).T) == Z
     changed = X.copy()
     changed[:10] = 1e6
     again = standardised(changed.T, training, weights)

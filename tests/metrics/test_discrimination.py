@@ -1,0 +1,98 @@
+"""Area under the ROC curve and each sample's influence on it."""
+
+import numpy as np
+import pytest
+from sklearn.metrics import roc_auc_score
+
+from panelkit.errors import FitError
+from panelkit.metrics import auc, auc_influence
+
+# two markers on 7 cases and 8 controls, with ties within and between the classes:
+# areas and variances are exact (DeLong, DeLong & Clarke-Pearson 1988, Biometrics
+# 44:837), equal to pROC 1.18.0
+OUTCOME = np.repeat([1.0, 0.0], [7, 8])
+MARKER_A = np.array([9, 8, 8, 7, 6, 5, 3, 7, 6, 5, 4, 4, 3, 2, 1], float)
+MARKER_B = np.array([6, 9, 5, 8, 4, 7, 2, 5, 3, 6, 4, 1, 2, 7, 2], float)
+
+
+@pytest.mark.parametrize(
+    ("scores", "expected"), [(MARKER_A, 23 / 28), (MARKER_B, 3 / 4)]
+)
+def test_area_of_two_markers(scores, expected):
+    assert auc(scores, OUTCOME) == pytest.approx(expected, abs=1e-15)
+    assert auc_influence(scores, OUTCOME)[0] == auc(scores, OUTCOME)
+
+
+@pytest.mark.parametrize(
+    ("scores", "expected"), [(MARKER_A, 5 / 384), (MARKER_B, 2285 / 131712)]
+)
+def test_influence_holds_delongs_variance(scores, expected):
+    # S10 / m + S01 / n with divisors m - 1 and n - 1; the influence carries m and n
+    _, influence = auc_influence(scores, OUTCOME)
+    own = influence / len(OUTCOME)
+    cases, controls = own[OUTCOME == 1.0], own[OUTCOME == 0.0]
+    variance = (cases**2).sum() * 7 / 6 + (controls**2).sum() * 8 / 7
+    assert variance == pytest.approx(expected, abs=1e-15)
+
+
+def test_influence_is_the_placement_of_each_sample():
+    # V10 and V01 of marker A: exact
+    area, influence = auc_influence(MARKER_A, OUTCOME)
+    v10 = np.array([1, 1, 1, 15 / 16, 13 / 16, 11 / 16, 5 / 16])
+    v01 = np.array([1 / 2, 9 / 14, 11 / 14, 6 / 7, 6 / 7, 13 / 14, 1, 1])
+    assert influence[:7] == pytest.approx((v10 - area) * 15 / 7)
+    assert influence[7:] == pytest.approx((v01 - area) * 15 / 8)
+    assert influence.sum() == pytest.approx(0.0, abs=1e-12)
+
+
+def test_published_rating_table():
+    # Hanley & McNeil 1982, Radiology 143:29: 109 images rated 1 to 5, area 0.893
+    normal, abnormal = (33, 6, 6, 11, 2), (3, 2, 2, 11, 33)
+    ratings = np.arange(1.0, 6.0)
+    scores = np.concatenate([np.repeat(ratings, normal), np.repeat(ratings, abnormal)])
+    outcome = np.repeat([0.0, 1.0], [58, 51])
+    assert auc(scores, outcome) == pytest.approx(1321 / 1479, abs=1e-15)
+    _, influence = auc_influence(scores, outcome)
+    own = influence / 109
+    variance = (own[outcome == 1.0] ** 2).sum() * 51 / 50
+    variance += (own[outcome == 0.0] ** 2).sum() * 58 / 57
+    assert np.sqrt(variance) == pytest.approx(0.0307244084, abs=1e-10)  # pROC 1.18.0
+
+
+@pytest.mark.parametrize("levels", [3, 10, 1000])
+@pytest.mark.parametrize("seed", [0, 1])
+def test_area_equals_scikit_learn_with_many_ties(levels, seed):
+    draws = np.random.default_rng(seed)
+    outcome = draws.integers(0, 2, 80) * 1.0
+    scores = draws.integers(0, levels, 80) + outcome * draws.integers(0, 2, 80)
+    assert auc(scores, outcome) == pytest.approx(roc_auc_score(outcome, scores))
+
+
+def test_area_of_constant_scores_is_one_half():
+    area, influence = auc_influence(np.zeros(6), np.array([0, 1, 0, 1, 1, 0.0]))
+    assert area == 0.5
+    assert (influence == 0.0).all()
+
+
+def test_only_the_order_of_scores_counts():
+    assert auc(np.exp(MARKER_A), OUTCOME) == auc(MARKER_A, OUTCOME)
+    assert auc(-MARKER_A, OUTCOME) == pytest.approx(1.0 - auc(MARKER_A, OUTCOME))
+    assert auc(MARKER_A, 1.0 - OUTCOME) == pytest.approx(1.0 - auc(MARKER_A, OUTCOME))
+    order = np.random.default_rng(0).permutation(15)
+    assert auc(MARKER_A[order], OUTCOME[order]) == pytest.approx(auc(MARKER_A, OUTCOME))
+
+
+@pytest.mark.parametrize("value", [0.0, 1.0])
+def test_one_class_is_refused(value):
+    with pytest.raises(FitError) as caught:
+        auc(np.arange(4.0), np.full(4, value))
+    assert caught.value.code == "auc-one-class"
+
+
+@pytest.mark.xfail(
+    strict=True, reason="a score that is NaN is ranked as the largest of all, silently"
+)
+def test_a_score_that_is_not_a_number_is_no_area():
+    scores = MARKER_A.copy()
+    scores[3] = np.nan
+    assert np.isnan(auc(scores, OUTCOME))
