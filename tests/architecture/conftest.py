@@ -9,7 +9,6 @@ import pytest
 
 REPOSITORY = Path(__file__).parents[2]
 PACKAGE = REPOSITORY / "panelkit"
-HIDDEN = ("egg-info", "__pycache__")
 
 
 @dataclass(frozen=True)
@@ -106,10 +105,19 @@ def imports_in():
 def sources():
     """Every module of the package, by name."""
     paths = sorted(PACKAGE.rglob("*.py"))
+    trees = {path: ast.parse(path.read_text(encoding="utf-8")) for path in paths}
     known = {module_name(path) for path in paths}
+    # `programme_cost` is a module and the function that its package hands out
+    for path, tree in trees.items():
+        if path.name == "__init__.py":
+            known -= {
+                f"{module_name(path)}.{alias.name}"
+                for node in tree.body
+                if isinstance(node, ast.ImportFrom)
+                for alias in node.names
+            }
     found = {}
-    for path in paths:
-        tree = ast.parse(path.read_text(encoding="utf-8"))
+    for path, tree in trees.items():
         name = module_name(path)
         found[name] = Source(path, name, tree, imports_of(tree, known))
     return found

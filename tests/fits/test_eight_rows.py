@@ -186,7 +186,6 @@ def test_unpenalised_feature_stays_in_at_and_above_the_largest_penalty(
         standardise=False,
         feature_weights=[1, 1, 0, 1],
         penalties=penalties,
-        tol=1e-12,
     )
     intercept, coef = paths.coef(0, 0)
     assert coef == pytest.approx(np.array([0, 0, 5 / 6, 0]), abs=1e-8)

@@ -213,7 +213,7 @@ def test_largest_penalty_survives_flattering_rounding():
     y = np.repeat([0.0, 1.0], 20)
     middling = np.where(y == 0.0, 0.999, 1.001 + 1.99 * (np.arange(40) % 2))
     X = np.column_stack([middling, y + 0.3 * draws.normal(size=40)])
-    there = X + [2.0**24, 0.0]
+    there = X + np.array([2.0**24, 0.0])
     assert np.corrcoef(there[:, 0].astype(np.float32), y)[0, 1] > 0.9999
     found = fit_paths(there, y).largest_penalty[0]
     assert found == pytest.approx(fit_paths(X, y).largest_penalty[0], rel=1e-6)

@@ -74,7 +74,14 @@ def test_name_follows_the_kernel_sources(tmp_path, monkeypatch):
 def test_setting_of_numba_is_given_back(tmp_path, monkeypatch):
     monkeypatch.setattr(cache, "kernel_folder", lambda: tmp_path)
     before = config.CACHE_DIR
-    with pytest.raises(KeyError), cache.kernel_cache():
+    with cache.kernel_cache():
         assert Path(config.CACHE_DIR) == tmp_path
+    assert before == config.CACHE_DIR
+
+    @cache.kernel_cache()
+    def fail():
         raise KeyError
+
+    with pytest.raises(KeyError):
+        fail()
     assert before == config.CACHE_DIR

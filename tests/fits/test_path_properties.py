@@ -13,9 +13,7 @@ def test_weights_stand_for_repeated_rows(family, problem, draw_cohort):
     X, y, _ = draw_cohort(21, 30, 60, family=family)
     times = np.random.default_rng(21).integers(1, 4, 30)
     grid = fit_paths(X, y, family=family, weights=times, n_penalties=6).penalties[0]
-    one = fit_paths(
-        X, y, family=family, weights=times, penalties=grid[1:], tol=1e-10
-    )
+    one = fit_paths(X, y, family=family, weights=times, penalties=grid[1:], tol=1e-10)
     many = fit_paths(
         np.repeat(X, times, axis=0),
         np.repeat(y, times),
@@ -149,9 +147,7 @@ def test_twins_share_what_a_single_column_gets(problem, draw_cohort):
     for k in range(5):
         single, pair = one.coef(0, k)[1], two.coef(0, k)[1]
         assert pair[1] + pair[50] == pytest.approx(single[1], abs=1e-7)
-        assert np.delete(pair, [1, 50]) == pytest.approx(
-            np.delete(single, 1), abs=1e-7
-        )
+        assert np.delete(pair, [1, 50]) == pytest.approx(np.delete(single, 1), abs=1e-7)
         assert problem(doubled, y).objective(*two.coef(0, k), grid[k]) == pytest.approx(
             problem(X, y).objective(*one.coef(0, k), grid[k]), rel=1e-12
         )
@@ -196,9 +192,7 @@ def test_nearly_constant_column_around_a_large_mean(problem, draw_cohort):
 def test_path_stops_at_max_markers(max_markers, draw_cohort):
     X, y, halves = draw_cohort(32, 60, 300, 5)
     full = fit_paths(X, y, subsamples=halves, n_penalties=60)
-    short = fit_paths(
-        X, y, subsamples=halves, n_penalties=60, max_markers=max_markers
-    )
+    short = fit_paths(X, y, subsamples=halves, n_penalties=60, max_markers=max_markers)
     for b in range(5):
         assert len(short.entry_order[b]) == max_markers
         assert (

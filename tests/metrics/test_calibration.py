@@ -12,9 +12,7 @@ from panelkit.metrics import auc, brier, calibration_slope, log_loss
 CHANCES = np.array(
     [5, 10, 10, 15, 20, 20, 25, 30, 35, 40, 45, 50, 55, 60, 65, 70, 75, 80, 90, 95]
 ) / 100.0  # fmt: skip
-OUTCOME = np.array(
-    [0, 0, 0, 0, 1, 0, 0, 0, 1, 0, 1, 0, 1, 1, 0, 1, 1, 1, 1, 1], float
-)
+OUTCOME = np.array([0, 0, 0, 0, 1, 0, 0, 0, 1, 0, 1, 0, 1, 1, 0, 1, 1, 1, 1, 1], float)
 LOG_ODDS = np.log(CHANCES / (1.0 - CHANCES))
 
 

@@ -1,6 +1,8 @@
 """Blocks of work: remembered by what went into them, in order, whole or not at all."""
 
+import gc
 import threading
+import warnings
 from pathlib import Path
 
 import numpy as np
@@ -179,6 +181,7 @@ def block_file(folder):
     return folder / f"{KEY.block('block 2')}.npz"
 
 
+@pytest.mark.filterwarnings("ignore::pytest.PytestUnraisableExceptionWarning")
 @pytest.mark.parametrize(
     "damage",
     [
@@ -204,13 +207,30 @@ def test_damaged_file_is_computed_again(damage, tmp_path):
     assert block_file(tmp_path).read_bytes() == whole
 
 
+@pytest.mark.xfail(
+    strict=True,
+    reason="np.load leaves its own file open when the archive is damaged: a "
+    "ResourceWarning, and on some systems a file that cannot be replaced",
+)
+def test_damaged_file_is_closed(tmp_path):
+    store = FolderStore(tmp_path)
+    map_blocks(Counted(), BLOCKS, KEY, store)
+    path = block_file(tmp_path)
+    path.write_bytes(path.read_bytes()[:-1])
+    with warnings.catch_warnings(record=True) as caught:
+        warnings.simplefilter("always")
+        assert store.load(KEY.block("block 2")) is None
+        gc.collect()
+    assert [str(one.message) for one in caught] == []
+
+
 FLIPS = (0x01, 0x08, 0x80)
 
 
 @pytest.mark.xfail(
     strict=True,
-    reason="some single flipped bits raise (zlib.error, NotImplementedError and the "
-    "like) instead of counting as damage",
+    reason="a flipped bit in a length field of the archive's directory hides an array: "
+    "the block comes back without it",
 )
 @pytest.mark.filterwarnings("ignore")
 def test_no_flipped_bit_raises_or_passes_for_the_result(tmp_path):
@@ -251,7 +271,10 @@ def test_objects_are_not_written(tmp_path):
     assert list(tmp_path.iterdir()) == []
 
 
-@pytest.mark.xfail(strict=True, reason="'file' is the name of np.savez's own argument")
+@pytest.mark.xfail(
+    strict=True,
+    reason="'file' and 'allow_pickle' are names of np.savez's own arguments",
+)
 def test_any_name_serves_for_an_array(tmp_path):
     store = FolderStore(tmp_path)
     store.save("key", {"file": np.arange(3), "allow_pickle": np.arange(2)})

@@ -17,21 +17,25 @@ def test_file_takes_its_name_at_the_end(tmp_path):
     assert [p.name for p in path.parent.iterdir()] == ["table.csv"]
 
 
+def write_and_fail(path, error):
+    with write_whole(path) as file:
+        file.write(b"half of it")
+        raise error
+
+
 @pytest.mark.parametrize("error", [ValueError, KeyboardInterrupt, MemoryError])
 def test_nothing_is_left_behind_on_an_error(error, tmp_path):
     path = tmp_path / "table.csv"
-    with pytest.raises(error), write_whole(path) as file:
-        file.write(b"half of it")
-        raise error
+    with pytest.raises(error):
+        write_and_fail(path, error)
     assert list(tmp_path.iterdir()) == []
 
 
 def test_old_file_survives_a_failed_write(tmp_path):
     path = tmp_path / "table.csv"
     path.write_bytes(b"old")
-    with pytest.raises(ZeroDivisionError), write_whole(path) as file:
-        file.write(b"new")
-        1 / 0  # noqa: B018 - the error is the point
+    with pytest.raises(ZeroDivisionError):
+        write_and_fail(path, ZeroDivisionError)
     assert path.read_bytes() == b"old"
     with write_whole(path) as file:
         file.write(b"new")
@@ -40,9 +44,9 @@ def test_old_file_survives_a_failed_write(tmp_path):
 
 
 def test_full_disk_is_an_error_of_the_run_folder(tmp_path):
-    with pytest.raises(RunFolderError) as caught, write_whole(tmp_path / "t") as file:
-        file.write(b"x")
-        raise OSError(28, "No space left on device")
+    full = OSError(28, "No space left on device")
+    with pytest.raises(RunFolderError) as caught:
+        write_and_fail(tmp_path / "table.csv", full)
     assert caught.value.code == "cannot-write"
     assert "No space left" in caught.value.what
     assert list(tmp_path.iterdir()) == []

@@ -17,7 +17,9 @@ class Drawn:
 
     def select(self, X=None, always=None, threads=1, **rules):
         n = len(self.y)
-        source = X if hasattr(X, "included") else ArraySource(self.X if X is None else X)
+        source = (
+            X if hasattr(X, "included") else ArraySource(self.X if X is None else X)
+        )
         return select_markers(
             source,
             self.y,

@@ -106,7 +106,7 @@ def test_constant_feature_is_a_group_of_its_own(five):
     "and two constants then correlate perfectly",
 )
 def test_constants_whose_mean_rounds_stay_apart():
-    values = np.vstack([np.full(10, 0.1), np.full(10, 0.7), np.full(10, 2.7)])
+    values = np.vstack([np.full(23, 0.1), np.full(23, 0.3), np.full(23, 0.7)])
     assert (values.mean(axis=1) != values[:, 0]).sum() >= 2
     assert group_companions(values, 0.8).tolist() == [0, 1, 2]
 

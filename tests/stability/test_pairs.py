@@ -1,4 +1,4 @@
-"""Complementary pairs: disjoint subjects, halves of each class, all rows of a subject."""
+"""Complementary pairs: disjoint halves of the subjects, with all rows of each."""
 
 import numpy as np
 import pytest

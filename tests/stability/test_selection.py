@@ -123,7 +123,7 @@ def test_intervals_lie_around_their_frequency(draw):
 
 @pytest.mark.xfail(
     strict=True,
-    reason="rounding puts the upper end 1e-16 below a frequency of 1 (10 pairs) and the "
+    reason="rounding puts the upper end 1e-16 below a frequency of 1 (10 pairs), the "
     "lower end 1e-17 above 0 (6 pairs): error bars of negative length",
 )
 @pytest.mark.parametrize(("n_pairs", "feature"), [(10, 0), (6, 5)])

@@ -1,0 +1,80 @@
+"""Sizes and names of files, and what must not be written in them."""
+
+import pytest
+
+MOST_LINES = 700
+TOO_LONG = {
+    "panelkit/records/prices.py": "price list, its cells and panel cost in one file",
+    "sample_cohorts/make_quillmere.py": "one script",
+    "tests/costing/test_programme_cost.py": "expected figures typed in line",
+}
+VAGUE = {"utils", "util", "helpers", "helper", "common", "base", "misc", "shared"}
+TOP_LEVEL = {
+    "CHANGELOG.md",
+    "DEVELOPERS.md",
+    "LICENSE",
+    "README.md",
+    "configs",
+    "constraints.txt",
+    "panelkit",
+    "pyproject.toml",
+    "sample_cohorts",
+    "tests",
+}
+MACHINE_FOLDERS = [f"/{name}/" for name in ("home", "root", "tmp", "work", "Users")]
+BINARY = {".gz", ".h5ad", ".png", ".npz"}
+
+
+def lines(path):
+    return len(path.read_text(encoding="utf-8").splitlines())
+
+
+def test_no_module_is_longer_than_it_may_be(repository, repository_files):
+    long = [
+        f"{name}: {count} lines"
+        for name in repository_files
+        if name.suffix == ".py"
+        and name.as_posix() not in TOO_LONG
+        and (count := lines(repository / name)) >= MOST_LINES
+    ]
+    assert long == []
+
+
+@pytest.mark.parametrize(
+    "name",
+    [
+        pytest.param(name, marks=pytest.mark.xfail(strict=True, reason=reason))
+        for name, reason in TOO_LONG.items()
+    ],
+)
+def test_the_modules_that_are_too_long(repository, name):
+    assert lines(repository / name) < MOST_LINES
+
+
+def test_names_say_what_is_inside(repository_files):
+    vague = [
+        name.as_posix()
+        for name in repository_files
+        if VAGUE & {part.strip("_") for part in (*name.parent.parts, name.stem)}
+    ]
+    assert vague == []
+
+
+def test_the_top_level_is_fixed(repository_files):
+    found = {name.parts[0] for name in repository_files}
+    assert {name for name in found if not name.startswith(".")} <= TOP_LEVEL
+
+
+def test_no_path_of_a_machine_is_written_down(repository, repository_files):
+    wrong = []
+    for name in repository_files:
+        if name.suffix in BINARY:
+            continue
+        text = (repository / name).read_text(encoding="utf-8")
+        wrong += [f"{name}: {each}" for each in MACHINE_FOLDERS if each in text]
+    assert wrong == []
+
+
+def test_tests_have_no_init_file(repository_files):
+    """`--import-mode=importlib` needs none; one of them would shadow the package."""
+    assert [n for n in repository_files if n.parts[0] == "tests" and n.stem == "__init__"] == []

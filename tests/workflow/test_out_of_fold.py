@@ -1,0 +1,113 @@
+"""Nobody is predicted by a model that saw them, and every fold keeps to the rules."""
+
+import numpy as np
+import pytest
+
+from panelkit import run_study
+
+KEYS = ["repeat", "maker", "size"]
+
+
+@pytest.fixture(scope="module")
+def predictions(finished):
+    return finished.table("predictions.csv")
+
+
+@pytest.fixture(scope="module")
+def folds(finished):
+    return finished.table("folds.csv")
+
+
+@pytest.fixture(scope="module")
+def fold_panels(finished):
+    return finished.table("fold_panels.csv")
+
+
+def test_every_sample_once_per_repeat_and_procedure(predictions, study):
+    sheet = (study.parent / "samples.csv").read_text().splitlines()
+    names = [line.partition(",")[0] for line in sheet]
+    for _, rows in predictions.groupby(KEYS):
+        assert sorted(rows["sample"]) == sorted(names[1:])
+    assert predictions.groupby(KEYS).ngroups == 2 * 8
+    assert predictions["score"].between(0.0, 1.0, inclusive="neither").all()
+
+
+def test_predictions_keep_to_the_folds(predictions, folds):
+    joined = predictions.merge(folds, on=["sample", "repeat"], suffixes=("", "_plan"))
+    assert len(joined) == len(predictions)
+    assert (joined["fold"] == joined["fold_plan"]).all()
+
+
+def test_no_subject_is_in_training_and_test_at_once(folds):
+    """Ten people have two samples: drawn by sample, some pair would be torn apart."""
+    assert folds["subject"].nunique() == 30
+    assert len(folds) == 2 * 40
+    assert (folds.groupby(["repeat", "subject"])["fold"].nunique() == 1).all()
+    assert set(folds["fold"]) == {0, 1, 2}
+
+
+def test_repeats_are_drawn_anew(folds):
+    wide = folds.pivot(index="sample", columns="repeat", values="fold")
+    assert (wide[0] != wide[1]).any()
+
+
+def test_folds_are_stratified_by_the_outcome(folds, predictions):
+    """Fifteen people of each class over three folds: five of each in every fold."""
+    outcome = predictions.drop_duplicates("sample").set_index("sample")["outcome"]
+    people = folds.assign(outcome=folds["sample"].map(outcome)).drop_duplicates(
+        ["repeat", "subject"]
+    )
+    counts = people.groupby(["repeat", "fold", "outcome"]).size()
+    assert (counts == 5).all()
+    assert len(counts) == 2 * 3 * 2
+
+
+def test_fold_panels_name_features_of_the_matrix(fold_panels, study):
+    with (study.parent / "expression.csv").open() as file:
+        features = set(file.readline().strip().split(",")[1:])
+    assert len(fold_panels) == 2 * 3 * 6
+    for row in fold_panels.itertuples():
+        markers = row.markers.split(";")
+        assert len(markers) == len(set(markers)) == row.size
+        assert set(markers) <= features
+
+
+def test_each_fold_has_one_primary_choice_and_its_scores(fold_panels, predictions):
+    """Else the nested figure would be of something else than what was chosen."""
+    chosen = fold_panels[fold_panels["chosen_by_primary"]]
+    assert (chosen.groupby(["repeat", "fold"]).size() == 1).all()
+    assert len(chosen) == 6
+    nested = predictions[predictions["maker"] == "primary-rule"]
+    for row in chosen.itertuples():
+        of_fold = (predictions["repeat"] == row.repeat) & (predictions["fold"] == row.fold)
+        own = predictions[
+            of_fold
+            & (predictions["maker"] == row.maker)
+            & (predictions["size"] == row.size)
+        ]
+        taken = nested[(nested["repeat"] == row.repeat) & (nested["fold"] == row.fold)]
+        assert own["score"].tolist() == taken["score"].tolist()
+    assert chosen["cost_total"].notna().all()
+
+
+def test_values_of_held_out_people_change_nothing_that_is_learnt(
+    tiny, finished, fold_panels, tmp_path
+):
+    """Every value of the test rows of one fold is moved by up to ten units, enough to
+    turn every ranking; what that fold learnt may not move by a bit."""
+    plan = finished.table("folds.csv")
+    held_out = plan[(plan["repeat"] == 0) & (plan["fold"] == 1)]["sample"]
+    moved = np.random.default_rng(1).uniform(-10.0, 10.0, (len(held_out), 60))
+    tiny.expression.loc[held_out] += moved
+    run_study(tiny.write(), tmp_path / "out", threads=1)
+    other = type(finished)(tmp_path / "out")
+    assert other.table("folds.csv").equals(plan)
+    columns = ["maker", "size", "markers", "ridge_penalty", "chosen_by_primary"]
+    panels = other.table("fold_panels.csv")
+
+    def of_fold(table, repeat, fold):
+        rows = table[(table["repeat"] == repeat) & (table["fold"] == fold)]
+        return rows[columns].reset_index(drop=True)
+
+    assert of_fold(panels, 0, 1).equals(of_fold(fold_panels, 0, 1))
+    assert not of_fold(panels, 0, 0).equals(of_fold(fold_panels, 0, 0))

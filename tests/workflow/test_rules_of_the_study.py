@@ -1,0 +1,117 @@
+"""What a study bars, forces and accepts is kept to, and said."""
+
+import numpy as np
+import pytest
+
+from panelkit import check_study, run_study
+from panelkit.errors import InputDataError
+
+BARRED = {
+    "F58": "its role is control",
+    "F59": "its role is control",
+    "F57": "named under [shortlist] never",
+}
+
+
+def panels_of(finished):
+    tables = [finished.table("frontier.csv"), finished.table("fold_panels.csv")]
+    return {name for table in tables for row in table["markers"] for name in row.split(";")}
+
+
+def test_controls_and_never_enter_no_panel(finished):
+    """They separate the classes by three units, twice as far as any marker."""
+    assert panels_of(finished) & set(BARRED) == set()
+    assert "F00" in panels_of(finished)
+    assert set(finished.table("shortlist.csv")["feature"]) & set(BARRED) == set()
+
+
+def test_without_the_bar_they_would_be_chosen(tiny, tmp_path):
+    """The test above can fail: a barred feature that may be used is used."""
+    tiny.sections["shortlist"]["never"] = []
+    tiny.sections["accuracy"].update(repeats=1)
+    run_study(tiny.write(), tmp_path / "out", threads=1)
+    text = (tmp_path / "out" / "frontier.csv").read_text()
+    assert "F57" in text
+    assert "F58" not in text
+
+
+def test_what_is_barred_is_said_with_its_reason(finished):
+    dropped = finished.table("dropped.csv").set_index("id")
+    for name, reason in BARRED.items():
+        assert dropped.loc[name, "reason"] == reason
+        assert dropped.loc[name, "kind"] == "feature"
+
+
+def test_always_is_a_candidate_whatever_happens(finished):
+    """The feature is noise: by frequency or difference it is not among eight."""
+    table = finished.table("shortlist.csv").set_index("feature")
+    assert table.loc["F56", "candidate"]
+    assert table["candidate"].sum() < 60
+
+
+@pytest.mark.xfail(
+    strict=True,
+    raises=AssertionError,
+    reason="a barred feature under `always` is listed as a candidate",
+)
+@pytest.mark.parametrize("name", ["F57", "F58"])
+def test_always_does_not_lift_a_bar(tiny, tmp_path, name):
+    """Refusing the contradiction would do as well; calling it a candidate does not."""
+    tiny.sections["shortlist"]["always"] = [name]
+    tiny.sections["accuracy"].update(repeats=1)
+    run = run_study(tiny.write(), tmp_path / "out", threads=1)
+    table = run.summary.shortlist.to_frame().set_index("feature")
+    assert name not in table.index[table["candidate"]]
+
+
+def confounded(tiny):
+    """Each class on a plate of its own."""
+    tiny.samples["plate"] = tiny.samples["response"]
+    tiny.sections["cohort"]["batch"] = "plate"
+    tiny.sections["accuracy"].update(repeats=1)
+    return tiny
+
+
+def test_a_stop_refuses_the_run(tiny, tmp_path):
+    with pytest.raises(InputDataError) as refused:
+        run_study(confounded(tiny).write(), tmp_path / "out", threads=1)
+    assert refused.value.code == "outcome-tied-to-batch"
+    assert refused.value.exit_code == 3
+    assert 'accept = { "outcome-tied-to-batch" = ' in refused.value.next_step
+    assert not (tmp_path / "out").exists()
+
+
+def test_a_written_reason_lets_it_run_and_is_shown(tiny, tmp_path):
+    reason = "the plates were measured in one run"
+    confounded(tiny).sections["cohort"]["accept"] = {"outcome-tied-to-batch": reason}
+    path = tiny.write()
+    found = check_study(path).findings
+    assert found.of("stop") == ()
+    run_study(path, tmp_path / "out", threads=1)
+    for name in ("findings.csv", "report.html", "record.json"):
+        assert reason in (tmp_path / "out" / name).read_text(), name
+    assert "warning" in next(
+        line
+        for line in (tmp_path / "out" / "findings.csv").read_text().splitlines()
+        if line.startswith("outcome-tied-to-batch")
+    )
+
+
+@pytest.mark.parametrize("accept", [{"outcome-tied-to-batch": ""}, {"other": "why"}])
+def test_no_reason_or_another_code_is_not_enough(tiny, tmp_path, accept):
+    confounded(tiny).sections["cohort"]["accept"] = accept
+    with pytest.raises(InputDataError):
+        run_study(tiny.write(), tmp_path / "out", threads=1)
+
+
+@pytest.mark.xfail(
+    strict=True,
+    raises=ZeroDivisionError,
+    reason="no feature passes the filter: division by zero in the error bound",
+)
+@pytest.mark.parametrize("value", [5.0, np.nan])
+def test_a_matrix_without_information_is_refused(tiny, tmp_path, value):
+    """Constant or empty everywhere: a sentence is due, not a traceback."""
+    tiny.expression.iloc[:, :] = value
+    with pytest.raises(InputDataError):
+        run_study(tiny.write(), tmp_path / "out", threads=1)
