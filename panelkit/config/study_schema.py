@@ -13,13 +13,21 @@ from pydantic.json_schema import models_json_schema
 from panelkit.config.currency import MINOR_DIGITS
 from panelkit.config.defaults import SEED
 from panelkit.config.programme import PlatformSection
-from panelkit.config.template import TEMPLATE_SECTIONS, explanations
+from panelkit.config.sections import Section
+from panelkit.config.template import TEMPLATE_SECTIONS, _explanations
 
 __all__ = ["study_schema"]
 
 DIALECT: Final = "https://json-schema.org/draft/2020-12/schema"
 REFERENCE: Final = "#/$defs/{model}"
 AMOUNT: Final = {"type": "string", "pattern": r"^[0-9]+(\.[0-9]+)?$"}
+PRICE: Final = {"anyOf": [{"type": "number", "minimum": 0}, AMOUNT]}
+TIER: Final = {
+    "type": "array",
+    "prefixItems": [{"type": "integer", "minimum": 1}, PRICE],
+    "items": False,
+    "minItems": 2,
+}
 CLASS_NAME: Final = {"type": ["string", "number", "boolean"]}
 EVEN: Final = {"multipleOf": 2}
 BEYOND_TYPES: Final[dict[tuple[str, str], dict[str, Any]]] = {
@@ -29,6 +37,12 @@ BEYOND_TYPES: Final[dict[tuple[str, str], dict[str, Any]]] = {
     ("AccuracySection", "inner_subsamples"): EVEN,
     ("PanelsSection", "sizes"): {"uniqueItems": True},
     ("ProgrammeSection", "currency"): {"enum": sorted(MINOR_DIGITS)},
+    ("PlatformSection", "groups"): {
+        "anyOf": [{"type": "integer", "minimum": 1}, {"enum": ["auto", "each"]}]
+    },
+    ("PlatformSection", "position_cost"): {
+        "anyOf": [*PRICE["anyOf"], {"type": "array", "items": TIER, "minItems": 1}]
+    },
 }
 """What the sections check by functions, which leave no trace in their types."""
 
@@ -41,7 +55,7 @@ def study_schema() -> dict[str, Any]:
     dict of str to object
         Draft 2020-12, with the defaults and the explanations of every key.
     """
-    kinds = [*TEMPLATE_SECTIONS.values(), PlatformSection]
+    kinds: list[type[Section]] = [*TEMPLATE_SECTIONS.values(), PlatformSection]
     made = models_json_schema(
         [(kind, "validation") for kind in kinds], ref_template=REFERENCE
     )[1]
@@ -49,7 +63,7 @@ def study_schema() -> dict[str, Any]:
     for kind in kinds:
         section = sections[kind.__name__]
         section["description"] = (inspect.getdoc(kind) or "").partition("\n\n")[0]
-        for key, text in explanations(kind).items():
+        for key, text in _explanations(kind).items():
             if key in section["properties"]:
                 section["properties"][key]["description"] = text
     tables = {

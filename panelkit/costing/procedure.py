@@ -20,6 +20,7 @@ from panelkit.costing.tuning import (
     judge,
     tune_ridge,
 )
+from panelkit.errors import FitError
 from panelkit.fits import (
     fit_panels,
     kernel_matrix,
@@ -172,6 +173,14 @@ class Procedure:
         FitError
             A fit that is not possible or did not converge.
         """
+        if len(split.inner) < 2:
+            raise FitError(
+                code="too-few-inner-folds",
+                where="tuning",
+                what=f"{len(split.inner)} inner folds",
+                accepted="at least 2",
+                next_step="Draw inner folds for the training rows",
+            )
         selected = self.select(data, split, threads)
         tuning = self._tune(data, split, threads)
         penalties = np.array(self.ridge_penalties)[tuning.best.ravel()]

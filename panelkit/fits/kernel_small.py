@@ -207,5 +207,5 @@ def welch(base, fill, included, rows, y, weight, n_units, means, variances, t):
         variances[j, 0] = v0
         variances[j, 1] = v1
         e = v0 / n_units[0] + v1 / n_units[1]
-        if e > 1e-24 * (1.0 + m0 * m0):
+        if e > max(1e-24 * m0 * m0, 1e-290):
             t[j] = (m1 - m0) / math.sqrt(e)

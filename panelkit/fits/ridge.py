@@ -44,9 +44,10 @@ def kernel_matrix(
         if gap.any():
             fill = source.fill[here][source.included[here]]
             np.copyto(tile, fill[:, None], where=gap)
-        tile -= (tile[:, training] * share).sum(axis=1)[:, None]
+        mean = (tile[:, training] * share).sum(axis=1)
+        tile -= mean[:, None]
         variance = (tile[:, training] ** 2 * share).sum(axis=1)
-        usable = variance > 1e-20
+        usable = variance > np.maximum(1e-24 * mean**2, 1e-290)
         tile = tile[usable] / np.sqrt(variance[usable])[:, None]
         kernel += tile.T @ tile
     return kernel / max(1, int(source.included.sum()))

@@ -153,7 +153,7 @@ def standardised(
     taught = columns[:, training]
     mean = (taught * share).sum(axis=1)
     variance = ((taught - mean[:, None]) ** 2 * share).sum(axis=1)
-    constant = ~(variance > 1e-24 * (1.0 + mean**2))
+    constant = ~(variance > np.maximum(1e-24 * mean**2, 1e-290))
     deviation = np.sqrt(np.where(constant, 1.0, variance))
     Z = (columns - mean[:, None]) / deviation[:, None]
     Z[constant] = 0.0

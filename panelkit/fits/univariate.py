@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from panelkit.errors import FitError
 from panelkit.fits.kernel_cache import kernel_cache
 from panelkit.records import MatrixSource
 
@@ -64,6 +65,11 @@ def rank_univariate(
     Univariate
         Means, variances, t, order.
 
+    Raises
+    ------
+    FitError
+        Fewer than two subjects in a class.
+
     References
     ----------
     Welch 1947, Biometrika 34:28.
@@ -73,6 +79,14 @@ def rank_univariate(
         [len(np.unique(subjects[rows][y[rows] == value])) for value in (0.0, 1.0)],
         np.float64,
     )
+    if units.min() < 2:
+        raise FitError(
+            code="too-few-for-ranking",
+            where="univariate ranking",
+            what=f"{int(units.min())} subjects in a class",
+            accepted="at least 2 subjects of each class",
+            next_step="Use fewer folds, or more samples of the smaller class",
+        )
     means, variances = np.zeros((n_features, 2)), np.zeros((n_features, 2))
     t = np.zeros(n_features)
     kernels.welch(

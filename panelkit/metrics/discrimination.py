@@ -15,6 +15,9 @@ def _placements(
 
     Ties count one half.
     """
+    if np.isnan(scores).any():  # a missing score has no rank
+        nothing = np.full(1, np.nan)
+        return nothing, nothing
     cases = scores[outcome == 1.0]
     controls = scores[outcome == 0.0]
     if not len(cases) or not len(controls):

@@ -70,6 +70,7 @@ def cross_validated_auc(
     n_repeats, n_samples = scores.shape
     per_fold = np.full((n_repeats, int(fold.max()) + 1), np.nan)
     influence = np.zeros(n_samples)
+    n_valid = 0
     for repeat in range(n_repeats):
         own = np.zeros(n_samples)
         counted = 0
@@ -81,12 +82,13 @@ def cross_validated_auc(
                 own[test] = of_samples / len(test)
                 counted += 1
         if counted:
-            influence += own / counted / n_repeats
+            influence += own / counted
+            n_valid += 1
     means = [row[~np.isnan(row)].mean() for row in per_fold if not np.isnan(row).all()]
     if not means:
         return CrossValidated(np.nan, np.nan, np.nan, per_fold)
     mean = float(np.mean(means))
-    clusters = np.bincount(subjects, weights=influence)
+    clusters = np.bincount(subjects, weights=influence / n_valid)
     n_clusters = len(np.unique(subjects))
     se = float(np.sqrt((clusters**2).sum() * n_clusters / max(1, n_clusters - 1)))
     low, high = _log_odds_interval(mean, se, confidence)

@@ -77,6 +77,17 @@ class Recipe:
                 accepted="per-sample steps first, then learnt steps",
                 next_step="Put them in that order",
             )
+        repeated = len(set(self.steps)) < len(self.steps)
+        if repeated or "median-fill" not in self.steps:
+            raise StudyFileError(
+                code="step-missing-or-repeated",
+                where="[preparation] discovery",
+                what=f"a step is repeated or 'median-fill' is missing (got "
+                f"{list(self.steps)})",
+                accepted="each step once, 'median-fill' among them, since every fit "
+                "needs a value in every cell",
+                next_step="Correct the list or leave the key out for the default",
+            )
 
     def base(self, values: NDArray[np.floating[Any]]) -> NDArray[np.floating[Any]]:
         """Return the matrix after the per-sample steps, a copy where there are any.

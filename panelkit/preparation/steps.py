@@ -33,7 +33,8 @@ def log2(values: NDArray[np.floating[Any]], offset: float) -> None:
     InputDataError
         A value plus the offset is not positive.
     """
-    smallest = float(np.nanmin(values))
+    measured = np.isfinite(values)
+    smallest = float(np.min(values, where=measured, initial=np.inf))
     if smallest + offset <= 0.0:
         raise InputDataError(
             code="negative-before-log2",

@@ -38,12 +38,18 @@ class PathSet(Record):
         For each subsample its features in order of entry, at most `max_markers`.
     entries : tuple of ndarray, int64
         Step of the path at which each of them entered.
-    intercepts : ndarray of shape (n_subsamples, n_penalties), float64
-        On the original scale.
+    intercepts : ndarray of shape (n_subsamples, n_penalties[, n_classes]), float64
+        On the original scale; 0 for Cox. With several classes they sum to 0, and a
+        class that a subsample does not have gets minus infinity.
     coefficient_features, coefficient_values : tuple of ndarray
-        The non-zero coefficients of each subsample, penalty after penalty.
+        The non-zero coefficients of each subsample, penalty after penalty; values have
+        a second axis where there are several classes.
     coefficient_borders : ndarray of shape (n_subsamples, n_penalties + 1), int64
         Where each penalty's coefficients begin and end.
+    covariate_coefficients : ndarray of shape (n_subsamples, n_penalties, n_covariates[, n_classes]), float64
+        Of the unpenalised covariates, original scale.
+    classes : tuple
+        Class labels of a multinomial outcome, in the order of the last axis.
     """
 
     family: str
@@ -57,6 +63,8 @@ class PathSet(Record):
     coefficient_features: tuple[NDArray[np.int64], ...]
     coefficient_values: tuple[NDArray[np.float64], ...]
     coefficient_borders: NDArray[np.int64]
+    covariate_coefficients: NDArray[np.float64]
+    classes: tuple[object, ...] = ()
 
     @property
     def n_subsamples(self) -> int:
@@ -71,7 +79,9 @@ class PathSet(Record):
             row[features] = True
         return picked
 
-    def coef(self, subsample: int, penalty: int) -> tuple[float, NDArray[np.float64]]:
+    def coef(
+        self, subsample: int, penalty: int
+    ) -> tuple[float | NDArray[np.float64], NDArray[np.float64]]:
         """Return intercept and coefficients of one solution, original scale.
 
         Parameters
@@ -81,9 +91,9 @@ class PathSet(Record):
 
         Returns
         -------
-        intercept : float
+        intercept : float, or ndarray of shape (n_classes,)
             NaN where the path had stopped before.
-        coefficients : ndarray of shape (n_features,)
+        coefficients : ndarray of shape (n_features[, n_classes])
             All NaN where the path had stopped before.
 
         Raises
@@ -91,13 +101,16 @@ class PathSet(Record):
         IndexError
             Position outside the path.
         """
-        coefficients = np.zeros(self.n_features)
+        values = self.coefficient_values[subsample]
+        coefficients = np.zeros((self.n_features, *values.shape[1:]))
         if np.isnan(self.penalties[subsample, penalty]):
-            return np.nan, np.full_like(coefficients, np.nan)
-        low, high = self.coefficient_borders[subsample, penalty : penalty + 2]
-        features = self.coefficient_features[subsample][low:high]
-        coefficients[features] = self.coefficient_values[subsample][low:high]
-        return float(self.intercepts[subsample, penalty]), coefficients
+            coefficients[:] = np.nan
+        else:
+            low, high = self.coefficient_borders[subsample, penalty : penalty + 2]
+            features = self.coefficient_features[subsample][low:high]
+            coefficients[features] = values[low:high]
+        intercept = self.intercepts[subsample, penalty]
+        return (intercept if self.classes else float(intercept)), coefficients
 
     def to_frame(self) -> "pd.DataFrame":
         """Return one row a pick: subsample, feature, step, penalty, position."""

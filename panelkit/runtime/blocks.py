@@ -7,7 +7,7 @@ from collections.abc import Callable, Mapping
 from concurrent.futures import FIRST_EXCEPTION, Future, ThreadPoolExecutor, wait
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any, Protocol, TypeVar
+from typing import IO, Any, Protocol, TypeVar
 from zipfile import BadZipFile
 
 import numpy as np
@@ -31,6 +31,7 @@ BlockResult = Mapping[str, NDArray[Any]]
 or language can carry it. Text travels as arrays of fixed-width characters."""
 
 T = TypeVar("T")
+MARK = "array "  # keeps a block's names apart from the archive's own
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,8 +99,8 @@ class FolderStore:
     def load(self, key: str) -> BlockResult | None:
         """Return a finished block, or None."""
         try:
-            with np.load(self._folder / f"{key}.npz", allow_pickle=False) as archive:
-                return {name: archive[name] for name in archive.files}
+            with (self._folder / f"{key}.npz").open("rb") as file:
+                return _read_arrays(file)
         except (OSError, ValueError, EOFError, KeyError, RuntimeError, BadZipFile):
             return None
 
@@ -111,8 +112,18 @@ class FolderStore:
         RunFolderError
             The file cannot be written.
         """
+        arrays = {f"{MARK}{name}": value for name, value in result.items()}
         with write_whole(self._folder / f"{key}.npz") as file:
-            np.savez(file, allow_pickle=False, **dict(result))
+            np.savez(file, allow_pickle=False, names=np.array([*result]), **arrays)
+
+
+def _read_arrays(file: IO[bytes]) -> BlockResult | None:
+    """Return a block's arrays, or None where one that belongs to it is missing."""
+    with np.load(file, allow_pickle=False) as archive:
+        names = [str(name) for name in archive["names"]]
+        if {"names", *(f"{MARK}{name}" for name in names)} != set(archive.files):
+            return None
+        return {name: archive[f"{MARK}{name}"] for name in names}
 
 
 def map_blocks(

@@ -27,9 +27,9 @@ def generator(seed: int, *path: str | int) -> np.random.Generator:
         Independent of every other place of the same tree.
     """
     key = [
-        part
-        if isinstance(part, int)
-        else int.from_bytes(hashlib.sha256(part.encode()).digest()[:4], "big")
+        int.from_bytes(hashlib.sha256(part.encode()).digest()[:4], "big")
+        if isinstance(part, str)
+        else int(part)
         for part in path
     ]
     return np.random.default_rng(np.random.SeedSequence(seed, spawn_key=key))

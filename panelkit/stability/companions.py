@@ -34,7 +34,9 @@ def group_companions(
         return np.zeros(n_features, np.int64)
     centred = values - values.mean(axis=1, keepdims=True)
     length = np.sqrt((centred**2).sum(axis=1))
-    centred /= np.where(length > 0.0, length, 1.0)[:, None]
+    constant = length <= 1e-12 * np.sqrt((values**2).sum(axis=1))
+    centred /= np.where(constant, 1.0, length)[:, None]
+    centred[constant] = 0.0
     distance = 1.0 - np.abs(np.einsum("ij,kj->ik", centred, centred))
     np.fill_diagonal(distance, 0.0)
     distance = np.clip(0.5 * (distance + distance.T), 0.0, 1.0)

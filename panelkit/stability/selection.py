@@ -174,21 +174,26 @@ def _frequencies(
     z2 = Z_95**2
     centre = (frequency + z2 / (2.0 * n)) / (1.0 + z2 / n)
     half = Z_95 * np.sqrt(single / n + z2 / (4.0 * n**2)) / (1.0 + z2 / n)
-    return frequency, np.clip(centre - half, 0.0, 1.0), np.clip(centre + half, 0.0, 1.0)
+    low = np.minimum(np.clip(centre - half, 0.0, 1.0), frequency)
+    high = np.maximum(np.clip(centre + half, 0.0, 1.0), frequency)
+    return frequency, low, high
 
 
 def _positive_share(paths: PathSet) -> NDArray[np.float64]:
     """Return the share of picks with a positive coefficient at the last penalty."""
     positive = np.zeros(paths.n_features)
     negative = np.zeros(paths.n_features)
-    for features, values in zip(
-        paths.coefficient_features, paths.coefficient_values, strict=True
+    for features, values, picks in zip(
+        paths.coefficient_features,
+        paths.coefficient_values,
+        paths.entry_order,
+        strict=True,
     ):
         # a feature's last stored value decides; later assignments win
         last = np.zeros(paths.n_features)
         last[features] = values
-        positive += last > 0
-        negative += last < 0
+        positive[picks] += last[picks] > 0
+        negative[picks] += last[picks] < 0
     with np.errstate(invalid="ignore"):
         return positive / (positive + negative)
 

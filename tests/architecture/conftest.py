@@ -75,10 +75,10 @@ def imports_of(tree, known):
 
     def walk(node, only_for_types, inside_function):
         if isinstance(node, ast.Import | ast.ImportFrom):
-            for target in targets(node, known):
-                found.append(
-                    Import(target, node.lineno, only_for_types, inside_function)
-                )
+            found.extend(
+                Import(target, node.lineno, only_for_types, inside_function)
+                for target in targets(node, known)
+            )
         inside = inside_function or isinstance(
             node, ast.FunctionDef | ast.AsyncFunctionDef | ast.Lambda
         )

@@ -1,4 +1,4 @@
-"""Every error says where, what, what is accepted and what next; nothing else is raised."""
+"""Every error says where, what, what is accepted and what next; no other is raised."""
 
 import ast
 import re

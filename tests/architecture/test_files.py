@@ -77,4 +77,6 @@ def test_no_path_of_a_machine_is_written_down(repository, repository_files):
 
 def test_tests_have_no_init_file(repository_files):
     """`--import-mode=importlib` needs none; one of them would shadow the package."""
-    assert [n for n in repository_files if n.parts[0] == "tests" and n.stem == "__init__"] == []
+    tests = [name for name in repository_files if name.parts[0] == "tests"]
+    assert tests
+    assert [name for name in tests if name.stem == "__init__"] == []

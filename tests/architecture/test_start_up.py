@@ -42,7 +42,8 @@ def test_help_loads_nothing_but_click():
 
 
 @pytest.mark.parametrize(
-    "code", ["import panelkit; dir(panelkit)", "import panelkit; panelkit.PanelkitError"]
+    "code",
+    ["import panelkit; dir(panelkit)", "import panelkit; panelkit.PanelkitError"],
 )
 def test_the_front_door_loads_nothing(code):
     assert loaded_by(code)[0] == {"panelkit"}

@@ -45,7 +45,7 @@ SLOW = ("anndata", "h5py", "pandas", "pyarrow")
 
 
 def third_party(source):
-    """Return the imports of a module that are neither ours nor the standard library's."""
+    """Return a module's imports that are neither ours nor the standard library's."""
     for each in source.imports:
         top = each.target.split(".")[0]
         if top not in sys.stdlib_module_names and top != "panelkit":

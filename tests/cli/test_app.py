@@ -7,7 +7,8 @@ from importlib.metadata import version
 import pytest
 from click.testing import CliRunner
 
-from panelkit.cli.app import COMMANDS, panelkit as group
+from panelkit.cli.app import COMMANDS
+from panelkit.cli.app import panelkit as group
 from panelkit.errors import (
     FitError,
     InputDataError,

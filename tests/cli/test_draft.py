@@ -41,7 +41,8 @@ def test_it_proposes_what_the_columns_say(panelkit, files):
 def test_paths_are_relative_to_the_study(panelkit, files):
     _answer, out = drafted(panelkit, files)
     cohort = tomllib.loads(out.read_text())["cohort"]
-    assert (cohort["expression"], cohort["samples"]) == ("expression.csv", "samples.csv")
+    assert cohort["expression"] == "expression.csv"
+    assert cohort["samples"] == "samples.csv"
     assert str(files.folder) not in out.read_text()
 
 
@@ -57,7 +58,8 @@ def test_without_a_file_it_is_printed(panelkit, files):
 def test_names_that_need_quoting_survive(panelkit, files):
     """Quotes, backslashes and letters of other alphabets in a class and a column."""
     odd = 'antwort "6\\m" \u00fc\u4e2d'
-    files.samples = files.samples.rename(columns={"response": odd}).drop(columns="plate")
+    files.samples = files.samples.drop(columns="plate")
+    files.samples = files.samples.rename(columns={"response": odd})
     files.samples[odd] = files.samples[odd].replace("yes", 'ja "\\t"')
     _answer, out = drafted(panelkit, files)
     cohort = read_study(out).cohort

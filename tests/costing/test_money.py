@@ -48,7 +48,7 @@ def test_rounding_moves_by_at_most_half_a_minor_unit(amount, currency):
     unit = Fraction(1, 10 ** CURRENCY_EXPONENTS[currency])
     rounded = round_money(amount, currency)
     assert abs(Fraction(rounded) - amount) <= unit / 2
-    assert round_money(-amount, currency) == -rounded
+    assert round_money(-amount, currency) == rounded.copy_negate()
     assert minor_units(rounded, currency) * unit == Fraction(rounded)
 
 

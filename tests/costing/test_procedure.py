@@ -132,15 +132,9 @@ def test_held_out_rows_change_no_bit_of_what_is_learnt(kind, change, fold, proce
         assert one.log_odds.tobytes() != other.log_odds.tobytes()  # it was applied
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="a matrix above fits.engine.COPY_LIMIT is read with its held-out rows; they "
-    "widen the float32 filter's margin, which decides what joins the first working "
-    "sets, hence order of entry, picks, candidates, panels and the chosen size",
-)
 @pytest.mark.parametrize("seed", [2, 4])
 def test_held_out_rows_of_a_large_matrix_change_no_bit(seed, monkeypatch):
-    monkeypatch.setattr("panelkit.fits.engine.COPY_LIMIT", 0)
+    monkeypatch.setattr("panelkit.fits.product.COPY_LIMIT", 0)
     cohort = Cohort.drawn(seed, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
     rules = ShortlistRules(markers_per_subsample=4, n_penalties=6, candidates=10)
     procedure = Procedure(Recipe(LEARNT), rules, ("frequency", "univariate"), (1, 3, 6))
@@ -195,7 +189,7 @@ def test_inner_test_rows_do_not_teach_the_selection_they_judge(procedure):
 
 
 def test_threads_change_no_bit(procedure, monkeypatch):
-    monkeypatch.setattr("panelkit.fits.engine.TILE", 64)
+    monkeypatch.setattr("panelkit.fits.product.TILE", 64)
     cohort = Cohort.drawn(4, 40, 500, signals=4, missing=0.05)
     split = cohort.split(*cohort.folds(4).split(0, 2))
     one = procedure.learn(cohort.data(), split, threads=1)

@@ -144,10 +144,6 @@ def test_certificate_with_feature_and_observation_weights(problem, draw_cohort):
             )
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="without max_markers the path still stops once every feature was picked",
-)
 @pytest.mark.parametrize("family", ["gaussian", "binomial"])
 def test_path_goes_on_when_every_feature_is_in(family, problem, draw_cohort):
     X, y, _ = draw_cohort(5, 60, 4, family=family)

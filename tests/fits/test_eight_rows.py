@@ -169,11 +169,6 @@ def test_relative_grid_runs_from_the_largest_penalty_to_the_floor(eight, n_penal
     assert paths.penalties[0] == pytest.approx(expected, rel=1e-12)
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="at and above the largest penalty the unpenalised coefficients are lost: "
-    "open_path stores an empty solution instead of the null model",
-)
 @pytest.mark.parametrize("penalties", [None, [5.0, 3.0]])
 def test_unpenalised_feature_stays_in_at_and_above_the_largest_penalty(
     penalties, eight

@@ -8,7 +8,7 @@ changed sum anywhere shows.
 import numpy as np
 import pytest
 
-from panelkit.fits import engine, fit_paths
+from panelkit.fits import engine, fit_paths, product
 
 N, P = 60, 700
 
@@ -69,7 +69,7 @@ def test_storage_does_not_matter(change, cohort, fit, bits):
 
 @pytest.mark.parametrize("threads", [2, 4])
 def test_threads_do_not_matter(threads, fit, bits, monkeypatch):
-    monkeypatch.setattr(engine, "TILE", 64)  # more tiles than threads
+    monkeypatch.setattr(product, "TILE", 64)  # more tiles than threads
     monkeypatch.setattr(engine, "CHUNK", 1)
     assert bits(fit(threads=threads)) == bits(fit())
 
@@ -77,7 +77,7 @@ def test_threads_do_not_matter(threads, fit, bits, monkeypatch):
 @pytest.mark.parametrize("tile", [1, 37, 700, 10_000])
 def test_tile_size_does_not_matter(tile, fit, bits, monkeypatch):
     expected = bits(fit())
-    monkeypatch.setattr(engine, "TILE", tile)
+    monkeypatch.setattr(product, "TILE", tile)
     assert bits(fit()) == expected
 
 
@@ -87,7 +87,7 @@ def test_copy_for_the_product_does_not_matter(
     limit, kind, cohort, fit, bits, monkeypatch
 ):
     expected = bits(fit())
-    monkeypatch.setattr(engine, "COPY_LIMIT", limit)
+    monkeypatch.setattr(product, "COPY_LIMIT", limit)
     assert bits(fit(cohort[0].astype(kind))) == expected
 
 
@@ -137,18 +137,16 @@ def test_rows_of_no_subsample_cannot_be_felt(size, cohort, fit, bits):
     assert bits(fit(changed, halves=[rows])) == bits(fit(halves=[rows]))
 
 
-@pytest.mark.xfail(strict=True, reason=LOOSE_START)
 @pytest.mark.parametrize("size", [1e3, 1e9, 1e18])
 def test_rows_of_no_subsample_cannot_be_felt_without_a_copy(
     size, cohort, fit, bits, monkeypatch
 ):
-    monkeypatch.setattr(engine, "COPY_LIMIT", 0)
+    monkeypatch.setattr(product, "COPY_LIMIT", 0)
     rows = np.sort(np.random.default_rng(1).permutation(N)[:40])
     changed = outside_changed(cohort, rows, size)
     assert bits(fit(changed, halves=[rows])) == bits(fit(halves=[rows]))
 
 
-@pytest.mark.xfail(strict=True, reason=LOOSE_START)
 def test_rows_of_another_subsample_cannot_be_felt(cohort, fit):
     # the same refit, beside one that reads samples a thousand times larger
     rows = np.sort(np.random.default_rng(1).permutation(N)[:40])
@@ -158,13 +156,8 @@ def test_rows_of_another_subsample_cannot_be_felt(cohort, fit):
 
 
 @pytest.mark.filterwarnings("ignore::RuntimeWarning")  # float32 overflows: see reason
-@pytest.mark.xfail(
-    strict=True,
-    reason="where the matrix is too large for the product's copy, rows outside the "
-    "subsample above about 1e19 overflow float32 and empty the path silently",
-)
 def test_huge_rows_outside_the_subsample_cannot_be_felt(cohort, fit, bits, monkeypatch):
-    monkeypatch.setattr(engine, "COPY_LIMIT", 0)
+    monkeypatch.setattr(product, "COPY_LIMIT", 0)
     rows = np.arange(5, 55)
     changed = cohort[0].copy()
     changed[55:] = 1e20
@@ -187,11 +180,6 @@ def test_results_are_read_only(fit):
         paths.coefficient_values[0][:] = 0.0
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="a column that varies in float64 but is constant once rounded to float32 is "
-    "left out silently: the product decides instead of proposing",
-)
 def test_column_that_float32_cannot_tell_apart_is_still_picked(cohort, fit):
     first = fit().entry_order[0][0]
     moved = cohort[0].copy()
@@ -201,11 +189,6 @@ def test_column_that_float32_cannot_tell_apart_is_still_picked(cohort, fit):
     assert fit(moved).entry_order[0][0] == first
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="the lower bound of the largest gradient is taken from the matrix rounded "
-    "to float32: where rounding flatters a column, the largest penalty is missed",
-)
 def test_largest_penalty_survives_flattering_rounding():
     # around 2^24 float32 holds even numbers only: rounding turns a middling column
     # into the outcome itself, and the truly best column stays below the false top
@@ -227,20 +210,9 @@ def test_largest_penalty_survives_flattering_rounding():
         2.0**30,
         pytest.param(
             2.0**-44,
-            marks=pytest.mark.xfail(
-                strict=True,
-                reason="a column with a deviation below 1e-12 counts as constant "
-                "(absolute limit in `standardise`), and because its float32 bound set "
-                "the threshold, the whole path comes back empty",
-            ),
         ),
         pytest.param(
             2.0**66,
-            marks=pytest.mark.xfail(
-                strict=True,
-                reason="a column above about 1e19 overflows the float32 squares and is "
-                "left out silently",
-            ),
         ),
     ],
 )

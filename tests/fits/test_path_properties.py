@@ -78,11 +78,6 @@ def test_order_of_rows_does_not_matter(draw_cohort):
         40,
         pytest.param(
             10,
-            marks=pytest.mark.xfail(
-                strict=True,
-                reason="features that only the optimality check brings in share one "
-                "capped gradient, so that column order decides between them",
-            ),
         ),
     ],
 )
@@ -104,11 +99,6 @@ def test_order_of_columns_does_not_matter(n_penalties, draw_cohort):
         40,
         pytest.param(
             10,
-            marks=pytest.mark.xfail(
-                strict=True,
-                reason="features that only the optimality check brings in share one "
-                "capped gradient instead of their own at the previous penalty",
-            ),
         ),
     ],
 )
@@ -280,7 +270,7 @@ def test_nothing_unconverged_passes_silently(draw_cohort):
 def test_missing_cells_equal_the_filled_matrix(
     kind, copy_limit, bits, draw_cohort, monkeypatch
 ):
-    monkeypatch.setattr("panelkit.fits.engine.COPY_LIMIT", copy_limit)
+    monkeypatch.setattr("panelkit.fits.product.COPY_LIMIT", copy_limit)
     X, y, halves = draw_cohort(38, 50, 300, 4)
     base = np.ascontiguousarray(X.T).astype(kind)
     base[np.random.default_rng(38).random(base.shape) < 0.1] = np.nan

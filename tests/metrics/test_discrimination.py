@@ -89,9 +89,6 @@ def test_one_class_is_refused(value):
     assert caught.value.code == "auc-one-class"
 
 
-@pytest.mark.xfail(
-    strict=True, reason="a score that is NaN is ranked as the largest of all, silently"
-)
 def test_a_score_that_is_not_a_number_is_no_area():
     scores = MARKER_A.copy()
     scores[3] = np.nan

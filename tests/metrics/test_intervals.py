@@ -147,11 +147,6 @@ def test_no_fold_with_both_classes_is_no_figure():
     assert np.isnan([found.mean, found.low, found.high]).all()
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="the influence is divided by all repeats, the mean by those that have a "
-    "figure: a repeat without one halves the standard error",
-)
 def test_repeat_without_a_figure_does_not_narrow_the_interval():
     alone = one_fold()
     found = one_fold(

@@ -207,11 +207,6 @@ def test_damaged_file_is_computed_again(damage, tmp_path):
     assert block_file(tmp_path).read_bytes() == whole
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="np.load leaves its own file open when the archive is damaged: a "
-    "ResourceWarning, and on some systems a file that cannot be replaced",
-)
 def test_damaged_file_is_closed(tmp_path):
     store = FolderStore(tmp_path)
     map_blocks(Counted(), BLOCKS, KEY, store)
@@ -227,11 +222,6 @@ def test_damaged_file_is_closed(tmp_path):
 FLIPS = (0x01, 0x08, 0x80)
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="a flipped bit in a length field of the archive's directory hides an array: "
-    "the block comes back without it",
-)
 @pytest.mark.filterwarnings("ignore")
 def test_no_flipped_bit_raises_or_passes_for_the_result(tmp_path):
     store = FolderStore(tmp_path)
@@ -271,10 +261,6 @@ def test_objects_are_not_written(tmp_path):
     assert list(tmp_path.iterdir()) == []
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="'file' and 'allow_pickle' are names of np.savez's own arguments",
-)
 def test_any_name_serves_for_an_array(tmp_path):
     store = FolderStore(tmp_path)
     store.save("key", {"file": np.arange(3), "allow_pickle": np.arange(2)})

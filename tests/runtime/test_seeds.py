@@ -84,9 +84,6 @@ def test_global_generator_is_not_touched():
     assert (np.random.get_state()[1] == state).all()  # noqa: NPY002
 
 
-@pytest.mark.xfail(
-    strict=True, reason="an index that comes from numpy has no place: AttributeError"
-)
 def test_numpy_integers_name_the_same_place():
     assert draws(1, "folds", np.int64(3)) == draws(1, "folds", 3)
 

@@ -100,11 +100,6 @@ def test_constant_feature_is_a_group_of_its_own(five):
     assert group_companions(values, 0.8).tolist() == [0, 0, 0, 1, 1, 2, 3]
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="rounding leaves a constant such as 0.1 a residue of 1e-17 around its mean, "
-    "and two constants then correlate perfectly",
-)
 def test_constants_whose_mean_rounds_stay_apart():
     values = np.vstack([np.full(23, 0.1), np.full(23, 0.3), np.full(23, 0.7)])
     assert (values.mean(axis=1) != values[:, 0]).sum() >= 2

@@ -121,11 +121,6 @@ def test_intervals_lie_around_their_frequency(draw):
     assert wide.max() < 0.45  # at least 20 pairs: Wilson's widest for n = 20 is 0.41
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="rounding puts the upper end 1e-16 below a frequency of 1 (10 pairs), the "
-    "lower end 1e-17 above 0 (6 pairs): error bars of negative length",
-)
 @pytest.mark.parametrize(("n_pairs", "feature"), [(10, 0), (6, 5)])
 def test_intervals_contain_their_frequency_to_the_last_bit(n_pairs, feature, draw):
     drawn = draw(12, 60, 20, signals=1, difference=20.0, n_pairs=n_pairs)
@@ -151,10 +146,6 @@ def test_interval_of_pairs_that_agree_is_wilsons(n_pairs, picked, expected, draw
     assert (found.low[feature], found.high[feature]) == pytest.approx(expected)
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="features of the last step that max_markers trimmed still vote on the sign",
-)
 def test_signs_are_counted_over_picks_alone(draw):
     drawn = draw(13, 40, 200, signals=3)
     found = drawn.select(markers_per_subsample=3, n_penalties=4, penalty_floor=0.1)

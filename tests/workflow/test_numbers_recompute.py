@@ -3,6 +3,7 @@
 import math
 
 import numpy as np
+import pandas as pd
 import pytest
 from sklearn.linear_model import LogisticRegression
 from sklearn.metrics import roc_auc_score
@@ -41,7 +42,10 @@ def test_frontier_recomputes(finished, procedures):
         assert within.shape == (2, 3)
         assert row.metric == pytest.approx(within.mean(axis=1).mean(), abs=1e-12)
         assert row.metric_low < row.metric < row.metric_high
-        pooled = [roc_auc_score(r["outcome"], r["score"]) for _, r in rows.groupby("repeat")]
+        pooled = [
+            roc_auc_score(repeat["outcome"], repeat["score"])
+            for _, repeat in rows.groupby("repeat")
+        ]
         differs += abs(np.mean(pooled) - row.metric) > 1e-6
     assert differs
 
@@ -145,8 +149,6 @@ def test_costs_add_up_to_the_cent(finished):
 
 def test_single_marker_figures_recompute(finished, study):
     """Area and Welch difference of each marker, from the files of the study."""
-    import pandas as pd
-
     values = pd.read_csv(study.parent / "expression.csv", index_col=0)
     sheet = pd.read_csv(study.parent / "samples.csv", index_col=0)
     sick = (sheet["response"] == "yes").to_numpy()

@@ -77,16 +77,11 @@ def test_each_fold_has_one_primary_choice_and_its_scores(fold_panels, prediction
     chosen = fold_panels[fold_panels["chosen_by_primary"]]
     assert (chosen.groupby(["repeat", "fold"]).size() == 1).all()
     assert len(chosen) == 6
-    nested = predictions[predictions["maker"] == "primary-rule"]
+    by_fold = dict(list(predictions.groupby(["repeat", "fold", "maker", "size"])))
     for row in chosen.itertuples():
-        of_fold = (predictions["repeat"] == row.repeat) & (predictions["fold"] == row.fold)
-        own = predictions[
-            of_fold
-            & (predictions["maker"] == row.maker)
-            & (predictions["size"] == row.size)
-        ]
-        taken = nested[(nested["repeat"] == row.repeat) & (nested["fold"] == row.fold)]
-        assert own["score"].tolist() == taken["score"].tolist()
+        own = by_fold[row.repeat, row.fold, row.maker, row.size]["score"]
+        taken = by_fold[row.repeat, row.fold, "primary-rule", 0]["score"]
+        assert own.tolist() == taken.tolist()
     assert chosen["cost_total"].notna().all()
 
 

@@ -15,7 +15,8 @@ BARRED = {
 
 def panels_of(finished):
     tables = [finished.table("frontier.csv"), finished.table("fold_panels.csv")]
-    return {name for table in tables for row in table["markers"] for name in row.split(";")}
+    rows = [row for table in tables for row in table["markers"]]
+    return {name for row in rows for name in row.split(";")}
 
 
 def test_controls_and_never_enter_no_panel(finished):

@@ -1,0 +1,400 @@
+"""Kernels for the multinomial family: a feature enters for all classes together.
+
+The penalty of a feature is the Euclidean norm of its coefficients over the classes. The
+solve is prox-Newton with the exact curvature diag(p) - p p', block coordinate descent
+inside. Plain functions on arrays, no panelkit imports, float64, fixed order.
+
+Symbols: K classes, n rows, m working features; p chances (K, n); D change of the linear
+predictors since the Newton step began (K, n); q residual of the quadratic model (K, n).
+"""
+
+import math
+
+import numpy as np
+from numba import njit
+
+FAST = {"reassoc", "contract", "arcp", "nsz"}  # NaN must stay visible
+
+DEPTH = 6  # sweeps kept for one extrapolation
+POWER_STEPS = 6
+SAFETY = 1.02  # a power iteration stays below the largest eigenvalue
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def multinomial_terms(y, weight, eta, n, r, p):
+    """Return the weighted mean loss; write weighted residuals r and chances p."""
+    n_classes = eta.shape[0]
+    loss = 0.0
+    for i in range(n):
+        top = eta[0, i]
+        for k in range(1, n_classes):
+            top = max(top, eta[k, i])
+        total = 0.0
+        for k in range(n_classes):
+            e = math.exp(eta[k, i] - top)
+            p[k, i] = e
+            total += e
+        own = int(y[i])
+        loss += weight[i] * (math.log(total) + top - eta[own, i])
+        for k in range(n_classes):
+            p[k, i] /= total
+            r[k, i] = -weight[i] * p[k, i]
+        r[own, i] += weight[i]
+    return loss
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def curvature_bound(z, p, weight, n):
+    """Return an upper bound of the largest curvature of one feature's block."""
+    n_classes = p.shape[0]
+    V = np.zeros((n_classes, n_classes))
+    for a in range(n_classes):
+        for b in range(a + 1):
+            s = 0.0
+            for i in range(n):
+                s += weight[i] * z[i] * z[i] * p[a, i] * p[b, i]
+            V[a, b] = -s
+            V[b, a] = -s
+        s = 0.0
+        for i in range(n):
+            s += weight[i] * z[i] * z[i] * p[a, i]
+        V[a, a] += s
+    widest = 0.0
+    x = np.empty(n_classes)
+    for a in range(n_classes):
+        if V[a, a] >= widest:
+            widest = V[a, a]
+            for b in range(n_classes):
+                x[b] = V[a, b]  # never orthogonal to the leading direction
+    length = 0.0
+    for _step in range(POWER_STEPS):
+        new = np.zeros(n_classes)
+        norm = 0.0
+        for a in range(n_classes):
+            norm += x[a] * x[a]
+        norm = math.sqrt(norm)
+        if norm <= 1e-300:
+            break
+        length = 0.0
+        for a in range(n_classes):
+            for b in range(n_classes):
+                new[a] += V[a, b] * x[b] / norm
+            length += new[a] * new[a]
+        length = math.sqrt(length)
+        for a in range(n_classes):
+            x[a] = new[a]
+    return max(SAFETY * length, widest, 1e-12)
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def move(z, change, p, weight, n, D, q):
+    """Add change[k] * z to the predictors; keep q = r - w (p D - p (p'D))."""
+    n_classes = p.shape[0]
+    for i in range(n):
+        s = 0.0
+        for k in range(n_classes):
+            s += p[k, i] * change[k]
+        for k in range(n_classes):
+            D[k, i] += change[k] * z[i]
+            q[k, i] -= weight[i] * z[i] * p[k, i] * (change[k] - s)
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def model_value(r, p, weight, n, D):
+    """Return the quadratic model of the loss at the change D."""
+    n_classes = p.shape[0]
+    value = 0.0
+    for i in range(n):
+        s = 0.0
+        square = 0.0
+        slope = 0.0
+        for k in range(n_classes):
+            s += p[k, i] * D[k, i]
+            square += p[k, i] * D[k, i] * D[k, i]
+            slope += r[k, i] * D[k, i]
+        value += 0.5 * weight[i] * (square - s * s) - slope
+    return value
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def norm_of(beta, j):
+    """Return the Euclidean norm of a feature's coefficients."""
+    s = 0.0
+    for k in range(beta.shape[0]):
+        s += beta[k, j] * beta[k, j]
+    return math.sqrt(s)
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def combine(path, length, c):
+    """Write the Anderson weights of the stored sweeps to c; True if they exist."""
+    depth = DEPTH - 1
+    gram = np.empty((depth, depth))
+    trace = 0.0
+    for a in range(depth):
+        c[a] = 1.0
+        for b in range(a + 1):
+            s = 0.0
+            for k in range(length):
+                s += (path[a + 1, k] - path[a, k]) * (path[b + 1, k] - path[b, k])
+            gram[a, b] = s
+            gram[b, a] = s
+        trace += gram[a, a]
+    for a in range(depth):
+        gram[a, a] += 1e-10 * trace
+    for a in range(depth):
+        if gram[a, a] <= 0.0:
+            return False
+        for b in range(a + 1, depth):
+            f = gram[b, a] / gram[a, a]
+            for k in range(a, depth):
+                gram[b, k] -= f * gram[a, k]
+            c[b] -= f * c[a]
+    total = 0.0
+    for a in range(depth - 1, -1, -1):
+        for k in range(a + 1, depth):
+            c[a] -= gram[a, k] * c[k]
+        c[a] /= gram[a, a]
+        total += c[a]
+    if not abs(total) > 1e-300:
+        return False
+    for a in range(depth):
+        c[a] /= total
+    return True
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def extrapolate(
+    path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
+):
+    """Take an Anderson step over the stored sweeps where it lowers model and penalty."""
+    n_classes = p.shape[0]
+    c = np.empty(DEPTH - 1)
+    if not combine(path, (na + 1) * n_classes, c):
+        return
+    before = model_value(r, p, weight, n, D)
+    trial_beta = np.zeros((n_classes, na + 1))
+    trial = np.zeros((n_classes, n))
+    after = 0.0
+    for a in range(na + 1):
+        for k in range(n_classes):
+            x = 0.0
+            for b in range(DEPTH - 1):
+                x += c[b] * path[b + 1, a * n_classes + k]
+            trial_beta[k, a] = x
+    for a in range(na):
+        j = active[a]
+        own = norm_of(beta, j)
+        if own == 0.0:
+            for k in range(n_classes):
+                trial_beta[k, a] = 0.0
+        before += l1[j] * own + 0.5 * l2[j] * own * own
+        own = norm_of(trial_beta, a)
+        after += l1[j] * own + 0.5 * l2[j] * own * own
+        for k in range(n_classes):
+            d = trial_beta[k, a] - old[k, j]
+            if d != 0.0:
+                for i in range(n):
+                    trial[k, i] += d * Z[j, i]
+    for k in range(n_classes):
+        d = trial_beta[k, na] - old0[k]
+        for i in range(n):
+            trial[k, i] += d
+    after += model_value(r, p, weight, n, trial)
+    if not after < before:
+        return
+    for k in range(n_classes):
+        for a in range(na):
+            beta[k, active[a]] = trial_beta[k, a]
+        b0[k] = trial_beta[k, na]
+    for i in range(n):
+        s = 0.0
+        for k in range(n_classes):
+            s += p[k, i] * trial[k, i]
+        for k in range(n_classes):
+            D[k, i] = trial[k, i]
+            q[k, i] = r[k, i] - weight[i] * p[k, i] * (trial[k, i] - s)
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def descend(
+    Z, n, na, active, r, p, weight, curvature, ones, bound0, l1, l2,
+    beta, b0, old, old0, D, q, goal, path,
+):  # fmt: skip
+    """Block coordinate descent on the quadratic model, until a sweep moves little."""
+    n_classes = p.shape[0]
+    change = np.empty(n_classes)
+    v = np.empty(n_classes)
+    kept = 0
+    for _sweep in range(1000):
+        if kept == DEPTH:
+            extrapolate(
+                path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
+            )
+            kept = 0
+        for a in range(na):
+            for k in range(n_classes):
+                path[kept, a * n_classes + k] = beta[k, active[a]]
+        for k in range(n_classes):
+            path[kept, na * n_classes + k] = b0[k]
+        kept += 1
+        largest = 0.0
+        for k in range(n_classes):
+            s = 0.0
+            for i in range(n):
+                s += q[k, i]
+            change[k] = s / bound0
+            b0[k] += change[k]
+            largest = max(largest, abs(s))
+        move(ones, change, p, weight, n, D, q)
+        for a in range(na):
+            j = active[a]
+            size = 0.0
+            for k in range(n_classes):
+                s = 0.0
+                for i in range(n):
+                    s += q[k, i] * Z[j, i]
+                v[k] = s + curvature[a] * beta[k, j]
+                size += v[k] * v[k]
+            size = math.sqrt(size)
+            shrink = 0.0
+            if size > l1[j]:
+                shrink = (1.0 - l1[j] / size) / (curvature[a] + l2[j])
+            moved = 0.0
+            for k in range(n_classes):
+                change[k] = shrink * v[k] - beta[k, j]
+                beta[k, j] += change[k]
+                moved += change[k] * change[k]
+            if moved > 0.0:
+                move(Z[j], change, p, weight, n, D, q)
+                largest = max(largest, (curvature[a] + l2[j]) * math.sqrt(moved))
+        if largest < goal:
+            break
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def optimality(Z, m, n, r, l1, l2, beta, grad, active):
+    """Return (largest KKT violation, active features); write grad and active."""
+    n_classes = r.shape[0]
+    worst = 0.0
+    for k in range(n_classes):
+        s = 0.0
+        for i in range(n):
+            s += r[k, i]
+        worst = max(worst, abs(s))
+    na = np.int64(0)
+    for j in range(m):
+        own = norm_of(beta, j)
+        size = 0.0
+        off = 0.0
+        for k in range(n_classes):
+            g = 0.0
+            for i in range(n):
+                g += r[k, i] * Z[j, i]
+            size += g * g
+            if own > 0.0:
+                d = g - l2[j] * beta[k, j] - l1[j] * beta[k, j] / own
+                off += d * d
+        grad[j] = math.sqrt(size)
+        e = math.sqrt(off) if own > 0.0 else grad[j] - l1[j]
+        worst = max(worst, e)
+        if own > 0.0 or e > 0.0:
+            active[na] = j
+            na += 1
+    return worst, na
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def solve(
+    Z, m, n, y, weight, pull, penalty, mixing, beta, b0, eta, r, grad, tol, steps
+):
+    """Solve one multinomial refit at one penalty over its working set.
+
+    Returns the largest KKT violation relative to the penalty.
+    """
+    n_classes = eta.shape[0]
+    p = np.empty((n_classes, n))
+    q = np.empty((n_classes, n))
+    D = np.empty((n_classes, n))
+    old_eta = np.empty((n_classes, n))
+    ones = np.ones(n)
+    curvature = np.empty(m)
+    old = np.empty((n_classes, m))
+    old0 = np.empty(n_classes)
+    l1 = np.empty(m)
+    l2 = np.empty(m)
+    active = np.empty(m, np.int64)
+    path = np.empty((DEPTH, (m + 1) * n_classes))
+    for j in range(m):
+        l1[j] = penalty * mixing * pull[j]
+        l2[j] = penalty * (1.0 - mixing) * pull[j]
+    unit = penalty * mixing
+    best = np.inf
+    worst = 0.0
+    halved = 0
+    for _newton in range(steps):
+        value = multinomial_terms(y, weight, eta, n, r, p)
+        for j in range(m):
+            own = norm_of(beta, j)
+            value += l1[j] * own + 0.5 * l2[j] * own * own
+        if not value <= best + 1e-10 * abs(best) and halved < 30:
+            for k in range(n_classes):  # the model was too bold: half the step
+                b0[k] = old0[k] + 0.5 * (b0[k] - old0[k])
+                for j in range(m):
+                    beta[k, j] = old[k, j] + 0.5 * (beta[k, j] - old[k, j])
+                for i in range(n):
+                    eta[k, i] = old_eta[k, i] + 0.5 * (eta[k, i] - old_eta[k, i])
+            halved += 1
+            continue
+        best = value
+        halved = 0
+        worst, na = optimality(Z, m, n, r, l1, l2, beta, grad, active)
+        if worst <= tol * unit:
+            break
+        for a in range(na):
+            curvature[a] = curvature_bound(Z[active[a]], p, weight, n)
+        bound0 = curvature_bound(ones, p, weight, n)
+        for k in range(n_classes):
+            old0[k] = b0[k]
+            for j in range(m):
+                old[k, j] = beta[k, j]
+            for i in range(n):
+                old_eta[k, i] = eta[k, i]
+                q[k, i] = r[k, i]
+                D[k, i] = 0.0
+        goal = max(0.1 * worst, 0.3 * tol * unit)
+        descend(
+            Z, n, na, active, r, p, weight, curvature, ones, bound0, l1, l2,
+            beta, b0, old, old0, D, q, goal, path,
+        )  # fmt: skip
+        for k in range(n_classes):
+            for i in range(n):
+                eta[k, i] += D[k, i]
+    return worst / unit
+
+
+@njit(nogil=True, cache=True)
+def solve_chunk(
+    chunk, penalty, mixing, tol, steps, Z, working, n_rows, y, weight, pull, beta, b0,
+    eta, r, grad, violation,
+):  # fmt: skip
+    """Solve the refits of a chunk, each at its own penalty."""
+    for t in range(chunk.shape[0]):
+        b = chunk[t]
+        violation[b] = solve(
+            Z[b],
+            working[b],
+            n_rows[b],
+            y[b],
+            weight[b],
+            pull[b],
+            penalty[b],
+            mixing,
+            beta[b],
+            b0[b],
+            eta[b],
+            r[b],
+            grad[b],
+            tol,
+            steps,
+        )

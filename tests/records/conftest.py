@@ -1,0 +1,268 @@
+"""One record of every class, made by hand."""
+
+from decimal import Decimal
+from fractions import Fraction
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from panelkit import records
+
+REPOSITORY = Path(__file__).parents[2]
+N_SAMPLES, N_FEATURES = 4, 3
+
+
+def objects(*values):
+    return np.array(values, dtype=object)
+
+
+def floats(*shape):
+    return np.linspace(0.1, 0.9, int(np.prod(shape))).reshape(shape)
+
+
+def whole(*shape):
+    return np.arange(int(np.prod(shape)), dtype=np.int64).reshape(shape)
+
+
+def findings():
+    return records.Findings(
+        (
+            records.Finding("few-subjects", "warning", "samples", "seen", "Do it."),
+            records.Finding("class-sizes", "info", "samples", "seen", "Do it."),
+        )
+    )
+
+
+def outcome():
+    return records.Outcome(
+        "binary", "response", "no", "yes", np.array([0.0, 1.0, 0.0, 1.0])
+    )
+
+
+def design():
+    return records.Design(
+        subject=np.array([0, 1, 2, 2]),
+        subject_ids=objects("P0", "P1", "P2"),
+        weights=floats(N_SAMPLES),
+        site=objects("north", "north", "south", "south"),
+        batch=None,
+    )
+
+
+def cohort():
+    return records.Cohort(
+        values=floats(N_FEATURES, N_SAMPLES),
+        features=objects("F0", "F1", "F2"),
+        samples=objects("S0", "S1", "S2", "S3"),
+        outcome=outcome(),
+        design=design(),
+        sample_columns={"age": objects("31", "32", "33", "34")},
+        feature_columns={"role": objects("marker", "marker", "control")},
+        findings=findings(),
+        dropped=(records.Dropped("sample", "S9", "matching", "no row"),),
+        flow=(records.Flow("yes", 3, 2, 2, 2, 2),),
+        sources={"expression": "0" * 64},
+    )
+
+
+def bound():
+    return records.ErrorBound(0.75, 3, 2.5, N_FEATURES, 0.8)
+
+
+def stability():
+    return records.Stability(
+        frequency=floats(N_FEATURES),
+        low=floats(N_FEATURES),
+        high=floats(N_FEATURES),
+        positive_share=floats(N_FEATURES),
+        picks=(whole(2), whole(1)),
+        bound=bound(),
+        shortlist=whole(1),
+        candidates=whole(2),
+        group=whole(N_FEATURES),
+        group_frequency=floats(N_FEATURES),
+        t=floats(N_FEATURES),
+    )
+
+
+def shortlist_table():
+    kinds = {
+        "feature": objects("F0", "F1"),
+        "sign": objects("+", "-"),
+        "group": whole(2),
+        "picked": np.array([True, False]),
+        "candidate": np.array([True, True]),
+    }
+    names = records.ShortlistTable.__dataclass_fields__
+    return records.ShortlistTable(**{n: kinds.get(n, floats(2)) for n in names})
+
+
+def frontier_row(maker="frequency", size=2):
+    return records.FrontierRow(
+        panel=f"{maker}-{size}",
+        maker=maker,
+        size=size,
+        markers=("F0", "F1")[:size],
+        metric_of="procedure",
+        metric=0.8,
+        metric_low=0.7,
+        metric_high=0.9,
+        metric_se_naive=0.02,
+        metric_se_corrected=0.03,
+        slope=0.9,
+        cost_total=Decimal("1200.50"),
+        cost_per_result=Decimal("12.01"),
+        cost_total_high=None,
+        platform="wells",
+        on_frontier=True,
+        chosen_by="smallest-within-one-se",
+    )
+
+
+def frontier():
+    return records.Frontier((frontier_row(), frontier_row("univariate", 1)))
+
+
+def headline(low=0.7):
+    return records.Headline("the procedure", 0.8, low, 0.9, True, "A sentence.")
+
+
+def choice():
+    rule = records.RuleChoice(
+        "smallest-within-one-se", True, "frequency-2", {"metric": 0.8}, "A sentence."
+    )
+    return records.Choice(headline(), (rule,))
+
+
+def comparator():
+    return records.Comparator("majority class", 0, 0.5, np.nan, np.nan, "A sentence.")
+
+
+def assay():
+    return records.AssayPrice(
+        marker="F0", platform="wells", tiers=((1, Decimal("2.50")), (9, Decimal(2)))
+    )
+
+
+def panel_cost():
+    return records.PanelCost(
+        currency="EUR",
+        platform="wells",
+        lines=(records.CostLine("reagents", Decimal("9.50"), Decimal("10.00")),),
+        **dict.fromkeys(
+            (
+                "total",
+                "total_high",
+                "cost_per_result",
+                "cost_per_result_high",
+                "one_off",
+                "recurring",
+                "per_year",
+            ),
+            Decimal("9.50"),
+        ),
+        samples_run=10,
+        results=Fraction(19, 2),
+        pools=1,
+        groups=(1,),
+        samples_per_run=(96,),
+        runs=1,
+        positions_per_run=96,
+        filled_positions=12,
+        control_positions=2,
+        preparations=0,
+    )
+
+
+def path_set():
+    return records.PathSet(
+        family="gaussian",
+        n_features=N_FEATURES,
+        penalties=floats(2, 2),
+        largest_penalty=floats(2),
+        certificate=floats(2, 2),
+        entry_order=(whole(2), whole(1)),
+        entries=(whole(2), whole(1)),
+        intercepts=floats(2, 2),
+        coefficient_features=(whole(2), whole(1)),
+        coefficient_values=(floats(2), floats(1)),
+        coefficient_borders=np.array([[0, 1, 2], [0, 0, 1]]),
+    )
+
+
+def run_summary():
+    return records.RunSummary(
+        study="study.toml",
+        outcome="response: yes against no",
+        n_samples=N_SAMPLES,
+        n_subjects=3,
+        n_features=N_FEATURES,
+        scheme="2 folds",
+        preparation=("filter",),
+        findings=findings(),
+        flow=cohort().flow,
+        bound=bound(),
+        shortlist=shortlist_table(),
+        frontier=frontier(),
+        choice=choice(),
+        comparators=(comparator(),),
+        costs=(panel_cost(),),
+        statement={},
+        provenance={},
+    )
+
+
+MADE = {
+    "AssayPrice": assay,
+    "Choice": choice,
+    "Cohort": cohort,
+    "Comparator": comparator,
+    "CostLine": lambda: panel_cost().lines[0],
+    "Design": design,
+    "Dropped": lambda: cohort().dropped[0],
+    "ErrorBound": bound,
+    "Finding": lambda: findings()[0],
+    "Findings": findings,
+    "Flow": lambda: cohort().flow[0],
+    "FoldPanels": lambda: records.FoldPanels(
+        "frequency", 2, whole(2, 2, 2), floats(2, 2)
+    ),
+    "FoldPlan": lambda: records.FoldPlan(whole(2, N_SAMPLES) % 2, 2),
+    "Frontier": frontier,
+    "FrontierRow": frontier_row,
+    "Headline": headline,
+    "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
+    "Outcome": outcome,
+    "PanelCost": panel_cost,
+    "PathSet": path_set,
+    "PriceList": lambda: records.PriceList((assay(),), findings()),
+    "RecipeState": lambda: records.RecipeState(
+        floats(N_FEATURES), np.ones(N_FEATURES, bool), objects("", "", "constant")
+    ),
+    "RuleChoice": lambda: choice().rules[0],
+    "RunRecord": lambda: records.RunRecord(
+        1, "0.1.0", {"seed": 1}, {"samples": "0" * 64}, {"python": "3.11"}
+    ),
+    "RunSummary": run_summary,
+    "ShortlistTable": shortlist_table,
+    "Stability": stability,
+    "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
+    "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
+}
+
+
+@pytest.fixture(scope="session")
+def make_record():
+    """Make one record of a class by its name; see `record_names`."""
+    return lambda name: MADE[name]()
+
+
+@pytest.fixture(scope="session")
+def record_names():
+    return set(MADE)
+
+
+@pytest.fixture(scope="session")
+def repository():
+    return REPOSITORY
