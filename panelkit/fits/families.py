@@ -72,6 +72,25 @@ class Problem:
     efron: bool = True
 
     @property
+    def code(self) -> int:
+        """Number by which the scalar kernels know the family."""
+        if self.family == "cox":
+            ties = (kernel_scalar.COX_BRESLOW, kernel_scalar.COX_EFRON)
+            return int(ties[self.efron])
+        codes = {
+            "gaussian": kernel_scalar.GAUSSIAN,
+            "binomial": kernel_scalar.BINOMIAL,
+        }
+        return int(codes[self.family])
+
+    def order(self, rows: NDArray[np.int64] | None = None) -> NDArray[np.int64]:
+        """Return rows by stratum, then descending time; one zero but for Cox."""
+        if self.family != "cox":
+            return np.zeros(1, np.int64)
+        here = slice(None) if rows is None else rows
+        return np.lexsort((-self.y[here], self.strata[here]))
+
+    @property
     def n_predictors(self) -> int:
         """Linear predictors of a refit."""
         return self.n_classes
@@ -101,13 +120,7 @@ class _Scalar:
     def __init__(self, problem: Problem, rows: Sequence[NDArray[np.int64]]) -> None:
         widest = max(len(chosen) for chosen in rows)
         survival = problem.family == "cox"
-        self.code = {
-            "gaussian": kernel_scalar.GAUSSIAN,
-            "binomial": kernel_scalar.BINOMIAL,
-            "cox": kernel_scalar.COX_EFRON
-            if problem.efron
-            else kernel_scalar.COX_BRESLOW,
-        }[problem.family]
+        self.code = problem.code
         self.y = _padded(rows, problem.y, widest)
         # only Cox reads these three; the others carry one column of them
         width = widest if survival else 1
@@ -116,8 +129,7 @@ class _Scalar:
         self.order = np.zeros((len(rows), width), np.int64)
         if survival:
             for b, chosen in enumerate(rows):
-                order = np.lexsort((-problem.y[chosen], problem.strata[chosen]))
-                self.order[b, : len(chosen)] = order
+                self.order[b, : len(chosen)] = problem.order(chosen)
 
     def start(self, refits: Any) -> None:
         """Start from zero, or from the log-odds of the classes."""

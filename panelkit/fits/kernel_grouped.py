@@ -167,7 +167,7 @@ def combine(path, length, c):
 def extrapolate(
     path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
 ):
-    """Take an Anderson step over the stored sweeps where it lowers model and penalty."""
+    """Take an Anderson step over the stored sweeps where it lowers the model."""
     n_classes = p.shape[0]
     c = np.empty(DEPTH - 1)
     if not combine(path, (na + 1) * n_classes, c):
@@ -398,3 +398,150 @@ def solve_chunk(
             tol,
             steps,
         )
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def cholesky_solve(A, b, m):
+    """Solve A x = b in place (A symmetric positive definite, m x m); True if so."""
+    for j in range(m):
+        d = A[j, j]
+        for k in range(j):
+            d -= A[j, k] * A[j, k]
+        if not d > 0.0:
+            return False
+        d = math.sqrt(d)
+        A[j, j] = d
+        for i in range(j + 1, m):
+            s = A[i, j]
+            for k in range(j):
+                s -= A[i, k] * A[j, k]
+            A[i, j] = s / d
+    for i in range(m):
+        s = b[i]
+        for k in range(i):
+            s -= A[i, k] * b[k]
+        b[i] = s / A[i, i]
+    for i in range(m - 1, -1, -1):
+        s = b[i]
+        for k in range(i + 1, m):
+            s -= A[k, i] * b[k]
+        b[i] = s / A[i, i]
+    return True
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def ridge_newton(Z, members, m, y, weight, penalty, coef, tol, steps):
+    """Minimise mean multinomial loss + penalty/2 * sum of squares over a few columns.
+
+    coef: (K, 1 + m), intercepts first, warm start; intercepts sum to 0.
+    Returns the largest |gradient| reached.
+    """
+    n_classes = coef.shape[0]
+    n = y.shape[0]
+    width = m + 1
+    size = n_classes * width
+    eta = np.empty((n_classes, n))
+    r = np.empty((n_classes, n))
+    p = np.empty((n_classes, n))
+    x = np.ones((width, n))
+    for a in range(m):
+        for i in range(n):
+            x[a + 1, i] = Z[members[a], i]
+    A = np.empty((size, size))
+    g = np.empty(size)
+    old = coef.copy()
+    best = np.inf
+    worst = np.inf
+    halved = 0
+    for _step in range(steps):
+        value = 0.0
+        level = 0.0
+        for k in range(n_classes):
+            level += coef[k, 0]
+            for i in range(n):
+                eta[k, i] = 0.0
+            for a in range(width):
+                c = coef[k, a]
+                if a > 0:
+                    value += 0.5 * penalty * c * c
+                for i in range(n):
+                    eta[k, i] += c * x[a, i]
+        value += 0.5 * level * level  # no model changes with the level: hold it at 0
+        value += multinomial_terms(y, weight, eta, n, r, p)
+        if not value <= best + 1e-12 * abs(best) and halved < 30:
+            for k in range(n_classes):
+                for a in range(width):
+                    coef[k, a] = old[k, a] + 0.5 * (coef[k, a] - old[k, a])
+            halved += 1
+            continue
+        best = value
+        halved = 0
+        worst = 0.0
+        for k in range(n_classes):
+            for a in range(width):
+                s = -level if a == 0 else -penalty * coef[k, a]
+                for i in range(n):
+                    s += r[k, i] * x[a, i]
+                g[k * width + a] = s
+                worst = max(worst, abs(s))
+        if worst <= tol:
+            break
+        for k in range(n_classes):
+            for c in range(k + 1):
+                for a in range(width):
+                    for b in range(width):
+                        s = 0.0
+                        for i in range(n):
+                            s += weight[i] * p[k, i] * p[c, i] * x[a, i] * x[b, i]
+                        s = -s
+                        if k == c:
+                            for i in range(n):
+                                s += weight[i] * p[k, i] * x[a, i] * x[b, i]
+                            if a == b and a > 0:
+                                s += penalty
+                        if a == 0 and b == 0:
+                            s += 1.0
+                        A[k * width + a, c * width + b] = s
+        if not cholesky_solve(A, g, size):
+            break
+        for k in range(n_classes):
+            for a in range(width):
+                old[k, a] = coef[k, a]
+                coef[k, a] += g[k * width + a]
+    return worst
+
+
+@njit(nogil=True, cache=True)
+def ridge_panels(Z, members, sizes, y, weight, penalties, steps, tol, coefs):
+    """Fit every panel at every penalty, warm along the penalties.
+
+    coefs: (panels, penalties, K, 1 + largest size), written; returns the worst
+    gradient.
+    """
+    n_classes = coefs.shape[2]
+    worst = 0.0
+    for s in range(sizes.shape[0]):
+        m = sizes[s]
+        coef = np.zeros((n_classes, m + 1))
+        for k in range(penalties.shape[0]):
+            left = ridge_newton(
+                Z, members[s], m, y, weight, penalties[k], coef, tol, steps
+            )
+            worst = max(worst, left)
+            for c in range(n_classes):
+                for a in range(m + 1):
+                    coefs[s, k, c, a] = coef[c, a]
+    return worst
+
+
+@njit(nogil=True, cache=True)
+def predict_panels(Z, members, sizes, coefs, eta):
+    """Write linear predictors (panels, penalties, K, n), summed in marker order."""
+    for s in range(sizes.shape[0]):
+        for k in range(coefs.shape[1]):
+            for c in range(coefs.shape[2]):
+                for i in range(Z.shape[1]):
+                    total = coefs[s, k, c, 0]
+                    for a in range(sizes[s]):
+                        total += coefs[s, k, c, a + 1] * Z[members[s, a], i]
+                    eta[s, k, c, i] = total

@@ -1,12 +1,12 @@
 """Kernels of the lockstep engine: what is proposed, decided, kept and stored.
 
 The product proposes (`encode_deviations`, `filter_tile`: float32, may only let too
-much through); the canonical kernel decides (everything else: float64, fixed order,
-a refit's own rows). The penalised solves are in `kernel_scalar` and
-`kernel_grouped`. Plain functions on arrays, no panelkit imports; all release the interpreter lock.
+much through); the canonical kernel decides (everything else: float64, fixed order, a
+refit's own rows). The penalised solves are in `kernel_scalar` and `kernel_grouped`.
+Plain functions on arrays, no panelkit imports; all release the interpreter lock.
 
-Symbols: B refits of a block, n rows of a refit, K linear predictors (1, or the classes),
-m working features, r weighted residual, z standardised column.
+Symbols: B refits of a block, n rows of a refit, K linear predictors (1, or the
+classes), m working features, r weighted residual, z standardised column.
 """
 
 import math

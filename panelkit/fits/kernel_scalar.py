@@ -1,12 +1,13 @@
-"""Kernels for families with one linear predictor: losses and the penalised solve.
+"""Kernels for families with one linear predictor: losses, penalised solve, refits.
 
-Gaussian, binomial and Cox share one prox-Newton coordinate descent; only `loss_terms`
-knows them apart. Plain functions on arrays, no panelkit imports, float64, fixed order.
+Gaussian, binomial and Cox share one prox-Newton coordinate descent and one ridge refit;
+only `loss_terms` and `curves` know them apart. Plain functions on arrays, no panelkit
+imports, float64, fixed order.
 
 Symbols: n rows, m working features, z standardised column, r weighted residual (minus
 the gradient by the linear predictor), h what the curvature H is made of, HZ the product
-of H with the active columns, q = r - H d residual of the quadratic model at the change d,
-l1 and l2 a feature's penalties.
+of H with the active columns, q = r - H d residual of the quadratic model at the change
+d, l1 and l2 a feature's penalties.
 """
 
 import math
@@ -257,7 +258,7 @@ def combine(path, length, c):
 
 @njit(nogil=True, cache=True, fastmath=FAST)
 def model_value(Z, HZ, h0, n, na, active, l1, l2, r, x, x0, old, old0, d, q):
-    """Return quadratic model plus penalty at coefficients x, x0; write d and q there."""
+    """Return quadratic model plus penalty at coefficients x, x0; write d, q there."""
     value = 0.0
     step0 = x0 - old0
     for i in range(n):
@@ -540,3 +541,172 @@ def solve_chunk(
             tol,
             steps,
         )
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def cholesky_solve(A, b, m):
+    """Solve A x = b in place (A symmetric positive definite, m x m); True if so."""
+    for j in range(m):
+        d = A[j, j]
+        for k in range(j):
+            d -= A[j, k] * A[j, k]
+        if not d > 0.0:
+            return False
+        d = math.sqrt(d)
+        A[j, j] = d
+        for i in range(j + 1, m):
+            s = A[i, j]
+            for k in range(j):
+                s -= A[i, k] * A[j, k]
+            A[i, j] = s / d
+    for i in range(m):
+        s = b[i]
+        for k in range(i):
+            s -= A[i, k] * b[k]
+        b[i] = s / A[i, i]
+    for i in range(m - 1, -1, -1):
+        s = b[i]
+        for k in range(i + 1, m):
+            s -= A[k, i] * b[k]
+        b[i] = s / A[i, i]
+    return True
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def ridge_newton(
+    family, Z, members, m, y, event, stratum, order, weight, penalty, coef, tol, steps
+):
+    """Minimise mean loss + penalty/2 * sum of squares over a few columns.
+
+    Z: (features, n) standardised; members[:m]: the rows of Z in the model.
+    coef: intercept first (0 for Cox), warm start; returns the largest |gradient|.
+    """
+    n = y.shape[0]
+    free = 1 if family <= BINOMIAL else 0
+    eta = np.empty(n)
+    r = np.empty(n)
+    h = np.empty(n)
+    HZ = np.empty((m, n))
+    diagonal = np.empty(m)
+    A = np.empty((m + free, m + free))
+    g = np.empty(m + free)
+    old = coef.copy()
+    best = np.inf
+    worst = np.inf
+    halved = 0
+    for _step in range(steps):
+        for i in range(n):
+            eta[i] = coef[0]
+        for a in range(m):
+            c = coef[a + 1]
+            for i in range(n):
+                eta[i] += c * Z[members[a], i]
+        value = loss_terms(family, y, event, stratum, order, weight, eta, n, r, h)
+        for a in range(m):
+            value += 0.5 * penalty * coef[a + 1] * coef[a + 1]
+        if not value <= best + 1e-12 * abs(best) and halved < 30:
+            for a in range(m + 1):
+                coef[a] = old[a] + 0.5 * (coef[a] - old[a])
+            halved += 1
+            continue
+        best = value
+        halved = 0
+        worst = 0.0
+        if free == 1:
+            s = 0.0
+            for i in range(n):
+                s += r[i]
+            g[0] = s
+            worst = abs(s)
+        for a in range(m):
+            s = dot(r, Z[members[a]], n) - penalty * coef[a + 1]
+            g[a + free] = s
+            worst = max(worst, abs(s))
+        if worst <= tol:
+            break
+        curves(
+            family, y, event, stratum, order, weight, h, n, Z, members, m, HZ, diagonal
+        )
+        if free == 1:
+            s = 0.0
+            for i in range(n):
+                s += h[i]
+            A[0, 0] = s
+        for a in range(m):
+            if free == 1:
+                s = 0.0
+                for i in range(n):
+                    s += HZ[a, i]
+                A[a + 1, 0] = s
+            for b in range(a):
+                A[a + free, b + free] = dot(HZ[a], Z[members[b]], n)
+            A[a + free, a + free] = diagonal[a] + penalty
+        if not cholesky_solve(A, g, m + free):
+            break
+        for a in range(m + 1):
+            old[a] = coef[a]
+        for a in range(m + free):
+            coef[a + 1 - free] += g[a]
+    return worst
+
+
+@njit(nogil=True, cache=True)
+def ridge_panels(
+    family,
+    Z,
+    members,
+    sizes,
+    y,
+    event,
+    stratum,
+    order,
+    weight,
+    penalties,
+    start,
+    steps,
+    tol,
+    coefs,
+):
+    """Fit every panel at every penalty, warm along the penalties.
+
+    members: (panels, largest size) rows of Z, sizes: (panels,) how many count; start:
+    the null model's intercept. coefs: (panels, penalties, 1 + largest size), written.
+    Returns the worst gradient.
+    """
+    worst = 0.0
+    for s in range(sizes.shape[0]):
+        m = sizes[s]
+        coef = np.zeros(m + 1)
+        coef[0] = start
+        for k in range(penalties.shape[0]):
+            left = ridge_newton(
+                family,
+                Z,
+                members[s],
+                m,
+                y,
+                event,
+                stratum,
+                order,
+                weight,
+                penalties[k],
+                coef,
+                tol,
+                steps,
+            )
+            worst = max(worst, left)
+            for a in range(m + 1):
+                coefs[s, k, a] = coef[a]
+    return worst
+
+
+@njit(nogil=True, cache=True)
+def predict_panels(Z, members, sizes, coefs, eta):
+    """Write the linear predictors (panels, penalties, n), summed in marker order."""
+    for s in range(sizes.shape[0]):
+        for k in range(coefs.shape[1]):
+            for i in range(Z.shape[1]):
+                total = coefs[s, k, 0]
+                for a in range(sizes[s]):
+                    total += coefs[s, k, a + 1] * Z[members[s, a], i]
+                eta[s, k, i] = total

@@ -243,7 +243,7 @@ def _one_path(
 
 
 def _centre(intercept: NDArray[np.float64]) -> None:
-    """Centre intercepts over the classes that the subsample has; the others get -inf."""
+    """Centre intercepts over the classes that there are; absent ones get -inf."""
     absent = intercept < 0.5 * ABSENT
     intercept[absent] = np.nan
     intercept -= np.nanmean(intercept, axis=1, keepdims=True)

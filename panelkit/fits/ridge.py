@@ -1,16 +1,27 @@
 """Ridge on all features at once, through the samples' kernel matrix."""
 
+from typing import Any
+
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
+from scipy.linalg import lu_factor, lu_solve
 
 from panelkit.errors import FitError
+from panelkit.fits.arguments import problem_of
+from panelkit.fits.families import Family, Problem
+from panelkit.fits.kernel_cache import kernel_cache
 from panelkit.records import MatrixSource
+
+with kernel_cache():
+    from panelkit.fits import kernel_grouped, kernel_scalar
 
 __all__ = ["kernel_matrix", "ridge_predictions"]
 
 TILE = 2048
 STEPS = 60
 TOLERANCE = 1e-7
+BOUND_STEPS = 20_000
+BOUND_TOLERANCE = 1e-6
 
 
 def kernel_matrix(
@@ -53,97 +64,192 @@ def kernel_matrix(
     return kernel / max(1, int(source.included.sum()))
 
 
-def ridge_predictions(
+def ridge_predictions(  # noqa: PLR0913 - data, rows, family: each is one thing
     kernel: NDArray[np.float64],
-    y: NDArray[np.float64],
+    outcome: Any,
     weights: NDArray[np.float64],
     training: NDArray[np.int64],
     test: NDArray[np.int64],
     penalties: NDArray[np.float64],
+    *,
+    family: Family = "binomial",
+    strata: ArrayLike | None = None,
+    ties: str = "efron",
 ) -> NDArray[np.float64]:
-    r"""Return log-odds of ridge-penalised logistic models on all features.
+    r"""Return linear predictors of ridge-penalised models on all features.
 
     With the kernel K on the training rows, minimises the weighted mean loss of
-    :math:`f = b + K a` plus :math:`\lambda/2\, a^T K a`.
+    :math:`f = b + K a` plus :math:`\lambda/2\, a^T K a`; for several classes one a
+    and b each, for Cox without b.
 
     Parameters
     ----------
     kernel : ndarray of shape (n_samples, n_samples)
         From `kernel_matrix`.
-    y, weights : ndarray of shape (n_samples,)
-        Outcome (0 and 1) and observation weights.
+    outcome : array_like of shape (n_samples,), or (time, event)
+        As for `fit_paths`.
+    weights : ndarray of shape (n_samples,)
+        Observation weights.
     training, test : ndarray of int64
         Rows that teach, rows that are predicted.
     penalties : ndarray of shape (n_penalties,)
         Largest first.
+    family : {"gaussian", "binomial", "cox", "multinomial"}
+        As for `fit_paths`.
+    strata, ties
+        As for `fit_paths`.
 
     Returns
     -------
-    ndarray of shape (n_penalties, n_test)
-        Log-odds.
+    ndarray of shape (n_penalties[, n_classes], n_test)
+        Values, log-odds, log hazard ratios, or log chances up to a constant.
 
     Raises
     ------
+    UsageError
+        An outcome that does not suit the family.
     FitError
-        No convergence.
+        One class only, no event, or no convergence.
 
     References
     ----------
-    Hoerl & Kennard 1970, Technometrics 12:55; Zhu & Hastie 2004, Biostatistics 5:427.
+    Hoerl & Kennard 1970, Technometrics 12:55; Zhu & Hastie 2004, Biostatistics 5:427;
+    Boehning 1992, Ann Inst Stat Math 44:197 (bound for several classes).
     """
+    problem, _classes = problem_of(
+        outcome,
+        family,
+        [training],
+        len(kernel),
+        weights=weights,
+        strata=strata,
+        ties=ties,
+    )
     K = kernel[np.ix_(training, training)]
-    outcome = y[training]
     share = weights[training] / weights[training].sum()
-    mean = float((share * outcome).sum())
-    intercept = np.log(mean / (1.0 - mean))
-    dual = np.zeros(len(training))
-    predictions = np.empty((len(penalties), len(test)))
-    for k, penalty in enumerate(penalties):
-        intercept, dual = _newton(K, outcome, share, float(penalty), intercept, dual)
-        predictions[k] = intercept + kernel[np.ix_(test, training)] @ dual
-    return predictions
+    cross = kernel[np.ix_(test, training)]
+    kind = _Several if family == "multinomial" else _One
+    fit: _One | _Several = kind(problem, K, share, training)
+    predicted = [fit.solve(float(penalty), cross) for penalty in penalties]
+    return np.array(predicted)
 
 
-def _newton(
-    K: NDArray[np.float64],
-    y: NDArray[np.float64],
-    share: NDArray[np.float64],
-    penalty: float,
-    intercept: float,
-    dual: NDArray[np.float64],
-) -> tuple[float, NDArray[np.float64]]:
-    """Return intercept and dual coefficients by Newton steps with halving."""
-    n = len(y)
-    best = np.inf
-    before = (intercept, dual)
-    for _step in range(STEPS):
-        for _halving in range(30):
-            eta = intercept + K @ dual
-            value = float(
-                (share * (np.logaddexp(0.0, eta) - y * eta)).sum()
-                + 0.5 * penalty * dual @ (eta - intercept)
-            )
-            if value <= best + 1e-12 * abs(best):
-                break
-            intercept = before[0] + 0.5 * (intercept - before[0])
-            dual = before[1] + 0.5 * (dual - before[1])
-        best = value
-        p = 1.0 / (1.0 + np.exp(-eta))
-        r = share * (y - p)
-        # at the solution penalty * dual equals the weighted residual
-        if max(np.abs(r - penalty * dual).max() * n, abs(r.sum())) <= TOLERANCE:
-            return intercept, dual
-        h = share * np.maximum(p * (1.0 - p), 1e-10)
+class _One:
+    """Warm-started Newton steps for one linear predictor."""
+
+    def __init__(
+        self,
+        problem: Problem,
+        K: NDArray[np.float64],
+        share: NDArray[np.float64],
+        training: NDArray[np.int64],
+    ) -> None:
+        self._family = problem.code
+        self._K = K
+        self._terms = (
+            np.ascontiguousarray(problem.y[training]),
+            np.ascontiguousarray(problem.event[training]),
+            np.ascontiguousarray(problem.strata[training]),
+            problem.order(training),
+            share,
+        )
+        self._intercept = 0.0
+        if problem.family == "binomial":
+            mean = float((share * self._terms[0]).sum())
+            self._intercept = float(np.log(mean / (1.0 - mean)))
+        self._free = problem.family != "cox"
+        self._dual = np.zeros(len(training))
+
+    def _curvature(self, h: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Return the curvature of the loss by the linear predictors."""
+        n = len(h)
+        if self._free:
+            return h[:, None]  # diagonal: one column stands for it
+        HZ, diagonal, active = np.empty((n, n)), np.empty(n), np.arange(n)
+        kernel_scalar.curves(
+            self._family, *self._terms, h, n, np.eye(n), active, n, HZ, diagonal
+        )
+        return HZ
+
+    def solve(self, penalty: float, cross: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Return linear predictors of the test rows at a penalty."""
+        K, n = self._K, len(self._K)
+        r, h = np.empty(n), np.empty(n)
+        intercept, dual = self._intercept, self._dual
         before = (intercept, dual)
-        # (K + penalty / h) a + b = eta + r / h,  sum(a) = 0
-        A = K + np.diag(penalty / h)
-        solved = np.linalg.solve(A, np.column_stack([eta + r / h, np.ones(n)]))
-        intercept = float(solved[:, 0].sum() / solved[:, 1].sum())
-        dual = solved[:, 0] - intercept * solved[:, 1]
-    raise FitError(
+        best = np.inf
+        for _step in range(STEPS):
+            for _halving in range(30):
+                eta = intercept + K @ dual
+                value = kernel_scalar.loss_terms(
+                    self._family, *self._terms, eta, n, r, h
+                )
+                value += 0.5 * penalty * float(dual @ (eta - intercept))
+                if value <= best + 1e-12 * abs(best):
+                    break
+                intercept = before[0] + 0.5 * (intercept - before[0])
+                dual = before[1] + 0.5 * (dual - before[1])
+            best = value
+            # at the solution penalty * dual equals the weighted residual
+            off = float(np.abs(r - penalty * dual).max()) * n
+            if max(off, abs(float(r.sum())) if self._free else 0.0) <= TOLERANCE:
+                self._intercept, self._dual = intercept, dual
+                return np.asarray(intercept + cross @ dual)
+            before = (intercept, dual)
+            H = self._curvature(h)
+            # penalty * a = r - H (K a + b - eta), and the a sum to 0 where b is free
+            A = H @ K + penalty * np.eye(n)
+            right = np.column_stack([H @ eta + r, H @ np.ones(n)])
+            solved = np.linalg.solve(A, right)
+            intercept = 0.0
+            if self._free:
+                intercept = float(solved[:, 0].sum() / solved[:, 1].sum())
+            dual = solved[:, 0] - intercept * solved[:, 1]
+        raise _not_converged(penalty)
+
+
+class _Several:
+    """Steps on a fixed bound of the curvature, for several classes."""
+
+    def __init__(
+        self,
+        problem: Problem,
+        K: NDArray[np.float64],
+        share: NDArray[np.float64],
+        training: NDArray[np.int64],
+    ) -> None:
+        self._K = K
+        self._y = np.ascontiguousarray(problem.y[training])
+        self._share = share
+        shape = (problem.n_classes, len(training))
+        self._dual = np.zeros(shape)
+        self._intercept = np.zeros(problem.n_classes)
+
+    def solve(self, penalty: float, cross: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Return linear predictors (n_classes, n_test) at a penalty."""
+        K, n = self._K, len(self._K)
+        # the curvature is at most one half of the weights, whatever the chances
+        half = 0.5 * self._share
+        factor = lu_factor(half[:, None] * K + penalty * np.eye(n))
+        ones = lu_solve(factor, half)
+        r, p = np.empty_like(self._dual), np.empty_like(self._dual)
+        for _step in range(BOUND_STEPS):
+            eta = self._intercept[:, None] + self._dual @ K
+            kernel_grouped.multinomial_terms(self._y, self._share, eta, n, r, p)
+            off = float(np.abs(r - penalty * self._dual).max()) * n
+            if max(off, float(np.abs(r.sum(axis=1)).max())) <= BOUND_TOLERANCE:
+                return np.asarray(self._intercept[:, None] + self._dual @ cross.T)
+            solved = lu_solve(factor, (half * eta + r).T).T
+            self._intercept = solved.sum(axis=1) / ones.sum()
+            self._dual = solved - self._intercept[:, None] * ones
+        raise _not_converged(penalty)
+
+
+def _not_converged(penalty: float) -> FitError:
+    return FitError(
         code="ridge-not-converged",
         where="ridge on all features",
-        what=f"no convergence within {STEPS} Newton steps at penalty {penalty:g}",
+        what=f"no convergence at penalty {penalty:g}",
         accepted="a penalty large enough for separable data",
         next_step="Raise the smallest ridge penalty",
     )

@@ -1,21 +1,24 @@
-"""Small refits: ridge-penalised logistic models of the panels themselves."""
+"""Small refits: ridge-penalised models of the panels themselves, all four families."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from panelkit.errors import FitError
+from panelkit.fits.arguments import problem_of
+from panelkit.fits.families import Family, Problem
 from panelkit.fits.kernel_cache import kernel_cache
 
 with kernel_cache():
-    from panelkit.fits import kernel_small as kernels
+    from panelkit.fits import kernel_grouped, kernel_scalar
 
 __all__ = ["PanelFits", "fit_panels", "standardised"]
 
 TOLERANCE = 1e-9
-STEPS = 100
+STEPS = 200
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -28,24 +31,34 @@ class PanelFits:
         Columns of each panel; only the first `sizes` count.
     sizes : ndarray of shape (n_panels,), int64
         Number of columns of each panel.
-    coefs : ndarray of shape (n_panels, n_penalties, 1 + largest size)
-        Intercept first; for standardised columns.
+    coefs : ndarray of shape (n_panels, n_penalties[, n_classes], 1 + largest size)
+        Intercept first (0 for Cox); for standardised columns.
+    classes : tuple
+        Class labels of a multinomial outcome.
     """
 
     members: NDArray[np.int64]
     sizes: NDArray[np.int64]
     coefs: NDArray[np.float64]
+    classes: tuple[object, ...] = ()
 
     def linear_predictors(self, Z: NDArray[np.float64]) -> NDArray[np.float64]:
-        """Return log-odds of shape (n_panels, n_penalties, n_rows).
+        """Return linear predictors, (n_panels, n_penalties[, n_classes], n_rows).
 
         Parameters
         ----------
         Z : ndarray of shape (n_columns, n_rows)
             Columns standardised as for the fit.
+
+        Returns
+        -------
+        ndarray
+            Value, log-odds, log hazard ratio, or log chances up to a constant; summed
+            in the order of the markers, so that a row's bits depend on no other row.
         """
-        eta = np.empty((*self.coefs.shape[:2], Z.shape[1]))
-        kernels.predict_panels(
+        eta = np.empty((*self.coefs.shape[:-1], Z.shape[1]))
+        kernel = kernel_grouped if self.coefs.ndim == 4 else kernel_scalar
+        kernel.predict_panels(
             np.ascontiguousarray(Z), self.members, self.sizes, self.coefs, eta
         )
         return eta
@@ -54,11 +67,15 @@ class PanelFits:
 def fit_panels(
     Z: NDArray[np.float64],
     panels: Sequence[NDArray[np.int64]],
-    y: NDArray[np.float64],
+    outcome: Any,
     weights: NDArray[np.float64],
     penalties: NDArray[np.float64],
+    *,
+    family: Family = "binomial",
+    strata: ArrayLike | None = None,
+    ties: str = "efron",
 ) -> PanelFits:
-    r"""Fit logistic models of several panels, each at several ridge penalties.
+    r"""Fit ridge-penalised models of several panels, each at several penalties.
 
     Minimises the weighted mean loss plus :math:`\lambda/2 \sum_j b_j^2`, intercept
     free.
@@ -69,12 +86,16 @@ def fit_panels(
         Standardised columns (`standardised`).
     panels : sequence of ndarray of int64
         Columns of each panel; may be empty (intercept only).
-    y : ndarray of shape (n_rows,)
-        0 and 1, both present.
+    outcome : array_like of shape (n_rows,), or (time, event)
+        As for `fit_paths`.
     weights : ndarray of shape (n_rows,)
         Positive; rescaled to sum to one.
     penalties : ndarray of shape (n_penalties,)
         Positive, largest first.
+    family : {"gaussian", "binomial", "cox", "multinomial"}
+        As for `fit_paths`.
+    strata, ties
+        As for `fit_paths`.
 
     Returns
     -------
@@ -83,38 +104,33 @@ def fit_panels(
 
     Raises
     ------
+    UsageError
+        An outcome that does not suit the family.
     FitError
-        One class only, or no convergence.
+        One class only, no event, or no convergence.
 
     References
     ----------
     Hoerl & Kennard 1970, Technometrics 12:55; le Cessie & van Houwelingen 1992,
-    Appl Stat 41:191.
+    Appl Stat 41:191; Verweij & van Houwelingen 1994, Stat Med 13:2427 (Cox).
     """
-    if np.ptp(y) == 0.0:
-        raise FitError(
-            code="one-class-refit",
-            where="refit of a panel",
-            what="rows of one class only",
-            accepted="both classes among the training rows",
-            next_step="Use fewer folds or more samples",
-        )
+    n = Z.shape[1]
+    problem, classes = problem_of(
+        outcome,
+        family,
+        [np.arange(n)],
+        n,
+        weights=weights,
+        strata=strata,
+        ties=ties,
+    )
     sizes = np.array([len(panel) for panel in panels], np.int64)
     members = np.zeros((len(panels), max(1, int(sizes.max(initial=0)))), np.int64)
     for s, panel in enumerate(panels):
         members[s, : len(panel)] = panel
-    coefs = np.zeros((len(panels), len(penalties), 1 + members.shape[1]))
-    worst = kernels.ridge_panels(
-        np.ascontiguousarray(Z),
-        members,
-        sizes,
-        y,
-        weights / weights.sum(),
-        penalties,
-        STEPS,
-        TOLERANCE,
-        coefs,
-    )
+    grid = np.ascontiguousarray(penalties, np.float64)
+    fit = _grouped_fits if family == "multinomial" else _scalar_fits
+    coefs, worst = fit(problem, np.ascontiguousarray(Z), members, sizes, grid)
     if not worst <= 100 * TOLERANCE:
         raise FitError(
             code="refit-not-converged",
@@ -123,7 +139,63 @@ def fit_panels(
             accepted=f"at most {100 * TOLERANCE:g}",
             next_step="Raise the smallest ridge penalty",
         )
-    return PanelFits(members, sizes, coefs)
+    return PanelFits(members, sizes, coefs, classes)
+
+
+def _scalar_fits(
+    problem: Problem,
+    Z: NDArray[np.float64],
+    members: NDArray[np.int64],
+    sizes: NDArray[np.int64],
+    penalties: NDArray[np.float64],
+) -> tuple[NDArray[np.float64], float]:
+    share = problem.weights / problem.weights.sum()
+    start = 0.0
+    if problem.family == "binomial":
+        mean = float((share * problem.y).sum())
+        start = float(np.log(mean / (1.0 - mean)))
+    coefs = np.zeros((len(sizes), len(penalties), 1 + members.shape[1]))
+    worst = kernel_scalar.ridge_panels(
+        problem.code,
+        Z,
+        members,
+        sizes,
+        problem.y,
+        problem.event,
+        problem.strata,
+        problem.order(),
+        share,
+        penalties,
+        start,
+        STEPS,
+        TOLERANCE,
+        coefs,
+    )
+    return coefs, float(worst)
+
+
+def _grouped_fits(
+    problem: Problem,
+    Z: NDArray[np.float64],
+    members: NDArray[np.int64],
+    sizes: NDArray[np.int64],
+    penalties: NDArray[np.float64],
+) -> tuple[NDArray[np.float64], float]:
+    share = problem.weights / problem.weights.sum()
+    shape = (len(sizes), len(penalties), problem.n_classes, 1 + members.shape[1])
+    coefs = np.zeros(shape)
+    worst = kernel_grouped.ridge_panels(
+        Z,
+        members,
+        sizes,
+        problem.y,
+        share,
+        penalties,
+        STEPS,
+        TOLERANCE,
+        coefs,
+    )
+    return coefs, float(worst)
 
 
 def standardised(

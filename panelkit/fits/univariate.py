@@ -10,7 +10,7 @@ from panelkit.fits.kernel_cache import kernel_cache
 from panelkit.records import MatrixSource
 
 with kernel_cache():
-    from panelkit.fits import kernel_small as kernels
+    from panelkit.fits import kernel_univariate as kernels
 
 __all__ = ["Univariate", "rank_univariate"]
 

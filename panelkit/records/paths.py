@@ -46,8 +46,9 @@ class PathSet(Record):
         a second axis where there are several classes.
     coefficient_borders : ndarray of shape (n_subsamples, n_penalties + 1), int64
         Where each penalty's coefficients begin and end.
-    covariate_coefficients : ndarray of shape (n_subsamples, n_penalties, n_covariates[, n_classes]), float64
-        Of the unpenalised covariates, original scale.
+    covariate_coefficients : ndarray of float64
+        Of the unpenalised covariates, original scale; shape (n_subsamples,
+        n_penalties, n_covariates[, n_classes]).
     classes : tuple
         Class labels of a multinomial outcome, in the order of the last axis.
     """

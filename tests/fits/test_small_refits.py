@@ -115,7 +115,7 @@ def test_one_class_is_refused(cohort):
     X, _ = cohort
     with pytest.raises(FitError) as caught:
         fit_panels(X.T, [np.array([0])], np.ones(50), np.ones(50), PENALTIES)
-    assert caught.value.code == "one-class-refit"
+    assert caught.value.code == "one-class-subsample"
 
 
 def test_columns_are_standardised_by_training_rows_alone(cohort):

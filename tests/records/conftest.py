@@ -188,6 +188,7 @@ def path_set():
         coefficient_features=(whole(2), whole(1)),
         coefficient_values=(floats(2), floats(1)),
         coefficient_borders=np.array([[0, 1, 2], [0, 0, 1]]),
+        covariate_coefficients=floats(2, 2, 1),
     )
 
 

@@ -85,14 +85,7 @@ def test_a_second_run_into_the_same_folder_learns_no_fold(
     assert json.loads((copy_of_run / "timings.json").read_text())["resumed"] is True
 
 
-LEFT_OPEN = pytest.mark.xfail(
-    strict=True, reason="a block cut in the middle is left open: ResourceWarning"
-)
-
-
-@pytest.mark.parametrize(
-    "damage", ["empty", "junk", pytest.param("half", marks=LEFT_OPEN)]
-)
+@pytest.mark.parametrize("damage", ["empty", "half", "junk"])
 def test_a_damaged_block_is_learnt_again(
     study, finished, copy_of_run, contents, damage
 ):
