@@ -198,8 +198,10 @@ class _One:
             before = (intercept, dual)
             H = self._curvature(h)
             # penalty * a = r - H (K a + b - eta), and the a sum to 0 where b is free
-            A = H @ K + penalty * np.eye(n)
-            right = np.column_stack([H @ eta + r, H @ np.ones(n)])
+            times = np.multiply if self._free else np.matmul
+            A = times(H, K) + penalty * np.eye(n)
+            curved = times(H, np.column_stack([eta, np.ones(n)]))
+            right = np.column_stack([curved[:, 0] + r, curved[:, 1]])
             solved = np.linalg.solve(A, right)
             intercept = 0.0
             if self._free:
