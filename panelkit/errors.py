@@ -88,8 +88,8 @@ class PanelkitError(Exception):
         super().__init__(f"{where}: {what}; {accepted}. {next_step}.")
 
     def __reduce__(self) -> tuple[object, ...]:
-        """Keep the keywords when the error crosses a process border."""
-        return (_rebuild, (type(self), self.as_dict()))
+        """Keep keywords and notes when the error crosses a process border."""
+        return (_rebuild, (type(self), self.as_dict()), self.__dict__)
 
     def as_dict(self) -> dict[str, str]:
         """Return the five parts by name."""

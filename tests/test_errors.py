@@ -80,9 +80,6 @@ def test_copying_keeps_the_parts():
         assert made.as_dict() == PARTS
 
 
-@pytest.mark.xfail(
-    strict=True, reason="notes (file and line, added by ingest) are left behind"
-)
 def test_pickling_keeps_notes():
     """In a process of its own: other packages change how exceptions are pickled."""
     code = (

@@ -43,6 +43,8 @@ def command(study: Path, as_json: bool, quiet: bool) -> None:
             markup=False,
         )
     stops = cohort.findings.of("stop")
+    if stops and quiet:
+        click.get_current_context().exit(InputDataError.exit_code)
     if stops:
         raise InputDataError(
             code="stop-found",

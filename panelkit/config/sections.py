@@ -19,7 +19,7 @@ MAX_SHOWN: Final = 60
 class Section(BaseModel):
     """A table of a TOML file: frozen, no key but its own."""
 
-    model_config = ConfigDict(frozen=True, extra="forbid")
+    model_config = ConfigDict(frozen=True, extra="forbid", allow_inf_nan=False)
 
 
 S = TypeVar("S", bound=Section)
@@ -55,7 +55,7 @@ def _refuse(error: ValidationError, kind: type[BaseModel], where: str) -> NoRetu
             accepted="the key has no default",
             next_step=f"Add {key}",
         ) from None
-    message, given = first["msg"].removeprefix("Input should be "), first["input"]
+    message, given = _accepted(first["type"], first["msg"]), first["input"]
     got = str(given) if isinstance(given, Decimal) else repr(given)
     if len(got) > MAX_SHOWN:
         got = f"{got[:MAX_SHOWN]}..."
@@ -66,6 +66,22 @@ def _refuse(error: ValidationError, kind: type[BaseModel], where: str) -> NoRetu
         accepted=f"accepted is {message}",
         next_step="Correct the value",
     ) from None
+
+
+_OWN_WORDS: Final = {
+    "dict_type": "a table, { key = value }",
+    "finite_number": "a number that is not infinite",
+    "mapping_type": "a table, { key = value }",
+    "model_type": "a table, { key = value }",
+    "too_short": "a list with at least one value",
+    "tuple_type": "a list",
+}
+
+
+def _accepted(kind: str, message: str) -> str:
+    """Return what is accepted, in our words."""
+    plain = message.removeprefix("Value error, ").removeprefix("Input should be ")
+    return _OWN_WORDS.get(kind, plain)
 
 
 def refuse_key(key: str, known: list[str], where: str) -> NoReturn:
@@ -108,7 +124,7 @@ def read_toml(path: str | Path, keys: Sequence[str]) -> dict[str, Any]:
         If the file cannot be read, is not TOML, or has another top-level key.
     """
     try:
-        text = Path(path).read_text(encoding="utf-8")
+        text = Path(path).read_text(encoding="utf-8-sig")
     except (OSError, UnicodeDecodeError) as error:
         raise StudyFileError(
             code="file-unreadable",

@@ -25,7 +25,7 @@ from panelkit.config.programme import (
     read_platform_file,
 )
 from panelkit.config.sections import Section, check_section, read_toml, refuse_key
-from panelkit.errors import StudyFileError
+from panelkit.errors import StudyFileError, name_some
 
 __all__ = [
     "AccuracySection",
@@ -51,8 +51,10 @@ def _number(value: object) -> object:
 
 
 def _ascending(value: object) -> object:
-    if isinstance(value, list) and value != sorted(set(value)):
-        raise ValueError("ascending, each size once")
+    if isinstance(value, list | tuple):
+        whole = all(type(size) is int for size in value)
+        if not whole or not value or list(value) != sorted(set(value)):
+            raise ValueError("a list of whole numbers, ascending, each once")
     return value
 
 
@@ -323,13 +325,15 @@ class Study:
         tables["cohort"] = cohort
         for name in ("prices", "platforms"):
             tables["panels"].pop(name)
-        if self.programme is not None:
-            written = self.programme.model_dump(mode="json", exclude_unset=True)
-            tables["programme"] = written
-        tables["platform"] = {
-            name: platform.model_dump(mode="json", exclude_unset=True)
-            for name, platform in sorted(self.platforms.items())
-        }
+        if self.programme is None:
+            return tables
+        tables["programme"] = self.programme.model_dump(mode="json")
+        tables["platform"] = {}
+        for name, platform in sorted(self.platforms.items()):
+            values = platform.model_dump(mode="json")
+            # where it comes from does not matter to results, its value does
+            rate = platform.effective_repeat_rate(self.programme)
+            tables["platform"][name] = values | {"repeat_rate": str(rate)}
         return tables
 
 
@@ -387,6 +391,7 @@ def read_study(path: str | Path) -> Study:
         name: check_section(kind, tables.get(name, {}), f"{path}, [{name}]")
         for name, kind in _TABLES.items()
     }
+    _check_lists(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
         _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
     programme = None
@@ -401,6 +406,28 @@ def read_study(path: str | Path) -> Study:
     )
     _check_pricing(study)
     return study
+
+
+def _check_lists(sections: Mapping[str, Any], path: str) -> None:
+    """Refuse lists that contradict themselves."""
+    always, never = sections["shortlist"].always, sections["shortlist"].never
+    if both := sorted(set(always) & set(never)):
+        raise StudyFileError(
+            code="always-and-never",
+            where=f"{path}, [shortlist], keys 'always' and 'never'",
+            what=f"both name {name_some(both)}",
+            accepted="a feature under one of the two",
+            next_step="Remove it from one of them",
+        )
+    makers = sections["panels"].makers
+    if len(set(makers)) < len(makers):
+        raise StudyFileError(
+            code="maker-twice",
+            where=f"{path}, [panels], key 'makers'",
+            what=f"a maker is named twice (got {list(makers)})",
+            accepted="each maker once",
+            next_step="Remove the repeated one",
+        )
 
 
 def _check_even(number: int, where: str) -> None:

@@ -14,7 +14,7 @@ from panelkit.config.currency import MINOR_DIGITS
 from panelkit.config.defaults import SEED
 from panelkit.config.programme import PlatformSection
 from panelkit.config.sections import Section
-from panelkit.config.template import TEMPLATE_SECTIONS, _explanations
+from panelkit.config.template import TEMPLATE_SECTIONS, explanations
 
 __all__ = ["study_schema"]
 
@@ -63,7 +63,7 @@ def study_schema() -> dict[str, Any]:
     for kind in kinds:
         section = sections[kind.__name__]
         section["description"] = (inspect.getdoc(kind) or "").partition("\n\n")[0]
-        for key, text in _explanations(kind).items():
+        for key, text in explanations(kind).items():
             if key in section["properties"]:
                 section["properties"][key]["description"] = text
     tables = {

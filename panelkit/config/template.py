@@ -24,7 +24,7 @@ from panelkit.config.study import (
     StatementSection,
 )
 
-__all__ = ["TEMPLATE_SECTIONS", "study_text", "toml_value"]
+__all__ = ["TEMPLATE_SECTIONS", "explanations", "study_text", "toml_value"]
 
 TEMPLATE_SECTIONS: dict[str, type[Section]] = {
     "cohort": CohortSection,
@@ -103,7 +103,7 @@ def _section_text(
     proposed: Mapping[str, Any] | None,
     notes: Mapping[str, str],
 ) -> str:
-    explained = _explanations(kind)
+    explained = explanations(kind)
     off = "" if proposed or name != "programme" else "# "
     lines = [f"{off}[{name}]"]
     for key, field in kind.model_fields.items():
@@ -130,7 +130,7 @@ def _comment(text: str) -> list[str]:
     ).splitlines()
 
 
-def _explanations(kind: type[Section]) -> dict[str, str]:
+def explanations(kind: type[Section]) -> dict[str, str]:
     """Return the descriptions of a section's docstring by key."""
     document = inspect.getdoc(kind) or ""
     body = document.partition("Attributes\n----------\n")[2]

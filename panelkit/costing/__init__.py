@@ -13,6 +13,7 @@ from panelkit.costing.honest_accuracy import (
 from panelkit.costing.makers import MAKERS, Evidence, Maker, evidence_of, maker_named
 from panelkit.costing.money import format_money, round_money
 from panelkit.costing.panel_prices import PanelPricer
+from panelkit.costing.pricing import programme_cost
 from panelkit.costing.procedure import (
     Learnt,
     Procedure,
@@ -20,7 +21,6 @@ from panelkit.costing.procedure import (
     Selected,
     Split,
 )
-from panelkit.costing.programme_cost import programme_cost
 from panelkit.costing.tuning import choose_within_one_se, within_one_se
 
 __all__ = [

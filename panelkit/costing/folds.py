@@ -47,7 +47,7 @@ def draw_folds(
             where="[accuracy] folds",
             what=f"{n_folds} folds for {smallest} subjects in the smaller class",
             accepted="at least 2 folds, and a subject of each class in every fold",
-            next_step=f"Set folds between 2 and {max(2, smallest)}, or add samples",
+            next_step="Use fewer folds, or add subjects of the smaller class",
         )
     plan = np.empty((len(generators), len(y)), np.int64)
     for repeat, generator in enumerate(generators):

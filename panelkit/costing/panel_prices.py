@@ -3,7 +3,7 @@
 from collections.abc import Mapping, Sequence
 
 from panelkit.config import PlatformSection, ProgrammeSection
-from panelkit.costing.programme_cost import programme_cost
+from panelkit.costing.pricing import programme_cost
 from panelkit.errors import NoPanelError
 from panelkit.records import PanelCost, PriceList
 
@@ -45,7 +45,7 @@ class PanelPricer:
         Returns
         -------
         tuple of PanelCost
-            Empty where no platform can run the panel; equals by platform order.
+            Empty where no platform can run the panel; equals by name of the platform.
 
         Raises
         ------
@@ -56,7 +56,9 @@ class PanelPricer:
         if key not in self._known:
             found = [self._cost(markers, name) for name in self._platforms]
             able = [cost for cost in found if cost is not None]
-            self._known[key] = tuple(sorted(able, key=lambda cost: cost.total))
+            self._known[key] = tuple(
+                sorted(able, key=lambda cost: (cost.total, cost.platform))
+            )
         return self._known[key]
 
     def _cost(self, markers: Sequence[str], platform: str) -> PanelCost | None:

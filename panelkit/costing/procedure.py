@@ -196,6 +196,20 @@ class Procedure:
     def select(self, data: ProcedureData, split: Split, threads: int = 1) -> Selected:
         """Learn preparation, stability and panels from the training rows.
 
+        Parameters
+        ----------
+        data : ProcedureData
+            Shared data.
+        split : Split
+            Its training rows and their pairs.
+        threads : int
+            Threads of the engine.
+
+        Returns
+        -------
+        Selected
+            Preparation, stability, panels.
+
         Raises
         ------
         FitError

@@ -311,11 +311,11 @@ def problem_of(
     nothing = np.zeros(n_samples)
     if family == "cox":
         time, event = _survival(outcome, n_samples)
-        _refuse_uniform(event, rows, "no event")
+        _refuse_no_event(event, rows)
         return Problem("cox", time, event, groups, share, 1, ties == "efron"), ()
     if family == "multinomial":
         classes, code = _classes(outcome, n_samples)
-        _refuse_uniform(code, rows, "rows of one class only")
+        _refuse_one_class(code, rows)
         problem = Problem("multinomial", code, nothing, groups, share, len(classes))
         return problem, classes
     y = vector(outcome, n_samples, "outcome")
@@ -329,7 +329,7 @@ def problem_of(
             accepted="0 and 1 for family 'binomial'",
             next_step="Code the positive class as 1",
         )
-    _refuse_uniform(y, rows, "rows of one class only")
+    _refuse_one_class(y, rows)
     return Problem("binomial", y, nothing, groups, share), ()
 
 
@@ -392,21 +392,27 @@ def _classes(
     return tuple(classes.tolist()), code.astype(np.float64)
 
 
-def _refuse_uniform(
-    values: NDArray[np.float64], rows: list[NDArray[np.int64]], what: str
+def _refuse_one_class(
+    values: NDArray[np.float64], rows: list[NDArray[np.int64]]
 ) -> None:
-    """Refuse subsamples that cannot be fitted."""
-    if what == "no event":
-        bad = [b for b, chosen in enumerate(rows) if not values[chosen].any()]
-        code, accepted = "no-event-subsample", "an event in every subsample"
-    else:
-        bad = [b for b, chosen in enumerate(rows) if np.ptp(values[chosen]) == 0.0]
-        code, accepted = "one-class-subsample", "two classes in every subsample"
+    bad = [b for b, chosen in enumerate(rows) if np.ptp(values[chosen]) == 0.0]
     if bad:
         raise FitError(
-            code=code,
+            code="one-class-subsample",
             where=f"subsamples {name_some(bad)}",
-            what=what,
-            accepted=accepted,
+            what="rows of one class only",
+            accepted="two classes in every subsample",
             next_step="Stratify the subsamples by the outcome",
+        )
+
+
+def _refuse_no_event(event: NDArray[np.float64], rows: list[NDArray[np.int64]]) -> None:
+    bad = [b for b, chosen in enumerate(rows) if not event[chosen].any()]
+    if bad:
+        raise FitError(
+            code="no-event-subsample",
+            where=f"subsamples {name_some(bad)}",
+            what="no event",
+            accepted="an event in every subsample",
+            next_step="Stratify the subsamples by the events",
         )

@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
-from panelkit.fits.families import Problem, Solver
+from panelkit.fits.families import Problem, Solver, SolveRules
 from panelkit.fits.kernel_cache import kernel_cache
 from panelkit.fits.product import Question, TileProduct
 from panelkit.records import MatrixSource
@@ -115,6 +115,7 @@ class _Lockstep:
         self.rules = kernels.Rules(
             block.scaled, block.relative, block.mixing, block.tol, block.max_markers
         )
+        self.solve_rules = SolveRules(block.mixing, block.tol, block.steps)
         weights = block.feature_weights
         self.product = TileProduct(
             source, block.rows, block.problem.n_predictors, weights, block.scaled
@@ -167,7 +168,7 @@ class _Lockstep:
         pending = chunk[refits.state[chunk, kernels.PENDING] == 1]
         if not len(pending):
             return
-        self.solver.solve(refits, pending, self.block)
+        self.solver.solve(refits, pending, self.solve_rules)
         kernels.publish_chunk(
             pending,
             self.block.tol,
@@ -255,6 +256,7 @@ class _Lockstep:
         kernels.gather_chunk(
             self.source.base,
             self.source.fill,
+            *self.source.shift,
             self.refits.rows,
             self.refits.n_rows,
             chunk,

@@ -6,7 +6,7 @@ kernel solves a refit. The engine itself knows no family.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any, Literal, Protocol
+from typing import Any, Literal, NamedTuple, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,14 +17,19 @@ with kernel_cache():
     from panelkit.fits import kernel_grouped, kernel_scalar
     from panelkit.fits.kernel_paths import WORKING
 
-if TYPE_CHECKING:
-    from panelkit.fits.engine import BlockSpecification
-
-__all__ = ["FAMILIES", "Family", "Problem", "Solver"]
+__all__ = ["FAMILIES", "Family", "Problem", "SolveRules", "Solver"]
 
 Family = Literal["gaussian", "binomial", "cox", "multinomial"]
 FAMILIES: tuple[Family, ...] = ("gaussian", "binomial", "cox", "multinomial")
 ABSENT = -1e6  # linear predictor of a class that a subsample does not have
+
+
+class SolveRules(NamedTuple):
+    """How a penalty is solved: share of the L1 part, tolerance, Newton steps."""
+
+    mixing: float
+    tol: float
+    steps: int
 
 
 class Solver(Protocol):
@@ -34,9 +39,7 @@ class Solver(Protocol):
         """Set the linear predictors from which the null model is fitted."""
         ...
 
-    def solve(
-        self, refits: Any, pending: NDArray[np.int64], block: "BlockSpecification"
-    ) -> None:
+    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
         """Solve the pending refits at their present penalty."""
         ...
 
@@ -138,17 +141,15 @@ class _Scalar:
             refits.b0[:, 0] = np.log(share / (1.0 - share))
             refits.eta[:, 0] = refits.b0[:, :1]
 
-    def solve(
-        self, refits: Any, pending: NDArray[np.int64], block: "BlockSpecification"
-    ) -> None:
+    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
         """Solve the pending refits at their present penalty."""
         kernel_scalar.solve_chunk(
             self.code,
             pending,
             refits.now,
-            block.mixing,
-            block.tol,
-            block.steps,
+            rules.mixing,
+            rules.tol,
+            rules.steps,
             refits.Z,
             refits.state[:, WORKING],
             refits.n_rows,
@@ -193,16 +194,14 @@ class _Grouped:
         refits.b0[:] = logs
         refits.eta[:] = logs[:, :, None]
 
-    def solve(
-        self, refits: Any, pending: NDArray[np.int64], block: "BlockSpecification"
-    ) -> None:
+    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
         """Solve the pending refits at their present penalty."""
         kernel_grouped.solve_chunk(
             pending,
             refits.now,
-            block.mixing,
-            block.tol,
-            block.steps,
+            rules.mixing,
+            rules.tol,
+            rules.steps,
             refits.Z,
             refits.state[:, WORKING],
             refits.n_rows,

@@ -77,13 +77,21 @@ class Refits(NamedTuple):
 
 
 @njit(nogil=True, cache=True)
-def gather(base, fill, features, rows, n, out):
-    """Fill out[c, :n] with features[c] on the refit's rows, missing cells filled."""
+def gather(base, fill, left, right, features, rows, n, out):
+    """Fill out[c, :n] with features[c] on the refit's rows.
+
+    Measured cells get left @ right added, term by term; missing cells are filled.
+    """
     for c in range(features.shape[0]):
         j = features[c]
         for i in range(n):
             x = np.float64(base[j, rows[i]])
-            out[c, i] = fill[j] if x != x else x
+            if x != x:
+                x = fill[j]
+            else:
+                for q in range(left.shape[1]):
+                    x += left[j, q] * right[q, rows[i]]
+            out[c, i] = x
 
 
 @njit(nogil=True, cache=True, fastmath=FAST)
@@ -425,9 +433,18 @@ def publish_chunk(
 
 
 @njit(nogil=True, cache=True)
-def gather_chunk(base, fill, rows, n_rows, chunk, cut, candidates, fresh):
+def gather_chunk(base, fill, left, right, rows, n_rows, chunk, cut, candidates, fresh):
     """Gather the raw candidate columns of a chunk of refits."""
     for t in range(chunk.shape[0]):
         b = chunk[t]
         low, high = cut[t], cut[t + 1]
-        gather(base, fill, candidates[low:high], rows[b], n_rows[b], fresh[low:high])
+        gather(
+            base,
+            fill,
+            left,
+            right,
+            candidates[low:high],
+            rows[b],
+            n_rows[b],
+            fresh[low:high],
+        )

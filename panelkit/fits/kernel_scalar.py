@@ -366,26 +366,9 @@ def descend(
 
 @njit(nogil=True, cache=True, fastmath=FAST)
 def solve(
-    family,
-    Z,
-    m,
-    n,
-    y,
-    event,
-    stratum,
-    order,
-    weight,
-    pull,
-    penalty,
-    mixing,
-    beta,
-    b0,
-    eta,
-    r,
-    grad,
-    tol,
-    steps,
-):
+    family, Z, m, n, y, event, stratum, order, weight, pull, penalty, mixing, beta, b0,
+    eta, r, grad, tol, steps,
+):  # fmt: skip
     """Solve one refit at one penalty over its working set: prox-Newton descent.
 
     pull: feature weights of the working set. Warm start from beta, b0, eta; leaves
@@ -463,24 +446,9 @@ def solve(
                 h0[i] = h[i]
         goal = max(0.1 * worst, 0.3 * tol * unit)  # solve only as far as it is true
         b0 = descend(
-            Z,
-            HZ,
-            h0,
-            n,
-            na,
-            active,
-            curvature,
-            r,
-            l1,
-            l2,
-            beta,
-            b0,
-            old,
-            q,
-            goal,
-            path,
-            trial,
-        )
+            Z, HZ, h0, n, na, active, curvature, r, l1, l2, beta, b0, old, q, goal,
+            path, trial,
+        )  # fmt: skip
         d = b0 - old0
         for i in range(n):
             eta[i] += d
@@ -495,28 +463,9 @@ def solve(
 
 @njit(nogil=True, cache=True)
 def solve_chunk(
-    family,
-    chunk,
-    penalty,
-    mixing,
-    tol,
-    steps,
-    Z,
-    working,
-    n_rows,
-    y,
-    event,
-    stratum,
-    order,
-    weight,
-    pull,
-    beta,
-    b0,
-    eta,
-    r,
-    grad,
-    violation,
-):
+    family, chunk, penalty, mixing, tol, steps, Z, working, n_rows, y, event, stratum,
+    order, weight, pull, beta, b0, eta, r, grad, violation,
+):  # fmt: skip
     """Solve the refits of a chunk, each at its own penalty."""
     for t in range(chunk.shape[0]):
         b = chunk[t]
@@ -652,21 +601,9 @@ def ridge_newton(
 
 @njit(nogil=True, cache=True)
 def ridge_panels(
-    family,
-    Z,
-    members,
-    sizes,
-    y,
-    event,
-    stratum,
-    order,
-    weight,
-    penalties,
-    start,
-    steps,
-    tol,
-    coefs,
-):
+    family, Z, members, sizes, y, event, stratum, order, weight, penalties, start,
+    steps, tol, coefs,
+):  # fmt: skip
     """Fit every panel at every penalty, warm along the penalties.
 
     members: (panels, largest size) rows of Z, sizes: (panels,) how many count; start:
@@ -680,20 +617,9 @@ def ridge_panels(
         coef[0] = start
         for k in range(penalties.shape[0]):
             left = ridge_newton(
-                family,
-                Z,
-                members[s],
-                m,
-                y,
-                event,
-                stratum,
-                order,
-                weight,
-                penalties[k],
-                coef,
-                tol,
-                steps,
-            )
+                family, Z, members[s], m, y, event, stratum, order, weight,
+                penalties[k], coef, tol, steps,
+            )  # fmt: skip
             worst = max(worst, left)
             for a in range(m + 1):
                 coefs[s, k, a] = coef[a]

@@ -10,7 +10,9 @@ from numba import njit
 
 
 @njit(nogil=True, cache=True)
-def welch(base, fill, included, rows, y, weight, n_units, means, variances, t):
+def welch(
+    base, fill, left, right, included, rows, y, weight, n_units, means, variances, t
+):
     """Write weighted class means, variances and Welch's t of every included feature.
 
     rows: samples; y: their class; n_units: independent units (subjects) a class.
@@ -29,7 +31,12 @@ def welch(base, fill, included, rows, y, weight, n_units, means, variances, t):
         m1 = 0.0
         for i in range(n):
             v = np.float64(base[j, rows[i]])
-            x[i] = fill[j] if v != v else v
+            if v != v:
+                v = fill[j]
+            else:
+                for q in range(left.shape[1]):
+                    v += left[j, q] * right[q, rows[i]]
+            x[i] = v
             if y[i] > 0.5:
                 m1 += weight[i] * x[i]
             else:

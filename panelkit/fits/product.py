@@ -83,6 +83,7 @@ class TileProduct:
         self.columns = self._columns(rows)
         self._copy: NDArray[np.float32] | None = None
         self._direct = source.base.dtype == np.float32
+        self._rank = source.shift[0].shape[1]
         self._has_missing = np.zeros(len(self.starts), np.bool_)
         self._exponent: dict[int, NDArray[np.int32]] = {}  # of tiles that need scaling
         self.code = np.zeros((n_features, self._n_refits), np.uint8)
@@ -109,13 +110,22 @@ class TileProduct:
         if 4 * n_features * len(self.columns) > COPY_LIMIT:
             return False
         as_it_stands = self._direct and len(self.columns) == n_samples
+        as_it_stands = as_it_stands and not self._rank
         return not as_it_stands or bool(self._has_missing.any() or self._exponent)
 
-    def survey(self, start: int) -> None:
-        """Look at a tile once: missing cells, sizes beyond float32's comfort."""
+    def _values(self, start: int) -> NDArray[np.floating[Any]]:
+        """Return a tile of the base with its shift added, NaN where missing."""
         raw = self._source.base[start : start + TILE]
         if len(self.columns) < raw.shape[1]:
             raw = raw[:, self.columns]
+        if self._rank:
+            left, right = self._source.shift
+            raw = raw + left[start : start + TILE] @ right[:, self.columns]
+        return raw
+
+    def survey(self, start: int) -> None:
+        """Look at a tile once: missing cells, sizes beyond float32's comfort."""
+        raw = self._values(start)
         with np.errstate(over="ignore"):
             squares = np.einsum("ij,ij->i", raw, raw, dtype=np.float64)
             if np.isnan(squares).any():
@@ -146,9 +156,7 @@ class TileProduct:
         A feature may be scaled by a power of two: its gradient and its deviation change
         alike.
         """
-        raw = self._source.base[start : start + TILE]
-        if len(self.columns) < raw.shape[1]:
-            raw = raw[:, self.columns]
+        raw = self._values(start)
         exponent = self._exponent.get(start)
         if exponent is None:
             out[...] = raw
@@ -165,7 +173,7 @@ class TileProduct:
             return self._copy[start : start + TILE]
         raw = self._source.base[start : start + TILE]
         plain = not self._has_missing[start // TILE] and start not in self._exponent
-        if self._direct and plain:
+        if self._direct and plain and not self._rank:
             return np.asarray(raw, np.float32)
         tile = buffer[: len(raw)]
         self._convert(start, tile)
@@ -233,8 +241,10 @@ class TileProduct:
         n_columns = len(self.columns)
         squares = np.einsum("ij,ij->i", tile, tile, dtype=np.float64)
         self._margin[here] = 1.1 * (n_columns + 8) * ROUNDING * np.sqrt(squares)
-        raw = self._source.base[here]
-        self.code[here][(raw == raw[:, :1]).all(axis=1)] = kernels.CODE_SETTLED
+        if not self._rank:
+            raw = self._source.base[here]
+            constant = (raw == raw[:, :1]).all(axis=1)
+            self.code[here][constant] = kernels.CODE_SETTLED
         top = np.zeros(self._n_refits, np.float32)
         if not self._scaled:
             self._prepare_unscaled(start, tile, residuals, length, local, top)

@@ -51,6 +51,8 @@ def kernel_matrix(
     for start in range(0, n_features, TILE):
         here = slice(start, start + TILE)
         tile = source.base[here][source.included[here]].astype(np.float64)
+        left, right = source.shift
+        tile += left[here][source.included[here]] @ right
         gap = np.isnan(tile)
         if gap.any():
             fill = source.fill[here][source.included[here]]

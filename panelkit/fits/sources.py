@@ -67,13 +67,14 @@ class ArraySource:
         Not a matrix of finite numbers.
     """
 
-    __slots__ = ("base", "fill", "included")
+    __slots__ = ("base", "fill", "included", "shift")
 
     def __init__(self, matrix: Any) -> None:
         self.base = feature_major(matrix)
         n_features = self.base.shape[0]
         self.fill: NDArray[np.float64] = np.zeros(n_features)
         self.included: NDArray[np.bool_] = np.ones(n_features, np.bool_)
+        self.shift = (np.empty((n_features, 0)), np.empty((0, self.base.shape[1])))
         for start in range(0, n_features, 4096):
             bad = ~np.isfinite(self.base[start : start + 4096])
             if bad.any():

@@ -92,6 +92,7 @@ def rank_univariate(
     kernels.welch(
         source.base,
         source.fill,
+        *source.shift,
         source.included,
         rows,
         y[rows],

@@ -149,8 +149,7 @@ class Recipe:
         rows: NDArray[np.int64],
     ) -> NDArray[np.float64]:
         """Return the prepared matrix of any rows, features by rows, float64."""
-        values = base[:, rows].astype(np.float64)
-        return np.where(np.isnan(values), state.fill[:, None], values)
+        return self.view(state, base).columns(np.arange(len(base)), rows)
 
     def view(self, state: RecipeState, base: NDArray[np.floating[Any]]) -> DesignView:
         """Return the view through which a fold's fits read the shared base."""

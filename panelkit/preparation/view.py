@@ -21,10 +21,14 @@ class DesignView:
         After the per-sample steps; NaN where missing; shared by all folds.
     state : RecipeState
         Learnt from the fold's training rows.
+    corrections : tuple of ndarray of shapes (n_features, rank) and (rank, n_samples)
+        Row and column shifts as a low-rank product, added to measured values; None for
+        no shift.
     """
 
     base: NDArray[np.floating[Any]]
     state: RecipeState
+    corrections: tuple[NDArray[np.float64], NDArray[np.float64]] | None = None
 
     @property
     def fill(self) -> NDArray[np.float64]:
@@ -35,6 +39,14 @@ class DesignView:
     def included(self) -> NDArray[np.bool_]:
         """Whether each feature is in."""
         return self.state.included
+
+    @property
+    def shift(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """What is added to measured values, as a product."""
+        if self.corrections is not None:
+            return self.corrections
+        n_features, n_samples = self.base.shape
+        return np.empty((n_features, 0)), np.empty((0, n_samples))
 
     def column(self, feature: int, rows: NDArray[np.int64]) -> NDArray[np.float64]:
         """Return one prepared feature on the given rows, float64.
@@ -51,13 +63,16 @@ class DesignView:
         ndarray of shape (n_rows,), float64
             The same bits as `Recipe.apply` gives.
         """
-        values = np.asarray(self.base[feature, rows], np.float64)
-        return np.where(np.isnan(values), self.state.fill[feature], values)
+        values: NDArray[np.float64] = self.columns(np.array([feature]), rows)[0]
+        return values
 
     def columns(
         self, features: NDArray[np.int64], rows: NDArray[np.int64]
     ) -> NDArray[np.float64]:
         """Return several features, shape (n_chosen, n_rows)."""
-        values = np.asarray(self.base[np.ix_(features, rows)], np.float64)
+        values = np.array(self.base[np.ix_(features, rows)], np.float64)
+        left, right = self.shift
+        for q in range(left.shape[1]):  # term by term, as the kernels add them
+            values += left[features, q][:, None] * right[q, rows]
         fill = self.state.fill[features, None]
         return np.where(np.isnan(values), fill, values)

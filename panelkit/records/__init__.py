@@ -17,14 +17,13 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
+from panelkit.records.panel_cost import CostLine, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeState
 from panelkit.records.prices import (
     ANY_MARKER,
     PRICE_COLUMNS,
     AssayPrice,
-    CostLine,
-    PanelCost,
     PriceList,
     check_price_columns,
 )

@@ -93,7 +93,7 @@ class RuleChoice:
     rule : str
         Name of the rule.
     primary : bool
-        Declared before the run.
+        The rule that the headline follows; whether the study declared it is said there.
     panel : str
         The row of the frontier.
     figures : mapping of str to float

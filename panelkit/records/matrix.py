@@ -19,6 +19,9 @@ class MatrixSource(Protocol):
         What stands for a missing cell of each feature.
     included : ndarray of shape (n_features,), bool
         False for features that this view leaves out.
+    shift : tuple of ndarray of shapes (n_features, rank) and (rank, n_samples)
+        What is added to the measured values, as a product: batch means, size factors,
+        references. Filled cells are not shifted.
     """
 
     @property
@@ -27,6 +30,10 @@ class MatrixSource(Protocol):
     def fill(self) -> NDArray[np.float64]: ...  # noqa: D102
     @property
     def included(self) -> NDArray[np.bool_]: ...  # noqa: D102
+    @property
+    def shift(  # noqa: D102
+        self,
+    ) -> tuple[NDArray[np.float64], NDArray[np.float64]]: ...
 
     def column(self, feature: int, rows: NDArray[np.int64]) -> NDArray[np.float64]:
         """Return one feature on the given rows, float64: the source of all numbers."""

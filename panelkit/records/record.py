@@ -1,5 +1,6 @@
 """What all records share: frozen, slotted, arrays that cannot be written to."""
 
+from collections.abc import Mapping
 from dataclasses import fields
 from typing import TYPE_CHECKING, Any
 
@@ -26,6 +27,12 @@ class Record:
             value = getattr(self, field.name)
             if isinstance(value, np.ndarray):
                 object.__setattr__(self, field.name, read_only(value))
+            elif isinstance(value, Mapping) and value:
+                sealed = {
+                    key: read_only(item) if isinstance(item, np.ndarray) else item
+                    for key, item in value.items()
+                }
+                object.__setattr__(self, field.name, sealed)
             elif (
                 isinstance(value, tuple)
                 and value

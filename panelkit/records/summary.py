@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from panelkit.records.accuracy import Comparator
 from panelkit.records.findings import Findings, Flow
 from panelkit.records.frontier import Choice, Frontier
-from panelkit.records.prices import PanelCost
+from panelkit.records.panel_cost import PanelCost
 from panelkit.records.record import Record
 from panelkit.records.stability import ErrorBound, ShortlistTable
 

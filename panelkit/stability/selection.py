@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import SHORTLIST
+from panelkit.errors import InputDataError
 from panelkit.fits import Univariate, fit_paths, rank_univariate
 from panelkit.records import (
     ErrorBound,
@@ -96,6 +97,8 @@ def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
 
     Raises
     ------
+    InputDataError
+        No feature passes the filter.
     FitError
         A subsample with one class, or a refit that did not converge.
     StudyFileError
@@ -106,6 +109,14 @@ def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
     Meinshausen & Buhlmann 2010, JRSS-B 72:417; Shah & Samworth 2013, JRSS-B 75:55.
     """
     n_included = int(source.included.sum())
+    if not n_included:
+        raise InputDataError(
+            code="no-usable-feature",
+            where="expression matrix",
+            what="no feature passes the filter on the training rows",
+            accepted="features that vary and are measured",
+            next_step="Look at the findings of `panelkit check`",
+        )
     asked = _markers_asked(rules, n_included, plan)
     paths = fit_paths(
         source,

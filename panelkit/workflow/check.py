@@ -6,7 +6,8 @@ from pathlib import Path
 
 from panelkit.config import Study, read_study
 from panelkit.records import Cohort, Finding, Findings
-from panelkit.workflow.cohort import barred_features, load_cohort, load_prices
+from panelkit.workflow.cohort import load_cohort, load_prices
+from panelkit.workflow.procedure import procedure_of
 
 __all__ = ["check_study"]
 
@@ -34,7 +35,7 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
     """
     plan = study if isinstance(study, Study) else read_study(Path(study))
     cohort = load_cohort(plan)
-    barred_features(plan, cohort)
+    procedure_of(plan, cohort)
     _pricer, _hashes, price_findings = load_prices(plan)
     findings = (*cohort.findings, *price_findings)
     settled = tuple(_settled(item, plan) for item in findings)

@@ -1,7 +1,7 @@
 """What is repeated in every fold, as a study asks for it."""
 
 from panelkit.config import Study
-from panelkit.costing import Procedure, ProcedureData
+from panelkit.costing import Procedure, ProcedureData, maker_named
 from panelkit.errors import InputDataError, StudyFileError
 from panelkit.ingest import guess_scale
 from panelkit.preparation import Recipe, default_steps
@@ -64,16 +64,28 @@ def procedure_of(
         n_penalties=section.n_penalties,
         penalty_floor=section.penalty_floor,
     )
+    for name in plan.panels.makers:
+        maker_named(name)
     barred = barred_features(plan, cohort)
+    always = feature_positions(
+        cohort, section.always, f"{plan.path}, [shortlist], key 'always'"
+    )
+    if (barred[always] != "").any():
+        first = always[barred[always] != ""][0]
+        raise InputDataError(
+            code="always-barred",
+            where=f"{plan.path}, [shortlist], key 'always'",
+            what=f"{cohort.features[first]} may not enter a panel: {barred[first]}",
+            accepted="features that may be markers",
+            next_step="Remove it, or change its role in the feature sheet",
+        )
     data = ProcedureData(
         base=recipe.base(cohort.values),
         y=cohort.outcome.values,
         weights=cohort.design.weights,
         subjects=cohort.design.subject,
         barred=barred,
-        always=feature_positions(
-            cohort, section.always, f"{plan.path}, [shortlist], key 'always'"
-        ),
+        always=always,
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)

@@ -124,15 +124,6 @@ def run_study(
     pricer, price_hashes = load_prices(plan)[:2]
     reading = round(time.time() - started, 3)
     refuse_stops(cohort.findings)
-    record = run_record(plan, {**(cohort.sources or {}), **price_hashes})
-    content = record_bytes(record)
-    folder = RunFolder(Path(out))
-    resumed = folder.claim(content)
-    clock = _Clock(folder, listener)
-    clock.seconds["reading"] = reading
-    folder.log("resumed" if resumed else "started")
-    listener(Progress("reading", 1, 1))
-
     procedure, data, size_finding = procedure_of(plan, cohort)
     draws = draw_everything(
         data,
@@ -143,6 +134,14 @@ def run_study(
         subsamples=plan.shortlist.subsamples,
         inner_subsamples=plan.accuracy.inner_subsamples,
     )
+    record = run_record(plan, {**(cohort.sources or {}), **price_hashes})
+    content = record_bytes(record)
+    folder = RunFolder(Path(out))
+    resumed = folder.claim(content)
+    clock = _Clock(folder, listener)
+    clock.seconds["reading"] = reading
+    folder.log("resumed" if resumed else "started")
+    listener(Progress("reading", 1, 1))
     with clock.stage("shortlist"):
         selected = procedure.select(data, draws.everyone, n_threads)
     findings = Findings((*cohort.findings, *size_finding))

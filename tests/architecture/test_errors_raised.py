@@ -14,6 +14,11 @@ CODE_FROM_ELSEWHERE = {
     "workflow/cohort.py": "a run is refused under the code of its `stop` finding",
 }
 CODE_IN_A_VARIABLE = {"fits/arguments.py"}
+CAUGHT_AS_AN_ANSWER = {
+    ("costing/panel_prices.py", "NoPanelError"): "one of several platforms cannot run "
+    "the panel",
+    ("fits/budget.py", "FitError"): "separable data: no solution without a penalty",
+}
 BUILTIN_RAISED = {
     ("__init__.py", "AttributeError"): "PEP 562: what a module's __getattr__ owes",
     ("config/study.py", "ValueError"): "pydantic's way of refusing inside a validator",
@@ -82,7 +87,6 @@ def test_every_code_is_a_literal_of_words(made):
     assert wrong == []
 
 
-@pytest.mark.xfail(strict=True, reason="two codes by way of a variable")
 @pytest.mark.parametrize("place", sorted(CODE_IN_A_VARIABLE))
 def test_files_whose_codes_cannot_be_searched_for(made, place):
     codes = [parts["code"] for source, _, parts in made if source.place == place]
@@ -143,16 +147,14 @@ def test_no_handler_catches_everything(sources):
 
 
 def test_only_the_command_line_catches_our_errors(sources):
-    """`NoPanelError` is an answer where one platform of several cannot run a panel."""
+    """Elsewhere an error may be caught where it is an answer, and only by its kind."""
     found = {
         (source.place, name)
         for source, node in nodes(sources, ast.ExceptHandler)
         for name in KINDS & set(re.findall(r"\w+", ast.unparse(node.type or node)))
     }
-    assert found == {
-        ("cli/app.py", "PanelkitError"),
-        ("costing/panel_prices.py", "NoPanelError"),
-    }
+    assert ("cli/app.py", "PanelkitError") in found
+    assert found - {("cli/app.py", "PanelkitError")} <= set(CAUGHT_AS_AN_ANSWER)
 
 
 def test_only_the_command_line_prints(sources):

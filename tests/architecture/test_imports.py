@@ -174,7 +174,6 @@ def test_the_module_graph_has_no_ring(sources):
 
 
 @pytest.mark.parametrize("ring", RINGS)
-@pytest.mark.xfail(strict=True, reason="closed by an import for types")
 def test_rings_that_are_known(sources, ring):
     check_no_ring(sources, RINGS - {ring})
 

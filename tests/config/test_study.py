@@ -89,11 +89,6 @@ def test_texts_for_the_report_do_not(study):
     assert with_text.effective() == study().effective()
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="of programme and platforms only the written keys are recorded: a default "
-    "that changes with a version, or one written out, is not seen",
-)
 def test_effective_fills_in_the_defaults_of_prices(study):
     text = (
         '[panels]\nprices = "p.csv"\n'

@@ -100,7 +100,7 @@ def test_impossible_numbers_of_folds_are_refused(n_folds):
     with pytest.raises(FitError) as caught:
         draw_folds(np.arange(14), y, n_folds, generators(5))
     assert caught.value.code == "too-few-for-folds"
-    assert "between 2 and 4" in caught.value.next_step
+    assert "4 subjects in the smaller class" in caught.value.what
 
 
 def test_leave_one_pair_out_is_possible():

@@ -20,7 +20,7 @@ from panelkit.config.programme import (
     read_platform_file,
     read_programme_file,
 )
-from panelkit.costing.programme_cost import (
+from panelkit.costing.pricing import (
     programme_cost,
     purchase_cost,
     samples_run_and_results,

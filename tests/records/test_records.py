@@ -87,9 +87,6 @@ def test_the_caller_keeps_the_right_to_write():
     assert np.shares_memory(plan.test_fold, mine)
 
 
-@pytest.mark.xfail(
-    strict=True, reason="arrays inside a mapping keep their right to be written to"
-)
 @pytest.mark.parametrize("name", ["sample_columns", "feature_columns"])
 def test_arrays_in_mappings_cannot_be_written_to(make_record, name):
     columns = getattr(make_record("Cohort"), name)

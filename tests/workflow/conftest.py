@@ -92,7 +92,7 @@ class Tiny:
         values = draws.normal(8.0, 1.0, (N_SAMPLES, N_FEATURES))
         values[:, :4] += 1.2 * sick[:, None]
         values[:, 57:] += 3.0 * sick[:, None]
-        values[draws.random(values.shape) < 0.01] = np.nan
+        values[draws.random(values.shape) < 0.05] = np.nan
         ids = [f"S{number:02d}" for number in range(N_SAMPLES)]
         self.expression = pd.DataFrame(
             values.round(4), index=pd.Index(ids, name="sample_id"), columns=FEATURES

@@ -86,23 +86,33 @@ def test_each_fold_has_one_primary_choice_and_its_scores(fold_panels, prediction
 
 
 def test_values_of_held_out_people_change_nothing_that_is_learnt(
-    tiny, finished, fold_panels, tmp_path
+    tiny, finished, fold_panels, predictions, tmp_path
 ):
-    """Every value of the test rows of one fold is moved by up to ten units, enough to
-    turn every ranking; what that fold learnt may not move by a bit."""
+    """Every test row of one fold but one person's is moved by ten units, enough to
+    turn every ranking and to shift every median; what that fold learnt may not move
+    by a bit, so the person who stays keeps every score to the last digit."""
     plan = finished.table("folds.csv")
-    held_out = plan[(plan["repeat"] == 0) & (plan["fold"] == 1)]["sample"]
-    moved = np.random.default_rng(1).uniform(-10.0, 10.0, (len(held_out), 60))
-    tiny.expression.loc[held_out] += moved
+    held_out = plan[(plan["repeat"] == 0) & (plan["fold"] == 1)]
+    stays = held_out["subject"].iloc[0]
+    rows = held_out["sample"][held_out["subject"] != stays]
+    moved = np.random.default_rng(1).uniform(5.0, 15.0, (len(rows), 60))
+    tiny.expression.loc[rows] += moved
     run_study(tiny.write(), tmp_path / "out", threads=1)
     other = type(finished)(tmp_path / "out")
     assert other.table("folds.csv").equals(plan)
     columns = ["maker", "size", "markers", "ridge_penalty", "chosen_by_primary"]
     panels = other.table("fold_panels.csv")
 
-    def of_fold(table, repeat, fold):
-        rows = table[(table["repeat"] == repeat) & (table["fold"] == fold)]
-        return rows[columns].reset_index(drop=True)
+    def of_fold(table, fold, columns):
+        found = table[(table["repeat"] == 0) & (table["fold"] == fold)]
+        return found[columns].reset_index(drop=True)
 
-    assert of_fold(panels, 0, 1).equals(of_fold(fold_panels, 0, 1))
-    assert not of_fold(panels, 0, 0).equals(of_fold(fold_panels, 0, 0))
+    assert of_fold(panels, 1, columns).equals(of_fold(fold_panels, 1, columns))
+    assert not of_fold(panels, 0, columns).equals(of_fold(fold_panels, 0, columns))
+    samples = held_out["sample"][held_out["subject"] == stays]
+    before, after = (
+        of_fold(table[table["sample"].isin(samples)], 1, ["maker", "size", "score"])
+        for table in (predictions, other.table("predictions.csv"))
+    )
+    assert len(before) == 8 * len(samples)
+    assert after.equals(before)

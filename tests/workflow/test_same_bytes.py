@@ -159,12 +159,6 @@ def test_a_mistake_in_the_study_is_refused(tiny, tmp_path, mistake):
 
 
 @pytest.mark.parametrize("mistake", MISTAKES)
-@pytest.mark.xfail(
-    strict=True,
-    raises=AssertionError,
-    reason="the folder is claimed before the study is checked whole, so that the "
-    "corrected study is refused as run-folder-taken",
-)
 def test_a_mistake_in_the_study_claims_no_folder(tiny, tmp_path, mistake):
     section, key, value = MISTAKES[mistake]
     tiny.sections[section][key] = value
@@ -173,12 +167,6 @@ def test_a_mistake_in_the_study_claims_no_folder(tiny, tmp_path, mistake):
     assert not (tmp_path / "out").exists()
 
 
-@pytest.mark.xfail(
-    strict=True,
-    raises=AssertionError,
-    reason="equal costs are settled by the order of the platforms, which the record "
-    "does not hold: one record, two results",
-)
 def test_what_changes_a_result_is_in_the_record(tiny, tmp_path):
     """Two platforms at one price: their order decides the column `platform`."""
     tiny.sections["accuracy"].update(repeats=1)
