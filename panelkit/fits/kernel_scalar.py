@@ -257,21 +257,26 @@ def combine(path, length, c):
 
 
 @njit(nogil=True, cache=True, fastmath=FAST)
-def model_value(Z, HZ, h0, n, na, active, l1, l2, r, x, x0, old, old0, d, q):
-    """Return quadratic model plus penalty at coefficients x, x0; write d, q there."""
+def model_value(Z, h0, n, na, active, l1, l2, r, x, x0, old, old0, q):
+    """Return quadratic model plus penalty at coefficients x, x0, whose q is given.
+
+    The change d of the predictors follows from q where the curvature is diagonal.
+    """
     value = 0.0
-    step0 = x0 - old0
-    for i in range(n):
-        d[i] = step0
-        q[i] = r[i] - step0 * h0[i]
     for a in range(na):
         j = active[a]
         value += l1[j] * abs(x[a]) + 0.5 * l2[j] * x[a] * x[a]
+    if h0[0] > 0.0:
+        for i in range(n):
+            value -= 0.5 * (r[i] - q[i]) * (r[i] + q[i]) / h0[i]
+        return value
+    d = np.full(n, x0 - old0)
+    for a in range(na):
+        j = active[a]
         step = x[a] - old[j]
         if step != 0.0:
             for i in range(n):
                 d[i] += step * Z[j, i]
-                q[i] -= step * HZ[a, i]
     for i in range(n):
         value -= 0.5 * d[i] * (r[i] + q[i])
     return value
@@ -290,22 +295,23 @@ def extrapolate(
         return b0
     now = np.empty(na)
     new = np.empty(na)
-    d = np.empty(n)
+    bx = 0.0
+    for k in range(DEPTH - 1):
+        bx += c[k] * path[k + 1, na]
+    for i in range(n):
+        trial[i] = q[i] - (bx - b0) * h0[i]
     for a in range(na):
         now[a] = beta[active[a]]
         x = 0.0
         for k in range(DEPTH - 1):
             x += c[k] * path[k + 1, a]
         new[a] = 0.0 if x * now[a] <= 0.0 else x
-    bx = 0.0
-    for k in range(DEPTH - 1):
-        bx += c[k] * path[k + 1, na]
-    before = model_value(
-        Z, HZ, h0, n, na, active, l1, l2, r, now, b0, old, old0, d, trial
-    )
-    after = model_value(
-        Z, HZ, h0, n, na, active, l1, l2, r, new, bx, old, old0, d, trial
-    )
+        step = new[a] - now[a]
+        if step != 0.0:
+            for i in range(n):
+                trial[i] -= step * HZ[a, i]
+    before = model_value(Z, h0, n, na, active, l1, l2, r, now, b0, old, old0, q)
+    after = model_value(Z, h0, n, na, active, l1, l2, r, new, bx, old, old0, trial)
     if not after < before:
         return b0
     for i in range(n):
