@@ -122,6 +122,11 @@ class _Lockstep:
         )
         self.refits = _new_refits(block, self.product.columns)
         self.solver: Solver = block.problem.solver(block.rows, self.refits.weight)
+        # relative penalties: the first working set is known with the largest gradient
+        self.opening = 1.0
+        below = block.penalties[block.penalties < 1.0]
+        if block.relative and len(below):
+            self.opening = max(2.0 * below[0] - 1.0, 0.5 * below[0])
         free = source.included & (weights == 0.0)
         # covariates are numbered behind the matrix's own features
         extra = self.n_features + np.arange(len(block.covariates))
@@ -212,7 +217,8 @@ class _Lockstep:
         # violators are taken in from 0.999 of the penalty on
         keep = np.where(fresh, keep, np.minimum(keep, 0.999 * now)) * self.block.mixing
         # a refit whose first answer held nothing usable asks for everything
-        opening = np.where(refits.largest[live] < 0.0, 0.0, self.top[live])
+        opening = self.top[live] * self.opening
+        opening = np.where(refits.largest[live] < 0.0, 0.0, opening)
         threshold = np.where(step < 0, opening, keep)
         whole = len(live) == len(refits.residuals)
         return Question(
@@ -305,8 +311,10 @@ _WORKING_ARRAYS = (
 def _grown(array: NDArray[Any], size: int, axis: int = 1) -> NDArray[Any]:
     """Return the array with one axis grown by zeros."""
     shape = list(array.shape)
-    shape[axis] = size - array.shape[axis]
-    return np.concatenate([array, np.zeros(shape, array.dtype)], axis=axis)
+    shape[axis] = size
+    grown = np.zeros(shape, array.dtype)  # pages that nobody writes cost no memory
+    grown[tuple(slice(0, extent) for extent in array.shape)] = array
+    return grown
 
 
 def _chunks(live: NDArray[np.int64]) -> Iterator[NDArray[np.int64]]:

@@ -95,6 +95,38 @@ def gather(base, fill, left, right, features, rows, n, out):
 
 
 @njit(nogil=True, cache=True, fastmath=FAST)
+def row_squares(values, out):
+    """Write the sum of squares of every row, float64; NaN where a value is missing."""
+    for j in range(values.shape[0]):
+        s = 0.0
+        for i in range(values.shape[1]):
+            x = np.float64(values[j, i])
+            s += x * x
+        out[j] = s
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
+def centre_tile(tile, centred, square, scale):
+    """Write the rows of a tile centred, their squares, and their deviations.
+
+    Conditions the filter only; no result sees it.
+    """
+    n = tile.shape[1]
+    for j in range(tile.shape[0]):
+        s = np.float32(0.0)
+        for i in range(n):
+            s += tile[j, i]
+        m = s / np.float32(n)
+        v = np.float32(0.0)
+        for i in range(n):
+            d = tile[j, i] - m
+            centred[j, i] = d
+            square[j, i] = d * d
+            v += d * d
+        scale[j] = max(math.sqrt(v / np.float32(n)), np.float32(1e-15))
+
+
+@njit(nogil=True, cache=True, fastmath=FAST)
 def encode_deviations(
     first, second, gradient, scale, blur, margin, slack, length, feature_weight, code,
     largest,
@@ -358,16 +390,17 @@ def decide(refits, b, rules, candidates, fresh, weights, code):
     refits.state[b, PENDING] = 0
     cap = np.inf
     if k < 0:
-        # the candidates were asked for the largest gradient alone: ask again
         if worst <= 0.0 and refits.largest[b] == 0.0:
             refits.largest[b] = -1.0  # nothing usable came: ask for everything
             return
-        refits.state[b, STEP] = open_path(refits, b, rules, worst)
-        refits.state[b, FRESH] = 1
-        if refits.state[b, STEP] == penalties.shape[0]:
-            refits.state[b, DONE] = 1
-        return
-    if refits.state[b, FRESH] == 1:
+        k = open_path(refits, b, rules, worst)
+        before = refits.largest[b]
+        if k < penalties.shape[0] and not rules.relative:
+            # the candidates were asked for the largest gradient alone: ask again
+            refits.state[b, STEP] = k
+            refits.state[b, FRESH] = 1
+            return
+    elif refits.state[b, FRESH] == 1:
         refits.state[b, FRESH] = 0
         before = refits.largest[b]
     elif worst > penalties[k] * rules.mixing * (1.0 + rules.tol):

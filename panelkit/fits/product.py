@@ -89,6 +89,7 @@ class TileProduct:
         self.code = np.zeros((n_features, self._n_refits), np.uint8)
         self._scale = np.empty(n_features, np.float32)
         self._margin = np.empty(n_features, np.float32)
+        self._squares = np.empty(n_features)  # of a feature, as the product reads it
         never = ~source.included | ~np.isfinite(feature_weights)
         self.code[never | (feature_weights == 0.0)] = kernels.CODE_SETTLED
         finite = np.where(never, 1.0, feature_weights)
@@ -126,16 +127,18 @@ class TileProduct:
     def survey(self, start: int) -> None:
         """Look at a tile once: missing cells, sizes beyond float32's comfort."""
         raw = self._values(start)
-        with np.errstate(over="ignore"):
-            squares = np.einsum("ij,ij->i", raw, raw, dtype=np.float64)
-            if np.isnan(squares).any():
-                self._has_missing[start // TILE] = True
-                raw = np.where(np.isnan(raw), self._fill(start)[:, None], raw)
-                squares = np.einsum("ij,ij->i", raw, raw, dtype=np.float64)
+        squares = self._squares[start : start + len(raw)]
+        kernels.row_squares(raw, squares)
+        if np.isnan(squares).any():
+            self._has_missing[start // TILE] = True
+            raw = np.where(np.isnan(raw), self._fill(start)[:, None], raw)
+            kernels.row_squares(raw, squares)
         size = np.sqrt(squares / len(self.columns))
-        if ((size > TAME[1]) | ((size < TAME[0]) & (size > 0.0))).any():
+        doubtful = (size > TAME[1]) | (size < TAME[0])
+        if doubtful.any() and np.abs(raw[doubtful]).any():
             largest = np.abs(raw).max(axis=1)
             self._exponent[start] = np.frexp(largest.astype(np.float64))[1]
+            squares *= np.ldexp(1.0, -2 * self._exponent[start])
 
     def copy_tiles(self, mapper: Callable[..., Any]) -> None:
         """Make the float32 copy that serves all passes, where one is worth while."""
@@ -239,21 +242,15 @@ class TileProduct:
         tile = self._tile(start, local.tiles[0])
         here = slice(start, start + len(tile))
         n_columns = len(self.columns)
-        squares = np.einsum("ij,ij->i", tile, tile, dtype=np.float64)
+        squares = self._squares[here]
         self._margin[here] = 1.1 * (n_columns + 8) * ROUNDING * np.sqrt(squares)
-        if not self._rank:
-            raw = self._source.base[here]
-            constant = (raw == raw[:, :1]).all(axis=1)
-            self.code[here][constant] = kernels.CODE_SETTLED
         top = np.zeros(self._n_refits, np.float32)
         if not self._scaled:
             self._prepare_unscaled(start, tile, residuals, length, local, top)
             return top
-        # centring conditions the filter only; no result sees it
         centred, square = local.tiles[:, : len(tile)]
-        np.subtract(tile, tile.mean(1, keepdims=True), out=centred)
-        np.multiply(centred, centred, out=square)
-        self._scale[here] = np.sqrt(np.maximum(square.mean(1), 1e-30))
+        kernels.centre_tile(tile, centred, square, self._scale[here])
+        self._settle_constants(here, squares)
         first, second = (
             local.products[i, : len(tile) * self._n_refits].reshape(len(tile), -1)
             for i in range(2)
@@ -277,6 +274,15 @@ class TileProduct:
         )
         self._scale[here] *= self._feature_weights[here]
         return top
+
+    def _settle_constants(self, here: slice, squares: NDArray[np.float64]) -> None:
+        """Rule out features whose stored values are all the same."""
+        near = self._scale[here] <= 1e-6 * np.sqrt(squares / len(self.columns))
+        suspects = here.start + np.flatnonzero(near)
+        if self._rank or not len(suspects):
+            return
+        raw = self._source.base[suspects]
+        self.code[suspects[(raw == raw[:, :1]).all(axis=1)]] = kernels.CODE_SETTLED
 
     def _prepare_unscaled(
         self,
