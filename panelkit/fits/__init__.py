@@ -1,6 +1,7 @@
 """Penalty paths in lockstep, small refits, ridge on everything."""
 
 from panelkit.fits.budget import BudgetFit, fit_budget
+from panelkit.fits.gap import duality_gap
 from panelkit.fits.paths import fit_paths
 from panelkit.fits.ridge import kernel_matrix, ridge_predictions
 from panelkit.fits.scratch import open_feature_major, write_feature_major
@@ -13,6 +14,7 @@ __all__ = [
     "BudgetFit",
     "PanelFits",
     "Univariate",
+    "duality_gap",
     "fit_budget",
     "fit_panels",
     "fit_paths",
