@@ -1,5 +1,6 @@
 """``panelkit run``: the whole job."""
 
+import math
 from pathlib import Path
 
 import click
@@ -53,10 +54,27 @@ def _show(run: Run) -> None:
             f"{finding.severity}: {finding.code}: {finding.message}", markup=False
         )
     screen.print()
-    screen.print(summary.choice.headline.sentence, markup=False)
+    headline = summary.choice.headline
+    screen.print(headline.sentence, markup=False)
+    if headline.metric_low <= 0.5 <= headline.metric_high:
+        screen.print("That interval holds 0.5: these data show no accuracy.")
     screen.print(summary.choice.rules[0].sentence, markup=False)
+    for other in summary.comparators[:2]:
+        screen.print(other.sentence, markup=False)
+    if not summary.shortlist.picked.any():
+        screen.print("The shortlist is empty: every marker is a candidate only.")
+    for cost in summary.costs[:1]:
+        for finding in cost.findings:
+            screen.print(f"{finding.severity}: {finding.message}", markup=False)
     screen.print(RESEARCH_USE, markup=False)
     screen.print(f"Report: {run.path / 'report.html'}", markup=False)
+
+
+_SHORT = {
+    "smallest-within-one-se": "primary",
+    "smallest-within-one-se-on-curve": "smallest on curve",
+    "cheapest-within-one-se-on-curve": "cheapest on curve",
+}
 
 
 def _price(summary: RunSummary) -> list[str]:
@@ -76,11 +94,15 @@ def _row(row: FrontierRow, priced: bool) -> list[str]:
         str(row.size),
         row.maker,
         f"{row.metric:.3f}",
-        f"{row.metric_low:.3f}-{row.metric_high:.3f}",
-        f"{row.slope:.2f}",
+        "none"
+        if math.isnan(row.metric_low)
+        else f"{row.metric_low:.3f}-{row.metric_high:.3f}",
+        "none" if math.isnan(row.slope) else f"{row.slope:.2f}",
     ]
     if priced:
         price = "not to be had" if row.cost_per_result is None else row.cost_per_result
         cells += [str(price), row.platform]
-    short = [rule.partition("-")[0] for rule in row.chosen_by.split(";")]
-    return [*cells, ", ".join(short)]
+    return [
+        *cells,
+        ", ".join(_SHORT.get(rule, rule) for rule in row.chosen_by.split(";")),
+    ]

@@ -7,6 +7,7 @@ from panelkit.costing.frontier import Judge, build_frontier
 from panelkit.costing.honest_accuracy import (
     Draws,
     HonestAccuracy,
+    choose_for_everyone,
     draw_everything,
     estimate_accuracy,
 )
@@ -38,6 +39,7 @@ __all__ = [
     "Split",
     "build_frontier",
     "choose",
+    "choose_for_everyone",
     "choose_within_one_se",
     "compare",
     "draw_everything",

@@ -13,8 +13,9 @@ from panelkit.records import Choice, Frontier, FrontierRow, Headline, RuleChoice
 
 __all__ = ["choose"]
 
-SMALLEST = "smallest-within-one-se"
-CHEAPEST = "cheapest-within-one-se"
+PRIMARY = "smallest-within-one-se"
+SMALLEST_ON_CURVE = "smallest-within-one-se-on-curve"
+CHEAPEST_ON_CURVE = "cheapest-within-one-se-on-curve"
 
 
 def choose(
@@ -22,9 +23,15 @@ def choose(
     per_fold: NDArray[np.float64],
     accuracy: HonestAccuracy,
     judge: Judge,
+    *,
+    taken: int,
     declared: bool,
 ) -> tuple[Choice, Frontier]:
     """Return the headline with every rule's choice, and the frontier marked by it.
+
+    The primary rule's panel is chosen by inner folds of all samples, exactly as every
+    training set chose its own: the headline is the accuracy of that. The other rules
+    read the curve of the outer folds, so their figures are too good.
 
     Parameters
     ----------
@@ -36,6 +43,8 @@ def choose(
         For the nested figure of the primary rule.
     judge : Judge
         Outcome, subjects, folds.
+    taken : int
+        Row that the primary rule takes on all samples.
     declared : bool
         Whether the study file declares the primary rule.
 
@@ -53,10 +62,10 @@ def choose(
     near = within_one_se(per_fold, judge.test_to_train)
     best = int(np.nanmean(per_fold, axis=0).round(DECIMALS).argmax())
     rows = [row for row, within in zip(frontier.rows, near, strict=True) if within]
-    picks = {SMALLEST: min(rows, key=_by_size)}
+    picks = {PRIMARY: frontier.rows[taken], SMALLEST_ON_CURVE: min(rows, key=_by_size)}
     priced = [row for row in rows if row.cost_total is not None]
     if priced:
-        picks[CHEAPEST] = min(priced, key=_by_cost)
+        picks[CHEAPEST_ON_CURVE] = min(priced, key=_by_cost)
     rules = [
         _rule(rule, row, frontier.rows[best], per_fold, frontier, judge)
         for rule, row in picks.items()
@@ -100,48 +109,72 @@ def _rule(
         "difference_se_naive": float(np.nan_to_num(naive_se(difference))),
         "size": float(row.size),
     }
-    kind = "smallest" if rule == SMALLEST else "cheapest"
-    if row is best:
-        why = (
-            "It is also the most accurate one on the curve; more markers were not "
-            "shown to help."
+    markers = "1 marker" if row.size == 1 else f"{row.size} markers"
+    figure = f"area under the ROC curve {row.metric:.3f}"
+    if rule == PRIMARY:
+        lead = (
+            "In inner folds of all samples the smallest panel within one standard "
+            f"error of the best has {markers} (maker {row.maker}). On the curve of the "
+            f"outer folds that maker at that size has an {figure}; expect the "
+            "headline, which counts the choosing."
         )
     else:
-        why = (
-            f"The most accurate one on the curve, {best.panel}, reaches "
-            f"{best.metric:.3f}: {gap:.3f} more, within one standard error of that "
-            f"difference ({figures['difference_se_corrected']:.3f}, corrected for "
-            "overlapping training sets). Being within one standard error is no proof "
-            "of equal accuracy."
+        kind = "smallest" if rule == SMALLEST_ON_CURVE else "cheapest"
+        lead = (
+            f"The {kind} panel within one standard error of the best of the curve has "
+            f"{markers} (maker {row.maker}, {figure}). It is picked from the curve, so "
+            "that figure is too good."
         )
-    markers = "1 marker" if row.size == 1 else f"{row.size} markers"
     return RuleChoice(
         rule=rule,
-        primary=rule == SMALLEST,
+        primary=rule == PRIMARY,
         panel=row.panel,
         figures=figures,
-        sentence=(
-            f"The {kind} panel within one standard error of the best has {markers} "
-            f"(maker {row.maker}): the procedure reaches an area under the ROC curve "
-            f"of {row.metric:.3f} ({_interval(row.metric_low, row.metric_high)}). {why}"
-        ),
+        sentence=f"{lead} {_against_best(row, best, frontier, gap, figures)}",
     )
 
 
-def _interval(low: float, high: float) -> str:
+def _against_best(
+    row: FrontierRow,
+    best: FrontierRow,
+    frontier: Frontier,
+    gap: float,
+    figures: dict[str, float],
+) -> str:
+    """Return how the row stands to the most accurate one of the curve."""
+    largest = max(each.size for each in frontier.rows)
+    if row is best:
+        if row.size == largest:
+            return (
+                "It is the most accurate and the largest offered: more were not tried."
+            )
+        return (
+            "It is the most accurate of the curve: more markers were not shown to help."
+        )
+    edge = " It is the largest size offered." if best.size == largest else ""
+    return (
+        f"The most accurate of the curve, {best.panel}, stands at {best.metric:.3f}, "
+        f"{gap:.3f} apart (standard error {figures['difference_se_corrected']:.3f}, "
+        f"corrected for overlapping training sets).{edge} Within one standard error is "
+        "no proof of equal accuracy."
+    )
+
+
+def _interval(low: float, high: float, confidence: float) -> str:
     if np.isnan(low) or np.isnan(high):
         return "no interval could be estimated"
-    return f"{low:.3f} to {high:.3f}"
+    return f"{100 * confidence:g} % interval {low:.3f} to {high:.3f}"
 
 
 def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headline:
     area = judge.area(accuracy.primary)
     folds = judge.folds
     sizes = accuracy.chosen.size
+    spread = _interval(area.low, area.high, judge.confidence)
     sentence = (
         "Letting the rule choose maker and size anew inside every training set gives "
-        f"an area under the ROC curve of {area.mean:.3f} "
-        f"({_interval(area.low, area.high)}) on people whom the training had not "
+        f"an area under the ROC curve of {area.mean:.3f} ({spread}) on people whom the "
+        "training had not "
         f"seen. The {folds.n_repeats * folds.n_folds} training sets chose "
         f"{int(sizes.min())} to {int(sizes.max())} markers, "
         f"{float(np.median(sizes)):g} at the median."
@@ -150,7 +183,7 @@ def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headlin
         sentence = "Exploratory: the study file declares no primary rule. " + sentence
     return Headline(
         metric_of=(
-            f"the whole procedure with the rule {SMALLEST}, not of the printed panel"
+            f"the whole procedure with the rule {PRIMARY}, not of the printed panel"
         ),
         metric=area.mean,
         metric_low=area.low,

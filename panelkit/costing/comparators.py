@@ -5,7 +5,7 @@ from numpy.typing import NDArray
 
 from panelkit.costing.frontier import Judge
 from panelkit.costing.honest_accuracy import HonestAccuracy
-from panelkit.metrics import CrossValidated, corrected_se
+from panelkit.metrics import CrossValidated, paired_interval
 from panelkit.records import Comparator, OutOfFold
 
 __all__ = ["compare"]
@@ -28,7 +28,7 @@ def compare(
     Returns
     -------
     tuple of Comparator
-        Ridge on all features, the best single marker, the majority class.
+        Ridge on all features, one marker, the majority class.
     """
     primary = judge.area(accuracy.primary)
     single = _best_single(accuracy)
@@ -36,7 +36,9 @@ def compare(
         ("ridge on all features", n_features, judge.area(accuracy.ridge)),
     ]
     if single is not None:
-        found.append(("best single marker", 1, judge.area(single)))
+        found.append(
+            ("single marker chosen by |t| in each fold", 1, judge.area(single))
+        )
     rows = [
         Comparator(
             name,
@@ -44,7 +46,7 @@ def compare(
             area.mean,
             area.low,
             area.high,
-            _sentence(name, area, primary, judge.test_to_train),
+            _sentence(name, area, primary, judge),
         )
         for name, size, area in found
     ]
@@ -72,22 +74,29 @@ def _best_single(accuracy: HonestAccuracy) -> OutOfFold | None:
 
 
 def _sentence(
-    name: str, area: CrossValidated, primary: CrossValidated, test_to_train: float
+    name: str,
+    area: CrossValidated,
+    primary: CrossValidated,
+    judge: Judge,
 ) -> str:
-    difference: NDArray[np.float64] = (primary.per_fold - area.per_fold).ravel()
-    gap = float(np.nanmean(difference))
-    se = corrected_se(difference, test_to_train)
+    difference: NDArray[np.float64] = (area.per_fold - primary.per_fold).ravel()
+    gap, low, high = paired_interval(difference, judge.test_to_train, judge.confidence)
+    name = f"{name[0].upper()}{name[1:]}"
     figures = f"{area.mean:.3f} against {primary.mean:.3f}"
-    if np.isnan(se) or abs(gap) <= se:
-        verdict = (
-            f"is not told apart from the primary rule by these data ({figures}, "
-            "difference within one standard error)"
+    if np.isnan(low):
+        return f"{name}: {figures}; too few folds for an interval of the difference."
+    spread = (
+        f"difference {gap:+.3f}, {100 * judge.confidence:g} % interval {low:+.3f} to "
+        f"{high:+.3f}"
+    )
+    if low <= 0.0 <= high:
+        return (
+            f"{name} is not told apart from the primary rule by these data ({figures}; "
+            f"{spread})."
         )
-    elif gap > 0:
-        verdict = f"is less accurate than the primary rule ({figures})"
-    else:
-        verdict = (
-            f"is more accurate than the primary rule ({figures}): the small panel "
-            "gives something away"
-        )
-    return f"{name[0].upper()}{name[1:]} {verdict}."
+    if gap < 0.0:
+        return f"{name} is less accurate than the primary rule ({figures}; {spread})."
+    return (
+        f"{name} is more accurate than the primary rule ({figures}; {spread}): the "
+        "small panel gives something away."
+    )

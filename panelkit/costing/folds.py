@@ -44,7 +44,7 @@ def draw_folds(
     if n_folds < 2 or smallest < n_folds:
         raise FitError(
             code="too-few-for-folds",
-            where="[accuracy] folds",
+            where="[accuracy] folds or inner_folds",
             what=f"{n_folds} folds for {smallest} subjects in the smaller class",
             accepted="at least 2 folds, and a subject of each class in every fold",
             next_step="Use fewer folds, or add subjects of the smaller class",

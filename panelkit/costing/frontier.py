@@ -37,6 +37,8 @@ class Judge:
         Outcome, 0 and 1.
     subjects : ndarray of shape (n_samples,), int64
         Subject codes.
+    weights : ndarray of shape (n_samples,)
+        Observation weights: every subject counts once.
     folds : FoldPlan
         Outer folds.
     confidence : float
@@ -45,6 +47,7 @@ class Judge:
 
     y: NDArray[np.float64]
     subjects: NDArray[np.int64]
+    weights: NDArray[np.float64]
     folds: FoldPlan
     confidence: float
 
@@ -60,12 +63,15 @@ class Judge:
             self.y,
             self.folds.test_fold,
             self.subjects,
+            self.weights,
             self.confidence,
         )
 
     def slope(self, predictions: OutOfFold) -> float:
         """Return the out-of-fold calibration slope, mean over repeats; NaN if none."""
-        slopes = [calibration_slope(row, self.y) for row in predictions.log_odds]
+        slopes = [
+            calibration_slope(row, self.y, self.weights) for row in predictions.log_odds
+        ]
         return float(np.mean(slopes))
 
 

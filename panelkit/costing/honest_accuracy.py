@@ -20,7 +20,13 @@ from panelkit.runtime import (
 )
 from panelkit.stability import draw_pairs
 
-__all__ = ["Draws", "HonestAccuracy", "draw_everything", "estimate_accuracy"]
+__all__ = [
+    "Draws",
+    "HonestAccuracy",
+    "choose_for_everyone",
+    "draw_everything",
+    "estimate_accuracy",
+]
 
 PRIMARY = "primary-rule"
 RIDGE = "ridge-on-all"
@@ -222,6 +228,53 @@ def estimate_accuracy(
         listener=listener,
     )
     return _assemble(procedure, draws.folds, blocks)
+
+
+def choose_for_everyone(
+    procedure: Procedure,
+    data: ProcedureData,
+    draws: Draws,
+    inputs: str,
+    store: BlockStore,
+    *,
+    threads: int = 1,
+    listener: Listener = silent,
+) -> int:
+    """Return which panel the primary rule takes when all samples teach.
+
+    The inner folds of all samples choose maker and size, as those of every training set
+    do for the headline.
+
+    Parameters
+    ----------
+    procedure, data, draws, inputs, store, threads, listener
+        As for `estimate_accuracy`.
+
+    Returns
+    -------
+    int
+        Position among the panels, makers first.
+
+    Raises
+    ------
+    FitError
+        A fit that is not possible or did not converge.
+    """
+
+    def task(split: Split) -> BlockResult:
+        tuning = procedure.tune(data, split, threads)
+        chosen = procedure.choose(tuning, len(split.inner))
+        return {"chosen": np.array(chosen, np.int64)}
+
+    blocks = map_blocks(
+        task,
+        {"everyone": draws.everyone},
+        StageKey("choice", inputs),
+        store,
+        listener=listener,
+    )
+    maker, size = blocks["everyone"]["chosen"]
+    return int(maker * len(procedure.sizes) + size)
 
 
 def _assemble(

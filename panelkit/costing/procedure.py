@@ -182,13 +182,16 @@ class Procedure:
                 next_step="Draw inner folds for the training rows",
             )
         selected = self.select(data, split, threads)
-        tuning = self._tune(data, split, threads)
-        penalties = np.array(self.ridge_penalties)[tuning.best.ravel()]
+        tuning = self.tune(data, split, threads)
         n_folds = len(split.inner)
+        # A ridge penalty on the mean loss is 1 / (n * prior variance): it was tuned on
+        # fewer rows than it is used on.
+        grid = np.array(self.ridge_penalties) * (n_folds - 1) / n_folds
+        penalties = grid[tuning.best.ravel()]
         return Learnt(
             selected=selected,
             tuning=tuning,
-            chosen=choose_within_one_se(tuning.area, 1.0 / (n_folds - 1)),
+            chosen=self.choose(tuning, n_folds),
             penalties=penalties,
             log_odds=_predict(selected, data, split, penalties[:, None])[:, 0],
         )
@@ -236,8 +239,45 @@ class Procedure:
         ]
         return Selected(view, stability, panels)
 
-    def _tune(self, data: ProcedureData, split: Split, threads: int) -> Tuning:
-        """Repeat the selection in the inner folds and judge it there."""
+    def choose(self, tuning: Tuning, n_folds: int) -> tuple[int, int]:
+        """Return maker and size position that the primary rule takes.
+
+        Parameters
+        ----------
+        tuning : Tuning
+            Judgement of inner folds.
+        n_folds : int
+            Their number.
+
+        Returns
+        -------
+        maker, size : int
+            Positions.
+        """
+        return choose_within_one_se(tuning.area, 1.0 / (n_folds - 1))
+
+    def tune(self, data: ProcedureData, split: Split, threads: int = 1) -> Tuning:
+        """Repeat the selection in the inner folds and judge it there.
+
+        Parameters
+        ----------
+        data : ProcedureData
+            Shared data.
+        split : Split
+            Its inner folds are used.
+        threads : int
+            Threads of the engine.
+
+        Returns
+        -------
+        Tuning
+            Best penalties, accuracy of each maker and size.
+
+        Raises
+        ------
+        FitError
+            A fit that is not possible or did not converge.
+        """
         shape = (len(self.makers), len(self.sizes))
         grid = np.tile(np.array(self.ridge_penalties), (shape[0] * shape[1], 1))
         log_odds = [
@@ -265,8 +305,7 @@ class Procedure:
         best = tune_ridge(
             kernel, data.y, data.weights, split.pairs, RIDGE_PAIRS, RIDGE_PENALTIES
         )
-        # A ridge penalty on the mean loss is 1 / (n * prior variance): it shrinks
-        # with the number of rows.
+        # as in `learn`: fewer rows tuned it
         ratio = len(split.pairs.rows[0]) / len(split.training)
         predicted = ridge_predictions(
             kernel,

@@ -66,7 +66,9 @@ def judge(
     """
     losses, areas = [], []
     for predicted, y, weight in zip(log_odds, outcomes, weights, strict=True):
-        grid = [[(log_loss(e, y, weight), auc(e, y)) for e in p] for p in predicted]
+        grid = [
+            [(log_loss(e, y, weight), auc(e, y, weight)) for e in p] for p in predicted
+        ]
         both = np.array(grid).reshape(*shape, -1, 2)
         losses.append(both[..., 0])
         areas.append(both[..., 1])
@@ -97,7 +99,7 @@ def within_one_se(area: NDArray[np.float64], test_to_train: float) -> NDArray[np
     ----------
     Breiman, Friedman, Olshen & Stone 1984, section 3.4.3; Nadeau & Bengio 2003.
     """
-    mean = np.nanmean(area, axis=0).round(DECIMALS)
+    mean = _means(area)
     best = int(mean.argmax())
     near = np.zeros(len(mean), np.bool_)
     for p in range(len(mean)):
@@ -105,6 +107,15 @@ def within_one_se(area: NDArray[np.float64], test_to_train: float) -> NDArray[np
         allowed = 0.0 if np.isnan(se) else round(se, DECIMALS)
         near[p] = round(mean[best] - mean[p], DECIMALS) <= allowed
     return near
+
+
+def _means(area: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return rounded means over splits; minus infinity where no split counts."""
+    counted = ~np.isnan(area)
+    total = np.where(counted, area, 0.0).sum(axis=0)
+    with np.errstate(invalid="ignore"):
+        mean = total / counted.sum(axis=0)
+    return np.where(counted.any(axis=0), mean, -np.inf).round(DECIMALS)
 
 
 def choose_within_one_se(
@@ -129,7 +140,7 @@ def choose_within_one_se(
     n_splits, n_makers, n_sizes = area.shape
     near = within_one_se(area.reshape(n_splits, -1), test_to_train)
     near = near.reshape(n_makers, n_sizes)
-    mean = np.nanmean(area, axis=0).round(DECIMALS)
+    mean = _means(area)
     size = int(near.any(axis=0).argmax())
     makers = np.flatnonzero(near[:, size])
     return int(makers[mean[makers, size].argmax()]), size

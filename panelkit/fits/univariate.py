@@ -22,7 +22,7 @@ class Univariate:
     Attributes
     ----------
     means, variances : ndarray of shape (n_features, 2)
-        Of class 0 and class 1, weighted; 0 where the feature is left out.
+        Of class 0 and class 1, over subjects; 0 where the feature is left out.
     t : ndarray of shape (n_features,)
         Positive where class 1 is higher; 0 where undefined or left out.
     order : ndarray of shape (n_features,), int64
@@ -44,8 +44,7 @@ def rank_univariate(
 ) -> Univariate:
     """Rank every feature by the size of Welch's t between the two classes.
 
-    Rows are weighted so that each subject counts once; the number of subjects is
-    the number of independent units.
+    Subjects are the independent units: their (weighted) means are compared.
 
     Parameters
     ----------
@@ -89,6 +88,15 @@ def rank_univariate(
         )
     means, variances = np.zeros((n_features, 2)), np.zeros((n_features, 2))
     t = np.zeros(n_features)
+    _, unit = np.unique(
+        np.stack([subjects[rows], y[rows].astype(np.int64)]),
+        axis=1,
+        return_inverse=True,
+    )
+    unit = unit.ravel()
+    classes = np.where(y[rows] > 0.5, 1, 0)
+    in_class = np.bincount(classes, weights=weights[rows])[classes]
+    unit_weight = np.bincount(unit, weights=weights[rows] / in_class)
     kernels.welch(
         source.base,
         source.fill,
@@ -97,6 +105,8 @@ def rank_univariate(
         rows,
         y[rows],
         weights[rows],
+        unit,
+        unit_weight,
         units,
         means,
         variances,

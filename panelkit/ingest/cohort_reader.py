@@ -149,7 +149,10 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
         findings=Findings(early),
         sources={role: hashes[role] for role in sorted(hashes)} or None,
     )
-    late = (*check_ties(cohort, nuisance), *_blank_covariates(cohort, covariates))
+    late = (
+        *check_ties(cohort, nuisance, covariates),
+        *_blank_covariates(cohort, covariates),
+    )
     found = dict.fromkeys((*check_cohort(cohort), *late))
     return replace(cohort, findings=Findings(tuple(found)))
 

@@ -123,14 +123,16 @@ def _subjects(cohort: Cohort) -> list[Finding]:
     return findings
 
 
-def check_ties(cohort: Cohort, nuisance: Sequence[str] = ()) -> list[Finding]:
-    """Return where the outcome goes along with site, batch or a nuisance column.
+def check_ties(
+    cohort: Cohort, nuisance: Sequence[str] = (), covariates: Sequence[str] = ()
+) -> list[Finding]:
+    """Return where the outcome goes along with site, batch or another column.
 
     Parameters
     ----------
     cohort : Cohort
         The cohort.
-    nuisance : sequence of str
+    nuisance, covariates : sequence of str
         Further columns of the sample sheet; those with many different numbers are
         cut into quarters.
 
@@ -144,9 +146,10 @@ def check_ties(cohort: Cohort, nuisance: Sequence[str] = ()) -> list[Finding]:
     for role, column in (("site", cohort.design.site), ("batch", cohort.design.batch)):
         if column is not None:
             findings += _tie(cohort, column, role, f"samples, {role}")
-    for name in nuisance:
-        levels = _quarters(cohort.sample_columns[name])
-        findings += _tie(cohort, levels, "nuisance", f"samples, column {name!r}")
+    for role, names in (("nuisance", nuisance), ("covariate", covariates)):
+        for name in names:
+            levels = _quarters(cohort.sample_columns[name])
+            findings += _tie(cohort, levels, role, f"samples, column {name!r}")
     return findings
 
 

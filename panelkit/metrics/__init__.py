@@ -6,18 +6,19 @@ from panelkit.metrics.association import (
     cramers_v_corrected,
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
-from panelkit.metrics.discrimination import auc, auc_influence
+from panelkit.metrics.discrimination import auc, auc_placements
 from panelkit.metrics.intervals import (
     CrossValidated,
     corrected_se,
     cross_validated_auc,
     naive_se,
+    paired_interval,
 )
 
 __all__ = [
     "CrossValidated",
     "auc",
-    "auc_influence",
+    "auc_placements",
     "brier",
     "calibration_slope",
     "contingency_table",
@@ -27,4 +28,5 @@ __all__ = [
     "cross_validated_auc",
     "log_loss",
     "naive_se",
+    "paired_interval",
 ]

@@ -40,7 +40,9 @@ def brier(chances: NDArray[np.float64], outcome: NDArray[np.float64]) -> float:
 
 
 def calibration_slope(
-    log_odds: NDArray[np.float64], outcome: NDArray[np.float64]
+    log_odds: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    weights: NDArray[np.float64] | None = None,
 ) -> float:
     """Return the slope of a logistic regression of the outcome on the log-odds.
 
@@ -48,6 +50,8 @@ def calibration_slope(
     ----------
     log_odds, outcome : ndarray of shape (n_samples,)
         Out-of-fold predictions; 0 and 1.
+    weights : ndarray of shape (n_samples,), optional
+        Observation weights.
 
     Returns
     -------
@@ -59,18 +63,21 @@ def calibration_slope(
     ----------
     Cox 1958, Biometrika 45:562.
     """
-    if np.ptp(outcome) == 0.0 or np.ptp(log_odds) < 1e-12:
+    flat = np.ptp(log_odds) < 1e-8 * max(1.0, float(np.abs(log_odds).max()))
+    if np.ptp(outcome) == 0.0 or flat:
         return float("nan")
     if _separates(log_odds, outcome):
         return float("nan")
     centre = log_odds.mean()
     x = log_odds - centre
-    share = outcome.mean()
+    w = np.ones(len(outcome)) if weights is None else weights * len(weights)
+    w = w / w.mean()
+    share = float(np.average(outcome, weights=w))
     intercept, slope = float(np.log(share / (1.0 - share))), 0.0
     for _step in range(100):
         p = 1.0 / (1.0 + np.exp(-np.clip(intercept + slope * x, -500.0, 500.0)))
-        h = np.maximum(p * (1.0 - p), 1e-12)
-        r = outcome - p
+        h = w * np.maximum(p * (1.0 - p), 1e-12)
+        r = w * (outcome - p)
         a, b, c = h.sum(), (h * x).sum(), (h * x * x).sum()
         g0, g1 = r.sum(), (r * x).sum()
         determinant = a * c - b * b

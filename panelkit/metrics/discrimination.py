@@ -5,42 +5,29 @@ from numpy.typing import NDArray
 
 from panelkit.errors import FitError
 
-__all__ = ["auc", "auc_influence"]
+__all__ = ["auc", "auc_placements"]
 
 
-def _placements(
-    scores: NDArray[np.float64], outcome: NDArray[np.float64]
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Return, for cases, the share of controls below; for controls, of cases above.
-
-    Ties count one half.
-    """
-    if np.isnan(scores).any():  # a missing score has no rank
-        nothing = np.full(1, np.nan)
-        return nothing, nothing
-    cases = scores[outcome == 1.0]
-    controls = scores[outcome == 0.0]
-    if not len(cases) or not len(controls):
-        raise FitError(
-            code="auc-one-class",
-            where="area under the ROC curve",
-            what=f"{len(cases)} cases and {len(controls)} controls",
-            accepted="at least one of each",
-            next_step="Use folds stratified by the outcome",
-        )
-    low = np.sort(controls)
-    below = np.searchsorted(low, cases, "left") + np.searchsorted(low, cases, "right")
-    high = np.sort(cases)
-    above = (
-        2 * len(high)
-        - np.searchsorted(high, controls, "left")
-        - np.searchsorted(high, controls, "right")
-    )
-    return below / (2.0 * len(low)), above / (2.0 * len(high))
+def _share_below(
+    points: NDArray[np.float64],
+    others: NDArray[np.float64],
+    weights: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Return the weighted share of `others` below each point, ties counted one half."""
+    order = np.argsort(others, kind="stable")
+    total = np.concatenate([[0.0], np.cumsum(weights[order])])
+    ranked = others[order]
+    below = total[np.searchsorted(ranked, points, "left")]
+    up_to = total[np.searchsorted(ranked, points, "right")]
+    return np.asarray(0.5 * (below + up_to) / total[-1], np.float64)
 
 
-def auc(scores: NDArray[np.float64], outcome: NDArray[np.float64]) -> float:
-    """Return the area under the ROC curve, ties counted one half.
+def auc_placements(
+    scores: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    weights: NDArray[np.float64] | None = None,
+) -> tuple[float, NDArray[np.float64]]:
+    """Return the area under the ROC curve and each sample's placement.
 
     Parameters
     ----------
@@ -48,11 +35,61 @@ def auc(scores: NDArray[np.float64], outcome: NDArray[np.float64]) -> float:
         Higher points to class 1.
     outcome : ndarray of shape (n_samples,)
         0 and 1.
+    weights : ndarray of shape (n_samples,), optional
+        Positive observation weights; None counts every sample once.
+
+    Returns
+    -------
+    area : float
+        Between 0 and 1; NaN where a score is missing.
+    placements : ndarray of shape (n_samples,)
+        For a case the share of controls below it, for a control the share of cases
+        above it, ties counted one half; their weighted mean in a class is the area.
+
+    Raises
+    ------
+    FitError
+        One class only.
+
+    References
+    ----------
+    Hanley & McNeil 1982, Radiology 143:29; DeLong, DeLong & Clarke-Pearson 1988,
+    Biometrics 44:837 (placements).
+    """
+    case = outcome == 1.0
+    if case.all() or not case.any():
+        raise FitError(
+            code="auc-one-class",
+            where="area under the ROC curve",
+            what=f"{int(case.sum())} cases and {int((~case).sum())} controls",
+            accepted="at least one of each",
+            next_step="Use folds stratified by the outcome",
+        )
+    if np.isnan(scores).any():  # a missing score has no rank
+        return float("nan"), np.full(len(scores), np.nan)
+    share = np.ones(len(scores)) if weights is None else weights
+    placements = np.empty(len(scores))
+    placements[case] = _share_below(scores[case], scores[~case], share[~case])
+    placements[~case] = 1.0 - _share_below(scores[~case], scores[case], share[case])
+    return float(np.average(placements[case], weights=share[case])), placements
+
+
+def auc(
+    scores: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    weights: NDArray[np.float64] | None = None,
+) -> float:
+    """Return the area under the ROC curve, ties counted one half.
+
+    Parameters
+    ----------
+    scores, outcome, weights
+        As for `auc_placements`.
 
     Returns
     -------
     float
-        Between 0 and 1.
+        Between 0 and 1; NaN where a score is missing.
 
     Raises
     ------
@@ -63,40 +100,4 @@ def auc(scores: NDArray[np.float64], outcome: NDArray[np.float64]) -> float:
     ----------
     Hanley & McNeil 1982, Radiology 143:29.
     """
-    return float(_placements(scores, outcome)[0].mean())
-
-
-def auc_influence(
-    scores: NDArray[np.float64], outcome: NDArray[np.float64]
-) -> tuple[float, NDArray[np.float64]]:
-    """Return the area under the ROC curve and each sample's influence on it.
-
-    Parameters
-    ----------
-    scores, outcome : ndarray of shape (n_samples,)
-        As for `auc`.
-
-    Returns
-    -------
-    area : float
-        As `auc` gives.
-    influence : ndarray of shape (n_samples,)
-        Sums to 0; the variance of the area is about mean(influence^2) / n_samples
-        for independent samples.
-
-    Raises
-    ------
-    FitError
-        One class only.
-
-    References
-    ----------
-    LeDell, Petersen & van der Laan 2015, Electron J Stat 9:1583.
-    """
-    of_cases, of_controls = _placements(scores, outcome)
-    area = float(of_cases.mean())
-    n = len(scores)
-    influence = np.empty(n)
-    influence[outcome == 1.0] = (of_cases - area) * n / len(of_cases)
-    influence[outcome == 0.0] = (of_controls - area) * n / len(of_controls)
-    return area, influence
+    return auc_placements(scores, outcome, weights)[0]

@@ -6,9 +6,15 @@ from statistics import NormalDist
 import numpy as np
 from numpy.typing import NDArray
 
-from panelkit.metrics.discrimination import auc_influence
+from panelkit.metrics.discrimination import auc_placements
 
-__all__ = ["CrossValidated", "corrected_se", "cross_validated_auc", "naive_se"]
+__all__ = [
+    "CrossValidated",
+    "corrected_se",
+    "cross_validated_auc",
+    "naive_se",
+    "paired_interval",
+]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -36,14 +42,17 @@ def cross_validated_auc(
     outcome: NDArray[np.float64],
     fold: NDArray[np.int64],
     subjects: NDArray[np.int64],
+    weights: NDArray[np.float64],
     confidence: float,
 ) -> CrossValidated:
     """Return the AUC within test folds with an interval clustered by subject.
 
-    Each sample's influence is averaged over the repeats, summed over the samples of
-    a subject, and the subjects are the independent units; the interval is taken on
-    the log-odds scale, so it stays inside 0 and 1. It describes the spread over
-    people for models trained as these were, not over training sets.
+    Placements are taken within a fold, never across folds. Each subject's placements,
+    averaged over its samples and over the repeats, are centred on the overall mean;
+    subjects are the independent units, in either class. The interval is taken on the
+    log-odds scale, so it stays inside 0 and 1. It describes the spread over people for
+    models trained as these were, not over training sets. With one fold and one sample a
+    subject the variance is that of DeLong et al.
 
     Parameters
     ----------
@@ -55,6 +64,8 @@ def cross_validated_auc(
         Test fold of each sample.
     subjects : ndarray of shape (n_samples,), int64
         Subject of each sample.
+    weights : ndarray of shape (n_samples,)
+        Observation weights; 1 / rows of the subject counts every subject once.
     confidence : float
         For example 0.95.
 
@@ -65,40 +76,59 @@ def cross_validated_auc(
 
     References
     ----------
-    LeDell, Petersen & van der Laan 2015, Electron J Stat 9:1583.
+    LeDell, Petersen & van der Laan 2015, Electron J Stat 9:1583; DeLong, DeLong &
+    Clarke-Pearson 1988, Biometrics 44:837.
     """
     n_repeats, n_samples = scores.shape
     per_fold = np.full((n_repeats, int(fold.max()) + 1), np.nan)
-    influence = np.zeros(n_samples)
-    n_valid = 0
+    placements = np.zeros((n_repeats, n_samples))
+    share = np.zeros((n_repeats, n_samples))
     for repeat in range(n_repeats):
-        own = np.zeros(n_samples)
-        counted = 0
         for number in range(per_fold.shape[1]):
             test = np.flatnonzero(fold[repeat] == number)
-            if len(test) and np.ptp(outcome[test]) > 0.0:
-                area, of_samples = auc_influence(scores[repeat, test], outcome[test])
-                per_fold[repeat, number] = area
-                own[test] = of_samples / len(test)
-                counted += 1
-        if counted:
-            influence += own / counted
-            n_valid += 1
+            if not len(test) or np.ptp(outcome[test]) == 0.0:
+                continue
+            area, placed = auc_placements(
+                scores[repeat, test], outcome[test], weights[test]
+            )
+            per_fold[repeat, number] = area
+            placements[repeat, test] = placed
+            for value in (0.0, 1.0):
+                own = test[outcome[test] == value]
+                share[repeat, own] = weights[own] / weights[own].sum()
     means = [row[~np.isnan(row)].mean() for row in per_fold if not np.isnan(row).all()]
     if not means:
         return CrossValidated(np.nan, np.nan, np.nan, per_fold)
     mean = float(np.mean(means))
-    clusters = np.bincount(subjects, weights=influence / n_valid)
-    n_clusters = len(np.unique(subjects))
-    se = float(np.sqrt((clusters**2).sum() * n_clusters / max(1, n_clusters - 1)))
+    n_valid = (~np.isnan(per_fold)).sum(axis=1, keepdims=True)
+    share /= np.maximum(n_valid, 1) * len(means)
+    influence = (share * (placements - mean)).sum(axis=0)
+    se = _clustered_se(influence, outcome, subjects)
     low, high = _log_odds_interval(mean, se, confidence)
     return CrossValidated(mean, low, high, per_fold)
+
+
+def _clustered_se(
+    influence: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    subjects: NDArray[np.int64],
+) -> float:
+    """Return the standard error of a sum of influences, subjects independent."""
+    variance = 0.0
+    for value in (0.0, 1.0):
+        own = outcome == value
+        _, unit = np.unique(subjects[own], return_inverse=True)
+        sums = np.bincount(unit, weights=influence[own])
+        if len(sums) < 2:
+            return float("nan")  # one subject has no spread
+        variance += len(sums) / (len(sums) - 1) * ((sums - sums.mean()) ** 2).sum()
+    return float(np.sqrt(variance))
 
 
 def _log_odds_interval(
     mean: float, se: float, confidence: float
 ) -> tuple[float, float]:
-    if not 0.0 < mean < 1.0 or se == 0.0:
+    if not 0.0 < mean < 1.0 or not se > 0.0:
         return float("nan"), float("nan")
     z = NormalDist().inv_cdf(0.5 + 0.5 * confidence)
     centre = np.log(mean / (1.0 - mean))
@@ -147,3 +177,38 @@ def corrected_se(per_fold: NDArray[np.float64], test_to_train: float) -> float:
     if len(values) < 2:
         return float("nan")
     return float(values.std(ddof=1) * np.sqrt(1.0 / len(values) + test_to_train))
+
+
+def paired_interval(
+    differences: NDArray[np.float64], test_to_train: float, confidence: float
+) -> tuple[float, float, float]:
+    """Return the mean of paired differences over splits with its interval.
+
+    Parameters
+    ----------
+    differences : ndarray
+        One a train/test split, NaN where undefined.
+    test_to_train : float
+        Ratio of test to training samples.
+    confidence : float
+        For example 0.95.
+
+    Returns
+    -------
+    mean, low, high : float
+        Student's t with J - 1 degrees of freedom on the corrected standard error; the
+        ends equal the mean where the differences do not vary, and are NaN below two.
+
+    References
+    ----------
+    Nadeau & Bengio 2003, Machine Learning 52:239.
+    """
+    from scipy.stats import t as student  # slow to import
+
+    values = differences[~np.isnan(differences)]
+    if len(values) < 2:
+        return float(np.mean(values)) if len(values) else np.nan, np.nan, np.nan
+    mean = float(values.mean())
+    quantile = float(student.ppf(0.5 + 0.5 * confidence, len(values) - 1))
+    half = quantile * corrected_se(values, test_to_train)
+    return mean, mean - half, mean + half

@@ -49,7 +49,8 @@ class ErrorBound(Record):
         Features that entered every subsample.
     worst_case : float
         Largest expected number of shortlisted features whose selection chance is
-        below average, without any assumption (Shah & Samworth 2013, theorem 1).
+        below average, whatever is picked (Shah & Samworth 2013, theorem 1); with the
+        realised number of picks it is an estimate.
     """
 
     threshold: float
@@ -61,12 +62,13 @@ class ErrorBound(Record):
     def sentence(self) -> str:
         """Return what the bound says and does not say."""
         return (
-            f"At most {self.worst_case:.3g} features on average reach a frequency of "
+            f"For independent people and random halves (ours are stratified), at most "
+            f"about {self.worst_case:.3g} features on average reach a frequency of "
             f"{self.threshold:g} although their chance of being picked is below the "
-            f"average of all {self.n_features:,} features "
-            f"({self.realised:.3g} picked in a subsample). This speaks of the "
-            "shortlist, not of a panel, and a close companion of a true marker does "
-            "not count as false."
+            f"average of all {self.n_features:,} features ({self.realised:.3g} picked "
+            "in a subsample). Features that are picked more often than the average, "
+            "true or not, are not counted. This speaks of the shortlist, not of a "
+            "panel."
         )
 
 

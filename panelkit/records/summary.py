@@ -33,6 +33,8 @@ class RunSummary(Record):
         Analysed samples, their subjects, features of the matrix.
     scheme : str
         How accuracy was estimated, in words.
+    confidence : float
+        Of every interval, for example 0.95.
     preparation : tuple of str
         Steps of the recipe, in words.
     findings : Findings
@@ -63,6 +65,7 @@ class RunSummary(Record):
     n_subjects: int
     n_features: int
     scheme: str
+    confidence: float
     preparation: tuple[str, ...]
     findings: Findings
     flow: tuple[Flow, ...]

@@ -41,17 +41,20 @@ METHODS = (
     Method(
         "Bound on the shortlist",
         "The worst-case bound counts the features whose chance of being picked is "
-        "below average and that reach the threshold all the same. It needs no "
-        "assumption about the data.",
+        "below average and that reach the threshold all the same. It assumes "
+        "nothing about which features are picked, but independent people and random "
+        "halves; halves stratified by outcome and repeated measurements lie outside "
+        "it. Features, true or not, that are picked more often than the average are "
+        "not counted.",
         ("shah",),
     ),
     Method(
         "Accuracy",
         "Area under the ROC curve within test folds, averaged over folds and repeats. "
         "In each fold everything is learnt again from the training rows: preparation, "
-        "shortlist, candidates, panel, tuning. Its interval comes from the influence "
-        "of each subject.",
-        ("ledell",),
+        "shortlist, candidates, panel, tuning. Every "
+        "subject counts once. Its interval comes from the placements of each subject.",
+        ("ledell", "delong"),
     ),
     Method(
         "Standard error over folds",
@@ -77,6 +80,8 @@ SOURCES = {
     "ledell": "LeDell, Petersen & van der Laan 2015. Computationally efficient "
     "confidence intervals for cross-validated area under the ROC curve estimates. "
     "Electronic Journal of Statistics 9, 1583-1607.",
+    "delong": "DeLong, DeLong & Clarke-Pearson 1988. Comparing the areas under two or "
+    "more correlated receiver operating characteristic curves. Biometrics 44, 837-845.",
     "nadeau": "Nadeau & Bengio 2003. Inference for the generalization error. Machine "
     "Learning 52, 239-281.",
     "breiman": "Breiman, Friedman, Olshen & Stone 1984. Classification and Regression "

@@ -129,7 +129,11 @@ def _ruler_of(summary: RunSummary) -> Markup:
 def _interval_of(summary: RunSummary) -> str:
     headline = summary.choice.headline
     said = wording.interval(headline.metric_low, headline.metric_high)
-    return said if said == wording.NO_INTERVAL else f"interval {said}"
+    return (
+        said
+        if said == wording.NO_INTERVAL
+        else f"{100 * summary.confidence:g} % interval {said}"
+    )
 
 
 def _environment() -> Environment:

@@ -102,7 +102,8 @@ def _frequency_caption(summary: RunSummary) -> str:
         f"{first}, is in {three_figures(float(table.frequency[0]))} of all subsamples. "
         f"Drawn are the first {min(N_DRAWN, len(table.feature)):,} of "
         f"{len(table.feature):,} features that were ever picked or are candidates; "
-        "bars are intervals."
+        "bars show what more subsamples of these same people could change, not what "
+        "another cohort would show."
     )
 
 

@@ -67,7 +67,8 @@ def _of_run(summary: RunSummary) -> list[Worry]:
                 "Read what the rule says and what the other rules chose",
             )
         )
-    if row is not None and math.isfinite(row.slope) and row.slope < SLOPE_FLOOR:
+    found += _of_headline(summary)
+    if row is not None and math.isfinite(row.slope) and 0.0 < row.slope < SLOPE_FLOOR:
         found.append(
             Worry(
                 "warning",
@@ -84,8 +85,7 @@ def _of_run(summary: RunSummary) -> list[Worry]:
             Worry(
                 "warning",
                 "choice",
-                "No primary rule was declared before the run, so the result is "
-                "exploratory.",
+                "The study file declares no primary rule: the result is exploratory.",
                 "Declare a primary rule in the study file before the next cohort",
             )
         )
@@ -96,6 +96,65 @@ def _of_run(summary: RunSummary) -> list[Worry]:
                 "shortlist",
                 "The shortlist is empty: no marker of any panel is error-controlled.",
                 "Treat every marker as a candidate",
+            )
+        )
+    return found
+
+
+def _of_headline(summary: RunSummary) -> list[Worry]:
+    """Return what the headline and the chosen row themselves give to worry about."""
+    headline, row = summary.choice.headline, chosen_row(summary)
+    found = []
+    if headline.metric_low <= 0.5 <= headline.metric_high:
+        found.append(
+            Worry(
+                "warning",
+                "accuracy",
+                "The interval of the headline holds 0.5: these data show no accuracy.",
+                "Do not build a panel on this outcome and cohort",
+            )
+        )
+    if not math.isfinite(headline.metric_low):
+        found.append(
+            Worry(
+                "warning",
+                "accuracy",
+                "The headline has no interval: too few people of a class, or scores "
+                "that separate everybody.",
+                "Look for a feature that holds the outcome itself, or add people",
+            )
+        )
+    if row is None:
+        return found
+    if row.slope <= 0.0:
+        found.append(
+            Worry(
+                "warning",
+                "calibration",
+                "Out of fold, scores at the chosen size do not point the right way "
+                f"(calibration slope {three_figures(row.slope)}).",
+                "Read this as no usable signal",
+            )
+        )
+    if not math.isfinite(row.slope):
+        found.append(
+            Worry(
+                "warning",
+                "calibration",
+                "The calibration slope could not be estimated at the chosen size.",
+                "Do not read a score as a chance",
+            )
+        )
+    sizes = [each.size for each in summary.frontier.rows]
+    best = max(summary.frontier.rows, key=lambda each: each.metric)
+    if len(set(sizes)) > 1 and best.size == max(sizes):
+        found.append(
+            Worry(
+                "warning",
+                "panels",
+                f"The most accurate panel of the curve has {best.size} markers, the "
+                "largest size offered.",
+                "Offer larger sizes to see where the curve ends",
             )
         )
     return found

@@ -57,11 +57,12 @@ def draw_pairs(
     if smallest < SMALLEST_CLASS:
         raise FitError(
             code="too-few-for-halves",
-            where="subsamples",
-            what=f"a class with {smallest} subjects cannot be halved",
+            where="subsamples of a training set (inner folds included)",
+            what=f"{smallest} subjects of a class cannot be halved",
             accepted=f"at least {SMALLEST_CLASS} subjects of each class in every "
             "training set",
-            next_step="Use fewer folds, or more samples of the smaller class",
+            next_step="Set more folds and inner_folds, so that training sets are "
+            "larger, or add people of the smaller class",
         )
     halves: list[NDArray[np.int64]] = []
     for _pair in range(n_pairs):

@@ -7,9 +7,11 @@ from pathlib import Path
 from panelkit.config import Study, read_study
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import load_cohort, load_prices
-from panelkit.workflow.procedure import procedure_of
+from panelkit.workflow.procedure import draws_of, procedure_of
 
 __all__ = ["check_study"]
+
+NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
 
 
 def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
@@ -30,12 +32,13 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
 
     Raises
     ------
-    StudyFileError, InputDataError
-        With exit codes 2 and 3.
+    StudyFileError, InputDataError, FitError
+        With exit codes 2, 3 and 4.
     """
     plan = study if isinstance(study, Study) else read_study(Path(study))
     cohort = load_cohort(plan)
-    procedure_of(plan, cohort)
+    _procedure, data, _findings = procedure_of(plan, cohort)
+    draws_of(plan, data)
     _pricer, _hashes, price_findings = load_prices(plan)
     findings = (*cohort.findings, *price_findings)
     settled = tuple(_settled(item, plan) for item in findings)
@@ -44,7 +47,7 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
 
 def _settled(item: Finding, plan: Study) -> Finding:
     reason = plan.cohort.accept.get(item.code, "")
-    if item.severity != "stop" or not reason:
+    if item.severity != "stop" or not reason or item.code in NEVER_ACCEPTED:
         return item
     return Finding(
         item.code,

@@ -1,7 +1,13 @@
 """What is repeated in every fold, as a study asks for it."""
 
 from panelkit.config import Study
-from panelkit.costing import Procedure, ProcedureData, maker_named
+from panelkit.costing import (
+    Draws,
+    Procedure,
+    ProcedureData,
+    draw_everything,
+    maker_named,
+)
 from panelkit.errors import InputDataError, StudyFileError
 from panelkit.ingest import guess_scale
 from panelkit.preparation import Recipe, default_steps
@@ -9,7 +15,7 @@ from panelkit.records import Cohort, Finding
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
 
-__all__ = ["procedure_of"]
+__all__ = ["draws_of", "procedure_of"]
 
 
 def procedure_of(
@@ -111,3 +117,34 @@ def procedure_of(
             )
         )
     return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+
+
+def draws_of(plan: Study, data: ProcedureData) -> Draws:
+    """Return every fold and subsample that a study asks for.
+
+    Parameters
+    ----------
+    plan : Study
+        Seed, folds, repeats, subsamples.
+    data : ProcedureData
+        Outcome and subjects.
+
+    Returns
+    -------
+    Draws
+        Drawn before the first fit.
+
+    Raises
+    ------
+    FitError
+        Too few subjects in a class.
+    """
+    return draw_everything(
+        data,
+        seed=plan.seed,
+        n_folds=plan.accuracy.folds,
+        n_repeats=plan.accuracy.repeats,
+        n_inner=plan.accuracy.inner_folds,
+        subsamples=plan.shortlist.subsamples,
+        inner_subsamples=plan.accuracy.inner_subsamples,
+    )

@@ -15,7 +15,7 @@ import numpy as np
 from panelkit.config import Study, read_study
 from panelkit.costing import (
     Selected,
-    draw_everything,
+    choose_for_everyone,
     estimate_accuracy,
 )
 from panelkit.records import (
@@ -32,7 +32,7 @@ from panelkit.workflow.cohort import (
     load_prices,
     refuse_stops,
 )
-from panelkit.workflow.procedure import procedure_of
+from panelkit.workflow.procedure import draws_of, procedure_of
 from panelkit.workflow.record import record_bytes, run_record
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
@@ -125,44 +125,39 @@ def run_study(
     reading = round(time.time() - started, 3)
     refuse_stops(cohort.findings)
     procedure, data, size_finding = procedure_of(plan, cohort)
-    draws = draw_everything(
-        data,
-        seed=plan.seed,
-        n_folds=plan.accuracy.folds,
-        n_repeats=plan.accuracy.repeats,
-        n_inner=plan.accuracy.inner_folds,
-        subsamples=plan.shortlist.subsamples,
-        inner_subsamples=plan.accuracy.inner_subsamples,
-    )
+    draws = draws_of(plan, data)
+    listener(Progress("reading", 1, 1))
+    listener(Progress("shortlist", 0, 1))
+    start = time.perf_counter()
+    selected = procedure.select(data, draws.everyone, n_threads)
+    if pricer is not None:  # a price that is missing is told before the long work
+        for panel in selected.panels:
+            pricer.costs([str(cohort.features[j]) for j in panel])
     record = run_record(plan, {**(cohort.sources or {}), **price_hashes})
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content)
     clock = _Clock(folder, listener)
     clock.seconds["reading"] = reading
+    clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
-    listener(Progress("reading", 1, 1))
-    with clock.stage("shortlist"):
-        selected = procedure.select(data, draws.everyone, n_threads)
+    listener(Progress("shortlist", 1, 1))
     findings = Findings((*cohort.findings, *size_finding))
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
+    inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
+    how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()
-    accuracy = estimate_accuracy(
-        procedure,
-        data,
-        draws,
-        hashlib.sha256(content).hexdigest(),
-        folder.store(),
-        threads=n_threads,
-        listener=listener,
-    )
+    taken = choose_for_everyone(procedure, data, draws, inputs, store, **how)
+    clock.seconds["choice"] = round(time.perf_counter() - start, 3)
+    start = time.perf_counter()
+    accuracy = estimate_accuracy(procedure, data, draws, inputs, store, **how)
     clock.seconds["accuracy"] = round(time.perf_counter() - start, 3)
     folder.log(f"accuracy: {clock.seconds['accuracy']:.2f} s")
     with clock.stage("pricing and choice"):
         summary = summarise(
             plan, cohort, record, findings, procedure, data, draws, selected,
-            accuracy, pricer,
+            taken, accuracy, pricer,
         )  # fmt: skip
         write_accuracy(folder, cohort, draws.folds, accuracy, pricer)
         write_results(folder, summary)

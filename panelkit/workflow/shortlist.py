@@ -58,7 +58,7 @@ def shortlist_table(
     difference = ranked.means[shown, 1] - ranked.means[shown, 0]
     half = _half_width(data, ranked.variances[shown], confidence)
     higher = difference > 0.0
-    area = np.array([auc(column, data.y) for column in values])
+    area = np.array([auc(column, data.y, data.weights) for column in values])
     positive = stability.positive_share[shown]
     return ShortlistTable(
         feature=features[shown],

@@ -28,6 +28,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
     data: ProcedureData,
     draws: Draws,
     selected: Selected,
+    taken: int,
     accuracy: HonestAccuracy,
     pricer: PanelPricer | None,
 ) -> RunSummary:
@@ -39,17 +40,21 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         A price that is needed is missing.
     """
     confidence = plan.accuracy.confidence
-    judge = Judge(data.y, data.subjects, draws.folds, confidence)
+    judge = Judge(data.y, data.subjects, data.weights, draws.folds, confidence)
     frontier, per_fold = build_frontier(
         accuracy, judge, selected.panels, cohort.features, pricer
     )
     choice, frontier = choose(
-        frontier, per_fold, accuracy, judge, plan.choice.primary is not None
+        frontier,
+        per_fold,
+        accuracy,
+        judge,
+        taken=taken,
+        declared=plan.choice.primary is not None,
     )
     costs: tuple[PanelCost, ...] = ()
     if pricer is not None:
-        taken = {row.panel: row for row in frontier.rows}[choice.rules[0].panel]
-        costs = pricer.costs(taken.markers)
+        costs = pricer.costs(frontier.rows[taken].markers)
     n_included = int(selected.view.included.sum())
     return RunSummary(
         study=plan.path.name,
@@ -58,6 +63,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         n_subjects=cohort.design.n_subjects,
         n_features=cohort.n_features,
         scheme=_scheme(plan),
+        confidence=confidence,
         preparation=procedure.recipe.steps,
         findings=findings,
         flow=cohort.flow,
@@ -94,6 +100,7 @@ def _scheme(plan: Study) -> str:
         f"{section.folds} folds, drawn {section.repeats} times, stratified by outcome "
         "and grouped by subject; preparation, shortlist, candidates, panels, tuning "
         f"and coefficients learnt anew in every fold, with {section.inner_folds} inner "
-        "folds for tuning and for the primary rule; area under the ROC curve within "
+        f"folds ({section.inner_subsamples} subsamples in each) for tuning and for the "
+        "primary rule; every subject counts once; area under the ROC curve within "
         "test folds, averaged"
     )

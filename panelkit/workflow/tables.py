@@ -72,9 +72,15 @@ def write_accuracy(
     repeats = range(folds.n_repeats)
     folder.table(
         "folds.csv",
-        ["sample", "subject", "repeat", "fold"],
+        ["sample", "subject", "weight", "repeat", "fold"],
         (
-            (samples[i], cohort.design.subject_ids[cohort.design.subject[i]], r, f)
+            (
+                samples[i],
+                cohort.design.subject_ids[cohort.design.subject[i]],
+                cohort.design.weights[i],
+                r,
+                f,
+            )
             for r in repeats
             for i, f in enumerate(folds.test_fold[r])
         ),

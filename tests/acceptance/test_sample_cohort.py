@@ -88,7 +88,9 @@ def test_shuffled_labels_give_one_half_and_outside_selection_flatters(cohort):
         classes = rng.permutation(_class_of_subjects(data))
         shuffled = replace(narrow, y=classes[data.subjects])
         draws = draws_of(shuffled, seed, subsamples=20, n_inner=2)
-        judge = Judge(shuffled.y, shuffled.subjects, draws.folds, 0.95)
+        judge = Judge(
+            shuffled.y, shuffled.subjects, shuffled.weights, draws.folds, 0.95
+        )
         found = estimate_accuracy(
             procedure, shuffled, draws, f"shuffle {seed}", MemoryStore(), threads=2
         )

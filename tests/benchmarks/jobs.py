@@ -20,7 +20,7 @@ from panelkit.fits.product import TILE
 
 THREADS = 2
 SUBSAMPLES = 100
-SAMPLE = (0, 57)  # refits whose KKT violations are recomputed
+SAMPLE = (0, 1, 2)  # refits that peers solve and whose violations are recomputed
 TO_A_TENTH = {"n_penalties": 40, "penalty_floor": 0.1}
 STOPPED = {**TO_A_TENTH, "max_markers": 60}
 DEEP = {"n_penalties": 100, "penalty_floor": 0.01}
@@ -28,15 +28,16 @@ FAMILIES = ("binomial", "gaussian", "cox", "multinomial")
 
 
 def against_peers(options, libraries, repeats=6):
-    """Return times of 100 refits, and of peers on two draws, extrapolated to 100."""
+    """Return times of 100 refits, and of peers on some draws, extrapolated to 100."""
     base, y, labels = cohort(200, 20_000)
     subsamples = halves(labels, SUBSAMPLES)
-    double = base.astype(np.float64)
 
     def fit(matrix=base, threads=THREADS):
         return fit_paths(matrix.T, y, subsamples=subsamples, threads=threads, **options)
 
     paths = fit()
+    peak = measure.peak_bytes()
+    double = base.astype(np.float64)
     fit(double)
     draws = {}
     for b in SAMPLE:
@@ -61,26 +62,34 @@ def against_peers(options, libraries, repeats=6):
             peer, entry, _ = found[b]
             draws[b].run(peer, entry["tolerance"])
 
-        few = 2 if library == "liblinear" else repeats
+        few = len(SAMPLE) if library == "liblinear" else repeats
         tasks[library] = measure.rounds(few)(run)
-    times = measure.alternate(tasks, repeats)
-    ratios = {}
+    times, processor = measure.alternate(tasks, repeats)
+    ratios, processor_ratios = {}, {}
     for library in libraries:
-        peer = [SUBSAMPLES * each for each in times[library]]
         for ours in list(tasks)[:3]:
-            ratio = measure.paired_ratio(peer, times[ours])
-            ratios[f"{library} / {ours}"] = ratio
+            pair = f"{library} / {ours}"
+            ratios[pair] = _ratio_for_all(times, library, ours)
+            processor_ratios[pair] = _ratio_for_all(processor, library, ours)
     return {
         "sizes": {"n": 200, "p": 20_000, "subsamples": SUBSAMPLES, **options},
         "peer_draws": len(SAMPLE),
         "times_s": times,
         "median_s": measure.medians(times),
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
         "ratio_for_100_refits": ratios,
+        "ratio_of_processor_times": processor_ratios,
         "peer_settings": chosen,
         "objective_gap": agreement,
         "kkt": certified(paths, base, y, subsamples, SAMPLE),
-        "peak_bytes": measure.peak_bytes(),
+        "peak_bytes": peak,
     }
+
+
+def _ratio_for_all(times, library, ours):
+    peer = [SUBSAMPLES * each for each in times[library]]
+    return measure.paired_ratio(peer, times[ours])
 
 
 def _objective_gap(paths, draw, rows, b, answer):
@@ -107,7 +116,7 @@ def binomial_whole():
 
 def binomial_deep():
     """Return job b, 100 penalties to 0.01."""
-    return against_peers(DEEP, ("celer", "skglm"), repeats=4)
+    return against_peers(DEEP, ("celer", "skglm"), repeats=6)
 
 
 def families():
@@ -129,17 +138,23 @@ def families():
 
         kkt[family] = certified(run(0), base, outcome, subsamples, SAMPLE)
         tasks[family] = run
-    times = measure.alternate(tasks, 7)
+    times, processor = measure.alternate(tasks, 7)
     return {
         "sizes": {"n": 200, "p": 20_000, "subsamples": SUBSAMPLES, **STOPPED},
         "times_s": times,
         "median_s": measure.medians(times),
-        "ratio_to_binomial": {
-            family: measure.paired_ratio(times[family], times["binomial"])
-            for family in FAMILIES
-        },
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
+        "ratio_to_binomial": _to_binomial(times),
+        "ratio_of_processor_times": _to_binomial(processor),
         "kkt": kkt,
-        "peak_bytes": measure.peak_bytes(),
+    }
+
+
+def _to_binomial(times):
+    return {
+        family: measure.paired_ratio(times[family], times["binomial"])
+        for family in FAMILIES
     }
 
 
@@ -205,14 +220,15 @@ def wide():
         passes.append(counted)
 
     measure.forget_peak()
-    times = measure.alternate({"product": product, "panelkit": fit}, 4)
+    times, processor = measure.alternate({"product": product, "panelkit": fit}, 4)
     peak = measure.peak_bytes()
     count = [len(each.times) for each in passes]
-    per_round = zip(times["panelkit"], count, times["product"], strict=True)
     return {
         "sizes": {"n": n, "p": p, "subsamples": SUBSAMPLES, **STOPPED},
         "times_s": times,
         "median_s": measure.medians(times),
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
         "passes": count,
         "living_a_pass": passes[0].living,
         "pass_times_s": [each.times for each in passes],
@@ -220,7 +236,8 @@ def wide():
             sum(each.times) / whole
             for each, whole in zip(passes, times["panelkit"], strict=True)
         ),
-        "ratio_to_products": statistics.median(a / (b * c) for a, b, c in per_round),
+        "ratio_to_products": _to_products(times, count),
+        "ratio_of_processor_times": _to_products(processor, count),
         "idle_bytes": idle,
         "peak_bytes": peak,
         "peak_over_matrix": peak / base.nbytes,
@@ -228,29 +245,37 @@ def wide():
     }
 
 
+def _to_products(times, count):
+    per_round = zip(times["panelkit"], count, times["product"], strict=True)
+    return statistics.median(fit / (passes * one) for fit, passes, one in per_round)
+
+
 def one_path():
     """Return job e: one deep path of 200 x 30,000."""
     base, y, _ = cohort(200, 30_000)
-    double = base.astype(np.float64)
     everyone = [np.arange(200)]
 
     def fit(matrix=base, threads=THREADS):
         return fit_paths(matrix.T, y, threads=threads, **DEEP)
 
     paths = fit()
+    peak = measure.peak_bytes()
+    double = base.astype(np.float64)
     fit(double)
     tasks = {
         "panelkit": lambda turn: fit(),
         "panelkit, one thread": lambda turn: fit(threads=1),
         "panelkit, float64": lambda turn: fit(double),
     }
-    times = measure.alternate(tasks, 9)
+    times, processor = measure.alternate(tasks, 9)
     return {
         "sizes": {"n": 200, "p": 30_000, "subsamples": 1, **DEEP},
         "times_s": times,
         "median_s": measure.medians(times),
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
         "kkt": certified(paths, base, y, everyone, [0]),
-        "peak_bytes": measure.peak_bytes(),
+        "peak_bytes": peak,
     }
 
 
@@ -276,13 +301,17 @@ def folds():
 
     fit(blocks[0])
     measure.forget_peak()
-    times = measure.alternate({"panelkit": lambda turn: [*map(fit, blocks)]}, 5)
+    times, processor = measure.alternate(
+        {"panelkit": lambda turn: [*map(fit, blocks)]}, 5
+    )
     peak = measure.peak_bytes()
     kkt = [certified(fit(b), base, y, b, [0]) for b in blocks[::8]]
     return {
         "sizes": {"n": n, "p": p, "folds": 25, "subsamples": SUBSAMPLES, **STOPPED},
         "times_s": times,
         "median_s": measure.medians(times),
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
         "peak_bytes": peak,
         "kkt": {f"fold {8 * number}": found for number, found in enumerate(kkt)},
     }
@@ -293,7 +322,7 @@ import sys, time
 start = time.perf_counter()
 import numpy as np
 from panelkit.fits import fit_paths
-print("import", time.perf_counter() - start)
+print("import", time.perf_counter() - start, time.process_time())
 draws = np.random.default_rng(0)
 X = draws.normal(size=(300, 40)).astype(np.float32).T
 y = np.tile([0, 1, 2, 3], 10)
@@ -303,27 +332,23 @@ outcomes = {
 }
 halves = [np.arange(0, 20), np.arange(20, 40)]
 for family in sys.argv[1:]:
-    start = time.perf_counter()
+    start, processor = time.perf_counter(), time.process_time()
     fit_paths(X, outcomes[family], family=family, subsamples=halves, n_penalties=5)
-    print(family, time.perf_counter() - start)
+    print(family, time.perf_counter() - start, time.process_time() - processor)
 """
 
 
 def _first_fits(cache, asked):
     environment = {**os.environ, "XDG_CACHE_HOME": cache}
-    taken, ran = measure.seconds(
-        lambda: subprocess.run(
-            [sys.executable, "-c", FIRST_FITS, *asked],
-            env=environment,
-            capture_output=True,
-            text=True,
-            check=True,
-        )
+    ran = subprocess.run(
+        [sys.executable, "-c", FIRST_FITS, *asked],
+        env=environment,
+        capture_output=True,
+        text=True,
+        check=True,
     )
-    found = {
-        line.split()[0]: float(line.split()[1]) for line in ran.stdout.split("\n")[:-1]
-    }
-    return {"process": taken, **found}
+    lines = [line.split() for line in ran.stdout.splitlines()]
+    return {name: (float(taken), float(used)) for name, taken, used in lines}
 
 
 def compilation():
@@ -331,7 +356,7 @@ def compilation():
     found = {}
     for asked in [(family,) for family in FAMILIES] + [FAMILIES]:
         cold, warm = [], []
-        for _ in range(3 if len(asked) == 1 else 2):
+        for _ in range(3):
             with tempfile.TemporaryDirectory() as cache:
                 cold.append(_first_fits(cache, asked))
                 warm.append(_first_fits(cache, asked))
@@ -339,12 +364,18 @@ def compilation():
     return {
         "sizes": {"n": 40, "p": 300, "subsamples": 2, "n_penalties": 5},
         "times_s": found,
-        "median_s": {
-            name: statistics.median(
-                sum(run[family] for family in name.split()) for run in each["cold"]
-            )
-            for name, each in found.items()
-        },
+        "median_s": _first_fit_medians(found, 0),
+        "median_processor_s": _first_fit_medians(found, 1),
+    }
+
+
+def _first_fit_medians(found, which):
+    return {
+        f"{name}, {state}": statistics.median(
+            sum(run[family][which] for family in name.split()) for run in runs
+        )
+        for name, states in found.items()
+        for state, runs in states.items()
     }
 
 
@@ -379,20 +410,21 @@ def growth():
             name = f"{axis}={value}"
             kkt[name] = certified(run(0), base, y, subsamples, [0])
             tasks[name] = run
-    times = measure.alternate(tasks, 3)
-    medians = measure.medians(times)
+    times, processor = measure.alternate(tasks, 3)
+    medians, typical = measure.medians(times), measure.medians(processor)
     exponent = {}
     for axis, grid in GRIDS.items():
-        found = [medians[f"{axis}={value}"] for value in grid]
+        found = [typical[f"{axis}={value}"] for value in grid]
         slope = np.polyfit(np.log(grid), np.log(found), 1)[0]
         exponent[axis] = float(slope)
     return {
         "sizes": {**BASELINE, "penalty_floor": 0.1, "grids": GRIDS},
         "times_s": times,
         "median_s": medians,
+        "processor_s": processor,
+        "median_processor_s": measure.medians(processor),
         "exponent": exponent,
         "kkt": kkt,
-        "peak_bytes": measure.peak_bytes(),
     }
 
 

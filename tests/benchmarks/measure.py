@@ -23,17 +23,21 @@ def seconds(task):
 
 
 def alternate(tasks, repeats):
-    """Return the times of several tasks, run in turn so that all meet the same load.
+    """Return times and processor times of tasks, run in turn to meet the same load.
 
-    tasks: name to callable(round number); None as result of a task's `skip` is not
-    needed, a task that has fewer rounds is wrapped by `rounds`.
+    tasks: name to callable of the round's number; some run in the first rounds only
+    (`rounds`). The processor time counts all threads and no waiting for a busy machine.
     """
     times = {name: [] for name in tasks}
+    processor = {name: [] for name in tasks}
     for turn in range(repeats):
         for name, task in tasks.items():
             if turn < getattr(task, "rounds", repeats):
-                times[name].append(seconds(lambda task=task, turn=turn: task(turn))[0])
-    return times
+                before = time.process_time()
+                taken, _ = seconds(lambda task=task, turn=turn: task(turn))
+                times[name].append(taken)
+                processor[name].append(time.process_time() - before)
+    return times, processor
 
 
 def rounds(count):

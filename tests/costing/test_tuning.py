@@ -124,7 +124,7 @@ def test_judge_takes_the_penalty_with_the_smallest_mean_log_loss():
         assert found.best.ravel()[panel] == best
         for fold in range(2):
             assert found.area[fold].ravel()[panel] == auc(
-                log_odds[fold][panel, best], outcomes[fold]
+                log_odds[fold][panel, best], outcomes[fold], weights[fold]
             )
 
 

@@ -1,11 +1,11 @@
-"""Area under the ROC curve and each sample's influence on it."""
+"""Area under the ROC curve and each sample's placement."""
 
 import numpy as np
 import pytest
 from sklearn.metrics import roc_auc_score
 
 from panelkit.errors import FitError
-from panelkit.metrics import auc, auc_influence
+from panelkit.metrics import auc, auc_placements
 
 # two markers on 7 cases and 8 controls, with ties within and between the classes:
 # areas and variances are exact (DeLong, DeLong & Clarke-Pearson 1988, Biometrics
@@ -20,29 +20,37 @@ MARKER_B = np.array([6, 9, 5, 8, 4, 7, 2, 5, 3, 6, 4, 1, 2, 7, 2], float)
 )
 def test_area_of_two_markers(scores, expected):
     assert auc(scores, OUTCOME) == pytest.approx(expected, abs=1e-15)
-    assert auc_influence(scores, OUTCOME)[0] == auc(scores, OUTCOME)
+    assert auc_placements(scores, OUTCOME)[0] == auc(scores, OUTCOME)
 
 
 @pytest.mark.parametrize(
     ("scores", "expected"), [(MARKER_A, 5 / 384), (MARKER_B, 2285 / 131712)]
 )
-def test_influence_holds_delongs_variance(scores, expected):
-    # S10 / m + S01 / n with divisors m - 1 and n - 1; the influence carries m and n
-    _, influence = auc_influence(scores, OUTCOME)
-    own = influence / len(OUTCOME)
-    cases, controls = own[OUTCOME == 1.0], own[OUTCOME == 0.0]
-    variance = (cases**2).sum() * 7 / 6 + (controls**2).sum() * 8 / 7
+def test_placements_hold_delongs_variance(scores, expected):
+    # S10 / m + S01 / n with divisors m - 1 and n - 1
+    _, placed = auc_placements(scores, OUTCOME)
+    variance = placed[:7].var(ddof=1) / 7 + placed[7:].var(ddof=1) / 8
     assert variance == pytest.approx(expected, abs=1e-15)
 
 
-def test_influence_is_the_placement_of_each_sample():
+def test_placements_of_marker_a():
     # V10 and V01 of marker A: exact
-    area, influence = auc_influence(MARKER_A, OUTCOME)
-    v10 = np.array([1, 1, 1, 15 / 16, 13 / 16, 11 / 16, 5 / 16])
-    v01 = np.array([1 / 2, 9 / 14, 11 / 14, 6 / 7, 6 / 7, 13 / 14, 1, 1])
-    assert influence[:7] == pytest.approx((v10 - area) * 15 / 7)
-    assert influence[7:] == pytest.approx((v01 - area) * 15 / 8)
-    assert influence.sum() == pytest.approx(0.0, abs=1e-12)
+    area, placed = auc_placements(MARKER_A, OUTCOME)
+    v10 = [1, 1, 1, 15 / 16, 13 / 16, 11 / 16, 5 / 16]
+    v01 = [1 / 2, 9 / 14, 11 / 14, 6 / 7, 6 / 7, 13 / 14, 1, 1]
+    assert placed == pytest.approx([*v10, *v01])
+    assert area == pytest.approx(np.mean(v01))
+
+
+def test_weights_are_repeated_samples():
+    """A case measured thirty times may not drag the area with it."""
+    times = np.array([1, 1, 1, 1, 1, 1, 30, 1, 2, 1, 1, 3, 1, 1, 1])
+    again = np.repeat(np.arange(15), times)
+    weighted = auc(MARKER_A, OUTCOME, times.astype(float))
+    assert weighted == pytest.approx(auc(MARKER_A[again], OUTCOME[again]))
+    shared = auc(MARKER_A[again], OUTCOME[again], 1.0 / times[again])
+    assert shared == pytest.approx(auc(MARKER_A, OUTCOME))
+    assert weighted < shared - 0.2
 
 
 def test_published_rating_table():
@@ -52,10 +60,9 @@ def test_published_rating_table():
     scores = np.concatenate([np.repeat(ratings, normal), np.repeat(ratings, abnormal)])
     outcome = np.repeat([0.0, 1.0], [58, 51])
     assert auc(scores, outcome) == pytest.approx(1321 / 1479, abs=1e-15)
-    _, influence = auc_influence(scores, outcome)
-    own = influence / 109
-    variance = (own[outcome == 1.0] ** 2).sum() * 51 / 50
-    variance += (own[outcome == 0.0] ** 2).sum() * 58 / 57
+    _, placed = auc_placements(scores, outcome)
+    variance = placed[outcome == 1.0].var(ddof=1) / 51
+    variance += placed[outcome == 0.0].var(ddof=1) / 58
     assert np.sqrt(variance) == pytest.approx(0.0307244084, abs=1e-10)  # pROC 1.18.0
 
 
@@ -69,9 +76,9 @@ def test_area_equals_scikit_learn_with_many_ties(levels, seed):
 
 
 def test_area_of_constant_scores_is_one_half():
-    area, influence = auc_influence(np.zeros(6), np.array([0, 1, 0, 1, 1, 0.0]))
+    area, placed = auc_placements(np.zeros(6), np.array([0, 1, 0, 1, 1, 0.0]))
     assert area == 0.5
-    assert (influence == 0.0).all()
+    assert (placed == 0.5).all()
 
 
 def test_only_the_order_of_scores_counts():

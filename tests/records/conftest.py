@@ -199,6 +199,7 @@ def run_summary():
         n_samples=N_SAMPLES,
         n_subjects=3,
         n_features=N_FEATURES,
+        confidence=0.95,
         scheme="2 folds",
         preparation=("filter",),
         findings=findings(),

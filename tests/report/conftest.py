@@ -177,6 +177,7 @@ def summary():
         n_samples=128,
         n_subjects=121,
         n_features=18432,
+        confidence=0.95,
         scheme="5 folds, 10 repeats, stratified by outcome and grouped by subject.",
         preparation=(
             "missing values filled with the feature's median",

@@ -147,7 +147,7 @@ def test_the_first_screen_holds_the_answer(page, summary):
     assert RESEARCH_USE in start
     assert summary.choice.headline.metric_of in start
     assert summary.choice.headline.sentence in start
-    assert "0.786 interval 0.702 to 0.851" in start
+    assert "0.786 95 % interval 0.702 to 0.851" in start
     assert "29.80 EUR on plate-384" in start
     assert "0.450 predicted chances are too extreme to use" in start
     assert start.index("41 of 44") < start.index("Predicted chances are far")
@@ -172,7 +172,7 @@ def test_sentences_of_the_summary_are_all_there(page, summary):
 
 
 def test_the_primary_rule_comes_first(page):
-    choice = page.text[page.text.index("primary, declared before the run") - 60 :]
+    choice = page.text[page.text.index("primary, written in the study file") - 60 :]
     assert choice.index("smallest-within-one-se") < choice.index("best-under-budget")
 
 

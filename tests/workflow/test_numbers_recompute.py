@@ -13,7 +13,9 @@ def areas(predictions):
     """Return the area within each test fold, repeats by folds."""
     folds = predictions.groupby(["repeat", "fold"])
     by_fold = folds.apply(
-        lambda fold: roc_auc_score(fold["outcome"], fold["score"]),
+        lambda fold: roc_auc_score(
+            fold["outcome"], fold["score"], sample_weight=fold["weight"]
+        ),
         include_groups=False,
     )
     return by_fold.unstack("fold").to_numpy()
@@ -23,6 +25,8 @@ def areas(predictions):
 def procedures(finished):
     """Out-of-fold predictions by maker and size."""
     table = finished.table("predictions.csv")
+    weights = finished.table("folds.csv").drop_duplicates("sample")
+    table = table.merge(weights[["sample", "weight"]], on="sample")
     return {key: rows for key, rows in table.groupby(["maker", "size"])}
 
 
@@ -68,7 +72,7 @@ def test_slopes_recompute(finished, procedures):
         for _, rows in procedures[row.maker, row.size].groupby("repeat"):
             log_odds = np.log(rows["score"] / (1.0 - rows["score"])).to_numpy()
             model = LogisticRegression(C=np.inf, tol=1e-10)
-            model.fit(log_odds[:, None], rows["outcome"])
+            model.fit(log_odds[:, None], rows["outcome"], rows["weight"])
             slopes.append(model.coef_[0, 0])
         assert row.slope == pytest.approx(np.mean(slopes), rel=1e-3)
 
@@ -86,7 +90,7 @@ def test_comparators_recompute(finished, procedures):
     table = finished.table("comparators.csv").set_index("name")
     expected = {
         "ridge on all features": ("ridge-on-all", 0),
-        "best single marker": ("univariate", 1),
+        "single marker chosen by |t| in each fold": ("univariate", 1),
     }
     for name, key in expected.items():
         value = areas(procedures[key]).mean()
@@ -111,12 +115,18 @@ def test_the_choice_recomputes(finished, procedures):
     rules = {rule["rule"]: rule for rule in finished.json("choice.json")["rules"]}
     smallest = min(near, key=lambda row: (row.size, -round(row.metric, 9)))
     cheapest = min(near, key=lambda row: (row.cost_total, row.size, -row.metric))
-    assert rules["smallest-within-one-se"]["panel"] == smallest.panel
-    assert rules["cheapest-within-one-se"]["panel"] == cheapest.panel
-    chosen = frontier.set_index("panel")["chosen_by"]
-    assert "smallest-within-one-se" in chosen[smallest.panel].split(";")
-    assert "cheapest-within-one-se" in chosen[cheapest.panel].split(";")
-    figures = rules["smallest-within-one-se"]["figures"]
+    by_size, by_cost = (
+        f"{kind}-within-one-se-on-curve" for kind in ("smallest", "cheapest")
+    )
+    assert rules[by_size]["panel"] == smallest.panel
+    assert rules[by_cost]["panel"] == cheapest.panel
+    chosen = frontier.set_index("panel")["chosen_by"].fillna("")
+    assert by_size in chosen[smallest.panel].split(";")
+    assert by_cost in chosen[cheapest.panel].split(";")
+    primary = finished.json("choice.json")["rules"][0]
+    assert primary["primary"] is True
+    assert "smallest-within-one-se" in chosen[primary["panel"]].split(";")
+    figures = rules[by_size]["figures"]
     gap = within[best] - within[smallest.panel]
     assert figures["difference_to_best"] == pytest.approx(gap.mean(), abs=1e-12)
 
@@ -152,10 +162,12 @@ def test_single_marker_figures_recompute(finished, study):
     values = pd.read_csv(study.parent / "expression.csv", index_col=0)
     sheet = pd.read_csv(study.parent / "samples.csv", index_col=0)
     sick = (sheet["response"] == "yes").to_numpy()
+    weights = finished.table("folds.csv").drop_duplicates("sample").set_index("sample")
+    share = weights["weight"].reindex(sheet.index).to_numpy()
     for row in finished.table("shortlist.csv").itertuples():
         column = values[row.feature]
         assert row.missing_share == pytest.approx(column.isna().mean())
         filled = column.fillna(column.median()).to_numpy()
-        area = roc_auc_score(sick, filled)
+        area = roc_auc_score(sick, filled, sample_weight=share)
         up = area if row.sign == "+" else 1.0 - area
         assert row.single_marker_auc == pytest.approx(up, abs=1e-12)
