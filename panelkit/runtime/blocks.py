@@ -193,8 +193,19 @@ def map_blocks(
 
 def _in_threads(work: Callable[[str], None], names: list[str], threads: int) -> None:
     """Run the work; at the first failure, start nothing more and pass it on."""
+    failed = threading.Event()
+
+    def guarded(name: str) -> None:
+        if failed.is_set():
+            return
+        try:
+            work(name)
+        except BaseException:
+            failed.set()
+            raise
+
     with ThreadPoolExecutor(threads) as pool:
-        running: list[Future[None]] = [pool.submit(work, name) for name in names]
+        running: list[Future[None]] = [pool.submit(guarded, name) for name in names]
         try:
             wait(running, return_when=FIRST_EXCEPTION)
         finally:

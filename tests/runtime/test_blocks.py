@@ -2,6 +2,7 @@
 
 import gc
 import threading
+import time
 import warnings
 from pathlib import Path
 
@@ -145,6 +146,7 @@ def test_nothing_more_is_started_after_a_failure():
             raise ValueError("stop")
         if number == 1:
             begun.set()
+        time.sleep(0.002)  # lets the failing thread run
         return {}
 
     blocks = {str(i): i for i in range(2000)}
