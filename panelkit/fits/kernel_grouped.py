@@ -9,6 +9,7 @@ predictors since the Newton step began (K, n); q residual of the quadratic model
 """
 
 import math
+from typing import Any
 
 import numpy as np
 from numba import njit
@@ -19,8 +20,16 @@ DEPTH = 6  # sweeps kept for one extrapolation
 POWER_STEPS = 6
 SAFETY = 1.02  # a power iteration stays below the largest eigenvalue
 
+# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
+# has to be compiled for them.
+DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
+INNER: dict[str, Any] = {**DOOR, "no_cpython_wrapper": True}
+door = njit(**DOOR)
+fast_door = njit(fastmath=FAST, **DOOR)
+fast_inner = njit(fastmath=FAST, **INNER)
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+
+@fast_door
 def multinomial_terms(y, weight, eta, n, r, p):
     """Return the weighted mean loss; write weighted residuals r and chances p."""
     n_classes = eta.shape[0]
@@ -43,7 +52,7 @@ def multinomial_terms(y, weight, eta, n, r, p):
     return loss
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def curvature_bound(z, p, weight, n):
     """Return an upper bound of the largest curvature of one feature's block."""
     n_classes = p.shape[0]
@@ -86,7 +95,7 @@ def curvature_bound(z, p, weight, n):
     return max(SAFETY * length, widest, 1e-12)
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def move(z, change, p, weight, n, D, q):
     """Add change[k] * z to the predictors; keep q = r - w (p D - p (p'D))."""
     n_classes = p.shape[0]
@@ -99,7 +108,7 @@ def move(z, change, p, weight, n, D, q):
             q[k, i] -= weight[i] * z[i] * p[k, i] * (change[k] - s)
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def model_value(r, p, weight, n, D):
     """Return the quadratic model of the loss at the change D."""
     n_classes = p.shape[0]
@@ -116,7 +125,7 @@ def model_value(r, p, weight, n, D):
     return value
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def norm_of(beta, j):
     """Return the Euclidean norm of a feature's coefficients."""
     s = 0.0
@@ -125,7 +134,7 @@ def norm_of(beta, j):
     return math.sqrt(s)
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def combine(path, length, c):
     """Write the Anderson weights of the stored sweeps to c; True if they exist."""
     depth = DEPTH - 1
@@ -163,7 +172,7 @@ def combine(path, length, c):
     return True
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def extrapolate(
     path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
 ):
@@ -216,7 +225,7 @@ def extrapolate(
             q[k, i] = r[k, i] - weight[i] * p[k, i] * (trial[k, i] - s)
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def descend(
     Z, n, na, active, r, p, weight, curvature, ones, bound0, l1, l2,
     beta, b0, old, old0, D, q, goal, path,
@@ -272,7 +281,7 @@ def descend(
             break
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def optimality(Z, m, n, r, l1, l2, beta, grad, active):
     """Return (largest KKT violation, active features); write grad and active."""
     n_classes = r.shape[0]
@@ -304,7 +313,7 @@ def optimality(Z, m, n, r, l1, l2, beta, grad, active):
     return worst, na
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def solve(
     Z, m, n, y, weight, pull, penalty, mixing, beta, b0, eta, r, grad, tol, steps
 ):
@@ -373,7 +382,7 @@ def solve(
     return worst / unit
 
 
-@njit(nogil=True, cache=True)
+@door
 def solve_chunk(
     chunk, penalty, mixing, tol, steps, Z, working, n_rows, y, weight, pull, beta, b0,
     eta, r, grad, violation,
@@ -400,7 +409,7 @@ def solve_chunk(
         )
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def cholesky_solve(A, b, m):
     """Solve A x = b in place (A symmetric positive definite, m x m); True if so."""
     for j in range(m):
@@ -429,7 +438,7 @@ def cholesky_solve(A, b, m):
     return True
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def ridge_newton(Z, members, m, y, weight, penalty, coef, tol, steps):
     """Minimise mean multinomial loss + penalty/2 * sum of squares over a few columns.
 
@@ -511,7 +520,7 @@ def ridge_newton(Z, members, m, y, weight, penalty, coef, tol, steps):
     return worst
 
 
-@njit(nogil=True, cache=True)
+@door
 def ridge_panels(Z, members, sizes, y, weight, penalties, steps, tol, coefs):
     """Fit every panel at every penalty, warm along the penalties.
 
@@ -534,7 +543,7 @@ def ridge_panels(Z, members, sizes, y, weight, penalties, steps, tol, coefs):
     return worst
 
 
-@njit(nogil=True, cache=True)
+@door
 def predict_panels(Z, members, sizes, coefs, eta):
     """Write linear predictors (panels, penalties, K, n), summed in marker order."""
     for s in range(sizes.shape[0]):

@@ -10,7 +10,7 @@ classes), m working features, r weighted residual, z standardised column.
 """
 
 import math
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numba import njit
@@ -30,6 +30,15 @@ ENTRIES = 2
 DONE = 3  # 1 finished, 2 tolerance not reached
 PENDING = 4  # 1 while the current penalty waits to be solved
 FRESH = 5  # 1 while the working set of the first penalty is not chosen yet
+
+# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
+# has to be compiled for them.
+DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
+INNER: dict[str, Any] = {**DOOR, "no_cpython_wrapper": True}
+door = njit(**DOOR)
+fast_door = njit(fastmath=FAST, **DOOR)
+inner = njit(**INNER)
+fast_inner = njit(fastmath=FAST, **INNER)
 
 
 class Rules(NamedTuple):
@@ -76,7 +85,7 @@ class Refits(NamedTuple):
     state: NDArray[np.int64]  # (B, 6)
 
 
-@njit(nogil=True, cache=True)
+@inner
 def gather(base, fill, left, right, features, rows, n, out):
     """Fill out[c, :n] with features[c] on the refit's rows.
 
@@ -94,7 +103,7 @@ def gather(base, fill, left, right, features, rows, n, out):
             out[c, i] = x
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def row_squares(values, out):
     """Write the sum of squares of every row, float64; NaN where a value is missing."""
     for j in range(values.shape[0]):
@@ -105,7 +114,7 @@ def row_squares(values, out):
         out[j] = s
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def centre_tile(tile, centred, square, scale):
     """Write the rows of a tile centred, their squares, and their deviations.
 
@@ -126,7 +135,7 @@ def centre_tile(tile, centred, square, scale):
         scale[j] = max(math.sqrt(v / np.float32(n)), np.float32(1e-15))
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def encode_deviations(
     first, second, gradient, scale, blur, margin, slack, length, feature_weight, code,
     largest,
@@ -159,7 +168,7 @@ def encode_deviations(
                     largest[b] = t
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def filter_tile(gradient, scale, margin, code, threshold, length, out_b, out_j, first):
     """Return how many (refit, feature) pairs of a tile may matter, and list them.
 
@@ -193,7 +202,7 @@ def filter_tile(gradient, scale, margin, code, threshold, length, out_b, out_j, 
     return count
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def standardise(z, n, weight, scaled, moments):
     """Centre z[:n], scale it to weighted deviation 1; write (mean, deviation).
 
@@ -217,7 +226,7 @@ def standardise(z, n, weight, scaled, moments):
     return True
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def dot(a, b, n):
     """Return the sum of a[i] * b[i], i < n, in the kernel's one fixed order."""
     s = 0.0
@@ -226,7 +235,7 @@ def dot(a, b, n):
     return s
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def norms_over_classes(product, n_classes, out):
     """Write Euclidean norms over the K predictors, (features, B K) to (features, B)."""
     for j in range(product.shape[0]):
@@ -238,7 +247,7 @@ def norms_over_classes(product, n_classes, out):
             out[j, b] = math.sqrt(s)
 
 
-@njit(nogil=True, cache=True)
+@door
 def start_refits(refits, scaled, features, columns, weights):
     """Put the unpenalised features into every working set.
 
@@ -261,7 +270,7 @@ def start_refits(refits, scaled, features, columns, weights):
         refits.state[b, WORKING] = m
 
 
-@njit(nogil=True, cache=True)
+@inner
 def note_entries(refits, b, step):
     """Append the refit's features that are non-zero for the first time.
 
@@ -291,7 +300,7 @@ def note_entries(refits, b, step):
     refits.state[b, ENTRIES] = n_order
 
 
-@njit(nogil=True, cache=True)
+@inner
 def is_picked(beta, j):
     """Return whether any predictor has a coefficient for working feature j."""
     for k in range(beta.shape[0]):  # noqa: SIM110 - numba compiles loops
@@ -300,7 +309,7 @@ def is_picked(beta, j):
     return False
 
 
-@njit(nogil=True, cache=True)
+@inner
 def store_solution(refits, b, k):
     """Store intercepts and non-zero coefficients as the solution of step k."""
     at = refits.stored_at[b, k]
@@ -316,7 +325,7 @@ def store_solution(refits, b, k):
         refits.intercept[b, k, c] = refits.b0[b, c]
 
 
-@njit(nogil=True, cache=True)
+@inner
 def open_path(refits, b, rules, worst):
     """Set the refit's penalties from its largest gradient; return the first step.
 
@@ -336,13 +345,13 @@ def open_path(refits, b, rules, worst):
     return k
 
 
-@njit(nogil=True, cache=True)
+@inner
 def strong_threshold(now, before, mixing):
     """Return the sequential strong rule's threshold, never below half the penalty."""
     return max(2.0 * now - before, 0.5 * now) * mixing
 
 
-@njit(nogil=True, cache=True)
+@inner
 def enlarge(refits, b, n, candidates, fresh, g, moments, keep, cap, weights, code):
     """Move the candidates with g >= keep into the refit's working set."""
     m = refits.state[b, WORKING]
@@ -363,7 +372,7 @@ def enlarge(refits, b, n, candidates, fresh, g, moments, keep, cap, weights, cod
     refits.state[b, WORKING] = m
 
 
-@njit(nogil=True, cache=True)
+@inner
 def decide(refits, b, rules, candidates, fresh, weights, code):
     """Decide for one refit from its candidates: which penalty is to be solved next.
 
@@ -432,7 +441,7 @@ def decide(refits, b, rules, candidates, fresh, weights, code):
     refits.state[b, PENDING] = 1
 
 
-@njit(nogil=True, cache=True)
+@door
 def decide_chunk(refits, chunk, rules, cut, candidates, fresh, weights, code):
     """Decide for a chunk; cut[t]:cut[t + 1] are the t-th refit's candidates."""
     for t in range(chunk.shape[0]):
@@ -448,7 +457,7 @@ def decide_chunk(refits, chunk, rules, cut, candidates, fresh, weights, code):
         )
 
 
-@njit(nogil=True, cache=True)
+@door
 def publish_chunk(
     chunk, tol, n_rows, slots, r, violation, state, certificate, residuals
 ):
@@ -465,7 +474,7 @@ def publish_chunk(
                 residuals[b, c, slots[b, i]] = r[b, c, i]
 
 
-@njit(nogil=True, cache=True)
+@door
 def gather_chunk(base, fill, left, right, rows, n_rows, chunk, cut, candidates, fresh):
     """Gather the raw candidate columns of a chunk of refits."""
     for t in range(chunk.shape[0]):

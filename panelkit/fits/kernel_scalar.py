@@ -11,6 +11,7 @@ d, l1 and l2 a feature's penalties.
 """
 
 import math
+from typing import Any
 
 import numpy as np
 from numba import njit
@@ -25,8 +26,16 @@ COX_BRESLOW = 3
 DEPTH = 6  # sweeps kept for one extrapolation
 SMALLEST_CURVATURE = 1e-5
 
+# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
+# has to be compiled for them.
+DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
+INNER: dict[str, Any] = {**DOOR, "no_cpython_wrapper": True}
+door = njit(**DOOR)
+fast_door = njit(fastmath=FAST, **DOOR)
+fast_inner = njit(fastmath=FAST, **INNER)
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+
+@fast_inner
 def dot(a, b, n):
     """Return the sum of a[i] * b[i], i < n, in one fixed order."""
     s = 0.0
@@ -35,7 +44,7 @@ def dot(a, b, n):
     return s
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def tie_end(time, order, start, stop):
     """Return the end of the group of equal times that begins at `start`."""
     end = start
@@ -44,7 +53,7 @@ def tie_end(time, order, start, stop):
     return end
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def stratum_end(stratum, order, start, n):
     """Return the end of the stratum that begins at `start`."""
     end = start
@@ -53,7 +62,7 @@ def stratum_end(stratum, order, start, n):
     return end
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def cox_terms(efron, time, event, stratum, order, weight, eta, n, r, h):
     """Return minus the log partial likelihood; write r, and weighted risks to h.
 
@@ -113,7 +122,7 @@ def cox_terms(efron, time, event, stratum, order, weight, eta, n, r, h):
     return loss
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def cox_curve(efron, time, event, stratum, order, weight, h, n, z, out):
     """Write the product of the partial likelihood's curvature with z.
 
@@ -177,7 +186,7 @@ def cox_curve(efron, time, event, stratum, order, weight, h, n, z, out):
         start = stop
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def loss_terms(family, y, event, stratum, order, weight, eta, n, r, h):
     """Return the weighted mean loss; write weighted residual r and curvature h."""
     loss = 0.0
@@ -201,7 +210,7 @@ def loss_terms(family, y, event, stratum, order, weight, eta, n, r, h):
     return loss
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_door
 def curves(
     family, y, event, stratum, order, weight, h, n, Z, active, na, HZ, curvature
 ):
@@ -218,7 +227,7 @@ def curves(
         curvature[a] = dot(HZ[a], z, n)
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def combine(path, length, c):
     """Write the Anderson weights of the stored sweeps to c; True if they exist."""
     depth = DEPTH - 1
@@ -256,7 +265,7 @@ def combine(path, length, c):
     return True
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def model_value(Z, h0, n, na, active, l1, l2, r, x, x0, old, old0, q):
     """Return quadratic model plus penalty at coefficients x, x0, whose q is given.
 
@@ -282,7 +291,7 @@ def model_value(Z, h0, n, na, active, l1, l2, r, x, x0, old, old0, q):
     return value
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def extrapolate(
     path, na, active, Z, HZ, h0, n, r, l1, l2, beta, b0, old, old0, q, trial
 ):
@@ -321,7 +330,7 @@ def extrapolate(
     return bx
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def descend(
     Z, HZ, h0, n, na, active, curvature, r, l1, l2, beta, b0, old, q, goal, path, trial
 ):
@@ -370,7 +379,7 @@ def descend(
     return b0
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def solve(
     family, Z, m, n, y, event, stratum, order, weight, pull, penalty, mixing, beta, b0,
     eta, r, grad, tol, steps,
@@ -467,7 +476,7 @@ def solve(
     return b0, worst / unit
 
 
-@njit(nogil=True, cache=True)
+@door
 def solve_chunk(
     family, chunk, penalty, mixing, tol, steps, Z, working, n_rows, y, event, stratum,
     order, weight, pull, beta, b0, eta, r, grad, violation,
@@ -498,7 +507,7 @@ def solve_chunk(
         )
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def cholesky_solve(A, b, m):
     """Solve A x = b in place (A symmetric positive definite, m x m); True if so."""
     for j in range(m):
@@ -527,7 +536,7 @@ def cholesky_solve(A, b, m):
     return True
 
 
-@njit(nogil=True, cache=True, fastmath=FAST)
+@fast_inner
 def ridge_newton(
     family, Z, members, m, y, event, stratum, order, weight, penalty, coef, tol, steps
 ):
@@ -605,7 +614,7 @@ def ridge_newton(
     return worst
 
 
-@njit(nogil=True, cache=True)
+@door
 def ridge_panels(
     family, Z, members, sizes, y, event, stratum, order, weight, penalties, start,
     steps, tol, coefs,
@@ -632,7 +641,7 @@ def ridge_panels(
     return worst
 
 
-@njit(nogil=True, cache=True)
+@door
 def predict_panels(Z, members, sizes, coefs, eta):
     """Write the linear predictors (panels, penalties, n), summed in marker order."""
     for s in range(sizes.shape[0]):

@@ -4,12 +4,18 @@ Plain function on arrays, no panelkit imports; float64, fixed order, lock releas
 """
 
 import math
+from typing import Any
 
 import numpy as np
 from numba import njit
 
+# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
+# has to be compiled for them.
+DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
+door = njit(**DOOR)
 
-@njit(nogil=True, cache=True)
+
+@door
 def welch(
     base, fill, left, right, included, rows, y, weight, unit, unit_weight, n_units,
     means, variances, t,

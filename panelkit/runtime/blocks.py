@@ -198,11 +198,13 @@ def _in_threads(work: Callable[[str], None], names: list[str], threads: int) -> 
     def guarded(name: str) -> None:
         if failed.is_set():
             return
+        finished = False
         try:
             work(name)
-        except BaseException:
-            failed.set()
-            raise
+            finished = True
+        finally:
+            if not finished:
+                failed.set()
 
     with ThreadPoolExecutor(threads) as pool:
         running: list[Future[None]] = [pool.submit(guarded, name) for name in names]
