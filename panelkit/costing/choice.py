@@ -168,16 +168,13 @@ def _interval(low: float, high: float, confidence: float) -> str:
 
 def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headline:
     area = judge.area(accuracy.primary)
-    folds = judge.folds
     sizes = accuracy.chosen.size
     spread = _interval(area.low, area.high, judge.confidence)
     sentence = (
         "Letting the rule choose maker and size anew inside every training set gives "
         f"an area under the ROC curve of {area.mean:.3f} ({spread}) on people whom the "
         "training had not "
-        f"seen. The {folds.n_repeats * folds.n_folds} training sets chose "
-        f"{int(sizes.min())} to {int(sizes.max())} markers, "
-        f"{float(np.median(sizes)):g} at the median."
+        f"seen. {_chosen_sizes(sizes)}"
     )
     if not declared:
         sentence = "Exploratory: the study file declares no primary rule. " + sentence
@@ -190,4 +187,16 @@ def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headlin
         metric_high=area.high,
         declared=declared,
         sentence=sentence,
+    )
+
+
+def _chosen_sizes(sizes: NDArray[np.int64]) -> str:
+    """Return which sizes the training sets chose, in words."""
+    low, high = int(sizes.min()), int(sizes.max())
+    if low == high:
+        what = "1 marker" if low == 1 else f"{low} markers"
+        return f"All {sizes.size} training sets chose {what}."
+    return (
+        f"The {sizes.size} training sets chose {low} to {high} markers, "
+        f"{float(np.median(sizes)):g} at the median."
     )

@@ -230,8 +230,8 @@ def _tie_finding(
             severity="warning",
             where=where,
             message=f"the outcome goes along with {role} ({figures})",
-            next_step=f"Compare the panel with {role} alone, and validate it where "
-            "the two are balanced.",
+            next_step=f"Keep to levels of {role} that hold both classes, or validate "
+            "where the two are balanced.",
         )
     ]
 

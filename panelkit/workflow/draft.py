@@ -28,7 +28,11 @@ OUTCOME = (
 )
 POSITIVE = (
     r"^(1|yes|y|true|t|case|cases|positive|pos|responder|disease|diseased|tumou?r|"
-    r"cancer|relapse|event|symptomatic|sick|affected)$"
+    r"cancer|relapse|event|symptomatic|sx|sick|affected)$"
+)
+NEGATIVE = (
+    r"^(0|no|n|false|f|control|controls|normal|healthy|negative|neg|"
+    r"non.?responder|asymptomatic|asx|unaffected|benign)$"
 )
 MAX_CLASSES = 6
 SMALLEST_CLASS = 4
@@ -82,7 +86,9 @@ def draft_study(
     if samples is not None:
         proposed["samples"] = _relative(samples, base)
     roles = _roles(columns)
-    outcomes = _outcomes(columns, set(roles.values()))
+    outcomes = _outcomes(columns, set(roles.values()), SEX_AND_AGE)
+    if not outcomes:  # sex is the outcome where there is nothing else
+        outcomes = _outcomes(columns, set(roles.values()), "^$")
     if not outcomes:
         raise InputDataError(
             code="no-outcome-found",
@@ -129,10 +135,12 @@ def _roles(columns: dict[str, list[str]]) -> dict[str, str]:
     return found
 
 
-def _outcomes(columns: dict[str, list[str]], taken: set[str]) -> list[_Outcome]:
+def _outcomes(
+    columns: dict[str, list[str]], taken: set[str], barred: str
+) -> list[_Outcome]:
     found = []
     for name, values in columns.items():
-        if name in taken or re.search(SEX_AND_AGE, name.lower()):
+        if name in taken or re.search(barred, name.lower()):
             continue
         counts = Counter(value for value in values if not is_missing(value))
         enough = [value for value, n in counts.items() if n >= SMALLEST_CLASS]
@@ -151,7 +159,10 @@ def _propose_outcome(
     best = outcomes[0]
     classes = [value for value, _n in best.counts.most_common()]
     named = [value for value in classes if re.search(POSITIVE, value.lower())]
+    plain = [value for value in classes if re.search(NEGATIVE, value.lower())]
     pair = classes[:2]
+    if plain:  # a class that is named as the negative one settles the pair
+        pair = [plain[0], next(v for v in [*named, *classes] if v != plain[0])]
     positive = next((value for value in named if value in pair), pair[1])
     negative = pair[0] if positive == pair[1] else pair[1]
     others = ", ".join(each.column for each in outcomes[1:8])
