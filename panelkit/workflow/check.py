@@ -1,24 +1,23 @@
 """`check_study`: read and check, nothing else."""
 
 import os
+from collections.abc import Iterable, Iterator
 from dataclasses import replace
 from pathlib import Path
 
 from panelkit.config import Study, read_study
 from panelkit.records import Cohort, Finding, Findings
-from panelkit.workflow.cohort import load_cohort, load_prices
+from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
 from panelkit.workflow.procedure import draws_of, procedure_of
 
 __all__ = ["check_study"]
-
-NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
 
 
 def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
     """Return the checked cohort of a study, its findings complete.
 
     A `stop` finding that the study accepts with a written reason becomes a warning
-    that carries the reason.
+    that carries the reason; an acceptance that changes nothing is itself a finding.
 
     Parameters
     ----------
@@ -42,11 +41,32 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
     _pricer, _hashes, price_findings = load_prices(plan)
     findings = (*cohort.findings, *price_findings)
     settled = tuple(_settled(item, plan) for item in findings)
-    return replace(cohort, findings=Findings(settled))
+    idle = tuple(_idle_acceptances(findings, plan))
+    return replace(cohort, findings=Findings((*settled, *idle)))
+
+
+def _idle_acceptances(findings: Iterable[Finding], plan: Study) -> Iterator[Finding]:
+    stops = {item.code for item in findings if item.severity == "stop"}
+    for code, reason in plan.cohort.accept.items():
+        if code in NEVER_ACCEPTED:
+            why = "this finding can't be accepted"
+        elif code not in stops:
+            why = "no `stop` finding of this cohort has this code"
+        elif not reason.strip():
+            why = "it gives no reason"
+        else:
+            continue
+        yield Finding(
+            code="acceptance-without-effect",
+            severity="warning",
+            where=f"the study file, [cohort] accept, {code}",
+            message=f"The acceptance of {code} changes nothing: {why}",
+            next_step="Correct the code or the reason, or take the entry out.",
+        )
 
 
 def _settled(item: Finding, plan: Study) -> Finding:
-    reason = plan.cohort.accept.get(item.code, "")
+    reason = plan.cohort.accept.get(item.code, "").strip()
     if item.severity != "stop" or not reason or item.code in NEVER_ACCEPTED:
         return item
     return Finding(

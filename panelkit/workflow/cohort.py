@@ -13,12 +13,15 @@ from panelkit.records import Cohort, Findings
 from panelkit.runtime import hash_of_file
 
 __all__ = [
+    "NEVER_ACCEPTED",
     "barred_features",
     "feature_positions",
     "load_cohort",
     "load_prices",
     "refuse_stops",
 ]
+
+NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
 
 
 def load_cohort(study: Study) -> Cohort:
@@ -75,13 +78,18 @@ def refuse_stops(findings: Findings) -> None:
     """
     if stops := findings.of("stop"):
         first = stops[0]
+        next_step = first.next_step.rstrip(".")
+        accepted = "a cohort without a `stop` finding"
+        if first.code not in NEVER_ACCEPTED:
+            accepted += ", or a written reason for each"
+            next_step += "; or write the reason as [cohort] "
+            next_step += f'accept = {{ "{first.code}" = "..." }}'
         raise InputDataError(
             code=first.code,
             where=first.where,
             what=f"results would mislead: {first.message.rstrip('.')}",
-            accepted="a cohort without a `stop` finding, or a written reason for each",
-            next_step=f"{first.next_step.rstrip('.')}; or write the reason as [cohort] "
-            f'accept = {{ "{first.code}" = "..." }}',
+            accepted=accepted,
+            next_step=next_step,
         )
 
 

@@ -1,5 +1,7 @@
 """`panelkit check`: findings for people and for programs."""
 
+import pytest
+
 
 def tie(files):
     """Each class on a plate of its own: results would mislead."""
@@ -57,6 +59,27 @@ def test_an_accepted_stop_is_a_warning_with_its_reason(panelkit, files, read_jso
     found = {item["code"]: item for item in read_json(answer.out)["findings"]}
     assert found["outcome-tied-to-batch"]["severity"] == "warning"
     assert "one run" in found["outcome-tied-to-batch"]["message"]
+
+
+@pytest.mark.parametrize(
+    ("entry", "why"),
+    [
+        ('"outcome-tied-to-bach" = "one run"', "no `stop` finding"),
+        ('"class-sizes" = "they are what they are"', "no `stop` finding"),
+        ('"outcome-tied-to-batch" = " "', "gives no reason"),
+        ('"subject-in-both-classes" = "relapse"', "can't be accepted"),
+    ],
+)
+def test_an_acceptance_that_changes_nothing_is_said(
+    panelkit, files, read_json, entry, why
+):
+    tie(files)
+    files.change("[shortlist]", f"accept = {{ {entry} }}\n[shortlist]")
+    answer = panelkit("check", files.write(), "--json")
+    assert answer.code == 3
+    found = {item["code"]: item for item in read_json(answer.out)["findings"]}
+    assert found["outcome-tied-to-batch"]["severity"] == "stop"
+    assert why in found["acceptance-without-effect"]["message"]
 
 
 def test_quiet_leaves_a_stop_to_the_exit_code(panelkit, files):
