@@ -1,16 +1,48 @@
 """`check_study`: read and check, nothing else."""
 
 import os
-from collections.abc import Iterable, Iterator
-from dataclasses import replace
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 from panelkit.config import Study, read_study
+from panelkit.costing import Draws, PanelPricer, Procedure, ProcedureData
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
 from panelkit.workflow.procedure import draws_of, procedure_of
 
-__all__ = ["check_study"]
+__all__ = ["CheckedStudy", "check_study", "checked"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CheckedStudy:
+    """What a study becomes once its files are read, before anything is fitted.
+
+    Attributes
+    ----------
+    cohort : Cohort
+        With the findings of the price list among its own.
+    procedure : Procedure
+        What is repeated in every fold.
+    data : ProcedureData
+        What it is repeated on.
+    size_findings : tuple of Finding
+        Panel sizes that were left out.
+    draws : Draws
+        Every fold and subsample.
+    pricer : PanelPricer or None
+        None: nothing is priced.
+    price_hashes : mapping of str to str
+        Hashes of the files that prices came from.
+    """
+
+    cohort: Cohort
+    procedure: Procedure
+    data: ProcedureData
+    size_findings: tuple[Finding, ...]
+    draws: Draws
+    pricer: PanelPricer | None
+    price_hashes: Mapping[str, str]
 
 
 def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
@@ -35,14 +67,43 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
         With exit codes 2, 3 and 4.
     """
     plan = study if isinstance(study, Study) else read_study(Path(study))
+    return checked(plan).cohort
+
+
+def checked(plan: Study) -> CheckedStudy:
+    """Return the checked cohort of a study and all that is known before the first fit.
+
+    Parameters
+    ----------
+    plan : Study
+        The study.
+
+    Returns
+    -------
+    CheckedStudy
+        Its cohort may still hold `stop` findings.
+
+    Raises
+    ------
+    StudyFileError, InputDataError, FitError
+        With exit codes 2, 3 and 4.
+    """
     cohort = load_cohort(plan)
-    _procedure, data, _findings = procedure_of(plan, cohort)
-    draws_of(plan, data)
-    _pricer, _hashes, price_findings = load_prices(plan)
+    procedure, data, size_findings = procedure_of(plan, cohort)
+    draws = draws_of(plan, data)
+    pricer, price_hashes, price_findings = load_prices(plan)
     findings = (*cohort.findings, *price_findings)
     settled = tuple(_settled(item, plan) for item in findings)
     idle = tuple(_idle_acceptances(findings, plan))
-    return replace(cohort, findings=Findings((*settled, *idle)))
+    return CheckedStudy(
+        replace(cohort, findings=Findings((*settled, *idle))),
+        procedure,
+        data,
+        tuple(size_findings),
+        draws,
+        pricer,
+        price_hashes,
+    )
 
 
 def _idle_acceptances(findings: Iterable[Finding], plan: Study) -> Iterator[Finding]:

@@ -27,12 +27,8 @@ from panelkit.records import (
 )
 from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
-from panelkit.workflow.check import check_study
-from panelkit.workflow.cohort import (
-    load_prices,
-    refuse_stops,
-)
-from panelkit.workflow.procedure import draws_of, procedure_of
+from panelkit.workflow.check import checked
+from panelkit.workflow.cohort import refuse_stops
 from panelkit.workflow.record import record_bytes, run_record
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
@@ -120,12 +116,11 @@ def run_study(
     n_threads = thread_count(threads)
     started = time.time()
     listener(Progress("reading", 0, 1))
-    cohort = check_study(plan)
-    pricer, price_hashes = load_prices(plan)[:2]
+    known = checked(plan)
+    cohort, pricer = known.cohort, known.pricer
+    procedure, data, draws = known.procedure, known.data, known.draws
     reading = round(time.time() - started, 3)
     refuse_stops(cohort.findings)
-    procedure, data, size_finding = procedure_of(plan, cohort)
-    draws = draws_of(plan, data)
     listener(Progress("reading", 1, 1))
     listener(Progress("shortlist", 0, 1))
     start = time.perf_counter()
@@ -133,7 +128,7 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    record = run_record(plan, {**(cohort.sources or {}), **price_hashes})
+    record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content)
@@ -142,7 +137,7 @@ def run_study(
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
-    findings = Findings((*cohort.findings, *size_finding))
+    findings = Findings((*cohort.findings, *known.size_findings))
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
     inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
