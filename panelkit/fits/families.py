@@ -93,6 +93,15 @@ class Problem:
         here = slice(None) if rows is None else rows
         return np.lexsort((-self.y[here], self.strata[here]))
 
+    def start(
+        self, share: NDArray[np.float64], rows: NDArray[np.int64] | None = None
+    ) -> float:
+        """Return a ridge fit's first intercept: the log-odds of two classes, else 0."""
+        if self.family != "binomial":
+            return 0.0
+        mean = float((share * self.y[slice(None) if rows is None else rows]).sum())
+        return float(np.log(mean / (1.0 - mean)))
+
     @property
     def n_predictors(self) -> int:
         """Linear predictors of a refit."""

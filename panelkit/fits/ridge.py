@@ -155,10 +155,7 @@ class _One:
             problem.order(training),
             share,
         )
-        self._intercept = 0.0
-        if problem.family == "binomial":
-            mean = float((share * self._terms[0]).sum())
-            self._intercept = float(np.log(mean / (1.0 - mean)))
+        self._intercept = problem.start(share, training)
         self._free = problem.family != "cox"
         self._dual = np.zeros(len(training))
 

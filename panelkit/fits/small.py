@@ -150,10 +150,6 @@ def _scalar_fits(
     penalties: NDArray[np.float64],
 ) -> tuple[NDArray[np.float64], float]:
     share = problem.weights / problem.weights.sum()
-    start = 0.0
-    if problem.family == "binomial":
-        mean = float((share * problem.y).sum())
-        start = float(np.log(mean / (1.0 - mean)))
     coefs = np.zeros((len(sizes), len(penalties), 1 + members.shape[1]))
     worst = kernel_scalar.ridge_panels(
         problem.code,
@@ -166,7 +162,7 @@ def _scalar_fits(
         problem.order(),
         share,
         penalties,
-        start,
+        problem.start(share),
         STEPS,
         TOLERANCE,
         coefs,
