@@ -28,6 +28,7 @@ from panelkit.config.sections import Section, check_section, read_toml, refuse_k
 from panelkit.errors import StudyFileError, name_some
 
 __all__ = [
+    "PLAIN_SECTIONS",
     "AccuracySection",
     "ChoiceSection",
     "CohortSection",
@@ -337,7 +338,8 @@ class Study:
         return tables
 
 
-_TABLES: dict[str, type[Section]] = {
+# tables read as they stand; programme and platform have readers of their own
+PLAIN_SECTIONS: dict[str, type[Section]] = {
     "cohort": CohortSection,
     "preparation": PreparationSection,
     "shortlist": ShortlistSection,
@@ -346,7 +348,7 @@ _TABLES: dict[str, type[Section]] = {
     "choice": ChoiceSection,
     "statement": StatementSection,
 }
-_KEYS = ("seed", *_TABLES, "programme", "platform")
+_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
 
 
 def read_study(path: str | Path) -> Study:
@@ -389,7 +391,7 @@ def read_study(path: str | Path) -> Study:
         )
     sections: dict[str, Any] = {
         name: check_section(kind, tables.get(name, {}), f"{path}, [{name}]")
-        for name, kind in _TABLES.items()
+        for name, kind in PLAIN_SECTIONS.items()
     }
     _check_lists(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):

@@ -14,26 +14,12 @@ from typing import Any
 
 from panelkit.config.programme import ProgrammeSection
 from panelkit.config.sections import Section
-from panelkit.config.study import (
-    AccuracySection,
-    ChoiceSection,
-    CohortSection,
-    PanelsSection,
-    PreparationSection,
-    ShortlistSection,
-    StatementSection,
-)
+from panelkit.config.study import PLAIN_SECTIONS
 
 __all__ = ["TEMPLATE_SECTIONS", "explanations", "study_text", "toml_value"]
 
 TEMPLATE_SECTIONS: dict[str, type[Section]] = {
-    "cohort": CohortSection,
-    "preparation": PreparationSection,
-    "shortlist": ShortlistSection,
-    "panels": PanelsSection,
-    "accuracy": AccuracySection,
-    "choice": ChoiceSection,
-    "statement": StatementSection,
+    **PLAIN_SECTIONS,
     "programme": ProgrammeSection,
 }
 WIDTH = 78
