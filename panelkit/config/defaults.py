@@ -30,6 +30,8 @@ class _Cohort:
     orientation: Literal["auto", "samples-in-rows", "features-in-rows"] = "auto"
     max_bad_cells: int = 100
     """Non-numeric cells read as missing; more than these are an error."""
+    join: Literal["refuse", "intersection"] = "refuse"
+    """What is done when several matrices have different features."""
 
 
 @dataclass(frozen=True, slots=True)

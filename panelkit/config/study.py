@@ -59,6 +59,14 @@ def _ascending(value: object) -> object:
     return value
 
 
+def _paths(value: object) -> object:
+    several = isinstance(value, list | tuple) and len(value) > 0
+    for path in value if isinstance(value, list | tuple) and several else [value]:
+        if not isinstance(path, str):
+            raise ValueError("a path, or a list of paths")
+    return value
+
+
 Number = Annotated[float, BeforeValidator(_number)]
 Share = Annotated[float, Field(gt=0, lt=1), BeforeValidator(_number)]
 ClassName = Annotated[str, BeforeValidator(_text)]
@@ -70,8 +78,23 @@ class CohortSection(Section):
 
     Attributes
     ----------
-    expression : str
-        The expression matrix: CSV or TSV (plain or .gz) or .h5ad.
+    expression : str or tuple of str
+        The expression matrix: delimited text, Parquet, Arrow or Feather, .h5ad, GCT,
+        Matrix Market or Excel. A list of files is joined by feature; the column
+        source_file then says where a sample came from.
+    format : str or None
+        What the file is, where its content does not tell: text, parquet, arrow, h5ad,
+        gct, matrix-market, excel.
+    layer : str or None
+        Of an .h5ad file: a layer's name, or raw, in place of X.
+    sheet : str or None
+        Of a workbook: the sheet's name; without it the first one.
+    row_names, column_names : str or None
+        Of a Matrix Market file: the files of its ids; without them they are looked
+        for beside it.
+    join : str
+        ``refuse`` makes different features of several matrices an error,
+        ``intersection`` keeps the features of all of them.
     samples : str or None
         The sample sheet; an .h5ad file brings its own.
     features : str or None
@@ -98,7 +121,13 @@ class CohortSection(Section):
         Cells that are no numbers and are read as missing; more are an error.
     """
 
-    expression: str
+    expression: Annotated[str | tuple[str, ...], BeforeValidator(_paths)]
+    format: str | None = None
+    layer: str | None = None
+    sheet: str | None = None
+    row_names: str | None = None
+    column_names: str | None = None
+    join: Literal["refuse", "intersection"] = COHORT.join
     samples: str | None = None
     features: str | None = None
     outcome: str | None = None
@@ -321,7 +350,7 @@ class Study:
             section: Section = getattr(self, name)
             tables[name] = section.model_dump(mode="json")
         cohort = self.cohort.model_dump(mode="json")
-        for name in ("expression", "samples", "features"):
+        for name in FILE_KEYS:
             cohort.pop(name)
         tables["cohort"] = cohort
         for name in ("prices", "platforms"):
@@ -348,6 +377,8 @@ PLAIN_SECTIONS: dict[str, type[Section]] = {
     "choice": ChoiceSection,
     "statement": StatementSection,
 }
+FILE_KEYS = ("expression", "samples", "features", "row_names", "column_names")
+"""Keys of ``[cohort]`` that name files; the record holds their hashes instead."""
 _KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
 
 

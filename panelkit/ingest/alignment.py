@@ -5,9 +5,6 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any, Literal, get_args
 
-import numpy as np
-from numpy.typing import NDArray
-
 from panelkit.errors import InputDataError, UsageError
 from panelkit.ingest.matrix_table import MatrixTable
 from panelkit.ingest.sheet import Sheet
@@ -39,14 +36,14 @@ class FeatureMajor:
         The file or argument, for messages.
     features, samples : list of str
         Their ids, unique, in file order.
-    values : ndarray of shape (n_features, n_samples)
+    values : ndarray or DeferredValues of shape (n_features, n_samples)
         A view; not contiguous when samples were in rows.
     """
 
     where: str
     features: list[str]
     samples: list[str]
-    values: NDArray[np.floating[Any]]
+    values: Any
 
 
 def check_orientation(orientation: str) -> None:

@@ -3,7 +3,8 @@
 import os
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
-from typing import TYPE_CHECKING, Any
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,27 +15,24 @@ from panelkit.ingest.alignment import (
     FeatureMajor,
     Orientation,
     check_orientation,
-    orient,
 )
 from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
 from panelkit.ingest.design_checks import check_ties
-from panelkit.ingest.expression_source import (
-    ExpressionSource,
-    open_expression,
-    open_sheet,
-)
+from panelkit.ingest.expression_source import Expressions, open_sheet
 from panelkit.ingest.feature_sheet import feature_columns
+from panelkit.ingest.joined_matrices import Join, open_expressions
+from panelkit.ingest.matrix_table import values_of_samples
 from panelkit.ingest.outcome_classes import (
     OutcomeClasses,
     check_class_sizes,
     outcome_classes,
 )
+from panelkit.ingest.reader import ReadOptions
 from panelkit.ingest.roles import Roles, design_of, refuse_survival
 from panelkit.ingest.row_filter import RowFilter, row_filters
 from panelkit.ingest.row_selection import Selection, select_rows
 from panelkit.ingest.sheet import Sheet
-from panelkit.ingest.source_file import sha256
 from panelkit.ingest.wording import counted, quoted
 from panelkit.records import Cohort, Finding, Findings, Flow, Outcome
 
@@ -42,14 +40,13 @@ if TYPE_CHECKING:
     import anndata
     import pandas as pd
 
-__all__ = ["read_cohort"]
+    _Expression: TypeAlias = str | os.PathLike[str] | anndata.AnnData | pd.DataFrame
 
-_TILE = 4096
-"""Features copied together when the matrix is brought into its final order."""
+__all__ = ["read_cohort"]
 
 
 def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
-    expression: "str | os.PathLike[str] | anndata.AnnData | pd.DataFrame",
+    expression: "_Expression | Sequence[_Expression]",
     samples: "str | os.PathLike[str] | pd.DataFrame | None" = None,
     *,
     outcome: str | None = None,
@@ -67,14 +64,23 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
     covariates: Sequence[str] = (),
     nuisance: Sequence[str] = (),
     max_bad_cells: int = COHORT.max_bad_cells,
+    format: str | None = None,
+    layer: str | None = None,
+    sheet: str | None = None,
+    row_names: "str | os.PathLike[str] | None" = None,
+    column_names: "str | os.PathLike[str] | None" = None,
+    join: Join = COHORT.join,
 ) -> Cohort:
     """Return a checked cohort from an expression matrix and a sample sheet.
 
     Parameters
     ----------
-    expression : path, AnnData or pandas.DataFrame
-        The matrix: CSV or TSV (plain or .gz), .h5ad, or an object in memory (a data
-        frame has samples in rows and sample ids as its index).
+    expression : path, AnnData, pandas.DataFrame, or a list of them
+        The matrix: delimited text, Parquet, Arrow or Feather, .h5ad, GCT, Matrix
+        Market, an Excel workbook, or an object in memory (a data frame has samples
+        in rows and sample ids as its index). Several matrices of different samples
+        are joined by feature; the column ``source_file`` then says which one a
+        sample came from.
     samples : path or pandas.DataFrame, optional
         The sample sheet; ids in the column ``sample_id`` or the first one. AnnData
         brings its own (``.obs``).
@@ -99,6 +105,19 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
         Columns that travel with the panel, and columns that must not explain it.
     max_bad_cells : int
         Non-numeric cells read as missing; more than these are an error.
+    format : str, optional
+        ``text``, ``parquet``, ``arrow``, ``h5ad``, ``gct``, ``matrix-market`` or
+        ``excel``; without it the content decides.
+    layer : str, optional
+        Of AnnData: a layer's name, or ``raw``, in place of X.
+    sheet : str, optional
+        Of an Excel workbook: the sheet's name; without it the first one.
+    row_names, column_names : path, optional
+        Of a Matrix Market file: the files of its ids; without them they are looked
+        for beside it.
+    join : {"refuse", "intersection"}
+        Whether several matrices with different features are an error, or the features
+        of all of them are kept.
 
     Returns
     -------
@@ -118,31 +137,27 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
         outcome, positive, negative, subject, site, batch, replicate_of, covariates,
         nuisance,
     )  # fmt: skip
-    source = open_expression(expression)
-    _refuse_turned_annotated(source, orientation)
+    options = ReadOptions(format, layer, sheet, _path(row_names), _path(column_names))
+    source = open_expressions(expression, options, join)
     hashes: dict[str, str] = {}
-    sheet = _sheet(samples, source, "samples", hashes)
-    roles.check(sheet)
-    classes = _classes(sheet, roles)
-    filters = _filters(sheet, keep)
-    feature_table = _sheet(features, source, "features", hashes)
+    own = samples is None
+    known = _sheet(samples, source, "samples", hashes, orientation)
+    known = source.with_origin(known, orientation, max_bad_cells)
+    roles.check(known)
+    classes = _classes(known, roles)
+    filters = _filters(known, keep)
+    feature_table = _sheet(features, source, "features", hashes, orientation)
 
-    table = source.matrix(max_bad_cells)
-    # AnnData says itself which side the samples are on
-    known = orientation if source.annotated is None else "samples-in-rows"
-    matrix, findings = orient(table, sheet, known)
-    columns, feature_findings = feature_columns(feature_table, matrix.features)
-    selection = _select(sheet, matrix, classes, filters, replicate_of)
-    if source.path is not None:
-        hashes["expression"] = sha256(source.path)
-
-    cohort = _assemble(sheet, matrix, classes, selection, roles)
-    early = (
-        *table.bad_cells.findings(),
-        *findings,
-        *selection.findings,
-        *feature_findings,
+    turned = source.turned(known, own, orientation, max_bad_cells)
+    matrix = turned.matrix
+    columns, feature_findings = feature_columns(
+        turned.feature_sheet if features is None else feature_table, matrix.features
     )
+    selection = _select(known, matrix, classes, filters, replicate_of)
+    hashes.update(source.hashes())
+
+    cohort = _assemble(known, matrix, classes, selection, roles)
+    early = (*turned.findings(), *selection.findings, *feature_findings)
     cohort = replace(
         cohort,
         feature_columns=columns,
@@ -157,23 +172,20 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
     return replace(cohort, findings=Findings(tuple(found)))
 
 
-def _refuse_turned_annotated(source: ExpressionSource, orientation: str) -> None:
-    if source.annotated is not None and orientation == "features-in-rows":
-        raise UsageError(
-            code="orientation-fixed",
-            where="orientation",
-            what="AnnData has samples in rows (got 'features-in-rows')",
-            accepted="'auto' and 'samples-in-rows' are accepted for AnnData",
-            next_step="Transpose the object first if its .obs describes features",
-        )
+def _path(name: "str | os.PathLike[str] | None") -> Path | None:
+    return None if name is None else Path(name)
 
 
 def _sheet(
-    given: object, source: ExpressionSource, role: str, hashes: dict[str, str]
+    given: object,
+    source: Expressions,
+    role: str,
+    hashes: dict[str, str],
+    orientation: str,
 ) -> Sheet | None:
     """Return the sheet that was given, else the one the expression data bring."""
     if given is None:
-        return source.own_sheet("obs" if role == "samples" else "var")
+        return source.sample_sheet(orientation) if role == "samples" else None
     id_column = "sample_id" if role == "samples" else "feature"
     sheet, digest = open_sheet(given, role, id_column)
     if digest is not None:
@@ -229,7 +241,7 @@ def _assemble(
     positions = np.array([place[name] for name in analysed])
     design = design_of(sheet, analysed, rows, roles)
     return Cohort(
-        values=_ordered(matrix.values, positions),
+        values=values_of_samples(matrix.values, positions),
         features=np.array(matrix.features, dtype=object),
         samples=analysed,
         outcome=_outcome(classes, selection, design.subject_ids[design.subject]),
@@ -242,16 +254,6 @@ def _assemble(
         dropped=selection.dropped,
         flow=selection.flow,
     )
-
-
-def _ordered(
-    values: NDArray[np.floating[Any]], positions: NDArray[np.int64]
-) -> NDArray[np.floating[Any]]:
-    """Return the samples at `positions`, feature-major and C-contiguous."""
-    result = np.empty((len(values), len(positions)), dtype=values.dtype)
-    for start in range(0, len(values), _TILE):
-        result[start : start + _TILE] = values[start : start + _TILE][:, positions]
-    return result
 
 
 def _outcome(

@@ -2,14 +2,61 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.ingest.cells import BadCells
+from panelkit.records import Finding
 
-__all__ = ["MatrixTable", "infinite_to_missing"]
+__all__ = [
+    "BLOCK_BYTES",
+    "DeferredValues",
+    "MatrixTable",
+    "Note",
+    "Numbers",
+    "Positions",
+    "Side",
+    "cell_notes",
+    "infinite_to_missing",
+    "values_of_samples",
+]
+
+BLOCK_BYTES = 16 * 2**20
+"""Numbers held beside the matrix while it is read from a file in blocks."""
+
+_TILE = 4096
+"""Features copied together when the matrix is brought into its final order."""
+
+Numbers = NDArray[np.floating[Any]]
+Positions = NDArray[np.int64]
+Side = Literal["rows", "columns"]
+Note = Callable[[int, int, str], None]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DeferredValues:
+    """Values that stay where they are until it is known which samples are wanted.
+
+    Attributes
+    ----------
+    shape : tuple of int
+        Rows and columns.
+    take_rows : callable
+        Row positions to their values, ndarray of shape (n_columns, n_taken).
+    take_columns : callable
+        Column positions to their values, ndarray of shape (n_rows, n_taken).
+    """
+
+    shape: tuple[int, int]
+    take_rows: Callable[[Positions], Numbers]
+    take_columns: Callable[[Positions], Numbers]
+
+    @property
+    def T(self) -> "DeferredValues":
+        """The same values the other way round."""
+        return DeferredValues(self.shape[::-1], self.take_columns, self.take_rows)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -22,22 +69,71 @@ class MatrixTable:
         The file or argument, for messages.
     row_ids, column_ids : list of str
         As written.
-    values : ndarray of shape (n_rows, n_columns), float32 or float64
-        NaN where missing.
+    values : ndarray or DeferredValues of shape (n_rows, n_columns)
+        float32 or float64, NaN where missing.
     bad_cells : BadCells
-        Cells that were read as missing though they hold something.
+        Cells that were read as missing though they hold something; for deferred
+        values it is filled when they are taken.
+    findings : tuple of Finding
+        What else was noticed while reading.
     """
 
     where: str
     row_ids: list[str]
     column_ids: list[str]
-    values: NDArray[np.floating[Any]]
+    values: Any
     bad_cells: BadCells
+    findings: tuple[Finding, ...] = ()
 
 
-def infinite_to_missing(
-    values: NDArray[np.floating[Any]], note: Callable[[int, int, str], None]
-) -> NDArray[np.floating[Any]]:
+def values_of_samples(values: Any, positions: Positions) -> Numbers:
+    """Return the wanted samples of a matrix with features in rows, in their order.
+
+    Parameters
+    ----------
+    values : ndarray or DeferredValues of shape (n_features, n_in_file)
+        The matrix.
+    positions : ndarray of shape (n_samples,), int64
+        Wanted columns, each once.
+
+    Returns
+    -------
+    ndarray of shape (n_features, n_samples)
+        C-contiguous, a copy.
+    """
+    if isinstance(values, DeferredValues):
+        return values.take_columns(positions)
+    result = np.empty((len(values), len(positions)), dtype=values.dtype)
+    for start in range(0, len(values), _TILE):
+        result[start : start + _TILE] = values[start : start + _TILE][:, positions]
+    return result
+
+
+def cell_notes(
+    bad_cells: BadCells, row_ids: list[str], column_ids: list[str]
+) -> Callable[[int, int, str], None]:
+    """Return a function that notes a bad cell by its row and column positions.
+
+    Parameters
+    ----------
+    bad_cells : BadCells
+        Where they are collected.
+    row_ids, column_ids : list of str
+        Ids to name them by.
+
+    Returns
+    -------
+    callable
+        Of row position, column position and text.
+    """
+
+    def note(row: int, column: int, text: str) -> None:
+        bad_cells.add(row_ids[row], column_ids[column], text)
+
+    return note
+
+
+def infinite_to_missing(values: Numbers, note: Note) -> Numbers:
     """Return the values with infinite ones noted and set to NaN.
 
     Parameters

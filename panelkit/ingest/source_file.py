@@ -13,7 +13,14 @@ from typing import BinaryIO, Literal, TextIO, cast
 
 from panelkit.errors import InputDataError
 
-__all__ = ["FileKind", "file_kind", "open_text", "sha256", "sniff_delimiter"]
+__all__ = [
+    "FileKind",
+    "file_kind",
+    "file_start",
+    "open_text",
+    "sha256",
+    "sniff_delimiter",
+]
 
 FileKind = Literal["delimited", "hdf5"]
 
@@ -66,6 +73,31 @@ def file_kind(path: Path) -> FileKind:
     if b"\0" in start:
         raise _wrong_content(path, "binary data (it holds zero bytes)")
     return "delimited"
+
+
+def file_start(path: Path) -> bytes:
+    """Return the first bytes of a file, after any compression.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+
+    Returns
+    -------
+    bytes
+        At most 4,096; empty when the compressed file holds nothing.
+
+    Raises
+    ------
+    InputDataError
+        When the file is missing, a folder, empty or unreadable.
+    """
+    start = _first_bytes(path)
+    if start.startswith(_GZIP):
+        with _reading(path), gzip.open(path) as stream:
+            start = stream.read(4096)
+    return start
 
 
 def _first_bytes(path: Path) -> bytes:

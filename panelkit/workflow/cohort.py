@@ -47,8 +47,11 @@ def load_cohort(study: Study) -> Cohort:
     def path(name: str | None) -> Path | None:
         return None if name is None else study.file(name)
 
+    named = section.expression
     return read_cohort(
-        study.file(section.expression),
+        study.file(named)
+        if isinstance(named, str)
+        else [study.file(name) for name in named],
         path(section.samples),
         outcome=section.outcome,
         positive=section.positive,
@@ -65,6 +68,12 @@ def load_cohort(study: Study) -> Cohort:
         covariates=section.covariates,
         nuisance=section.nuisance,
         max_bad_cells=section.max_bad_cells,
+        format=section.format,
+        layer=section.layer,
+        sheet=section.sheet,
+        row_names=path(section.row_names),
+        column_names=path(section.column_names),
+        join=section.join,
     )
 
 

@@ -16,6 +16,7 @@ OWNERS = {
     "matplotlib": {"report/*": "owner"},
     "numba": {"fits/kernel*": "owner"},
     "numpy": {"*": "arrays are what records carry"},
+    "openpyxl": {"ingest/*": "owner"},
     "pandas": {"ingest/*": "owner", "records/*": "to_frame"},
     "pyarrow": {"ingest/*": "owner"},
     "pydantic": {"config/*": "owner"},
@@ -24,6 +25,7 @@ OWNERS = {
     "scipy": {
         "costing/*": "the exact cover is a mixed-integer programme",
         "fits/*": "special functions and linear algebra",
+        "ingest/*": "Matrix Market files and sparse matrices",
         "metrics/*": "distributions of test statistics",
         "preparation/*": "no other package of ours has them",
         "sizing/*": "distributions",
@@ -41,7 +43,7 @@ OWNERS = {
         "fits/*": "the engine holds BLAS to one thread",
     },
 }
-SLOW = ("anndata", "h5py", "pandas", "pyarrow")
+SLOW = ("anndata", "h5py", "openpyxl", "pandas", "pyarrow")
 
 
 def third_party(source):
