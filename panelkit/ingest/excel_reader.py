@@ -143,21 +143,20 @@ def _worksheet(path: Path, name: str | None, *, formulas: bool) -> Iterator[Any]
     """Open the named or the first sheet; with `formulas`, cells show those."""
     import openpyxl
 
-    with _damage(path), warnings.catch_warnings():
-        # openpyxl warns of parts that it leaves alone, such as styles
-        warnings.simplefilter("ignore")
-        book = openpyxl.load_workbook(
-            path, read_only=True, data_only=not formulas, keep_links=False
-        )
-        sheets = {sheet.title: sheet for sheet in book.worksheets}
-    try:
+    # a stream, since openpyxl goes by the names of files
+    with path.open("rb") as stream:
+        with _damage(path), warnings.catch_warnings():
+            # openpyxl warns of parts that it leaves alone, such as styles
+            warnings.simplefilter("ignore")
+            book = openpyxl.load_workbook(
+                stream, read_only=True, data_only=not formulas, keep_links=False
+            )
+            sheets = {sheet.title: sheet for sheet in book.worksheets}
         if not sheets or (name is not None and name not in sheets):
             raise _sheet_missing(path, name, list(sheets))
         sheet = sheets[name] if name is not None else next(iter(sheets.values()))
         sheet.reset_dimensions()  # what a file says of its size may be wrong
         yield sheet
-    finally:
-        book.close()
 
 
 def _sheet_missing(path: Path, name: str | None, names: list[str]) -> InputDataError:

@@ -54,7 +54,7 @@ class H5adReader:
         """
         import h5py
 
-        with _damage(path), h5py.File(path, "r") as file:
+        with _damage(path, _OPENING), h5py.File(path, "r") as file:
             _refuse_links(path, file)
             place, names_of = _place(path, file, options.layer)
             shape = _shape(path, file, place)
@@ -64,30 +64,27 @@ class H5adReader:
 
         @contextmanager
         def opened() -> Iterator[Any]:
-            with _damage(path), h5py.File(path, "r") as file:
+            with _damage(path, _READING), h5py.File(path, "r") as file:
                 yield _stored(file, place)
 
         return open_annotated(Annotated(where, obs, var, place, opened))
 
 
+_READING = (OSError, KeyError, ValueError, RuntimeError)
+"""What h5py raises where bytes of a file are not as they should be."""
+_OPENING = (*_READING, TypeError, AttributeError, IndexError)
+"""What anndata raises where the layout of a file is not as it should be."""
+
+
 @contextmanager
-def _damage(path: Path) -> Iterator[None]:
+def _damage(path: Path, kinds: tuple[type[Exception], ...]) -> Iterator[None]:
     """Turn what h5py and anndata say about damaged files into one sentence."""
     try:
         with warnings.catch_warnings():
             # older files are read as they are; repeated names are refused by us
             warnings.simplefilter("ignore")
             yield
-    except (
-        OSError,
-        KeyError,
-        ValueError,
-        TypeError,
-        AttributeError,
-        IndexError,
-        RuntimeError,
-        NotImplementedError,
-    ) as error:
+    except kinds as error:
         refuse_unreadable(path, H5adReader.title, error)
 
 

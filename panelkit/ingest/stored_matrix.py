@@ -143,9 +143,7 @@ def _take_sparse(
 ) -> None:
     major = 0 if layout == "csr" else 1
     size, limit = stored.shape[major], stored.shape[1 - major]
-    together = max(1, BLOCK_BYTES // (16 * max(1, _stored_entries(stored) // size)))
-    for start in range(0, size, together):
-        stop = min(start + together, size)
+    for start, stop in _runs(_pointers(stored, size, where)):
         if major == axis and not (place[start:stop] >= 0).any():
             continue
         block = stored[start:stop] if major == 0 else stored[:, start:stop]
@@ -170,9 +168,40 @@ def _take_sparse(
         result[across, place[along]] = data
 
 
-def _stored_entries(stored: Any) -> int:
-    group = getattr(stored, "group", None)  # of a sparse matrix on disk
-    return int(stored.nnz if group is None else group["data"].shape[0])
+def _pointers(stored: Any, size: int, where: str) -> NDArray[Any]:
+    """Return where each row or column begins, checked: compiled code believes them."""
+    parts = getattr(stored, "group", None)  # of a sparse matrix on disk
+    if parts is None:
+        parts = {name: getattr(stored, name) for name in ("data", "indices", "indptr")}
+    pointers = np.asarray(parts["indptr"][:], dtype=np.int64)
+    entries = parts["data"].shape[0]
+    sound = (
+        len(pointers) == size + 1
+        and pointers[0] == 0
+        and pointers[-1] == entries == parts["indices"].shape[0]
+        and not (np.diff(pointers) < 0).any()
+    )
+    if not sound:
+        raise InputDataError(
+            code="wrong-file-kind",
+            where=where,
+            what=f"the sparse matrix contradicts itself (its pointers do not lead "
+            f"through its {entries} entries)",
+            accepted="pointers begin at 0, never fall and end at the last entry",
+            next_step="Write the file again",
+        )
+    return pointers
+
+
+def _runs(pointers: NDArray[Any]) -> Iterator[tuple[int, int]]:
+    """Yield the first and the last row or column of blocks of a bounded size."""
+    together = BLOCK_BYTES // 16  # a number, its index, and the copy of both
+    start, size = 0, len(pointers) - 1
+    while start < size:
+        reach = np.searchsorted(pointers, pointers[start] + together, side="right")
+        stop = min(max(start + 1, int(reach) - 1), size)
+        yield start, stop
+        start = stop
 
 
 def _check_indices(indices: NDArray[Any], limit: int, where: str) -> None:
