@@ -42,14 +42,16 @@ _ID_NAMES = ("sample_id", "feature")
 class _Columns:
     """A columnar file of either kind.
 
-    `read` takes ascending positions of columns and returns an Arrow table of them.
+    `read` takes ascending positions of columns and returns an Arrow table of them;
+    `release` gives back what the open file holds, which for many columns is more than
+    the matrix.
     """
 
     path: Path
     title: str
-    schema: Any
     n_rows: int
     read: Callable[[Sequence[int]], Any]
+    release: Callable[[], None]
 
 
 class ParquetReader:
@@ -87,19 +89,26 @@ class ParquetReader:
         import pyarrow as pa
         from pyarrow import parquet
 
-        try:
-            file = parquet.ParquetFile(path)
-            schema, metadata = file.schema_arrow, file.metadata
-        except (pa.ArrowException, OSError, ValueError) as error:
-            refuse_unreadable(path, self.title, error)
-        groups = list(range(metadata.num_row_groups))
+        held: list[Any] = []
+
+        def opened() -> Any:
+            if not held:
+                held.append(parquet.ParquetFile(path))
+            return held[0]
 
         def read(positions: Sequence[int]) -> Any:
+            file = opened()
+            groups = list(range(file.metadata.num_row_groups))
             # by position: by name every call would search all names
             return file.reader.read_row_groups(groups, column_indices=list(positions))
 
-        columns = _Columns(path, self.title, schema, metadata.num_rows, read)
-        return _opened(columns)
+        try:
+            n_rows, schema = opened().metadata.num_rows, opened().schema_arrow
+        except (pa.ArrowException, OSError, ValueError) as error:
+            refuse_unreadable(path, self.title, error)
+        made = _opened(_Columns(path, self.title, n_rows, read, held.clear), schema)
+        held.clear()  # what reading the schema left scattered goes with it
+        return made
 
 
 class ArrowReader:
@@ -154,7 +163,10 @@ class ArrowReader:
             part = pa.schema([schema.field(position) for position in wanted])
             return pa.Table.from_batches(batches, part)
 
-        return _opened(_Columns(path, self.title, schema, n_rows, read))
+        def release() -> None:
+            """Nothing is held between two calls."""
+
+        return _opened(_Columns(path, self.title, n_rows, read, release), schema)
 
 
 def _arrow_batches(path: Path, wanted: list[int], n_columns: int) -> Iterator[Any]:
@@ -174,9 +186,9 @@ def _arrow_batches(path: Path, wanted: list[int], n_columns: int) -> Iterator[An
         yield from pa.ipc.open_stream(source, options=options)
 
 
-def _opened(columns: _Columns) -> OpenedMatrix:
+def _opened(columns: _Columns, schema: Any) -> OpenedMatrix:
     """Return a file of either kind opened, its schema and ids checked."""
-    names = list(columns.schema.names)
+    names = list(schema.names)
     where = columns.path.name
     if columns.n_rows == 0 or len(names) < 2:
         raise InputDataError(
@@ -187,14 +199,15 @@ def _opened(columns: _Columns) -> OpenedMatrix:
             accepted="a column of ids and columns of numbers are needed",
             next_step="Write the file again",
         )
-    place = _id_position(columns.schema, where)
+    place = _id_position(schema, where)
     numeric = [position for position in range(len(names)) if position != place]
-    kinds = [columns.schema.field(position).type for position in numeric]
+    kinds = [schema.field(position).type for position in numeric]
     column_ids = [names[position] for position in numeric]
     _refuse_kinds(where, column_ids, kinds)
     dtype = _common_type(kinds)
     refuse_oversized(where, columns.n_rows, len(numeric))
     row_ids = _ids(columns, place)
+    findings = (*_truth_finding(where, column_ids, kinds), *_wide(columns, len(names)))
 
     def table(max_bad_cells: int) -> MatrixTable:
         bad_cells = BadCells(where, max_bad_cells)
@@ -217,7 +230,6 @@ def _opened(columns: _Columns) -> OpenedMatrix:
             return result
 
         values = DeferredValues((len(row_ids), len(numeric)), take_rows, take_columns)
-        findings = (*_truth_finding(where, column_ids, kinds), *_wide(columns, names))
         return MatrixTable(where, row_ids, column_ids, values, bad_cells, findings)
 
     return OpenedMatrix(where, table)
@@ -341,6 +353,7 @@ def _numbers(
         for turn in range(len(part)):
             label = int(labels[start + turn])
             yield label, _column_numbers(table.column(turn), label, note)
+    columns.release()
 
 
 def _column_numbers(column: Any, label: int, note: Note) -> Numbers:
@@ -400,13 +413,13 @@ def _truth_finding(where: str, names: list[str], kinds: list[Any]) -> Iterator[F
         )
 
 
-def _wide(columns: _Columns, names: list[str]) -> Iterator[Finding]:
-    if len(names) > _WIDE:
+def _wide(columns: _Columns, count: int) -> Iterator[Finding]:
+    if count > _WIDE:
         yield Finding(
             code="many-columns-slow",
             severity="info",
             where=columns.path.name,
-            message=f"{columns.title} with {len(names):,} columns is slow to read in "
+            message=f"{columns.title} with {count:,} columns is slow to read in "
             "every program, since each column is stored by itself",
             next_step="Store it with features in rows, or as .h5ad, to read it faster.",
         )
