@@ -18,6 +18,7 @@ from panelkit.ingest.matrix_table import (
     Numbers,
     Positions,
     cell_notes,
+    truth_findings,
 )
 from panelkit.ingest.reader import (
     OpenedMatrix,
@@ -207,7 +208,12 @@ def _opened(columns: _Columns, schema: Any) -> OpenedMatrix:
     dtype = _common_type(kinds)
     refuse_oversized(where, columns.n_rows, len(numeric))
     row_ids = _ids(columns, place)
-    findings = (*_truth_finding(where, column_ids, kinds), *_wide(columns, len(names)))
+    truths = [
+        name
+        for name, kind in zip(column_ids, kinds, strict=True)
+        if str(_plain(kind)) == "bool"
+    ]
+    findings = (*truth_findings(where, truths), *_wide(columns, len(names)))
 
     def table(max_bad_cells: int) -> MatrixTable:
         bad_cells = BadCells(where, max_bad_cells)
@@ -394,23 +400,6 @@ def _text_numbers(cells: list[str | None], label: int, note: Note) -> Numbers:
             number = np.nan
         values[row] = number
     return values
-
-
-def _truth_finding(where: str, names: list[str], kinds: list[Any]) -> Iterator[Finding]:
-    truths = [
-        name
-        for name, kind in zip(names, kinds, strict=True)
-        if str(_plain(kind)) == "bool"
-    ]
-    if truths:
-        yield Finding(
-            code="truth-values-as-numbers",
-            severity="info",
-            where=where,
-            message=f"{len(truths)} columns hold truth values, read as 0 and 1: "
-            f"{quoted(truths)}",
-            next_step="Check that they belong into the matrix.",
-        )
 
 
 def _wide(columns: _Columns, count: int) -> Iterator[Finding]:

@@ -7,7 +7,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.ingest.cells import BadCells, cell_number
-from panelkit.ingest.matrix_table import MatrixTable, infinite_to_missing
+from panelkit.ingest.matrix_table import (
+    MatrixTable,
+    infinite_to_missing,
+    truth_findings,
+)
 from panelkit.ingest.sheet import Sheet, build_sheet
 from panelkit.ingest.wording import as_text
 
@@ -73,15 +77,25 @@ def frame_matrix(frame: "pd.DataFrame", max_bad_cells: int) -> MatrixTable:
             values[:, position] = _column_numbers(
                 frame.iloc[:, position], note, position
             )
+    truths = [
+        name
+        for name, kind in zip(columns, frame.dtypes, strict=True)
+        if str(kind) in ("bool", "boolean")
+    ]
     return MatrixTable(
-        where, rows, columns, infinite_to_missing(values, note), bad_cells
+        where,
+        rows,
+        columns,
+        infinite_to_missing(values, note),
+        bad_cells,
+        tuple(truth_findings(where, truths)),
     )
 
 
 def _column_numbers(series: Any, note: Any, position: int) -> NDArray[np.float64]:
     import pandas as pd
 
-    if pd.api.types.is_numeric_dtype(series) and not pd.api.types.is_bool_dtype(series):
+    if pd.api.types.is_numeric_dtype(series):  # truth values too
         return np.asarray(series.to_numpy(dtype=np.float64, na_value=np.nan))
     values = np.empty(len(series))
     for row, cell in enumerate(series_text(series)):

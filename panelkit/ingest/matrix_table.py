@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.ingest.cells import BadCells
+from panelkit.ingest.wording import counted, quoted
 from panelkit.records import Finding
 
 __all__ = [
@@ -20,6 +21,7 @@ __all__ = [
     "Side",
     "cell_notes",
     "infinite_to_missing",
+    "truth_findings",
     "values_of_samples",
 ]
 
@@ -131,6 +133,35 @@ def cell_notes(
         bad_cells.add(row_ids[row], column_ids[column], text)
 
     return note
+
+
+def truth_findings(where: str, names: list[str]) -> list[Finding]:
+    """Return the finding that names columns of truth values, if there are any.
+
+    Parameters
+    ----------
+    where : str
+        The file or argument.
+    names : list of str
+        The columns.
+
+    Returns
+    -------
+    list of Finding
+        One or none.
+    """
+    if not names:
+        return []
+    return [
+        Finding(
+            code="truth-values-as-numbers",
+            severity="info",
+            where=where,
+            message=f"{counted(len(names), 'column holds', 'columns hold')} truth "
+            f"values, read as 0 and 1: {quoted(names)}",
+            next_step="Check that they belong into the matrix.",
+        )
+    ]
 
 
 def infinite_to_missing(values: Numbers, note: Note) -> Numbers:

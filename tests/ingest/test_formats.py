@@ -219,6 +219,19 @@ def test_wide_files_are_advised_to_turn(tmp_path):
     assert ".h5ad" in finding.next_step
 
 
+def test_truth_values_of_a_frame_are_read_as_in_its_file(small):
+    frame = small.matrix.copy()
+    frame["E5"] = frame["E5"] > 7
+    path = small.folder / "truths.parquet"
+    frame.to_parquet(path)
+    for given in (frame, path):
+        cohort = read_cohort(given, small.sheet)
+        assert np.array_equal(cohort.X, frame.to_numpy(dtype=float))
+        found = [f.message for f in cohort.findings if "truth" in f.code]
+        assert len(found) == 1
+        assert "1 column holds truth values, read as 0 and 1: 'E5'" in found[0]
+
+
 # --- AnnData -------------------------------------------------------------------
 
 
