@@ -37,7 +37,7 @@ __all__ = ["MatrixMarketReader"]
 
 _FEATURES = ("features", "genes", "feature_names", "gene_names")
 _SAMPLES = ("samples", "barcodes", "cells", "sample_names")
-_SUFFIXES = ("", ".tsv", ".txt", ".csv")
+_SUFFIXES = ("", ".tsv", ".txt")  # samples.csv is a usual name of sample sheets
 _PACKED = ("", ".gz")
 
 
