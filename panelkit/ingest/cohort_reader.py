@@ -138,6 +138,9 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
 
     cohort = _assemble(sheet, matrix, classes, selection, roles)
     early = (
+        *(sheet.findings if sheet else ()),
+        *(feature_table.findings if feature_table else ()),
+        *table.findings,
         *table.bad_cells.findings(),
         *findings,
         *selection.findings,
