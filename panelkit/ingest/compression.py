@@ -16,8 +16,8 @@ __all__ = ["BLOCK", "ByteReader", "compression_of", "open_bytes", "reading"]
 BLOCK = 1 << 20
 """Bytes read at a time: small enough to stay in the processor's cache."""
 
-MOST_EXPANSION = 250
-"""Measured tables shrink 2 to 60 times; archives made to fill memory far more."""
+MOST_EXPANSION = 100
+"""Tables of measurements shrink 2 to 40 times, archives made to fill memory more."""
 
 ALWAYS_EXPANDED = 100 * 2**20
 """Bytes below which no archive is refused."""

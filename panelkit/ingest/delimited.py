@@ -63,21 +63,29 @@ def _read(lines: Lines, max_bad_cells: int) -> MatrixTable:
         if line.strip(" \t,;"):
             skipped.line(line)
     columns = _column_ids(layout, sample, where)
-    body = _Body(layout, columns, BadCells(where, max_bad_cells), skipped)
     first = layout.header + 1
+    expected = _expected_rows(lines, sample[first:])
+    body = _Body(layout, columns, BadCells(where, max_bad_cells), skipped, expected)
     for number, batch in chain([(first + 1, sample[first:])], batches):
         body.take(number, batch)
     return body.table(lines)
 
 
+def _expected_rows(lines: Lines, sample: list[str]) -> int:
+    """Return about how many rows a plain file has; 0 for a compressed one."""
+    if lines.compressed:
+        return 0
+    characters = sum(map(len, sample)) + len(sample)
+    return math.ceil(1.01 * lines.path.stat().st_size * len(sample) / characters)
+
+
 def _column_ids(layout: Layout, sample: list[str], where: str) -> list[str]:
     """Return the header's ids; some programs leave out the field above the row ids."""
-    data = sample[layout.header + 1 :]
-    if not any(not is_blank(line, layout.delimiter) for line in data):
-        found = "a header only" if layout.header >= 0 else "blank lines only"
-        if layout.header < 0 and any(map(is_comment, sample)):
-            found = "comment lines only"
-        raise _no_data(where, found)
+    if layout.header < 0:
+        kind = "comment" if any(map(is_comment, sample)) else "blank"
+        raise _no_data(where, f"{kind} lines only")
+    if all(is_blank(line, layout.delimiter) for line in sample[layout.header + 1 :]):
+        raise _no_data(where, "a header only")
     if '"' in sample[layout.header]:
         split_quoted(
             sample[layout.header],
@@ -116,6 +124,7 @@ class _Body:
         columns: list[str],
         bad_cells: BadCells,
         skipped: SkippedLines,
+        expected: int,
     ) -> None:
         self._delimiter = layout.delimiter
         self._padding = layout.delimiter * layout.trailing
@@ -125,7 +134,7 @@ class _Body:
         self._plain = PlainReader(layout.delimiter, len(columns))
         self._mark = DecimalMark(bad_cells.where, layout.delimiter != ",")
         self._names: list[str] = []
-        self._matrix = GrowingMatrix(len(columns))
+        self._matrix = GrowingMatrix(len(columns), expected)
 
     def take(self, number: int, lines: list[str]) -> None:
         """Read a batch of lines; `number` is that of its first."""

@@ -1,4 +1,4 @@
-"""Numbers of many lines at once, by numpy's C reader where every cell is plain."""
+"""Numbers of many lines at once, by compiled readers where every cell is plain."""
 
 import math
 from collections.abc import Sequence
@@ -73,8 +73,11 @@ class PlainReader:
         ndarray of shape (n_lines, n_columns) or None
             None when a cell or line needs a closer look.
         """
-        # numpy's reader would take blanks of other scripts, as float() does
-        if not all(map(str.isascii, rests)):
+        # compiled readers would take blanks of other scripts and nan(1)
+        if not all(map(str.isascii, rests)) or any("(" in rest for rest in rests):
+            return None
+        inner = self._n_columns - 1
+        if any(rest.count(self._delimiter) != inner for rest in rests):
             return None
         if comma:
             if any("." in rest for rest in rests):
@@ -82,12 +85,39 @@ class PlainReader:
             rests = [rest.replace(",", ".") for rest in rests]
         if self._missing.met:
             rests = list(map(self._missing.as_nan, rests))
-        values = self._parsed(rests)
+        values = self._by_arrow(rests)
         if values is None and self._missing.search(rests):
-            values = self._parsed(list(map(self._missing.as_nan, rests)))
-        return values
+            rests = list(map(self._missing.as_nan, rests))
+            values = self._by_arrow(rests)
+        if values is None and any(" " in rest for rest in rests):
+            values = self._by_numpy(rests)
+        if values is None:
+            return None
+        low, high = np.fmin.reduce(values, axis=None), np.fmax.reduce(values, axis=None)
+        return None if high > LARGEST or low < -LARGEST else values
 
-    def _parsed(self, rests: list[str]) -> NDArray[np.float64] | None:
+    def _by_arrow(self, rests: list[str]) -> NDArray[np.float64] | None:
+        """Read cells without blanks around them: the cast of text rounds correctly."""
+        import pyarrow as pa  # slow to import
+        import pyarrow.compute as pc
+
+        mark = self._delimiter
+        text = (mark.join(rests) + mark).encode("ascii")
+        ends = np.flatnonzero(np.frombuffer(text, np.uint8) == ord(mark)) + 1
+        starts = np.zeros(len(ends) + 1, dtype=np.int32)
+        starts[1:] = ends
+        cells = pa.StringArray.from_buffers(
+            len(ends), pa.py_buffer(starts), pa.py_buffer(text)
+        )
+        try:
+            numbers = pc.ascii_rtrim(cells, mark).cast(pa.float64())
+        except pa.ArrowInvalid:
+            return None
+        shape = (len(rests), self._n_columns)
+        return np.asarray(numbers.to_numpy(), dtype=np.float64).reshape(shape)
+
+    def _by_numpy(self, rests: list[str]) -> NDArray[np.float64] | None:
+        """Read cells that may have blanks around them."""
         if not all(rests):
             return None  # numpy's reader passes over empty lines
         try:
@@ -100,10 +130,8 @@ class PlainReader:
             )
         except ValueError:
             return None
-        if values.shape != (len(rests), self._n_columns):
-            return None
-        low, high = np.fmin.reduce(values, axis=None), np.fmax.reduce(values, axis=None)
-        return values if not (high > LARGEST or low < -LARGEST) else None
+        fits = values.shape == (len(rests), self._n_columns)
+        return values if fits else None
 
 
 def unquoted(rest: str, delimiter: str, n_columns: int) -> str | None:
@@ -143,10 +171,12 @@ class GrowingMatrix:
     ----------
     n_columns : int
         Numbers of each row.
+    expected : int
+        Rows that there may be; memory that is not written to costs nothing.
     """
 
-    def __init__(self, n_columns: int) -> None:
-        self._values = np.empty((0, n_columns))
+    def __init__(self, n_columns: int, expected: int = 0) -> None:
+        self._values = np.empty((expected, n_columns))
         self._n_rows = 0
 
     def add(self, rows: NDArray[np.float64]) -> None:

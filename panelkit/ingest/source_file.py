@@ -17,7 +17,7 @@ from panelkit.ingest.compression import (
 )
 from panelkit.ingest.text_lines import encoding_of
 
-__all__ = ["FileKind", "file_kind", "open_text", "sha256"]
+__all__ = ["FileKind", "file_kind", "file_start", "open_text", "sha256"]
 
 FileKind = Literal["delimited", "hdf5"]
 
@@ -66,8 +66,7 @@ def file_kind(path: Path) -> FileKind:
     if path.suffix.lower() in {".h5ad", ".h5"}:
         raise _wrong_content(path, "named like an HDF5 file but is none")
     if compression_of(start):
-        with open_bytes(path) as stream:
-            start = stream.read(_START)
+        start = file_start(path)
         if not start:
             raise _empty(path)
         if start.startswith(_HDF5) or compression_of(start):
@@ -75,6 +74,31 @@ def file_kind(path: Path) -> FileKind:
             raise _wrong_content(path, f"{inside} inside a compressed file")
     _refuse_other_content(path, start)
     return "delimited"
+
+
+def file_start(path: Path) -> bytes:
+    """Return the first bytes of a file, after any compression.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+
+    Returns
+    -------
+    bytes
+        At most 4,096; empty when the compressed file holds nothing.
+
+    Raises
+    ------
+    InputDataError
+        When the file is missing, a folder, empty or unreadable.
+    """
+    start = _first_bytes(path)
+    if compression_of(start):
+        with open_bytes(path) as stream:
+            start = stream.read(_START)
+    return start
 
 
 def _refuse_other_content(path: Path, start: bytes) -> None:

@@ -275,13 +275,14 @@ def find_layout(
         if line.strip(" \t,;") and not is_comment(line)
     ][: 4 * _SAMPLE_LINES]
     _check_width(lines, telling, where)
-    best: tuple[tuple[int, int], str, list[list[str]], int] | None = None
+    best: tuple[tuple[int, int, int], str, list[list[str]], int] | None = None
     for delimiter in DELIMITERS:
         rows = [_fields(lines[place], delimiter) for place in telling]
         width = _usual_width(rows)
         begin = _header(rows, width, id_column)
-        explained = sum(len(row) in (width, width - 1) for row in rows[begin:])
-        merit = (explained if width > 1 else -1, width)
+        full = sum(len(row) == width for row in rows[begin:])
+        explained = full + (len(rows[begin]) == width - 1 if rows else 0)
+        merit = (explained if width > 1 else -1, full, width)
         if best is None or merit > best[0]:
             best = merit, delimiter, rows, begin
     assert best is not None  # there are three delimiters
@@ -293,7 +294,7 @@ def find_layout(
     above = _header_behind_a_mark(lines[:header], delimiter, rows[begin:], id_column)
     if above is not None:
         header, names, data = above[0], above[1], rows[begin:]
-    return _measured(delimiter, header, names, data, max(merit[1], 1))
+    return _measured(delimiter, header, names, data, max(merit[2], 1))
 
 
 def _check_width(lines: Sequence[str], telling: list[int], where: str) -> None:
@@ -341,21 +342,25 @@ def _header(rows: list[list[str]], width: int, id_column: str | None) -> int:
 
 def _lacks_corner(row: list[str], after: list[str], id_column: str | None) -> bool:
     """Return whether a row one field short is a header, not a title before it."""
-    if len(_strip_blank_end(row)) < len(row):
+    if len(row) > 2 and len(_strip_blank_end(row)) == 1:
         return False
     if id_column is None:
-        return _has_numbers(after)
+        return _readable(after)[1]
     title = len(row) == 1 and " " in row[0].strip()
     return id_column not in after and not title
 
 
-def _has_numbers(row: Sequence[str]) -> bool:
+def _readable(row: Sequence[str]) -> tuple[int, bool]:
+    """Return the count of numbers, and whether half the cells are such or missing."""
     cells = row[1 : 1 + _LOOKED_AT]
-    readable = [cell_number(cell.replace(",", ".")) for cell in cells]
-    numbers = sum(value is not None and value == value for value in readable)
-    return numbers > 0 and 2 * sum(value is not None for value in readable) >= len(
-        cells
-    )
+    values = [cell_number(cell.replace(",", ".")) for cell in cells]
+    known = [value for value in values if value is not None]
+    return sum(value == value for value in known), 2 * len(known) >= len(cells)
+
+
+def _has_numbers(row: Sequence[str]) -> bool:
+    numbers, mostly = _readable(row)
+    return numbers > 0 and mostly
 
 
 def _header_behind_a_mark(
@@ -389,8 +394,11 @@ def _measured(
     """Return the layout after delimiters at the end of lines have been seen through."""
     named = _strip_blank_end(names)
     filled = max((len(_strip_blank_end(row)) for row in data), default=0)
-    if width == len(names) + 1 and filled > len(names):
-        return Layout(delimiter, header, names, width, 0)  # the corner is missing
+    if width == len(names) + 1 and filled > len(named):
+        if filled > len(names):
+            return Layout(delimiter, header, names, width, 0)  # the corner is missing
+        if filled == len(named) + 1:  # and delimiters at the end of lines
+            return Layout(delimiter, header, named, filled, width - filled)
     if filled > len(named) and width >= len(names):
         named = names  # a column without a name has content
     return Layout(

@@ -8,13 +8,13 @@ from pathlib import Path
 from typing import TypeVar
 
 from panelkit.errors import InputDataError
-from panelkit.ingest.compression import BLOCK, open_bytes
+from panelkit.ingest.compression import BLOCK, compression_of, open_bytes
 from panelkit.ingest.wording import counted
 from panelkit.records import Finding
 
 __all__ = ["UTF8", "Encoding", "Lines", "encoding_of", "read_lines"]
 
-MOST_CHARACTERS = 256 * 2**20
+MOST_CHARACTERS = 128 * 2**20
 """Of one line; a million columns of 20 characters have 20 million."""
 
 _MARKS = (
@@ -155,6 +155,12 @@ class Lines:
         self.encoding = encoding
         self.zero_bytes = 0
         self._line = 1
+
+    @property
+    def compressed(self) -> bool:
+        """Whether the file is larger than it seems."""
+        with self.path.open("rb") as stream:
+            return compression_of(stream.read(6)) is not None
 
     def _blocks(self) -> Iterator[str]:
         with open_bytes(self.path) as stream:
