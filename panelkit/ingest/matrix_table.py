@@ -56,7 +56,7 @@ def infinite_to_missing(
     ndarray
         Same shape and dtype.
     """
-    infinite = np.abs(values) > LARGEST
+    infinite = (values > LARGEST) | (values < -LARGEST)
     if not infinite.any():
         return values
     values = values.copy()

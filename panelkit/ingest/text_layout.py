@@ -275,18 +275,14 @@ def find_layout(
         if line.strip(" \t,;") and not is_comment(line)
     ][: 4 * _SAMPLE_LINES]
     _check_width(lines, telling, where)
-    best: tuple[tuple[int, int, int], str, list[list[str]], int] | None = None
-    for delimiter in DELIMITERS:
-        rows = [_fields(lines[place], delimiter) for place in telling]
-        width = _usual_width(rows)
-        begin = _header(rows, width, id_column)
-        full = sum(len(row) == width for row in rows[begin:])
-        explained = full + (len(rows[begin]) == width - 1 if rows else 0)
-        merit = (explained if width > 1 else -1, full, width)
-        if best is None or merit > best[0]:
-            best = merit, delimiter, rows, begin
-    assert best is not None  # there are three delimiters
-    merit, delimiter, rows, begin = best
+    tried = [
+        _Division.of(
+            mark, [_fields(lines[place], mark) for place in telling], id_column
+        )
+        for mark in DELIMITERS
+    ]
+    best = max(tried, key=lambda each: (each.splits_header(tried), *each.merit))
+    delimiter, rows, begin = best.delimiter, best.rows, best.begin
     if not rows:
         return Layout(delimiter, -1, [], 0, 0)
     header = telling[begin]
@@ -294,7 +290,43 @@ def find_layout(
     above = _header_behind_a_mark(lines[:header], delimiter, rows[begin:], id_column)
     if above is not None:
         header, names, data = above[0], above[1], rows[begin:]
-    return _measured(delimiter, header, names, data, max(merit[2], 1))
+    return _measured(delimiter, header, names, data, best.width)
+
+
+@dataclass(frozen=True, slots=True)
+class _Division:
+    """The lines that tell something, divided by one delimiter."""
+
+    delimiter: str
+    rows: list[list[str]]
+    width: int
+    begin: int
+    full: int
+
+    @classmethod
+    def of(
+        cls, delimiter: str, rows: list[list[str]], id_column: str | None
+    ) -> "_Division":
+        width = _usual_width(rows)
+        begin = _header(rows, width, id_column)
+        full = sum(len(row) == width for row in rows[begin:])
+        return cls(delimiter, rows, width, begin, full)
+
+    @property
+    def merit(self) -> tuple[int, int, int]:
+        """Lines explained less lines passed over, then ways to settle a tie."""
+        if self.width == 1:
+            return -len(self.rows) - 1, 0, 0
+        lacks_corner = len(self.rows[self.begin]) == self.width - 1
+        return self.full + lacks_corner - self.begin, self.full, self.width
+
+    def splits_header(self, others: Sequence["_Division"]) -> bool:
+        """Return False if the delimiter is not in its header but another one is."""
+        if not self.rows or len(self.rows[self.begin]) > 1:
+            return True
+        return not any(
+            each.full > 1 and len(each.rows[self.begin]) > 1 for each in others
+        )
 
 
 def _check_width(lines: Sequence[str], telling: list[int], where: str) -> None:
@@ -311,32 +343,28 @@ def _check_width(lines: Sequence[str], telling: list[int], where: str) -> None:
 
 
 def _usual_width(rows: list[list[str]]) -> int:
-    """Return the most common number of fields above one; the later one of a tie."""
-    widths = [len(row) for row in rows if len(row) > 1]
-    if not widths:
-        return 1
-    counts = Counter(widths)
-    most = max(counts.values())
-    return next(width for width in reversed(widths) if counts[width] == most)
+    """Return the most common number of fields above one; the larger one of a tie."""
+    counts = Counter(len(row) for row in rows if len(row) > 1)
+    return max(counts, key=lambda width: (counts[width], width), default=1)
 
 
 def _header(rows: list[list[str]], width: int, id_column: str | None) -> int:
     """Return the first row that is no shorter line before the header."""
     for place, row in enumerate(rows):
         after = rows[place + 1] if place + 1 < len(rows) else []
+        before = rows[place - 1] if place else []
         if len(row) >= width:
             if width > 2 and len(_strip_blank_end(row)) == 1 and len(after) >= width:
                 continue  # a title, filled up with delimiters by a spreadsheet
-            before = rows[place - 1] if place else []
-            if id_column is None and len(before) > 1 and _has_numbers(row):
-                return place - 1  # a header cut short, not a line before one
+        elif id_column is not None and id_column in row:
             return place
-        if id_column is not None and id_column in row:
-            return place
-        if len(row) == width - 1 == len(after) - 1 and _lacks_corner(
+        elif not len(row) == width - 1 == len(after) - 1 or not _lacks_corner(
             row, after, id_column
         ):
-            return place
+            continue
+        # numbers below a line of several fields: that line is a header cut short
+        short = id_column is None and len(before) > 1 and _has_numbers(row)
+        return place - 1 if short else place
     return 0
 
 

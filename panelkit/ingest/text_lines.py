@@ -199,7 +199,7 @@ class Lines:
                 carry.append(text)
                 size += len(text)
                 if size > MOST_CHARACTERS:
-                    raise self._too_long()
+                    raise _too_long(self.where, self._line)
                 continue
             lines = text.split("\n")
             lines[0] = "".join([*carry, lines[0]])
@@ -235,15 +235,6 @@ class Lines:
             )
         return "" if text.strip("\0\n ") == "" else text
 
-    def _too_long(self) -> InputDataError:
-        return InputDataError(
-            code="line-too-long",
-            where=f"{self.where}, line {self._line}",
-            what=f"the line has more than {MOST_CHARACTERS:,} characters",
-            accepted="a table has one line for each row",
-            next_step="Check that the file is the table, with its line ends",
-        )
-
     def findings(self) -> list[Finding]:
         """Return what was noticed about the text itself.
 
@@ -266,6 +257,16 @@ class Lines:
                 )
             )
         return found
+
+
+def _too_long(where: str, line: int) -> InputDataError:
+    return InputDataError(
+        code="line-too-long",
+        where=f"{where}, line {line}",
+        what=f"the line has more than {MOST_CHARACTERS:,} characters",
+        accepted="a table has one line for each row",
+        next_step="Check that the file is the table, with its line ends",
+    )
 
 
 def read_lines(path: Path, read: Callable[[Lines], Result]) -> Result:
