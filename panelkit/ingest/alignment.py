@@ -1,7 +1,7 @@
 """Which way round a matrix is, and which of its samples the sheet knows."""
 
 from collections import Counter
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import Any, Literal, get_args
 
@@ -19,7 +19,6 @@ __all__ = [
     "Orientation",
     "check_orientation",
     "mismatch_hint",
-    "near_equal_ids",
     "orient",
 ]
 
@@ -229,38 +228,6 @@ def mismatch_hint(wanted: Iterable[str], found: Iterable[str], place: str) -> st
     if not hits:
         return ""
     return f"{hits} would match those of {place} but for {label}"
-
-
-def near_equal_ids(names: Sequence[str], where: str) -> list[Finding]:
-    """Return the finding that names ids which differ only by case or blanks.
-
-    Parameters
-    ----------
-    names : sequence of str
-        Unique ids.
-    where : str
-        What they are ids of.
-
-    Returns
-    -------
-    list of Finding
-        One or none.
-    """
-    plain = [" ".join(name.split()).casefold() for name in names]
-    counts = Counter(plain)
-    if len(counts) == len(names):
-        return []
-    alike = [name for name, key in zip(names, plain, strict=True) if counts[key] > 1]
-    return [
-        Finding(
-            code="ids-nearly-equal",
-            severity="warning",
-            where=where,
-            message=f"{len(alike)} ids differ from another one only by letter case or "
-            f"blanks: {quoted(alike)}",
-            next_step="Check that they are not the same thing entered twice.",
-        )
-    ]
 
 
 def _check_unique(names: list[str], kind: str, where: str) -> None:

@@ -18,7 +18,6 @@ from panelkit.ingest.alignment import (
 )
 from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
-from panelkit.ingest.design_checks import check_ties
 from panelkit.ingest.expression_source import (
     ExpressionSource,
     open_expression,
@@ -30,11 +29,13 @@ from panelkit.ingest.outcome_classes import (
     check_class_sizes,
     outcome_classes,
 )
+from panelkit.ingest.replicate_checks import replicates_of
 from panelkit.ingest.roles import Roles, design_of, refuse_survival
 from panelkit.ingest.row_filter import RowFilter, row_filters
 from panelkit.ingest.row_selection import Selection, select_rows
 from panelkit.ingest.sheet import Sheet
 from panelkit.ingest.source_file import sha256
+from panelkit.ingest.tie_checks import check_ties
 from panelkit.ingest.wording import counted, quoted
 from panelkit.records import Cohort, Finding, Findings, Flow, Outcome
 
@@ -151,13 +152,14 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
         feature_columns=columns,
         findings=Findings(early),
         sources={role: hashes[role] for role in sorted(hashes)} or None,
+        replicates=replicates_of(sheet, matrix, selection, replicate_of),
     )
     late = (
         *check_ties(cohort, nuisance, covariates),
         *_blank_covariates(cohort, covariates),
     )
-    found = dict.fromkeys((*check_cohort(cohort), *late))
-    return replace(cohort, findings=Findings(tuple(found)))
+    found = Findings((*check_cohort(cohort), *late)).ordered()
+    return replace(cohort, findings=found)
 
 
 def _refuse_turned_annotated(source: ExpressionSource, orientation: str) -> None:

@@ -29,6 +29,7 @@ from panelkit.records.prices import (
 )
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
+from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -65,6 +66,8 @@ __all__ = [
     "PriceList",
     "RecipeState",
     "Record",
+    "ReplicateAgreement",
+    "Replicates",
     "RuleChoice",
     "RunRecord",
     "RunSummary",

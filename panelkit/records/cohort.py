@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from panelkit.records.findings import Dropped, Findings, Flow
 from panelkit.records.record import Record, frame
+from panelkit.records.replicates import Replicates
 
 if TYPE_CHECKING:
     import anndata
@@ -101,6 +102,8 @@ class Cohort(Record):
         Participant flow, one entry a class.
     sources : mapping of str to str
         Role of each input file to its SHA-256, for the record.
+    replicates : Replicates or None
+        Repeated measurements of analysed samples, when they were named.
     """
 
     values: NDArray[np.floating[Any]]
@@ -114,6 +117,7 @@ class Cohort(Record):
     dropped: tuple[Dropped, ...] = ()
     flow: tuple[Flow, ...] = ()
     sources: Mapping[str, str] | None = None
+    replicates: Replicates | None = None
 
     @property
     def X(self) -> NDArray[np.floating[Any]]:

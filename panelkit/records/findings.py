@@ -2,7 +2,7 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import astuple, dataclass, fields
-from typing import TYPE_CHECKING, Literal, overload
+from typing import TYPE_CHECKING, Literal, get_args, overload
 
 from panelkit.records.record import Record, frame
 
@@ -63,6 +63,12 @@ class Findings(Record, Sequence[Finding]):
     def of(self, severity: Severity) -> tuple[Finding, ...]:
         """Return the findings of one severity."""
         return tuple(item for item in self.items if item.severity == severity)
+
+    def ordered(self) -> "Findings":
+        """Return each finding once: what stops first, then warnings, then info."""
+        rank = {severity: place for place, severity in enumerate(get_args(Severity))}
+        once = dict.fromkeys(self.items)
+        return Findings(tuple(sorted(once, key=lambda item: -rank[item.severity])))
 
     def to_frame(self) -> "pd.DataFrame":
         """Return one row a finding: code, severity, where, message, next_step."""
