@@ -26,6 +26,9 @@ _LINEAR_CEILING = float(2**_LOG2_CEILING)
 _FLOOR_SHARE = 0.01
 """Whole numbers piled up above zero are a floored intensity, not counts."""
 
+_PILED = 5.0
+"""So many times the cells beside it stand at a floor; counts fall off slowly."""
+
 _WHOLE_SHARE = 0.999
 """Counts but for a few cells are counts: the few are named by a finding."""
 
@@ -57,10 +60,11 @@ class ScaleGuess(Record):
     evidence : mapping of str to float
         Of the features looked at: minimum, maximum, low and high (1st and 99th
         percentile of the values other than zero), median, share_whole,
-        share_negative, share_zero, share_at_low (cells equal to `low`), feature_mean
-        (median of |feature means|), and feature_sd, feature_sd_low, feature_sd_high
-        (median, 10th and 90th percentile of the features' standard deviations).
-        Empty without values.
+        share_negative, share_zero, share_at_low (cells equal to `low`),
+        share_near_low (cells below it or one above), feature_mean (median of
+        |feature means|), and feature_sd, feature_sd_low, feature_sd_high (median,
+        10th and 90th percentile of the features' standard deviations). Empty without
+        values.
     """
 
     kind: ScaleKind
@@ -140,6 +144,7 @@ def _evidence(
         "share_negative": float(np.mean(flat < 0)),
         "share_zero": float(np.mean(flat == 0)),
         "share_at_low": float(np.mean(flat == low)),
+        "share_near_low": float(np.mean((flat < low) | (flat == low + 1.0))),
         "feature_mean": float(np.median(np.abs(means))),
         "feature_sd": float(sd),
         "feature_sd_low": float(sd_low),
@@ -150,9 +155,8 @@ def _evidence(
 def _decide(evidence: Mapping[str, float]) -> ScaleKind:
     low, high = evidence["low"], evidence["high"]
     if evidence["share_whole"] >= _WHOLE_SHARE and low >= 0:
-        floored = (
-            evidence["share_zero"] == 0 and evidence["share_at_low"] > _FLOOR_SHARE
-        )
+        piled = max(_FLOOR_SHARE, _PILED * evidence["share_near_low"])
+        floored = evidence["share_zero"] == 0 and evidence["share_at_low"] > piled
         return "linear" if floored and high > _LOG2_CEILING else "counts"
     if low >= 0 and high <= 1:
         return "beta-values"

@@ -28,8 +28,12 @@ WORDS = {
 }
 LEAST = 3
 """Samples of each sex needed to place the cut-off."""
-CLEAR = 4.0
-"""Distance of the sexes' medians, in median absolute deviations, of a usable gene."""
+CLEAR = 5.0
+HAZY = 2.5
+"""Distance of the sexes' medians, in median absolute deviations, of a gene that may
+contradict the recorded sex, and of one that may only speak for it."""
+UNDECIDED = 0.15
+"""Closer to the cut-off, in distances of the medians, a sample is on neither side."""
 
 
 def check_sex(cohort: Cohort, scale: ScaleGuess) -> list[Finding]:
@@ -37,7 +41,8 @@ def check_sex(cohort: Cohort, scale: ScaleGuess) -> list[Finding]:
 
     The genes of the Y chromosome are averaged, XIST stands apart; the cut-off of each
     lies midway between the medians of the recorded sexes. A sample contradicts when
-    all that is measured does; it is unclear when the two disagree.
+    genes that separate the sexes well put it on the other side and none speaks for
+    what is recorded; it is unclear when they disagree, or when it lies at a cut-off.
 
     Parameters
     ----------
@@ -57,18 +62,22 @@ def check_sex(cohort: Cohort, scale: ScaleGuess) -> list[Finding]:
     if found is None:
         return []
     column, recorded = found
-    signs = []
+    against = np.zeros(cohort.n_samples, dtype=bool)
+    doubtful, spoken_for, known = against.copy(), against.copy(), against.copy()
     for genes, points_to in ((MALE, 1.0), (FEMALE, 0.0)):
-        sign = _side(cohort, scale, genes, points_to, recorded)
-        if sign is not None:
-            signs.append(sign)
-    if not signs:
+        score, clear = _side(cohort, scale, genes, points_to, recorded)
+        # a positive score speaks for what is recorded
+        score = np.where(recorded == points_to, score, -score)
+        spoken_for |= score > 0.0
+        if clear:
+            known |= np.isfinite(score)
+            against |= score < 0.0
+            doubtful |= np.abs(score) < UNDECIDED
+    if not known.any():
         return []
-    known = np.isin(recorded, (0.0, 1.0)) & np.all(~np.isnan(signs), axis=0)
-    wrong = np.array(signs) != recorded
-    against = known & wrong.all(axis=0)
-    unclear = known & wrong.any(axis=0) & ~against
-    return _findings(cohort, column, known, against, unclear)
+    against &= known
+    unclear = known & (doubtful | (against & spoken_for))
+    return _findings(cohort, column, known, against & ~unclear, unclear)
 
 
 def _recorded(cohort: Cohort) -> tuple[str, NDArray[np.float64]] | None:
@@ -96,8 +105,12 @@ def _side(
     genes: dict[str, str],
     points_to: float,
     recorded: NDArray[np.float64],
-) -> NDArray[np.float64] | None:
-    """Return the sex that some genes point to; None where they do not separate."""
+) -> tuple[NDArray[np.float64], bool]:
+    """Return how far samples lie on the side of one sex, and whether that is clear.
+
+    The medians of the recorded sexes lie at -0.5 and 0.5; NaN where nothing is
+    measured, or where the genes do not separate the sexes.
+    """
     wanted = {*genes, *genes.values()}
     rows = [
         row
@@ -107,18 +120,18 @@ def _side(
         if str(name).strip().upper() in wanted
         or str(own).partition(".")[0].upper() in wanted
     ]
-    clear = []
+    scores: dict[bool, list[NDArray[np.float64]]] = {True: [], False: []}
     for values in in_logs(cohort.values[rows], scale) if rows else ():
-        medians = [_middle(values[recorded == sex]) for sex in (0.0, 1.0)]
-        apart = medians[int(points_to)][0] - medians[1 - int(points_to)][0]
-        spread = max(medians[0][1], medians[1][1])
-        if apart > CLEAR * spread and apart > 0.0:
-            clear.append((values - 0.5 * (medians[0][0] + medians[1][0])) / apart)
-    if not clear:
-        return None
-    score = np.mean(clear, axis=0)
-    sided = np.where(score > 0, points_to, 1.0 - points_to)
-    return np.where(np.isnan(score), np.nan, sided)
+        own, own_spread = _middle(values[recorded == points_to])
+        other, other_spread = _middle(values[recorded == 1.0 - points_to])
+        apart, spread = own - other, max(own_spread, other_spread)
+        if apart > HAZY * spread and apart > 0.0:
+            score = (values - 0.5 * (own + other)) / apart
+            scores[bool(apart > CLEAR * spread)].append(score)
+    for clear in (True, False):
+        if scores[clear]:
+            return np.asarray(np.mean(scores[clear], axis=0)), clear
+    return np.full(cohort.n_samples, np.nan), False
 
 
 def _middle(values: NDArray[np.float64]) -> tuple[float, float]:
@@ -159,7 +172,7 @@ def _findings(
                 severity="info",
                 where=where,
                 message=f"{counted(int(unclear.sum()), 'sample has', 'samples have')} "
-                f"sex-linked genes that disagree with one another, of {total}: "
+                f"sex-linked genes that disagree or lie between the sexes, of {total}: "
                 f"{quoted(cohort.samples[unclear])}",
                 next_step="Check for mixed specimens; a lost Y or X chromosome in a "
                 "tumour looks alike.",

@@ -31,7 +31,8 @@ class Sketch:
     distance : ndarray of shape (n_samples,)
         Root mean square of a sample's standardised values.
     correlation : ndarray of shape (n_samples, n_samples)
-        Pearson correlation of the samples' standardised values.
+        Pearson correlation of the samples' standardised values, each sample's level
+        (its median) taken off before.
     """
 
     n_features: int
@@ -94,13 +95,15 @@ def sketch_samples(values: NDArray[np.floating[Any]], scale: ScaleGuess) -> Sket
     total = np.zeros(n_samples)
     observed = np.zeros(n_samples)
     n_features = 0
-    for tile, seen in _standardised(chosen, scale):
+    squares = np.zeros(n_samples)
+    for tile, squared, seen in _standardised(chosen, scale):
         gram += tile.T @ tile
+        squares += squared
         total += tile.sum(axis=0, dtype=np.float64)
         observed += seen
         n_features += len(tile)
     with np.errstate(invalid="ignore", divide="ignore"):
-        distance = np.sqrt(np.diag(gram) / observed)
+        distance = np.sqrt(squares / observed)
         covariance = gram - np.outer(total, total) / max(1, n_features)
         spread = np.sqrt(np.diag(covariance))
         correlation = covariance / np.outer(spread, spread)
@@ -109,8 +112,12 @@ def sketch_samples(values: NDArray[np.floating[Any]], scale: ScaleGuess) -> Sket
 
 def _standardised(
     chosen: NDArray[np.floating[Any]], scale: ScaleGuess
-) -> Iterator[tuple[NDArray[np.float32], NDArray[np.int64]]]:
-    """Yield tiles of standardised features, and the observed cells of each sample."""
+) -> Iterator[tuple[NDArray[np.float32], NDArray[np.float64], NDArray[np.int64]]]:
+    """Yield tiles of standardised features without the samples' levels.
+
+    With each tile come the samples' sums of squares with their levels, and how many
+    cells of a sample are observed.
+    """
     depth = _depth(chosen) if scale.kind == "counts" else None
     for start in range(0, len(chosen), _TILE):
         tile = in_logs(chosen[start : start + _TILE], scale, depth)
@@ -122,11 +129,17 @@ def _standardised(
         tile -= centre[:, None]
         spread = _TO_SD * _medians(np.abs(tile), gaps=bool(missing.any()))
         varied = spread > 0.0
-        tile = tile[varied] / spread[varied, None]
-        np.clip(tile, -_CUT, _CUT, out=tile)
+        if not varied.any():
+            continue
+        tile, spread = tile[varied], spread[varied, None]
         absent = np.isnan(tile)
         tile[absent] = 0.0
-        yield tile.astype(np.float32), (~absent).sum(axis=0)
+        squares = (np.clip(tile / spread, -_CUT, _CUT) ** 2).sum(axis=0)
+        # an amount of material is no likeness: copies may differ in it
+        tile -= np.median(tile, axis=0)
+        tile[absent] = 0.0
+        standard = np.clip(tile / spread, -_CUT, _CUT).astype(np.float32)
+        yield standard, squares, (~absent).sum(axis=0)
 
 
 def _medians(tile: NDArray[np.float64], *, gaps: bool) -> NDArray[np.float64]:

@@ -1,14 +1,12 @@
 """What the numbers of a cohort show: gaps, constants, copies, floors, absurd cells."""
 
-from collections.abc import Sequence
-from typing import Any
-
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import PREPARATION
 from panelkit.ingest.scale import ScaleGuess
 from panelkit.ingest.survey import Survey
+from panelkit.ingest.usable import check_usable
 from panelkit.ingest.wording import counted, figure, percent, quoted
 from panelkit.records import Cohort, Finding
 
@@ -42,7 +40,7 @@ def check_values(cohort: Cohort, survey: Survey, scale: ScaleGuess) -> list[Find
         and reference features, and whether any feature is left.
     """
     return [
-        *_no_usable_feature(cohort, survey),
+        *check_usable(cohort, _role_is(cohort, "control", "reference")),
         *_absurd(cohort, survey, scale),
         *_not_counts(cohort, survey, scale),
         *_mostly_missing(cohort, survey),
@@ -121,41 +119,6 @@ def _not_counts(cohort: Cohort, survey: Survey, scale: ScaleGuess) -> list[Findi
             )
         )
     return findings
-
-
-def _no_usable_feature(cohort: Cohort, survey: Survey) -> list[Finding]:
-    roles = cohort.feature_columns.get("role")
-    missing = survey.missing_of_feature / cohort.n_samples
-    reasons: Sequence[tuple[str, NDArray[Any]]] = (
-        ("without any spread", survey.constant),
-        (
-            f"missing in more than {percent(PREPARATION.max_missing_share)} of samples",
-            missing > PREPARATION.max_missing_share,
-        ),
-        (
-            "controls or references",
-            np.zeros(cohort.n_features, bool)
-            if roles is None
-            else np.isin(roles.astype(str), ["control", "reference"]),
-        ),
-    )
-    barred = np.any([mask for _, mask in reasons], axis=0)
-    if not barred.all():
-        return []
-    listed = ", ".join(
-        f"{int(mask.sum()):,} are {why}" for why, mask in reasons if mask.any()
-    )
-    return [
-        Finding(
-            code="no-usable-feature",
-            severity="stop",
-            where=WHERE,
-            message=f"none of the {cohort.n_features:,} features can become a marker: "
-            f"{listed}",
-            next_step="Check the file, its orientation, and the roles in the feature "
-            "sheet.",
-        )
-    ]
 
 
 def _mostly_missing(cohort: Cohort, survey: Survey) -> list[Finding]:
@@ -254,11 +217,17 @@ def _floor(cohort: Cohort, survey: Survey, scale: ScaleGuess) -> list[Finding]:
     ]
 
 
+def _role_is(cohort: Cohort, *roles: str) -> NDArray[np.bool_]:
+    given = cohort.feature_columns.get("role")
+    if given is None:
+        return np.zeros(cohort.n_features, dtype=bool)
+    return np.isin(given.astype(str), roles)
+
+
 def _roles(cohort: Cohort) -> list[Finding]:
-    roles = cohort.feature_columns.get("role")
     findings = []
-    for role in ("control", "reference") if roles is not None else ():
-        names = cohort.features[np.asarray(roles == role, dtype=bool)]
+    for role in ("control", "reference"):
+        names = cohort.features[_role_is(cohort, role)]
         if len(names):
             findings.append(
                 Finding(

@@ -69,19 +69,22 @@ class ReplicateAgreement(Record):
     difference_high: NDArray[np.float64]
     in_log2: bool
 
+    @property
+    def columns(self) -> dict[str, NDArray[Any]]:
+        """Column name to values; `cv_percent` is the coefficient in per cent."""
+        return {
+            "feature": self.features,
+            "n_samples": self.n_samples,
+            "n_measurements": self.n_measurements,
+            "mean": self.mean,
+            "icc": self.icc,
+            "within_sd": self.within_sd,
+            "cv_percent": 100.0 * self.cv,
+            "difference": self.difference,
+            "difference_low": self.difference_low,
+            "difference_high": self.difference_high,
+        }
+
     def to_frame(self) -> "pd.DataFrame":
-        """Return one row a feature; `cv_percent` is the coefficient in per cent."""
-        return frame(
-            {
-                "feature": self.features,
-                "n_samples": self.n_samples,
-                "n_measurements": self.n_measurements,
-                "mean": self.mean,
-                "icc": self.icc,
-                "within_sd": self.within_sd,
-                "cv_percent": 100.0 * self.cv,
-                "difference": self.difference,
-                "difference_low": self.difference_low,
-                "difference_high": self.difference_high,
-            }
-        )
+        """Return one row a feature, with the columns of `replicates.csv`."""
+        return frame(self.columns)

@@ -7,6 +7,7 @@ from pathlib import Path
 
 from panelkit.config import Study, read_study
 from panelkit.costing import Draws, PanelPricer, Procedure, ProcedureData
+from panelkit.ingest import check_usable
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
 from panelkit.workflow.procedure import draws_of, procedure_of
@@ -93,10 +94,12 @@ def checked(plan: Study) -> CheckedStudy:
     draws = draws_of(plan, data)
     pricer, price_hashes, price_findings = load_prices(plan)
     findings = (*cohort.findings, *price_findings)
+    if not any(item.code == "no-usable-feature" for item in findings):
+        findings = (*findings, *check_usable(cohort, data.barred != ""))
     settled = tuple(_settled(item, plan) for item in findings)
     idle = tuple(_idle_acceptances(findings, plan))
     return CheckedStudy(
-        replace(cohort, findings=Findings((*settled, *idle))),
+        replace(cohort, findings=Findings((*settled, *idle)).ordered()),
         procedure,
         data,
         tuple(size_findings),

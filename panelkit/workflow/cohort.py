@@ -21,7 +21,10 @@ __all__ = [
     "refuse_stops",
 ]
 
-NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
+NEVER_ACCEPTED = (
+    "no-usable-feature",  # there is nothing to fit
+    "subject-in-both-classes",  # folds and halves need one class each
+)
 
 
 def load_cohort(study: Study) -> Cohort:

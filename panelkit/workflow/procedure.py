@@ -33,7 +33,8 @@ def procedure_of(
     Returns
     -------
     procedure : Procedure
-        Sizes above the number of candidates are left out.
+        Sizes above the number of candidates are left out; none are left where no
+        feature is usable, which a finding says.
     data : ProcedureData
         The matrix after the per-sample steps.
     findings : list of Finding
@@ -95,7 +96,7 @@ def procedure_of(
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
-    if not sizes:
+    if not sizes and usable:  # without any feature a finding has said so
         raise StudyFileError(
             code="sizes-too-large",
             where=f"{plan.path}, [panels], key 'sizes'",
