@@ -28,6 +28,8 @@ _TO_SD = 1.4826
 _SCALE_FEATURES = 2000
 _SCALE_GAP = 4.0
 _LINEAR_FROM = 45.0
+_NEARLY_ALL = 0.97
+_BULK = 0.9
 _CENTRED = 0.25
 _UNCENTRED = 0.01
 """Shares of negative values; between the two a sample is taken for neither."""
@@ -171,7 +173,7 @@ def _mixed_scales(cohort: Cohort) -> list[Finding]:
 def _kinds(block: NDArray[np.floating[Any]]) -> NDArray[np.object_]:
     """Return one word for the scale of each sample, nothing for a doubtful one.
 
-    Linear against log values needs a gap: the smallest 99th percentile of the former
+    Linear against log values needs a gap: the smallest 90th percentile of the former
     has to be four times the largest of the latter.
     """
     n_samples = block.shape[1]
@@ -182,7 +184,7 @@ def _kinds(block: NDArray[np.floating[Any]]) -> NDArray[np.object_]:
         values = values[np.isfinite(values)]
         if len(values) < LEAST_FEATURES or not values.any():
             continue
-        high[sample] = np.quantile(np.abs(values), 0.99)
+        high[sample] = np.quantile(np.abs(values), _BULK)
         kinds[sample] = _kind(values, float(high[sample]))
     large, small = kinds == "linear", kinds == "in logarithms"
     if (
@@ -195,9 +197,10 @@ def _kinds(block: NDArray[np.floating[Any]]) -> NDArray[np.object_]:
 
 
 def _kind(values: NDArray[np.float64], high: float) -> str:
-    if np.mean(values == np.rint(values)) > 0.999 and values.min() >= 0:
+    # shares, not extremes: one absurd cell is no other scale
+    if np.mean((values == np.rint(values)) & (values >= 0)) > _NEARLY_ALL:
         return "whole numbers"
-    if values.min() >= 0 and values.max() <= 1:
+    if np.mean((values >= 0) & (values <= 1)) > _NEARLY_ALL:
         return "between 0 and 1"
     if high > _LINEAR_FROM:
         return "linear"

@@ -32,7 +32,7 @@ CLEAR = 5.0
 HAZY = 2.5
 """Distance of the sexes' medians, in median absolute deviations, of a gene that may
 contradict the recorded sex, and of one that may only speak for it."""
-UNDECIDED = 0.15
+UNDECIDED = 0.1
 """Closer to the cut-off, in distances of the medians, a sample is on neither side."""
 
 
