@@ -43,7 +43,7 @@ def test_nothing_is_found_where_nothing_is(wide):
     assert [i.code for i in wide.read().findings] == ["scale-guess", "class-sizes"]
 
 
-@pytest.mark.parametrize("cell", [1e300, -999.0, 999.0, -1e30])
+@pytest.mark.parametrize("cell", [1e20, -999.0, 999.0, -1e30])
 @pytest.mark.filterwarnings("error")
 def test_absurd_cells_stop_and_are_named_by_position(wide, cell):
     wide.values[4, 11] = wide.values[9, 3] = cell
