@@ -49,7 +49,7 @@ def check_design(cohort: Cohort) -> list[Finding]:
 
 def _class_sizes(cohort: Cohort) -> list[Finding]:
     outcome = cohort.outcome
-    if outcome is None:
+    if outcome is None or outcome.kind != "binary":
         return []
     where = f"samples, column {outcome.column!r}"
     sizes = {
@@ -105,7 +105,7 @@ def _subjects(cohort: Cohort) -> list[Finding]:
             "samples share one weight.",
         )
     ]
-    if cohort.outcome is not None:
+    if cohort.outcome is not None and cohort.outcome.kind == "binary":
         positive = np.bincount(design.subject, weights=cohort.outcome.values)
         both = (positive > 0) & (positive < counts)
         if both.any():
@@ -188,7 +188,7 @@ def _tie(cohort: Cohort, column: Text, role: str, where: str) -> list[Finding]:
                 next_step="Fill them in; they are left out of this check.",
             )
         )
-    if cohort.outcome is None:
+    if cohort.outcome is None or cohort.outcome.kind != "binary":
         return findings
     classes = cohort.outcome.values[present].astype(int).astype(str).astype(object)
     table, levels, _ = contingency_table(column[present], classes)

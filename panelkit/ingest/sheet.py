@@ -13,7 +13,7 @@ from panelkit.errors import InputDataError
 from panelkit.ingest.source_file import file_kind, open_text, sniff_delimiter
 from panelkit.ingest.wording import nearest_hint, quoted
 
-__all__ = ["Sheet", "Text", "build_sheet", "read_sheet"]
+__all__ = ["Sheet", "Text", "build_sheet", "read_columns", "read_sheet"]
 
 Text = NDArray[np.object_]
 
@@ -90,6 +90,32 @@ def read_sheet(path: Path, id_column: str) -> Sheet:
         When the file is no text, has no rows, lines differ in length, ids are blank
         or repeated, or column names are repeated.
     """
+    header, texts = read_columns(path, id_column)
+    return build_sheet(path.name, header, texts, id_column)
+
+
+def read_columns(path: Path, id_column: str) -> tuple[list[str], list[Text]]:
+    """Return the columns of a CSV or TSV file, all as text, no id looked at.
+
+    Parameters
+    ----------
+    path : Path
+        Plain or compressed text with a header line.
+    id_column : str
+        Name of a first column that the header leaves out.
+
+    Returns
+    -------
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content.
+
+    Raises
+    ------
+    InputDataError
+        When the file is no text, has no rows, or lines differ in length.
+    """
     if file_kind(path) != "delimited":
         raise InputDataError(
             code="wrong-file-kind",
@@ -112,7 +138,7 @@ def read_sheet(path: Path, id_column: str) -> Sheet:
                 "that contain one in quotes",
             )
     texts = list(np.array(rows, dtype=object).reshape(len(rows), len(header)).T)
-    return build_sheet(path.name, header, texts, id_column)
+    return header, texts
 
 
 def _read_rows(path: Path) -> tuple[list[str], list[list[str]]]:
