@@ -136,7 +136,7 @@ def _opening(file: Path, number: int, line: str) -> Opening:
         content = json.loads(line)
         digest = content.pop("sha256")
         opening = Opening(**content)
-    except (ValueError, TypeError, KeyError, AttributeError) as error:
+    except (ValueError, TypeError, KeyError, AttributeError, RecursionError) as error:
         raise _broken(file, number, "it is no opening") from error
     for field in fields(Opening):
         if type(getattr(opening, field.name)) is not field.type:
