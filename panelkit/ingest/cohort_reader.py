@@ -38,7 +38,7 @@ from panelkit.ingest.outcome_kinds import kind_of, read_outcome
 from panelkit.ingest.roles import Roles
 from panelkit.ingest.row_filter import RowFilter, row_filters
 from panelkit.ingest.row_selection import Selection, select_rows
-from panelkit.ingest.set_aside import SetAside, check_set_aside, divide
+from panelkit.ingest.set_aside import SetAside, check_set_aside, divide, on_both_sides
 from panelkit.ingest.sheet import Sheet
 from panelkit.ingest.source_file import sha256
 from panelkit.ingest.wording import counted, quoted
@@ -218,7 +218,7 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
     early = (
         *_bad_cells(table, hidden).findings(),
         *findings,
-        *([] if part is None else part.findings()),
+        *_apart(everybody, part, (subject, matched_set)),
         *selection.findings,
         *feature_findings,
     )
@@ -288,6 +288,23 @@ def _part(
             next_step="Name openings",
         )
     return part, record_opening(openings, map(str, part.sheet.ids), reason)
+
+
+def _apart(
+    everybody: Sheet | None, part: SetAside | None, columns: Sequence[str | None]
+) -> list[Finding]:
+    """Return what is said of rows set aside, and of people on both sides."""
+    if everybody is None or part is None or not len(part.hidden):
+        return []
+    return [
+        *part.findings(),
+        *(
+            item
+            for name in columns
+            if name is not None
+            for item in on_both_sides(everybody, part, name)
+        ),
+    ]
 
 
 def _merged(

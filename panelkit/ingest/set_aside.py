@@ -15,7 +15,7 @@ from panelkit.ingest.sheet import Sheet, Text
 from panelkit.ingest.wording import as_text, counted, nearest_hint, quoted
 from panelkit.records import Dropped, Finding, Flow
 
-__all__ = ["SetAside", "check_set_aside", "divide"]
+__all__ = ["SetAside", "check_set_aside", "divide", "on_both_sides"]
 
 STAGE = "set aside"
 
@@ -169,6 +169,43 @@ def divide(
         )
     chosen = hidden if opened else ~hidden
     return SetAside(_part(sheet, chosen), sheet.ids[~chosen], reason, opened)
+
+
+def on_both_sides(everybody: Sheet, part: SetAside, column: str) -> list[Finding]:
+    """Return the people, or the matched sets, with rows read and rows not read.
+
+    Parameters
+    ----------
+    everybody : Sheet
+        All rows.
+    part : SetAside
+        What is read of them.
+    column : str
+        The column of subjects or of matched sets.
+
+    Returns
+    -------
+    list of Finding
+        One or none.
+    """
+    away = np.isin(everybody.ids.astype(str), part.hidden.astype(str))
+    names = everybody.column(column, "subject")
+    shared = sorted(
+        name for name in set(names[away]) & set(names[~away]) if not is_missing(name)
+    )
+    if not shared:
+        return []
+    return [
+        Finding(
+            code="set-aside-not-apart",
+            severity="warning",
+            where=f"{everybody.where}, column {column!r}",
+            message=f"{counted(len(shared), 'entry has', 'entries have')} rows that "
+            f"are set aside and rows that are not: {quoted(shared)}",
+            next_step="Set aside whole people and whole matched sets: else the rows "
+            "set aside are no new people.",
+        )
+    ]
 
 
 def _part(sheet: Sheet, rows: NDArray[np.bool_]) -> Sheet:

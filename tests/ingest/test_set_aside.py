@@ -257,3 +257,15 @@ def test_dates_of_other_forms(small):
     cohort = read_cohort(*small.write(), keep={"seen": {"from": "2019-03"}})
     assert list(cohort.samples[:3]) == ["0001", "0002", "0007"]
     assert "'March'" in finding(cohort, "keep-cells-not-numeric").message
+
+
+def test_people_on_both_sides_are_named(dated):
+    """Their later samples are no test on new people."""
+    dated.sheet["person"] = [f"p{number % 20}" for number in range(24)]
+    said = finding(read(dated, subject="person"), "set-aside-not-apart")
+    assert said.severity == "warning"
+    assert "4 entries" in said.message
+    assert "'p0', 'p1', 'p2', 'p3'" in said.message
+    dated.sheet["person"] = [f"p{number // 2}" for number in range(24)]
+    cohort = read(dated, subject="person", matched_set="person", design="matched")
+    assert "set-aside-not-apart" not in [item.code for item in cohort.findings]
