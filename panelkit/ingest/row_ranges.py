@@ -97,10 +97,11 @@ def read_range(wanted: Mapping[str, Any]) -> Range | None:
     if not chosen:
         return None
     low, high = (wanted.get(name) for name in chosen[0])
-    if chosen[0] == pairs[1] and all(
-        end is None or isinstance(end, str | datetime.date) for end in (low, high)
-    ):
-        return _dates(low, high)
+    dated = {
+        isinstance(end, str | datetime.date) for end in (low, high) if end is not None
+    }
+    if chosen[0] == pairs[1] and True in dated:
+        return _dates(low, high) if dated == {True} else None
     return _numbers(low, high)
 
 
