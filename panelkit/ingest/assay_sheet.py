@@ -4,6 +4,7 @@ import os
 from collections import Counter
 from collections.abc import Sequence
 from pathlib import Path
+from typing import NamedTuple
 
 import numpy as np
 
@@ -20,7 +21,31 @@ __all__ = ["ASSAY_COLUMNS", "assay_map", "open_assays"]
 ASSAY_COLUMNS = ("feature", "analyte", "assay")
 
 
-def open_assays(given: object) -> tuple[str, list[str], list[Text], str | None]:
+class AssayTable(NamedTuple):
+    """The columns of an assay sheet.
+
+    Attributes
+    ----------
+    where : str
+        For messages.
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content.
+    digest : str or None
+        SHA-256 of the file; None for a data frame.
+    findings : tuple of Finding
+        What was noticed about the file itself.
+    """
+
+    where: str
+    names: list[str]
+    texts: list[Text]
+    digest: str | None
+    findings: tuple[Finding, ...] = ()
+
+
+def open_assays(given: object) -> AssayTable:
     """Return where an assay sheet is, its columns, and the hash of its file.
 
     Parameters
@@ -30,14 +55,8 @@ def open_assays(given: object) -> tuple[str, list[str], list[Text], str | None]:
 
     Returns
     -------
-    where : str
-        For messages.
-    names : list of str
-        Column names.
-    texts : list of ndarray of shape (n_rows,), object
-        Their content.
-    digest : str or None
-        SHA-256 of the file; None for a data frame.
+    AssayTable
+        Its columns as text.
 
     Raises
     ------
@@ -48,7 +67,8 @@ def open_assays(given: object) -> tuple[str, list[str], list[Text], str | None]:
     """
     if is_data_frame(given):
         texts = [series_text(given.iloc[:, k]) for k in range(given.shape[1])]
-        return "assays (data frame)", [str(name) for name in given.columns], texts, None
+        names = [str(name) for name in given.columns]
+        return AssayTable("assays (data frame)", names, texts, None)
     if not isinstance(given, str | os.PathLike):
         raise UsageError(
             code="sheet-not-understood",
@@ -58,8 +78,8 @@ def open_assays(given: object) -> tuple[str, list[str], list[Text], str | None]:
             next_step="Pass one of these",
         )
     path = Path(given)
-    names, texts = read_columns(path, "feature")
-    return path.name, names, texts, sha256(path)
+    names, texts, findings = read_columns(path, "feature")
+    return AssayTable(path.name, names, texts, sha256(path), findings)
 
 
 def assay_map(

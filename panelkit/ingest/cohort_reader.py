@@ -204,18 +204,23 @@ def read_cohort(  # noqa: PLR0913 - one keyword for each part a column can play
     )
     assay_columns = None
     if assays is not None:
-        where, names, texts, digest = open_assays(assays)
-        assay_columns, more = assay_map(where, names, texts, matrix.features, columns)
+        read = open_assays(assays)
+        assay_columns, more = assay_map(
+            read.where, read.names, read.texts, matrix.features, columns
+        )
         columns |= _merged(columns, assay_columns.columns(matrix.features))
-        feature_findings = [*feature_findings, *more]
-        if digest is not None:
-            hashes["assays"] = digest
+        feature_findings = [*feature_findings, *read.findings, *more]
+        if read.digest is not None:
+            hashes["assays"] = read.digest
     selection = _select(sheet, matrix, hidden, column, filters, replicate_of)
     if source.path is not None:
         hashes["expression"] = sha256(source.path)
 
     cohort = _assemble(sheet, matrix, column, selection, roles)
     early = (
+        *(everybody.findings if everybody else ()),
+        *(feature_table.findings if feature_table else ()),
+        *table.findings,
         *_bad_cells(table, hidden).findings(),
         *findings,
         *_apart(everybody, part, (subject, matched_set)),
