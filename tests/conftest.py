@@ -1,4 +1,8 @@
-"""What the whole suite shares: the folder of open cohorts that cannot be committed."""
+"""Open cohorts that may be used, but not committed: `pytest --cohorts DIR`.
+
+DIR holds a folder a cohort, with `expression.csv.gz` and `samples.csv`. Without the
+option, or without the folder, tests marked `cohorts` are skipped and counted.
+"""
 
 from pathlib import Path
 
@@ -7,18 +11,27 @@ import pytest
 
 def pytest_addoption(parser):
     parser.addoption(
-        "--cohorts",
-        metavar="DIR",
-        default=None,
-        help="folder of open cohorts (one folder each, with expression.csv.gz and "
-        "samples.csv) for the tests marked `cohorts`; without it they are skipped",
+        "--cohorts", type=Path, default=None, help="folder with open cohorts to read"
     )
 
 
-@pytest.fixture(scope="session")
-def cohorts(request):
-    """The folder given as --cohorts; without it the test is skipped and counted."""
-    folder = request.config.getoption("--cohorts")
-    if folder is None:
-        pytest.skip("needs --cohorts DIR")
-    return Path(folder)
+def pytest_collection_modifyitems(config, items):
+    if config.getoption("--cohorts") is not None:
+        return
+    skip = pytest.mark.skip(reason="needs --cohorts DIR")
+    for item in items:
+        if item.get_closest_marker("cohorts"):
+            item.add_marker(skip)
+
+
+@pytest.fixture
+def open_cohort(request):
+    """Return the two files of an open cohort by its name."""
+
+    def files(name):
+        folder = request.config.getoption("--cohorts") / name
+        if not folder.is_dir():
+            pytest.skip(f"the folder of --cohorts has no {name}")
+        return folder / "expression.csv.gz", folder / "samples.csv"
+
+    return files

@@ -1,7 +1,7 @@
 """Which way round a matrix is, and which of its samples the sheet knows."""
 
 from collections import Counter
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any, Literal, get_args
 
@@ -20,6 +20,7 @@ __all__ = [
     "check_orientation",
     "mismatch_hint",
     "orient",
+    "refuse_strangers",
 ]
 
 Orientation = Literal["auto", "samples-in-rows", "features-in-rows"]
@@ -152,7 +153,30 @@ def _decide(table: MatrixTable, sheet: Sheet) -> str:
     return "samples-in-rows" if in_rows > in_columns else "features-in-rows"
 
 
-def _no_match(table: MatrixTable, sheet: Sheet) -> InputDataError:
+def refuse_strangers(table: MatrixTable, sheet: Sheet, missing: Sequence[str]) -> None:
+    """Refuse a sheet and a matrix that have no id in common.
+
+    Parameters
+    ----------
+    table : MatrixTable
+        As it was read.
+    sheet : Sheet
+        The sample sheet.
+    missing : sequence of str
+        Columns that the sheet does not have either: it may be another study's.
+
+    Raises
+    ------
+    InputDataError
+        With the first ids of both sides, their counts, and what keeps them apart.
+    """
+    if set(sheet.ids).isdisjoint({*table.row_ids, *table.column_ids}):
+        raise _no_match(table, sheet, missing)
+
+
+def _no_match(
+    table: MatrixTable, sheet: Sheet, missing: Sequence[str] = ()
+) -> InputDataError:
     hints = [
         hint
         for hint in (
@@ -169,10 +193,11 @@ def _no_match(table: MatrixTable, sheet: Sheet) -> InputDataError:
         f"({quoted(sheet.ids, 3)}) is among the {len(table.row_ids)} ids of the "
         f"matrix's first column ({quoted(table.row_ids, 3)}) or the "
         f"{len(table.column_ids)} of its header ({quoted(table.column_ids, 3)})"
-        + advice,
+        + advice
+        + (f"; nor has the sheet a column {quoted(missing)}" if missing else ""),
         accepted="ids are compared as text, character by character",
-        next_step="Make the ids equal in both files, or name the sheet's id column "
-        "sample_id",
+        next_step="Check that both files are of the same study; make the ids equal in "
+        "both, or name the sheet's id column sample_id",
     )
 
 

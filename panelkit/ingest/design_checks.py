@@ -42,7 +42,7 @@ def check_design(cohort: Cohort) -> list[Finding]:
 
 def _class_sizes(cohort: Cohort) -> list[Finding]:
     outcome = cohort.outcome
-    if outcome is None:
+    if outcome is None or outcome.kind != "binary":
         return []
     where = f"samples, column {outcome.column!r}"
     sizes = {
@@ -98,7 +98,7 @@ def _subjects(cohort: Cohort) -> list[Finding]:
             "samples share one weight.",
         )
     ]
-    if cohort.outcome is not None:
+    if cohort.outcome is not None and cohort.outcome.kind == "binary":
         positive = np.bincount(design.subject, weights=cohort.outcome.values)
         both = (positive > 0) & (positive < counts)
         if both.any():

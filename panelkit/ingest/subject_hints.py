@@ -40,7 +40,7 @@ def check_subject_named(cohort: Cohort) -> list[Finding]:
     Parameters
     ----------
     cohort : Cohort
-        Only one in which every sample counts as a subject is looked at.
+        Only one in which no samples belong together is looked at.
 
     Returns
     -------
@@ -48,7 +48,7 @@ def check_subject_named(cohort: Cohort) -> list[Finding]:
         ``subject-column-unnamed``: stop where a column named like a subject repeats
         its entries, warning where only the sample ids share stems.
     """
-    if cohort.design.n_subjects < cohort.n_samples:
+    if len(np.unique(cohort.design.blocks)) < cohort.n_samples:
         return []
     for name, cells in cohort.sample_columns.items():
         if not _COLUMN.fullmatch(name.strip().casefold()):

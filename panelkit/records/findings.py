@@ -117,6 +117,9 @@ class Flow:
         Of these, kept by the row filters.
     analysed : int
         Of these, analysed (technical replicates left out).
+    set_aside : int
+        Rows of the sample sheet that nothing may read yet. They have an entry of
+        their own, since their class is not read either.
     """
 
     outcome_class: str
@@ -125,3 +128,4 @@ class Flow:
     with_outcome: int
     kept: int
     analysed: int
+    set_aside: int = 0

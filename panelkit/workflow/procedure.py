@@ -6,6 +6,7 @@ from panelkit.costing import (
     Procedure,
     ProcedureData,
     draw_everything,
+    given_folds,
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
@@ -93,6 +94,8 @@ def procedure_of(
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        blocks=cohort.design.blocks,
+        folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)

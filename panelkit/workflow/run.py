@@ -129,7 +129,8 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
+    inputs_read = {**(cohort.sources or {}), **known.price_hashes}
+    record = run_record(plan, inputs_read, len(cohort.openings))
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content)

@@ -94,8 +94,8 @@ def test_people_whose_recorded_sex_the_probes_contradict():
 
 
 @pytest.mark.cohorts
-def test_volunteers_without_a_subject_column(cohorts):
-    folder = cohorts / "flu_challenge"
+def test_volunteers_without_a_subject_column(open_cohort):
+    folder = open_cohort("flu_challenge")[0].parent
     found = findings(folder, outcome="condition", positive="sx")
     assert stops(found) == ["subject-column-unnamed"]
     asked = found["subject-column-unnamed"]
@@ -108,8 +108,8 @@ def test_volunteers_without_a_subject_column(cohorts):
 
 
 @pytest.mark.cohorts
-def test_pairs_of_tumour_and_mucosa(cohorts):
-    folder = cohorts / "crc_kostic"
+def test_pairs_of_tumour_and_mucosa(open_cohort):
+    folder = open_cohort("crc_kostic")[0].parent
     named = findings(folder, outcome="tissue", positive="tumour", subject="patient")
     assert "93 of 97 subjects" in named["subject-in-both-classes"].message
     unnamed = findings(folder, outcome="tissue", positive="tumour")
@@ -118,9 +118,9 @@ def test_pairs_of_tumour_and_mucosa(cohorts):
 
 
 @pytest.mark.cohorts
-def test_lung_tissues_of_the_same_people(cohorts):
+def test_lung_tissues_of_the_same_people(open_cohort):
     classes = {"outcome": "histology", "positive": "Adeno", "negative": "SCC"}
-    folder = cohorts / "lung_garber"
+    folder = open_cohort("lung_garber")[0].parent
     assert stops(findings(folder, **classes)) == ["subject-column-unnamed"]
     found = findings(folder, **classes, subject="patient")
     assert stops(found) == []
@@ -134,5 +134,8 @@ def test_lung_tissues_of_the_same_people(cohorts):
     ("name", "outcome", "positive"),
     [("breast_gse1992", "er_positive", "1"), ("breast_gse4335", "er_status", "1")],
 )
-def test_cohorts_without_a_trap_do_not_stop(cohorts, name, outcome, positive):
-    assert stops(findings(cohorts / name, outcome=outcome, positive=positive)) == []
+def test_cohorts_without_a_trap_do_not_stop(open_cohort, name, outcome, positive):
+    assert (
+        stops(findings(open_cohort(name)[0].parent, outcome=outcome, positive=positive))
+        == []
+    )

@@ -241,6 +241,9 @@ def run_summary():
 
 
 MADE = {
+    "AssayMap": lambda: records.AssayMap(
+        objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
+    ),
     "AssayPrice": assay,
     "Choice": choice,
     "Cohort": cohort,
@@ -259,6 +262,7 @@ MADE = {
     "Frontier": frontier,
     "FrontierRow": frontier_row,
     "Headline": headline,
+    "Opening": lambda: records.Opening.of(["S1"], "the panel is locked"),
     "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
     "Outcome": outcome,
     "PanelCost": panel_cost,
