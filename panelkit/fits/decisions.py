@@ -120,22 +120,36 @@ def decide(
     ends = (state[:, STEP] == n_penalties) | (state[:, ENTRIES] >= rules.max_markers)
     state[goes & ends, DONE] = 1
     going = np.flatnonzero(goes & ~ends)
-    now = refits.penalties[going, state[going, STEP]]
-    refits.now[going] = now
+    refits.now[going] = refits.penalties[going, state[going, STEP]]
     state[going, PENDING] = 1
     strong = np.full(n_refits, np.inf)
-    strong[going] = strong_threshold(now, before[going]) * rules.mixing
+    strong[going] = rules.mixing * strong_threshold(refits.now[going], before[going])
+    return _enlarge(refits, strong, violated, rules.mixing, found, weights)
+
+
+def _enlarge(
+    refits: Refits,
+    strong: Values,
+    violated: Numbers,
+    mixing: float,
+    found: Candidates,
+    weights: Values,
+) -> NDArray[np.bool_]:
+    """Take the features in that the strong rule lets through, and all violators.
+
+    strong: threshold of each refit, infinite where nothing is to be solved. Returns
+    which candidates were taken.
+    """
     keep = strong.copy()
-    stays = violated[goes[violated] & ~ends[violated]]
-    keep[stays] = refits.now[stays] * rules.mixing * NEAR
-    g = found.gradient
-    accepted = (g >= keep[found.refit]) & (g > 0.0)
+    keep[violated] = refits.now[violated] * mixing * NEAR
+    gradient = found.gradient
+    accepted = (gradient >= keep[found.refit]) & (gradient > 0.0)
     refit, at = take_in(refits, found, accepted, weights)
-    g = g[accepted]
     # a violator failed the strong rule: it comes behind, the larger first
     late = np.isin(refit, violated)
-    rank = strong[refit] * g / (g + refits.now[refit])
-    refits.grad_before[refit, at] = np.where(late, rank, g)
+    gradient = gradient[accepted]
+    rank = strong[refit] * gradient / (gradient + refits.now[refit])
+    refits.grad_before[refit, at] = np.where(late, rank, gradient)
     return accepted
 
 
