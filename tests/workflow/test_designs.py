@@ -196,6 +196,7 @@ def test_without_the_sets_pairs_are_torn(quick, tmp_path):
     """The test above can fail."""
     paired(quick)
     del quick.sections["cohort"]["matched_set"], quick.sections["design"]
+    quick.sections["cohort"]["accept"] = {"subject-column-unnamed": "on purpose"}
     run_study(quick.write(), tmp_path / "out", threads=1)
     folds = pd.read_csv(tmp_path / "out" / "folds.csv")
     pairs = folds["fold"].to_numpy().reshape(20, 2)
