@@ -5,6 +5,7 @@ from panelkit.config.defaults import (
     ACCURACY,
     CHOICE,
     COHORT,
+    DESIGN,
     ENGINE,
     PANELS,
     PLATFORM,
@@ -12,7 +13,9 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    DesignKind,
 )
+from panelkit.config.design import DesignSection, check_design, outcome_kind
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
     PlatformSection,
@@ -39,6 +42,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "FAMILY_PRESETS",
     "MINOR_DIGITS",
@@ -53,6 +57,8 @@ __all__ = [
     "AccuracySection",
     "ChoiceSection",
     "CohortSection",
+    "DesignKind",
+    "DesignSection",
     "PanelsSection",
     "PlatformSection",
     "PreparationSection",
@@ -60,6 +66,8 @@ __all__ = [
     "ShortlistSection",
     "StatementSection",
     "Study",
+    "check_design",
+    "outcome_kind",
     "platform_section",
     "programme_section",
     "read_platform_file",

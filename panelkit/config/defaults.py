@@ -13,6 +13,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "PANELS",
     "PLATFORM",
@@ -20,9 +21,12 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "DesignKind",
 ]
 
 SEED: Final = 1
+
+DesignKind = Literal["cohort", "case-control", "matched"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,6 +36,11 @@ class _Cohort:
     """Non-numeric cells read as missing; more than these are an error."""
     join: Literal["refuse", "intersection"] = "refuse"
     """What is done when several matrices have different features."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Design:
+    kind: DesignKind = "cohort"
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,6 +129,7 @@ class _Platform:
 
 
 COHORT: Final = _Cohort()
+DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
 ENGINE: Final = _Engine()
 SHORTLIST: Final = _Shortlist()

@@ -1,13 +1,13 @@
 """What `read_cohort` is given as expression, samples and features, opened alike."""
 
 import os
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence, Set
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Protocol
 
 from panelkit.errors import UsageError
-from panelkit.ingest.alignment import FeatureMajor, orient
+from panelkit.ingest.alignment import FeatureMajor, orient, refuse_strangers
 from panelkit.ingest.annotated import is_anndata, open_object
 from panelkit.ingest.cells import BadCells
 from panelkit.ingest.data_frames import frame_matrix, frame_sheet, is_data_frame
@@ -48,9 +48,22 @@ class TurnedMatrix:
     noted: list[Finding]
     bad_cells: tuple[BadCells, ...]
 
-    def findings(self) -> list[Finding]:
-        """Return all findings; to be asked for after the values were taken."""
-        cells = [each for bad in self.bad_cells for each in bad.findings()]
+    def findings(self, hidden: Set[str] = frozenset()) -> list[Finding]:
+        """Return all findings; to be asked for after the values were taken.
+
+        Parameters
+        ----------
+        hidden : set of str
+            Samples that may not be read, whose cells are not spoken of.
+
+        Returns
+        -------
+        list of Finding
+            Of cells, then of the rest.
+        """
+        cells = [
+            each for bad in self.bad_cells for each in bad.without(hidden).findings()
+        ]
         return [*cells, *self.noted]
 
 
@@ -73,6 +86,11 @@ class Expressions(Protocol):
         self, sheet: Sheet | None, own: bool, orientation: str, max_bad_cells: int
     ) -> TurnedMatrix:
         """Return the matrix with features first."""
+
+    def refuse_strangers(
+        self, sheet: Sheet, missing: Sequence[str], max_bad_cells: int
+    ) -> None:
+        """Refuse a sample sheet that has no id in common with the data."""
 
     def hashes(self) -> dict[str, str]:
         """Return the SHA-256 of each file, by its role."""
@@ -193,6 +211,27 @@ class ExpressionSource:
             [*table.findings, *findings],
             (table.bad_cells,),
         )
+
+    def refuse_strangers(
+        self, sheet: Sheet, missing: Sequence[str], max_bad_cells: int
+    ) -> None:
+        """Refuse a sample sheet that has no id in common with the data.
+
+        Parameters
+        ----------
+        sheet : Sheet
+            The sample sheet.
+        missing : sequence of str
+            Columns that it does not have either.
+        max_bad_cells : int
+            Largest number of non-numeric cells that are read as missing.
+
+        Raises
+        ------
+        InputDataError
+            When it seems to belong to another study.
+        """
+        refuse_strangers(self.opened.table(max_bad_cells), sheet, missing)
 
     def hashes(self) -> dict[str, str]:
         """Return the SHA-256 of each file, by its role."""

@@ -1,7 +1,7 @@
 """Several matrices of different samples, joined by their features."""
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, Literal, get_args
 
@@ -89,6 +89,7 @@ class JoinedSources:
                 name: np.concatenate([_column(sheet, name) for sheet in known])
                 for name in columns
             },
+            tuple(finding for sheet in known for finding in sheet.findings),
         )
 
     def with_origin(
@@ -134,7 +135,7 @@ class JoinedSources:
         if ORIGIN in sheet.columns:
             return sheet
         column = np.array([origin.get(name, "") for name in sheet.ids], dtype=object)
-        return Sheet(sheet.where, sheet.ids, {**sheet.columns, ORIGIN: column})
+        return replace(sheet, columns={**sheet.columns, ORIGIN: column})
 
     def _refuse_shared(self, samples: Sequence[Sequence[str]]) -> None:
         seen: dict[str, str] = {}
@@ -217,6 +218,21 @@ class JoinedSources:
             [*(f for turned in self._turned for f in turned.noted), *findings],
             tuple(bad for turned in self._turned for bad in turned.bad_cells),
         )
+
+    def refuse_strangers(
+        self, sheet: Sheet, missing: Sequence[str], max_bad_cells: int
+    ) -> None:
+        """Return: `with_origin` has held every part against the sheet.
+
+        Parameters
+        ----------
+        sheet : Sheet
+            The sample sheet.
+        missing : sequence of str
+            Columns that it does not have.
+        max_bad_cells : int
+            Largest number of non-numeric cells of each part.
+        """
 
     def hashes(self) -> dict[str, str]:
         """Return the SHA-256 of each file, numbered in the order named."""

@@ -4,7 +4,8 @@ Boisvert, Pozo & Remington 1996, The Matrix Market Exchange Formats (NISTIR 5935
 The format has no ids; that they stand beside it, line by line, is common practice.
 """
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -13,6 +14,7 @@ import numpy as np
 
 from panelkit.errors import InputDataError
 from panelkit.ingest.cells import BadCells
+from panelkit.ingest.compression import COMPRESSED_SUFFIXES, is_compressed
 from panelkit.ingest.matrix_table import (
     DeferredValues,
     MatrixTable,
@@ -30,7 +32,7 @@ from panelkit.ingest.reader import (
     refuse_unreadable,
 )
 from panelkit.ingest.sheet import Sheet, build_sheet
-from panelkit.ingest.source_file import file_kind, open_text
+from panelkit.ingest.source_file import file_kind, open_binary, open_text
 from panelkit.ingest.wording import quoted
 
 __all__ = ["MatrixMarketReader"]
@@ -38,7 +40,7 @@ __all__ = ["MatrixMarketReader"]
 _FEATURES = ("features", "genes", "feature_names", "gene_names")
 _SAMPLES = ("samples", "barcodes", "cells", "sample_names")
 _SUFFIXES = ("", ".tsv", ".txt")  # samples.csv is a usual name of sample sheets
-_PACKED = ("", ".gz")
+_PACKED = ("", *COMPRESSED_SUFFIXES)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -92,7 +94,7 @@ class MatrixMarketReader:
         Parameters
         ----------
         path : Path
-            Plain or compressed by gzip or bzip2.
+            Plain or compressed.
         options : ReadOptions
             May name the files of the ids.
 
@@ -124,11 +126,22 @@ class MatrixMarketReader:
         )
 
 
+@contextmanager
+def _source(path: Path) -> Iterator[Any]:
+    """Yield what scipy reads: the path, or a stream where the file is compressed."""
+    if not is_compressed(path):
+        yield str(path)
+        return
+    with open_binary(path) as stream:
+        yield stream
+
+
 def _shape(path: Path) -> tuple[int, int]:
     from scipy.io import mminfo
 
     try:
-        rows, columns, entries, layout, field, symmetry = mminfo(path)
+        with _source(path) as source:
+            rows, columns, entries, layout, field, symmetry = mminfo(source)
     except (ValueError, OSError, OverflowError, EOFError) as error:
         refuse_unreadable(path, MatrixMarketReader.title, error)
     if field not in ("real", "integer", "unsigned-integer") or symmetry != "general":
@@ -191,7 +204,7 @@ def _sides(
 def _beside(path: Path, words: Sequence[str], what: str) -> Path:
     """Return the one file beside the matrix that holds such names."""
     prefix = path.name.lower()
-    for ending in (".gz", ".bz2"):
+    for ending in COMPRESSED_SUFFIXES:
         prefix = prefix.removesuffix(ending)
     prefix = prefix.removesuffix(".mtx").removesuffix("matrix").removesuffix("counts")
     stems = {prefix, f"{prefix}_", f"{prefix}."} if prefix else {""}
@@ -261,7 +274,8 @@ def _values(path: Path, shape: tuple[int, int], note: Any) -> Any:
     from scipy.io import mmread
 
     try:
-        read: Any = mmread(path, spmatrix=False)
+        with _source(path) as source:
+            read: Any = mmread(source, spmatrix=False)
     except (ValueError, OSError, OverflowError, EOFError) as error:
         refuse_unreadable(path, MatrixMarketReader.title, error)
     if isinstance(read, np.ndarray):

@@ -7,7 +7,7 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from panelkit.ingest.cells import BadCells
+from panelkit.ingest.cells import LARGEST, BadCells
 from panelkit.ingest.wording import counted, quoted
 from panelkit.records import Finding
 
@@ -77,7 +77,7 @@ class MatrixTable:
         Cells that were read as missing though they hold something; for deferred
         values it is filled when they are taken.
     findings : tuple of Finding
-        What else was noticed while reading.
+        What was noticed about the file itself.
     """
 
     where: str
@@ -165,12 +165,12 @@ def truth_findings(where: str, names: list[str]) -> list[Finding]:
 
 
 def infinite_to_missing(values: Numbers, note: Note) -> Numbers:
-    """Return the values with infinite ones noted and set to NaN.
+    """Return the values with those beyond single precision noted and set to NaN.
 
     Parameters
     ----------
     values : ndarray
-        Two-dimensional; copied only when something is infinite.
+        Two-dimensional; copied only when something is beyond it.
     note : callable
         Called with row position, column position and the number as text.
 
@@ -179,7 +179,7 @@ def infinite_to_missing(values: Numbers, note: Note) -> Numbers:
     ndarray
         Same shape and dtype.
     """
-    infinite = np.isinf(values)
+    infinite = (values > LARGEST) | (values < -LARGEST)
     if not infinite.any():
         return values
     values = values.copy()

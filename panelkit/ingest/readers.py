@@ -5,6 +5,7 @@ from typing import Any
 
 from panelkit.errors import InputDataError, UsageError
 from panelkit.ingest.columnar_reader import ArrowReader, ParquetReader
+from panelkit.ingest.compression import COMPRESSED_SUFFIXES
 from panelkit.ingest.excel_reader import ExcelReader
 from panelkit.ingest.gct_reader import GctReader
 from panelkit.ingest.h5ad_reader import H5adReader
@@ -115,7 +116,7 @@ def _named(options: ReadOptions) -> Reader:
 def _promised(path: Path, found: Reader) -> Reader:
     """Refuse text in a file whose name promises something else."""
     plain = path.name.lower()
-    for ending in (".gz", ".bz2", ".xz", ".zst"):
+    for ending in COMPRESSED_SUFFIXES:
         plain = plain.removesuffix(ending)
     if found is _TEXT:
         for reader in _READERS:

@@ -1,10 +1,10 @@
-"""Reading expression files: time beside another reader, peak beside the matrix.
+"""The benchmark of text reading; each job runs in a process of its own.
 
-``python tests/benchmarks/reading.py FORMAT out.json`` writes a file of 300 x 30,000
-and reads it, each reader in a process of its own.
+``reading.py JOB FILE`` writes the results as JSON; ``reading.py peak READER TEXT``
+prints the memory that one reader needs for one file, in bytes.
 """
 
-import json
+import gzip
 import subprocess
 import sys
 import tempfile
@@ -13,120 +13,128 @@ from pathlib import Path
 import measure
 import numpy as np
 import pandas as pd
+import pyarrow.compute  # noqa: F401 - loaded before the clock starts, as pandas is
 
-ROWS, COLUMNS, ROUNDS = 300, 30_000, 3
-SHARE = 0.1  # of entries that are not zero, where zeros are left out
+from panelkit.ingest.cohort_reader import read_cohort
+from panelkit.ingest.delimited import read_delimited_matrix
 
-PANELKIT = """
-from pathlib import Path
-from panelkit.ingest import ReadOptions
-from panelkit.ingest.joined_matrices import open_expressions
-from panelkit.ingest.matrix_table import values_of_samples
-from panelkit.ingest.sheet import read_sheet
-sheet = read_sheet(Path({sheet!r}), "sample_id")
-source = open_expressions(Path({path!r}), ReadOptions(), "refuse")
-matrix = source.turned(sheet, False, "auto", 0).matrix
-done = values_of_samples(matrix.values, numpy.arange(300))
-"""
-OTHERS = {
-    "parquet": "import pandas\ndone = pandas.read_parquet({path!r}).to_numpy()",
-    "parquet-turned": "import pandas\ndone = pandas.read_parquet({path!r}).to_numpy()",
-    "feather": "import pandas\ndone = pandas.read_feather({path!r}).to_numpy()",
-    "h5ad": "import anndata\ndone = anndata.read_h5ad({path!r}).X",
-    "h5ad-rows": "import anndata\ndone = anndata.read_h5ad({path!r}).X.toarray()",
-    "h5ad-columns": "import anndata\ndone = anndata.read_h5ad({path!r}).X.toarray()",
-    "gct": "import pandas\n"
-    "done = pandas.read_csv({path!r}, sep='\\t', skiprows=2).iloc[:, 2:].to_numpy()",
-    "matrix-market": "import scipy.io\ndone = scipy.io.mmread({path!r}).toarray()",
+ROUNDS = 5
+SIZES = {"wide": (300, 30_000), "tall": (30_000, 300)}
+READERS = {
+    "panelkit": lambda path: read_delimited_matrix(path, 0),
+    "pandas": lambda path: pd.read_csv(path, index_col=0),
+    "pandas, exact": lambda path: pd.read_csv(
+        path, index_col=0, float_precision="round_trip"
+    ),
+    "numpy": lambda path: np.loadtxt(
+        path, delimiter=",", skiprows=1, usecols=range(1, _width(path))
+    ),
+    "read_cohort with its checks": lambda path: read_cohort(path),
 }
-MEASURED = """
-import json, sys, time
-sys.path.insert(0, {here!r})
-import measure
-{imports}
-measure.forget_peak()
-before = measure.peak_bytes()
-start = time.perf_counter()
-{code}
-taken = time.perf_counter() - start
-print(json.dumps([taken, measure.peak_bytes() - before, str(done.shape)]))
-"""
-IMPORTS = (
-    "import numpy, pandas, anndata, anndata.io, h5py, pyarrow.parquet, "
-    "pyarrow.feather, scipy.io, scipy.sparse, panelkit.ingest"
-)
+MISSING = ("pandas", "panelkit")  # numpy's reader knows no blank cells
 
 
-def write(kind, folder):
-    """Write the matrix by another program; return it and its path."""
-    import anndata
-    import scipy.io
-    from scipy import sparse
+def _width(path):
+    with path.open() as text:
+        return text.readline().count(",") + 1
 
+
+def _written(path, shape, form="%.4f", missing=0.0):
     draws = np.random.default_rng(0)
-    values = draws.normal(7, 2, (ROWS, COLUMNS))
-    if kind in ("h5ad-rows", "h5ad-columns", "matrix-market"):
-        values[draws.random(values.shape) > SHARE] = 0.0
-    rows = [f"S{n:03d}" for n in range(ROWS)]
-    columns = [f"F{n:05d}" for n in range(COLUMNS)]
-    frame = pd.DataFrame(values, rows, columns)
-    path = folder / f"matrix.{kind.partition('-')[0]}"
-    if kind.startswith("h5ad"):
-        change = {"h5ad-rows": sparse.csr_matrix, "h5ad-columns": sparse.csc_matrix}
-        obs, var = pd.DataFrame(index=rows), pd.DataFrame(index=columns)
-        stored = change.get(kind, np.asarray)(values)
-        anndata.AnnData(X=stored, obs=obs, var=var).write_h5ad(path)
-    elif kind == "gct":
-        frame = frame.T
-        frame.insert(0, "Description", "na")
-        with path.open("w") as text:
-            text.write(f"#1.2\n{COLUMNS}\t{ROWS}\n")
-            frame.to_csv(text, sep="\t", index_label="NAME")
-    elif kind == "matrix-market":
-        path = folder / "matrix.mtx"
-        scipy.io.mmwrite(path, sparse.coo_matrix(values.T))
-        (folder / "features.tsv").write_text("\n".join(columns))
-        (folder / "samples.tsv").write_text("\n".join(rows))
-    else:
-        frame = frame.T if kind.endswith("-turned") else frame
-        (frame.to_feather if kind == "feather" else frame.to_parquet)(path)
-    sheet = folder / "samples.csv"
-    pd.DataFrame({"sample_id": rows, "n": range(ROWS)}).to_csv(sheet, index=False)
-    return path, sheet
+    rows, columns = shape
+    with path.open("w") as text:
+        text.write("id," + ",".join(f"G{place}" for place in range(columns)) + "\n")
+        for row in range(rows):
+            cells = [form % value for value in draws.normal(7.0, 2.0, columns)]
+            if missing:
+                hit = draws.random(columns) < missing
+                cells = ["" if gone else c for c, gone in zip(cells, hit, strict=True)]
+            text.write(f"S{row:05d}," + ",".join(cells) + "\n")
 
 
-def measured(code, path, sheet):
-    """Return seconds and bytes above the start, in a process of its own."""
-    here = str(Path(__file__).parent)
-    filled = code.format(path=str(path), sheet=str(sheet))
-    text = MEASURED.format(here=here, imports=IMPORTS, code=filled)
-    done = subprocess.run(
-        [sys.executable, "-c", text], capture_output=True, check=True, text=True
+def _peak_of(reader, path):
+    asked = subprocess.run(
+        [sys.executable, __file__, "peak", reader, str(path)],
+        capture_output=True,
+        check=True,
+        text=True,
     )
-    return json.loads(done.stdout.splitlines()[-1])
+    return int(asked.stdout)
 
 
-def reading(kind):
+def _compared(shape, readers, form="%.4f", missing=0.0, pack=None):
     with tempfile.TemporaryDirectory() as folder:
-        path, sheet = write(kind, Path(folder))
-        ours, others = [], []
-        for _ in range(ROUNDS):
-            ours.append(measured(PANELKIT, path, sheet))
-            others.append(measured(OTHERS[kind], path, sheet))
+        path = Path(folder) / "matrix.csv"
+        _written(path, shape, form, missing)
         size = path.stat().st_size
-    whole = ROWS * COLUMNS * 8
+        if pack is not None:
+            packed = path.with_suffix(".csv.gz")
+            packed.write_bytes(pack(path.read_bytes(), mtime=0))
+            path = packed
+        tasks = {name: lambda turn, read=READERS[name]: read(path) for name in readers}
+        times, processor = measure.alternate(tasks, ROUNDS)
+        ours = READERS["panelkit"](path).values
+        theirs = READERS["pandas, exact"](path).to_numpy()
+        peaks = {name: _peak_of(name, path) for name in readers}
     return {
-        "file_bytes": size,
-        "seconds": {"panelkit": [o[0] for o in ours], "other": [o[0] for o in others]},
-        "ratio_time": measure.paired_ratio(
-            [o[0] for o in ours], [o[0] for o in others]
-        ),
-        "peak_over_matrix": max(o[1] for o in ours) / whole,
-        "peak_over_matrix_other": max(o[1] for o in others) / whole,
+        "sizes": {"rows": shape[0], "columns": shape[1], "bytes": size},
+        "times_s": times,
+        "median_s": measure.medians(times),
+        "median_processor_s": measure.medians(processor),
+        "ratio": {
+            name: measure.paired_ratio(times[name], times["panelkit"])
+            for name in readers
+            if name != "panelkit"
+        },
+        "peak_over_matrix": {
+            name: peak / (8 * shape[0] * shape[1]) for name, peak in peaks.items()
+        },
+        "equal": bool(np.array_equal(ours, theirs, equal_nan=True)),
     }
 
 
+def wide():
+    """Return 300 x 30,000 with four decimals, 65 MB."""
+    return _compared(SIZES["wide"], READERS)
+
+
+def tall():
+    """Return 30,000 x 300 with four decimals."""
+    return _compared(SIZES["tall"], READERS)
+
+
+def wide_all_digits():
+    """Return the wide matrix with 17 digits a cell, as pandas writes it."""
+    return _compared(SIZES["wide"], ("panelkit", "pandas", "numpy"), "%.17g")
+
+
+def wide_missing():
+    """Return the wide matrix with 59 % blank cells."""
+    return _compared(SIZES["wide"], MISSING, missing=0.59)
+
+
+def wide_gzip():
+    """Return the wide matrix compressed."""
+    return _compared(SIZES["wide"], ("panelkit", "pandas"), pack=gzip.compress)
+
+
+JOBS = {
+    job.__name__: job for job in (wide, tall, wide_all_digits, wide_missing, wide_gzip)
+}
+
+
+def _peak(reader, path):
+    """Return by how much the resident size grows at most while a file is read."""
+    _written(path.with_name("small.csv"), (3, 3))
+    READERS[reader](path.with_name("small.csv"))  # what libraries load once
+    before = measure.peak_bytes()
+    READERS[reader](path)
+    return measure.peak_bytes() - before
+
+
 if __name__ == "__main__":
-    measure.write_json(
-        Path(sys.argv[2]), f"reading {sys.argv[1]}", reading(sys.argv[1])
-    )
+    if sys.argv[1] == "peak":
+        sys.stdout.write(str(_peak(sys.argv[2], Path(sys.argv[3]))))
+    else:
+        job, target = sys.argv[1:]
+        measure.write_json(Path(target), job, JOBS[job]())
