@@ -18,6 +18,7 @@ from panelkit.ingest.matrix_table import (
     Numbers,
     Positions,
     cell_notes,
+    infinite_to_missing,
     truth_findings,
 )
 from panelkit.ingest.reader import (
@@ -376,19 +377,22 @@ def _column_numbers(column: Any, label: int, note: Note) -> Numbers:
         column = column.cast(pa.uint8())
     elif pa.types.is_decimal(kind):  # Arrow's own conversion rounds twice
         exact = [np.nan if value is None else value for value in column.to_pylist()]
-        return np.array([float(value) for value in exact])
+        return _in_range(np.array([float(value) for value in exact]), label, note)
     elif _is_text(kind):
         return _text_numbers(column.to_pylist(), label, note)
     values: NDArray[Any] = column.to_numpy()
     if values.dtype.kind != "f":
         values = values.astype(np.float64)
-    infinite = np.flatnonzero(np.isinf(values))
-    if infinite.size:
-        values = values.copy()
-        for row in infinite:
-            note(int(row), label, str(values[row]))
-        values[infinite] = np.nan
-    return values
+    elif values.dtype.itemsize < 4:
+        values = values.astype(np.float32)
+    return _in_range(values, label, note)
+
+
+def _in_range(values: Numbers, label: int, note: Note) -> Numbers:
+    """Return one column with numbers beyond single precision noted as missing."""
+    return infinite_to_missing(
+        values[:, None], lambda row, _, text: note(row, label, text)
+    )[:, 0]
 
 
 def _text_numbers(cells: list[str | None], label: int, note: Note) -> Numbers:

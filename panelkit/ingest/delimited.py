@@ -5,14 +5,11 @@ from collections.abc import Iterator
 from itertools import chain
 from pathlib import Path
 
-import numpy as np
-from numpy.typing import NDArray
-
 from panelkit.errors import InputDataError
-from panelkit.ingest.cells import BadCells, cell_number
-from panelkit.ingest.decimal_mark import DecimalMark, with_point
+from panelkit.ingest.cells import BadCells
 from panelkit.ingest.matrix_table import MatrixTable
-from panelkit.ingest.number_lines import GrowingMatrix, PlainReader, unquoted
+from panelkit.ingest.number_lines import GrowingMatrix, unquoted
+from panelkit.ingest.number_rows import NumberRows
 from panelkit.ingest.text_layout import (
     MOST_FIELDS,
     Layout,
@@ -131,8 +128,7 @@ class _Body:
         self._columns = columns
         self._bad_cells = bad_cells
         self._skipped = skipped
-        self._plain = PlainReader(layout.delimiter, len(columns))
-        self._mark = DecimalMark(bad_cells.where, layout.delimiter != ",")
+        self._rows = NumberRows(layout.delimiter, columns, bad_cells)
         self._names: list[str] = []
         self._matrix = GrowingMatrix(len(columns), expected)
 
@@ -146,8 +142,8 @@ class _Body:
         ]
         if not kept:
             return
-        if self._mark.watching and any("," in line or "." in line for _, line in kept):
-            self._mark.look(self._cells(kept))
+        if self._rows.wants(line for _, line in kept):
+            self._rows.look(self._cells(kept))
         if not self._take_plain([line for _, line in kept]):
             for place, line in kept:
                 self._take_line(place, line)
@@ -179,7 +175,7 @@ class _Body:
                 return False
             names.append(name)
             rests.append(plain)
-        values = self._plain.numbers(rests, self._mark.comma)
+        values = self._rows.at_once(rests)
         if values is None:
             return False
         self._names += names
@@ -207,23 +203,7 @@ class _Body:
         if len(fields) != width:
             raise _ragged(where, len(fields), width)
         self._names.append(fields[0])
-        self._matrix.add(self._numbers(fields[0], fields[1:])[None, :])
-
-    def _numbers(self, name: str, cells: list[str]) -> NDArray[np.float64]:
-        """Return one line's numbers, cell by cell."""
-        values = self._plain.numbers([self._delimiter.join(cells)], self._mark.comma)
-        if values is not None:
-            return values.reshape(-1)
-        result = np.empty(len(cells))
-        comma = self._mark.comma
-        for position, cell in enumerate(cells):
-            text = with_point(cell) if comma else cell
-            value = None if text is None else cell_number(text)
-            if value is None:
-                self._bad_cells.add(name, self._columns[position], cell)
-                value = math.nan
-            result[position] = value
-        return result
+        self._matrix.add(self._rows.one(fields[0], fields[1:])[None, :])
 
     def table(self, lines: Lines) -> MatrixTable:
         """Return the matrix and what was noticed, after the last batch."""
@@ -232,7 +212,7 @@ class _Body:
         findings = (
             *lines.findings(),
             *self._skipped.findings(),
-            *self._mark.findings(),
+            *self._rows.findings(),
         )
         return MatrixTable(
             lines.where,

@@ -4,22 +4,26 @@ The text format as published with GenePattern (version 1.2) and with the Connect
 Map (version 1.3: metadata of rows in further columns, of columns in further rows).
 """
 
+import codecs
 from collections.abc import Iterator
+from itertools import islice
 from pathlib import Path
-from typing import TextIO
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import InputDataError
-from panelkit.ingest.cells import BadCells, cell_number
-from panelkit.ingest.matrix_table import MatrixTable, Note, cell_notes
+from panelkit.ingest.cells import BadCells
+from panelkit.ingest.matrix_table import MatrixTable
+from panelkit.ingest.number_rows import NumberRows
 from panelkit.ingest.reader import OpenedMatrix, ReadOptions, refuse_oversized
 from panelkit.ingest.sheet import Sheet, build_sheet
-from panelkit.ingest.source_file import open_text
+from panelkit.ingest.text_lines import Lines, read_lines
 
 __all__ = ["GctReader"]
 
+_TOGETHER = 100_000
+"""Cells read at once, small enough to stay in the processor's cache."""
 _FIRST_LINES = {"#1.2": 2, "#1.3": 4}
 """Version line to the number of dimensions that follow it."""
 
@@ -34,8 +38,9 @@ class GctReader:
 
     def matches(self, path: Path, start: bytes) -> bool:
         """Return whether the first line is the version line of GCT."""
-        first = start.removeprefix(b"\xef\xbb\xbf").split(b"\n", 1)[0]
-        return first.strip().decode("latin-1") in _FIRST_LINES
+        wide = start.startswith((codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE))
+        text = start[:40].decode("utf-16" if wide else "utf-8-sig", "replace")
+        return text.partition("\n")[0].strip() in _FIRST_LINES
 
     def read(self, path: Path, options: ReadOptions) -> OpenedMatrix:
         """Return the file opened: its head and its row metadata.
@@ -57,16 +62,15 @@ class GctReader:
         InputDataError
             When dimensions and content differ, or lines differ in length.
         """
-        with open_text(path) as text:
-            head = _Head(path.name, text)
+        head = read_lines(path, _Head)
         refuse_oversized(path.name, head.n_rows, head.n_columns, 8)
 
         def table(max_bad_cells: int) -> MatrixTable:
-            return _table(path, max_bad_cells)
+            return read_lines(path, lambda lines: _table(lines, max_bad_cells))
 
         def row_sheet() -> Sheet | None:
             where = f"{path.name}, row metadata"
-            return _sheet(where, head.row_names, *_row_texts(path))
+            return _sheet(where, head.row_names, *read_lines(path, _row_texts))
 
         def column_sheet() -> Sheet | None:
             where = f"{path.name}, column metadata"
@@ -89,15 +93,13 @@ class _Head:
 
     Parameters
     ----------
-    where : str
-        The file, for messages.
-    text : TextIO
-        At its first line; afterwards at the first line of the matrix.
+    lines : Lines
+        Of the file; afterwards `lines` stands at the first line of the matrix.
     """
 
-    def __init__(self, where: str, text: TextIO) -> None:
-        self.where = where
-        self.lines = _Lines(text)
+    def __init__(self, lines: Lines) -> None:
+        self.where = lines.where
+        self.lines = _Lines(lines)
         self.version = (self.lines.fields() or [""])[0].strip()
         sizes = self._sizes(_FIRST_LINES[self.version])
         self.n_rows, self.n_columns = sizes[:2]
@@ -155,12 +157,12 @@ class _Head:
                 "says",
                 next_step="Copy or write the file again",
             )
-        self.check_length(line)
+        self.check_length(len(line))
         return line
 
-    def check_length(self, line: list[str]) -> None:
+    def check_length(self, n_fields: int) -> None:
         """Refuse a line of another length than line 2 says."""
-        found = len(line) - self.before
+        found = n_fields - self.before
         if found != self.n_columns:
             raise InputDataError(
                 code="dimensions-differ",
@@ -176,30 +178,40 @@ _SIZES_13 = "rows, columns, row metadata, column metadata"
 
 
 class _Lines:
-    """Fields of the lines that are not blank, and the number of the last one."""
+    """Lines that are not blank, one by one, and the number of the last one."""
 
-    def __init__(self, text: TextIO) -> None:
-        self.text = text
+    def __init__(self, lines: Lines) -> None:
+        self._each = (
+            (number, line)
+            for start, batch in lines
+            for number, line in enumerate(batch, start)
+            if line.strip()
+        )
         self.number = 0
+
+    def next(self) -> str | None:
+        """Return the next line, None at the end."""
+        self.number, line = next(self._each, (self.number, None))
+        return line
 
     def fields(self) -> list[str] | None:
         """Return the fields of the next line, None at the end."""
-        for raw in self.text:
-            self.number += 1
-            line = raw.rstrip("\r\n")
-            if line.strip():
-                return [field.strip('"') for field in line.split("\t")]
-        return None
+        line = self.next()
+        return None if line is None else _unquoted(line.split("\t"))
 
 
-def _rows(head: _Head) -> Iterator[tuple[int, list[str]]]:
-    """Yield each row's number and fields, and hold their count against line 2."""
+def _unquoted(fields: list[str]) -> list[str]:
+    return [field.strip('"') for field in fields]
+
+
+def _rows(head: _Head) -> Iterator[str]:
+    """Yield each row's line, and hold their count against line 2."""
     found = 0
-    while (line := head.lines.fields()) is not None:
+    while (line := head.lines.next()) is not None:
         found += 1
         if found <= head.n_rows:
-            head.check_length(line)
-            yield found - 1, line
+            head.check_length(line.count("\t") + 1)
+            yield line
     if found != head.n_rows:
         raise InputDataError(
             code="dimensions-differ",
@@ -210,52 +222,48 @@ def _rows(head: _Head) -> Iterator[tuple[int, list[str]]]:
         )
 
 
-def _row_texts(path: Path) -> tuple[list[str], list[list[str]]]:
+def _row_texts(lines: Lines) -> tuple[list[str], list[list[str]]]:
     """Return row ids and row metadata, column by column."""
-    with open_text(path) as text:
-        head = _Head(path.name, text)
-        ids: list[str] = []
-        texts: list[list[str]] = [[] for _ in head.row_names]
-        for _, line in _rows(head):
-            ids.append(line[0])
-            for column, field in zip(texts, line[1 : head.before], strict=True):
-                column.append(field)
+    head = _Head(lines)
+    ids: list[str] = []
+    texts: list[list[str]] = [[] for _ in head.row_names]
+    for line in _rows(head):
+        first, *notes = _unquoted(line.split("\t", head.before)[: head.before])
+        ids.append(first)
+        for column, field in zip(texts, notes, strict=True):
+            column.append(field)
     return ids, texts
 
 
-def _table(path: Path, max_bad_cells: int) -> MatrixTable:
-    bad_cells = BadCells(path.name, max_bad_cells)
-    with open_text(path) as text:
-        head = _Head(path.name, text)
-        ids: list[str] = []
-        note = cell_notes(bad_cells, ids, head.column_ids)
-        values = np.empty((head.n_rows, head.n_columns))
-        for row, line in _rows(head):
-            ids.append(line[0])
-            cells = line[head.before :]
-            quick = _all_numbers(cells)
-            values[row] = _each_number(cells, row, note) if quick is None else quick
-    return MatrixTable(path.name, ids, head.column_ids, values, bad_cells)
+def _table(lines: Lines, max_bad_cells: int) -> MatrixTable:
+    head = _Head(lines)
+    bad_cells = BadCells(lines.where, max_bad_cells)
+    numbers = NumberRows("\t", head.column_ids, bad_cells)
+    ids: list[str] = []
+    values = np.empty((head.n_rows, head.n_columns))
+    together = max(1, _TOGETHER // head.n_columns)
+    rows = _rows(head)
+    while batch := list(islice(rows, together)):
+        parts = [line.split("\t", head.before) for line in batch]
+        names = [part[0].strip('"') for part in parts]
+        rests = [part[-1] for part in parts]
+        if numbers.wants(rests):
+            numbers.look(c.strip('"') for rest in rests for c in rest.split("\t"))
+        values[len(ids) : len(ids) + len(names)] = _numbers(numbers, names, rests)
+        ids += names
+    findings = (*lines.findings(), *numbers.findings())
+    return MatrixTable(lines.where, ids, head.column_ids, values, bad_cells, findings)
 
 
-def _all_numbers(cells: list[str]) -> NDArray[np.float64] | None:
-    """Return the numbers of clean cells, None where a cell needs a closer look."""
-    try:
-        values = np.fromiter(map(float, cells), np.float64, len(cells))
-    except ValueError:
-        return None
-    text = "".join(cells)
-    # float() would take 1_000 and digits of other scripts
-    clean = "_" not in text and text.isascii() and not np.isinf(values).any()
-    return values if clean else None
-
-
-def _each_number(cells: list[str], row: int, note: Note) -> NDArray[np.float64]:
-    values = np.empty(len(cells))
-    for column, cell in enumerate(cells):
-        number = cell_number(cell)
-        if number is None:
-            note(row, column, cell)
-            number = np.nan
-        values[column] = number
-    return values
+def _numbers(
+    numbers: NumberRows, names: list[str], rests: list[str]
+) -> NDArray[np.float64]:
+    plain = numbers.at_once(rests)
+    if plain is not None:
+        return plain
+    return np.stack(
+        [
+            numbers.one(name, _unquoted(rest.split("\t")))
+            for name, rest in zip(names, rests, strict=True)
+        ]
+    )

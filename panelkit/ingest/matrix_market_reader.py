@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 
 from panelkit.errors import InputDataError
-from panelkit.ingest.cells import BadCells
+from panelkit.ingest.cells import LARGEST, BadCells
 from panelkit.ingest.compression import COMPRESSED_SUFFIXES, is_compressed
 from panelkit.ingest.matrix_table import (
     DeferredValues,
@@ -283,7 +283,7 @@ def _values(path: Path, shape: tuple[int, int], note: Any) -> Any:
     rows, columns = read.coords
     data = np.asarray(read.data, dtype=np.float64)
     _refuse_repeated(path, rows, columns, shape)
-    for entry in np.flatnonzero(np.isinf(data)):
+    for entry in np.flatnonzero(np.abs(data) > LARGEST):
         note(int(rows[entry]), int(columns[entry]), str(data[entry]))
         data[entry] = np.nan
 

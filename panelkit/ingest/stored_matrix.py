@@ -7,6 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import InputDataError
+from panelkit.ingest.cells import LARGEST
 from panelkit.ingest.matrix_table import (
     BLOCK_BYTES,
     Note,
@@ -157,9 +158,9 @@ def _take_sparse(
         )
         wanted = place[along] >= 0
         along, across, data = along[wanted], across[wanted], block.data[wanted]
-        if data.dtype.kind == "f" and np.isinf(data).any():
+        if data.dtype.kind == "f" and (np.abs(data) > LARGEST).any():
             data = data.copy()
-            for entry in np.flatnonzero(np.isinf(data)):
+            for entry in np.flatnonzero(np.abs(data) > LARGEST):
                 one, two = int(along[entry]), int(across[entry])
                 if axis == 1:
                     one, two = two, one

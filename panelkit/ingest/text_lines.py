@@ -8,7 +8,7 @@ from pathlib import Path
 from typing import TypeVar
 
 from panelkit.errors import InputDataError
-from panelkit.ingest.compression import BLOCK, compression_of, open_bytes
+from panelkit.ingest.compression import BLOCK, is_compressed, open_bytes
 from panelkit.ingest.wording import counted
 from panelkit.records import Finding
 
@@ -159,8 +159,7 @@ class Lines:
     @property
     def compressed(self) -> bool:
         """Whether the file is larger than it seems."""
-        with self.path.open("rb") as stream:
-            return compression_of(stream.read(6)) is not None
+        return is_compressed(self.path)
 
     def _blocks(self) -> Iterator[str]:
         with open_bytes(self.path) as stream:
