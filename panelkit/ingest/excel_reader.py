@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import InputDataError, UsageError, name_some
-from panelkit.ingest.cells import BadCells, cell_number
+from panelkit.ingest.cells import LARGEST, BadCells, cell_number
 from panelkit.ingest.matrix_table import MatrixTable
 from panelkit.ingest.reader import OpenedMatrix, ReadOptions, refuse_unreadable
 from panelkit.ingest.wording import as_text, counted, nearest_hint, quoted
@@ -239,7 +239,7 @@ def _row_numbers(
     values = np.full(len(columns), np.nan)
     for position, cell in enumerate(cells):
         if type(cell) is float or type(cell) is int:
-            number: float | None = float(cell)
+            number = float(cell) if abs(cell) <= LARGEST else None
         else:
             number = cell_number("" if cell is None else str(cell))
         if number is None:

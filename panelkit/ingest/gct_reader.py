@@ -8,6 +8,7 @@ import codecs
 from collections.abc import Iterator
 from itertools import islice
 from pathlib import Path
+from typing import TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
@@ -26,6 +27,9 @@ _TOGETHER = 100_000
 """Cells read at once, small enough to stay in the processor's cache."""
 _FIRST_LINES = {"#1.2": 2, "#1.3": 4}
 """Version line to the number of dimensions that follow it."""
+
+
+_RowTexts: TypeAlias = tuple[list[str], list[list[str]]]
 
 
 class GctReader:
@@ -65,12 +69,17 @@ class GctReader:
         head = read_lines(path, _Head)
         refuse_oversized(path.name, head.n_rows, head.n_columns, 8)
 
+        noted: list[_RowTexts] = []  # so that one reading of the file is enough
+
         def table(max_bad_cells: int) -> MatrixTable:
-            return read_lines(path, lambda lines: _table(lines, max_bad_cells))
+            read, texts = read_lines(path, lambda lines: _table(lines, max_bad_cells))
+            noted[:] = [texts]
+            return read
 
         def row_sheet() -> Sheet | None:
             where = f"{path.name}, row metadata"
-            return _sheet(where, head.row_names, *read_lines(path, _row_texts))
+            ids, texts = noted[0] if noted else read_lines(path, _row_texts)
+            return _sheet(where, head.row_names, ids, texts)
 
         def column_sheet() -> Sheet | None:
             where = f"{path.name}, column metadata"
@@ -222,37 +231,36 @@ def _rows(head: _Head) -> Iterator[str]:
         )
 
 
-def _row_texts(lines: Lines) -> tuple[list[str], list[list[str]]]:
+def _row_texts(lines: Lines) -> _RowTexts:
     """Return row ids and row metadata, column by column."""
     head = _Head(lines)
-    ids: list[str] = []
-    texts: list[list[str]] = [[] for _ in head.row_names]
-    for line in _rows(head):
-        first, *notes = _unquoted(line.split("\t", head.before)[: head.before])
-        ids.append(first)
-        for column, field in zip(texts, notes, strict=True):
-            column.append(field)
+    fields = [line.split("\t", head.before)[: head.before] for line in _rows(head)]
+    ids, *texts = map(list, zip(*map(_unquoted, fields), strict=True))
     return ids, texts
 
 
-def _table(lines: Lines, max_bad_cells: int) -> MatrixTable:
+def _table(lines: Lines, max_bad_cells: int) -> tuple[MatrixTable, _RowTexts]:
     head = _Head(lines)
     bad_cells = BadCells(lines.where, max_bad_cells)
     numbers = NumberRows("\t", head.column_ids, bad_cells)
     ids: list[str] = []
+    texts: list[list[str]] = [[] for _ in head.row_names]
     values = np.empty((head.n_rows, head.n_columns))
     together = max(1, _TOGETHER // head.n_columns)
     rows = _rows(head)
     while batch := list(islice(rows, together)):
         parts = [line.split("\t", head.before) for line in batch]
-        names = [part[0].strip('"') for part in parts]
-        rests = [part[-1] for part in parts]
+        rests = [part.pop() for part in parts]
+        names, *notes = map(list, zip(*map(_unquoted, parts), strict=True))
         if numbers.wants(rests):
             numbers.look(c.strip('"') for rest in rests for c in rest.split("\t"))
         values[len(ids) : len(ids) + len(names)] = _numbers(numbers, names, rests)
         ids += names
+        for column, more in zip(texts, notes, strict=True):
+            column += more
     findings = (*lines.findings(), *numbers.findings())
-    return MatrixTable(lines.where, ids, head.column_ids, values, bad_cells, findings)
+    table = MatrixTable(lines.where, ids, head.column_ids, values, bad_cells, findings)
+    return table, (ids, texts)
 
 
 def _numbers(

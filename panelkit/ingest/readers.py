@@ -5,7 +5,7 @@ from typing import Any
 
 from panelkit.errors import InputDataError, UsageError
 from panelkit.ingest.columnar_reader import ArrowReader, ParquetReader
-from panelkit.ingest.compression import COMPRESSED_SUFFIXES
+from panelkit.ingest.compression import COMPRESSED_SUFFIXES, is_compressed
 from panelkit.ingest.excel_reader import ExcelReader
 from panelkit.ingest.gct_reader import GctReader
 from panelkit.ingest.h5ad_reader import H5adReader
@@ -93,6 +93,14 @@ def open_matrix_file(path: Path, options: ReadOptions) -> OpenedMatrix:
             f"content looks like {found.title}",
             accepted="the format and the content agree",
             next_step="Correct or leave out format, which is then found by content",
+        )
+    if not _TEXT.matches(path, start) and is_compressed(path):
+        raise InputDataError(
+            code="wrong-file-kind",
+            where=str(path),
+            what=f"the file is {reader.title} inside a compressed file",
+            accepted="text may be compressed; binary formats are read as they are",
+            next_step="Unpack the file first",
         )
     used_options(options, reader.takes | {"format"}, path.name, reader.title)
     return reader.read(path, options)
