@@ -11,7 +11,8 @@ import numpy as np
 from panelkit.errors import InputDataError, UsageError
 from panelkit.ingest.alignment import mismatch_hint
 from panelkit.ingest.data_frames import is_data_frame, series_text
-from panelkit.ingest.sheet import Text, read_columns
+from panelkit.ingest.sheet import Text
+from panelkit.ingest.sheet_files import sheet_columns
 from panelkit.ingest.source_file import sha256
 from panelkit.ingest.wording import counted, quoted
 from panelkit.records import AssayMap, Finding
@@ -78,7 +79,7 @@ def open_assays(given: object) -> AssayTable:
             next_step="Pass one of these",
         )
     path = Path(given)
-    names, texts, findings = read_columns(path, "feature")
+    names, texts, findings = sheet_columns(path, "feature")
     return AssayTable(path.name, names, texts, sha256(path), findings)
 
 

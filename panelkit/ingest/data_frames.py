@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
 __all__ = [
+    "frame_columns",
     "frame_matrix",
     "frame_sheet",
     "index_sheet",
@@ -161,13 +162,35 @@ def frame_sheet(frame: "pd.DataFrame", where: str, id_column: str) -> Sheet:
     InputDataError
         When ids are blank or repeated, or column names are repeated.
     """
+    return build_sheet(where, *frame_columns(frame, id_column), id_column)
+
+
+def frame_columns(
+    frame: "pd.DataFrame", id_column: str
+) -> tuple[list[str], list[NDArray[np.object_]]]:
+    """Return the columns of a data frame as text, its index first where that has ids.
+
+    Parameters
+    ----------
+    frame : pandas.DataFrame
+        One row for each sample or feature.
+    id_column : str
+        As for `frame_sheet`; what the index is called.
+
+    Returns
+    -------
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content.
+    """
     import pandas as pd
 
     names = [str(name) for name in frame.columns]
     numbered = isinstance(frame.index, pd.RangeIndex)
     if id_column not in names and not (numbered and names):
-        return index_sheet(frame, where, id_column)
-    return build_sheet(where, names, _texts(frame), id_column)
+        return [id_column, *names], [_index_text(frame), *_texts(frame)]
+    return names, _texts(frame)
 
 
 def index_sheet(frame: "pd.DataFrame", where: str, id_column: str = "(index)") -> Sheet:
@@ -193,8 +216,11 @@ def index_sheet(frame: "pd.DataFrame", where: str, id_column: str = "(index)") -
         When ids are blank or repeated, or column names are repeated.
     """
     names = [id_column, *map(str, frame.columns)]
-    ids = np.array([as_text(name) for name in frame.index], dtype=object)
-    return build_sheet(where, names, [ids, *_texts(frame)], id_column)
+    return build_sheet(where, names, [_index_text(frame), *_texts(frame)], id_column)
+
+
+def _index_text(frame: "pd.DataFrame") -> NDArray[np.object_]:
+    return np.array([as_text(name) for name in frame.index], dtype=object)
 
 
 def _texts(frame: "pd.DataFrame") -> list[NDArray[np.object_]]:

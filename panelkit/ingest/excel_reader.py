@@ -1,4 +1,4 @@
-"""Excel workbooks (.xlsx): one sheet as a matrix, read row by row."""
+"""Excel workbooks (.xlsx): one sheet as a matrix or as text, read row by row."""
 
 import datetime
 import re
@@ -19,7 +19,7 @@ from panelkit.ingest.reader import OpenedMatrix, ReadOptions, refuse_unreadable
 from panelkit.ingest.wording import as_text, counted, nearest_hint, quoted
 from panelkit.records import Finding
 
-__all__ = ["ExcelReader"]
+__all__ = ["ExcelReader", "read_texts"]
 
 _MOST_BYTES = 2 * 2**30
 """Of all members of a workbook together, unpacked."""
@@ -71,6 +71,77 @@ class ExcelReader:
             return _table(path, options.sheet, max_bad_cells)
 
         return OpenedMatrix(path.name, table)
+
+
+def read_texts(
+    path: Path, id_column: str
+) -> tuple[list[str], list[NDArray[np.object_]], tuple[Finding, ...]]:
+    """Return the columns of a workbook's first sheet as text.
+
+    Parameters
+    ----------
+    path : Path
+        The workbook.
+    id_column : str
+        Name of a first column that has none.
+
+    Returns
+    -------
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content; dates as in ISO 8601.
+    findings : tuple of Finding
+        Which sheet was read when there are several, and ids stored as dates.
+
+    Raises
+    ------
+    UsageError
+        When openpyxl is not installed.
+    InputDataError
+        When it is no workbook, or its first sheet holds no table.
+    """
+    _refuse_missing_package()
+    _check_archive(path)
+    with _worksheet(path, None, formulas=False) as sheet:
+        where = f"{path.name}, sheet {sheet.title!r}"
+        others = [each.title for each in sheet.parent.worksheets[1:]]
+        each_row = _rows(path, sheet)
+        _, header = next(each_row, (0, []))
+        rows = []
+        dates = []
+        for number, cells in each_row:
+            if len(cells) > len(header):
+                raise _too_long(f"{where}, row {number}", len(cells), len(header))
+            rows.append([*cells, *[None] * (len(header) - len(cells))])
+            dates += [_id_text(cells[0])] if isinstance(cells[0], _DATES) else []
+    if not rows:
+        raise InputDataError(
+            code="no-data-lines",
+            where=where,
+            what=f"there are no data rows (got {len(header)} cells in the header)",
+            accepted="a header row and one row for each sample or feature are needed",
+            next_step="Fill the sheet, or put it first in the workbook",
+        )
+    _refuse_formulas(path, None, where)
+    names = [_id_text(cell) for cell in header]
+    names[0] = names[0] or id_column
+    texts = [
+        np.array([_id_text(cell) for cell in column], dtype=object)
+        for column in zip(*rows, strict=True)
+    ]
+    return names, texts, (*_first_of(where, others), *_dated(where, dates))
+
+
+def _first_of(where: str, others: list[str]) -> Iterator[Finding]:
+    if others:
+        yield Finding(
+            code="first-worksheet-read",
+            severity="info",
+            where=where,
+            message=f"the workbook's first sheet was read; left out: {quoted(others)}",
+            next_step="Check that the first sheet is the one that is meant.",
+        )
 
 
 def _refuse_missing_package() -> None:

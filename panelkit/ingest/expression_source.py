@@ -14,7 +14,8 @@ from panelkit.ingest.data_frames import frame_matrix, frame_sheet, is_data_frame
 from panelkit.ingest.matrix_table import Side
 from panelkit.ingest.reader import OpenedMatrix, ReadOptions
 from panelkit.ingest.readers import open_matrix_file, used_options
-from panelkit.ingest.sheet import Sheet, read_sheet
+from panelkit.ingest.sheet import Sheet
+from panelkit.ingest.sheet_files import read_sheet_file
 from panelkit.ingest.source_file import sha256
 from panelkit.records import Finding
 
@@ -326,4 +327,4 @@ def open_sheet(sheet: object, role: str, id_column: str) -> tuple[Sheet, str | N
             next_step="Pass one of these",
         )
     path = Path(sheet)
-    return read_sheet(path, id_column), sha256(path)
+    return read_sheet_file(path, id_column), sha256(path)

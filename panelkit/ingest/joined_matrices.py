@@ -15,6 +15,7 @@ from panelkit.ingest.expression_source import (
     TurnedMatrix,
     open_expression,
 )
+from panelkit.ingest.joined_sheets import joined_feature_sheet
 from panelkit.ingest.matrix_table import (
     DeferredValues,
     Numbers,
@@ -211,10 +212,10 @@ class JoinedSources:
             return np.ascontiguousarray(take_columns(every)[positions].T)
 
         values = DeferredValues((len(features), len(samples)), take_rows, take_columns)
-        sheets = [t.feature_sheet for t in self._turned if t.feature_sheet is not None]
+        sheets = [turned.feature_sheet for turned in self._turned]
         return TurnedMatrix(
             FeatureMajor(where, features, samples, values),
-            sheets[0] if sheets else None,
+            joined_feature_sheet(sheets, self.names, features),
             [*(f for turned in self._turned for f in turned.noted), *findings],
             tuple(bad for turned in self._turned for bad in turned.bad_cells),
         )

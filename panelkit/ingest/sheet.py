@@ -129,7 +129,8 @@ def read_columns(
             code="wrong-file-kind",
             where=str(path),
             what="the file is an HDF5 file",
-            accepted="sheets are CSV or TSV (plain, .gz, .bz2, .xz or .zst)",
+            accepted="sheets are CSV or TSV (plain, .gz, .bz2, .xz or .zst), .xlsx, "
+            "Parquet or Arrow",
             next_step="Save the sheet in one of these formats",
         )
     header, rows, findings = read_rows(path, id_column)

@@ -44,8 +44,8 @@ _REFUSED = {
     b"<?xml": "an XML document",
 }
 _ACCEPTED = (
-    "tables are CSV or TSV (plain, .gz, .bz2, .xz or .zst), matrices also .h5ad, "
-    "Parquet, Arrow, GCT, Matrix Market or .xlsx"
+    "tables are CSV or TSV (plain, .gz, .bz2, .xz or .zst), .xlsx, Parquet or Arrow, "
+    "matrices also .h5ad, GCT or Matrix Market"
 )
 _WIDE_MARKS = (b"\xff\xfe", b"\xfe\xff", b"\0\0\xfe\xff")
 _CONTROLS = bytes({*range(32)} - {*b"\0\t\n\v\f\r\x1a\x1b"})

@@ -145,3 +145,46 @@ def test_a_study_takes_paths_only(small, expression):
     assert caught.value.code == "value-refused"
     assert caught.value.where.endswith("key 'expression'")
     assert "a list of paths" in caught.value.accepted
+
+
+def annotated(path, samples, **columns):
+    values = np.arange(len(samples) * 3.0).reshape(-1, 3)
+    var = pd.DataFrame(columns, index=["g1", "g2", "g3"])
+    obs = pd.DataFrame(index=samples)
+    anndata.AnnData(X=values, obs=obs, var=var).write_h5ad(path)
+    return path
+
+
+def test_feature_columns_of_all_parts_are_joined(tmp_path):
+    """AnnData and GCT: equal columns once, further ones beside them, no finding."""
+    first = annotated(tmp_path / "a.h5ad", ["S1", "S2"], symbol=["A", "B", "C"])
+    second = tmp_path / "b.gct"
+    second.write_text(
+        "#1.3\n3\t1\t2\t0\nid\tsymbol\tclone\tS3\n"
+        "g3\tC\tk3\t9\ng1\tA\tk1\t7\ng2\tB\tk2\t8\n"
+    )
+    cohort = read_cohort([first, second])
+    assert list(cohort.samples) == ["S1", "S2", "S3"]
+    assert cohort.X.tolist() == [[0, 1, 2], [3, 4, 5], [7, 8, 9]]
+    assert list(cohort.feature_columns["symbol"]) == ["A", "B", "C"]
+    assert list(cohort.feature_columns["clone"]) == ["k1", "k2", "k3"]
+    assert "feature-columns-differ" not in {f.code for f in cohort.findings}
+
+
+@pytest.mark.parametrize("given", [False, True])
+def test_feature_columns_that_differ_are_named(tmp_path, given):
+    parts = [
+        annotated(tmp_path / "a.h5ad", ["S1"], symbol=["A", "B", "C"]),
+        annotated(tmp_path / "b.h5ad", ["S2"], symbol=["A", "X", "Y"]),
+    ]
+    sheet = pd.DataFrame({"feature": ["g1", "g2", "g3"], "symbol": ["K", "L", "M"]})
+    cohort = read_cohort(parts, features=sheet if given else None)
+    found = [f for f in cohort.findings if f.code == "feature-columns-differ"]
+    symbols = list(cohort.feature_columns["symbol"])
+    if given:  # the sheet settles it
+        assert (symbols, found) == (["K", "L", "M"], [])
+    else:
+        assert symbols == ["A", "B", "C"]
+        assert found[0].where == "b.h5ad"
+        assert "2 features ('g2', 'g3')" in found[0].message
+        assert "that of 'a.h5ad' is used" in found[0].message
