@@ -12,6 +12,7 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    STEPS,
 )
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
@@ -48,6 +49,7 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "STEPS",
     "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",
     "AccuracySection",

@@ -19,7 +19,7 @@ from panelkit.records.frontier import (
 from panelkit.records.matrix import MatrixSource
 from panelkit.records.panel_cost import CostLine, PanelCost
 from panelkit.records.paths import PathSet
-from panelkit.records.preparation import RecipeState
+from panelkit.records.preparation import RecipeContext, RecipeState, StepState
 from panelkit.records.prices import (
     ANY_MARKER,
     PRICE_COLUMNS,
@@ -63,6 +63,7 @@ __all__ = [
     "PanelCost",
     "PathSet",
     "PriceList",
+    "RecipeContext",
     "RecipeState",
     "Record",
     "RuleChoice",
@@ -71,6 +72,7 @@ __all__ = [
     "Severity",
     "ShortlistTable",
     "Stability",
+    "StepState",
     "SubsamplePlan",
     "TunedChoice",
     "check_price_columns",

@@ -9,11 +9,10 @@ from panelkit.costing import (
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.ingest import guess_scale
-from panelkit.preparation import Recipe, default_steps
 from panelkit.records import Cohort, Finding
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
 __all__ = ["draws_of", "procedure_of"]
 
@@ -54,12 +53,11 @@ def procedure_of(
             accepted="a binary outcome",
             next_step="Name outcome and positive",
         )
-    steps = plan.preparation.discovery
-    if steps is None:
-        steps = default_steps(guess_scale(cohort.values).kind)
-    recipe = Recipe(
-        steps, plan.preparation.log2_offset, plan.preparation.max_missing_share
-    )
+    context = context_of(cohort)
+    recipe, assay = recipes_of(plan, cohort)
+    for part in (recipe, assay):
+        if part is not None:
+            part.check(context)
     section = plan.shortlist
     rules = ShortlistRules(
         threshold=section.threshold,
@@ -92,6 +90,8 @@ def procedure_of(
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        context=context,
+        values=None if assay is None else cohort.values,
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
@@ -104,7 +104,7 @@ def procedure_of(
             "surely are",
             next_step="Name smaller sizes, or raise [shortlist] candidates",
         )
-    finding = []
+    finding = [] if assay is not None else assay_findings(recipe)
     if left := [size for size in plan.panels.sizes if size > usable]:
         finding.append(
             Finding(
@@ -116,7 +116,8 @@ def procedure_of(
                 "Raise [shortlist] candidates to have them",
             )
         )
-    return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+    procedure = Procedure(recipe, rules, plan.panels.makers, sizes, assay=assay)
+    return procedure, data, finding
 
 
 def draws_of(plan: Study, data: ProcedureData) -> Draws:

@@ -29,6 +29,7 @@ from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
+from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import record_bytes, run_record
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
@@ -128,7 +129,11 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
+    record = run_record(
+        plan,
+        {**(cohort.sources or {}), **known.price_hashes},
+        preparation_tables(procedure.recipe, procedure.assay),
+    )
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content)
