@@ -22,7 +22,7 @@ def test_quantile_target_and_ties(values_of, nothing):
     learnt = Quantile().learn(values, np.arange(3), nothing)
     assert learnt["target"] == pytest.approx(TARGET, rel=1e-15)
     done = Quantile().apply(values, learnt, nothing).matrix
-    assert done.T == pytest.approx(np.array(list(SAMPLES.values())), rel=1e-7)
+    assert pytest.approx(np.array(list(SAMPLES.values())), rel=1e-7) == done.T
     for sample, expected in SAMPLES.items():
         found = normalised_to(TARGET, np.array(sample, float))
         assert found == pytest.approx(expected, rel=1e-15)
