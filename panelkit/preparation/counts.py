@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from panelkit.config import STEPS
 from panelkit.errors import InputDataError, name_some
 from panelkit.preparation.step import SCALE, Learnt, number
-from panelkit.preparation.values import Values
+from panelkit.preparation.values import Values, middle
 from panelkit.records import RecipeContext
 
 __all__ = [
@@ -226,10 +226,10 @@ def ratio_medians(
     found = np.full(len(rows), np.nan)
     if not len(used):
         return found
+    known = reference[used]
     for at, block in values.samples(rows):
-        for i, ratio in zip(at, block[:, used] / reference[used], strict=True):
-            measured = ratio[~np.isnan(ratio)]
-            found[i] = np.median(measured) if len(measured) else np.nan
+        for i, counts in zip(at, block, strict=True):
+            found[i] = middle(counts[used] / known)
     return found
 
 
@@ -321,10 +321,17 @@ def upper_quantiles(
         NaN without a measured feature.
     """
     found = np.full(len(rows), np.nan)
+    chosen = np.flatnonzero(used)
     for at, block in values.samples(rows):
-        for i, counts in zip(at, block[:, used], strict=True):
-            measured = counts[~np.isnan(counts)]
-            found[i] = np.quantile(measured, quantile) if len(measured) else np.nan
+        for i, counts in zip(at, block, strict=True):
+            ascending = np.sort(counts[chosen]).astype(np.float64)
+            measured = int(np.isfinite(ascending).sum())
+            if measured:
+                place = quantile * (measured - 1)
+                low = int(place)
+                high = min(low + 1, measured - 1)
+                step = ascending[high] - ascending[low]
+                found[i] = ascending[low] + (place - low) * step
     return found
 
 
@@ -384,12 +391,22 @@ class UpperQuartile(_Sized):
 
 
 def _trimmed(values: NDArray[np.float64], share: float) -> NDArray[np.bool_]:
-    """Return which values stay when a share is cut off at both ends, by rank."""
-    from scipy.stats import rankdata  # scipy.stats is slow to import
+    """Return which values stay when a share is cut off at both ends, by mean rank.
 
-    cut = int(np.floor(share * len(values)))
-    rank = rankdata(values)
-    return np.asarray((rank >= cut + 1) & (rank <= len(values) - cut), np.bool_)
+    Only values equal to those at the two cuts need their mean rank.
+    """
+    count = len(values)
+    cut = int(np.floor(share * count))
+    ascending = np.sort(values)
+    low, high = ascending[cut], ascending[count - cut - 1]
+    stay = (values > low) & (values < high)
+    for border in {float(low), float(high)}:
+        first = int(np.searchsorted(ascending, border, "left"))
+        last = int(np.searchsorted(ascending, border, "right"))
+        rank = 0.5 * (first + 1 + last)
+        if cut + 1 <= rank <= count - cut:
+            stay |= values == border
+    return np.asarray(stay, np.bool_)
 
 
 def trimmed_mean_factor(
@@ -512,7 +529,7 @@ class TrimmedMean(_Sized):
         for at, block in values.samples(rows):
             for i, counts in zip(at, block, strict=True):
                 found[i] = trimmed_mean_factor(
-                    counts,
+                    counts.astype(np.float64),
                     reference,
                     (size[i], library_r),
                     self.ratio_trim,

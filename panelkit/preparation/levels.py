@@ -1,14 +1,14 @@
 """Steps that bring the whole of a sample to a frozen level."""
 
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import Any, ClassVar
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import InputDataError
 from panelkit.preparation.step import WHOLE, Learnt
-from panelkit.preparation.values import Values
+from panelkit.preparation.values import TILE, Values, middle
 from panelkit.records import RecipeContext
 
 __all__ = ["MedianDifference", "Quantile", "normalised_to"]
@@ -19,8 +19,23 @@ def _positions(count: int) -> NDArray[np.float64]:
     return (np.arange(count) + 0.5) / count
 
 
+def _order(sample: NDArray[np.floating[Any]]) -> NDArray[np.int64]:
+    """Return the places of a sample's values, ascending; missing ones come last.
+
+    Numbers of 32 bits are sorted together with their place, as one whole number, which
+    is several times as fast as sorting places.
+    """
+    if sample.dtype != np.float32:
+        return np.argsort(sample)
+    bits = np.where(np.isnan(sample), np.float32(np.inf), sample).view(np.int32)
+    rising = np.where(bits < 0, bits ^ np.int32(0x7FFFFFFF), bits).astype(np.int64)
+    key = (rising << 32) | np.arange(len(sample))
+    key.sort()
+    return key & 0xFFFFFFFF
+
+
 def normalised_to(
-    target: NDArray[np.float64], sample: NDArray[np.float64]
+    target: NDArray[np.float64], sample: NDArray[np.floating[Any]]
 ) -> NDArray[np.float64]:
     """Return a sample with its values replaced by those of a target of equal rank.
 
@@ -41,9 +56,8 @@ def normalised_to(
     ----------
     Bolstad et al. 2003, Bioinformatics 19:185.
     """
-    order = np.argsort(sample)  # missing values come last
     count = int(np.isfinite(sample).sum())
-    order = order[:count]
+    order = _order(sample)[:count]  # missing values come last
     if count < len(target):
         target = np.interp(_positions(count), _positions(len(target)), target)
     ascending = sample[order]
@@ -112,11 +126,11 @@ class Quantile:
         del context
         matrix = np.empty((values.n_features, values.n_samples), np.float32)
         for at, block in values.samples(np.arange(values.n_samples)):
-            done = np.array(
-                [normalised_to(learnt["target"], sample) for sample in block],
-                np.float32,
-            )
-            matrix[:, at[0] : at[-1] + 1] = done.T
+            for i in range(len(block)):
+                block[i] = normalised_to(learnt["target"], block[i])
+            for start in range(0, values.n_features, TILE):
+                here = slice(start, start + TILE)
+                matrix[here, at[0] : at[-1] + 1] = block[:, here].T
         return values.own(matrix)
 
     def needs(self, learnt: Learnt, markers: NDArray[np.int64]) -> NDArray[np.int64]:
@@ -159,14 +173,13 @@ class MedianDifference:
     def apply(self, values: Values, learnt: Learnt, context: RecipeContext) -> Values:
         """Return the values with a shift for each sample."""
         del context
-        used = np.isfinite(learnt["reference"])
+        used = np.flatnonzero(np.isfinite(learnt["reference"]))
         reference = learnt["reference"][used]
         shift = np.zeros((1, values.n_samples))
         for at, block in values.samples(np.arange(values.n_samples)):
             for i, sample in zip(at, block, strict=True):
-                difference = sample[used] - reference
-                measured = difference[np.isfinite(difference)]
-                shift[0, i] = -np.median(measured) if len(measured) else 0.0
+                median = middle(sample[used] - reference)
+                shift[0, i] = 0.0 if np.isnan(median) else -median
         return values.shifted(np.ones((values.n_features, 1)), shift)
 
     def needs(self, learnt: Learnt, markers: NDArray[np.int64]) -> NDArray[np.int64]:

@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["Values", "starting_values"]
+__all__ = ["Values", "middle", "starting_values"]
 
 TILE = 512  # features a tile: its float64 copy stays in a core's cache
 BLOCK = 16  # samples at a time, for steps that need the whole of a sample
@@ -100,7 +100,7 @@ class Values:
 
     def samples(
         self, rows: NDArray[np.int64]
-    ) -> Iterator[tuple[NDArray[np.int64], NDArray[np.float64]]]:
+    ) -> Iterator[tuple[NDArray[np.int64], NDArray[np.floating[Any]]]]:
         """Yield whole samples, a few at a time.
 
         Parameters
@@ -112,13 +112,17 @@ class Values:
         ------
         at : ndarray of int64
             Their positions in `rows`.
-        block : ndarray of shape (n_chosen, n_features), float64
-            C-contiguous, so that a sum over features has one order.
+        block : ndarray of shape (n_chosen, n_features)
+            C-contiguous, so that a sum over features has one order; of the type that
+            `part` gives.
         """
+        kind = np.float64 if self.left.shape[1] else self.matrix.dtype
         for start in range(0, len(rows), BLOCK):
             chosen = rows[start : start + BLOCK]
-            block = self.part(slice(None), chosen).astype(np.float64, copy=False)
-            yield np.arange(start, start + len(chosen)), np.ascontiguousarray(block.T)
+            block = np.empty((len(chosen), self.n_features), kind)
+            for here, tile in self.tiles(chosen):
+                block[:, here] = tile.T  # tile by tile: both sides stay in cache
+            yield np.arange(start, start + len(chosen)), block
 
     def own(self, matrix: NDArray[np.float32]) -> "Values":
         """Return the values with a matrix of the fold's own, shifts taken up in it."""
@@ -174,3 +178,16 @@ def starting_values(
         fill=np.full(n_features, np.nan),
         reasons=np.array(reasons, object),
     )
+
+
+def middle(values: NDArray[np.floating[Any]]) -> float:
+    """Return the median of what is not NaN; NaN without anything.
+
+    Sorted whole: on current processors that is faster than selecting.
+    """
+    ascending = np.sort(values)
+    count = int((~np.isnan(ascending)).sum())
+    if not count:
+        return float("nan")
+    low, high = ascending[(count - 1) // 2], ascending[count // 2]
+    return 0.5 * (float(low) + float(high))

@@ -7,6 +7,7 @@ memory of it; rnanorm 2.2.0 is a general library of count normalisations.
 
 import numpy as np
 import pytest
+from scipy.stats import rankdata
 
 from panelkit.errors import InputDataError
 from panelkit.preparation import Recipe
@@ -15,6 +16,7 @@ from panelkit.preparation.counts import (
     MedianOfRatios,
     TrimmedMean,
     UpperQuartile,
+    _trimmed,
     library_sizes,
     upper_quantiles,
 )
@@ -172,3 +174,14 @@ def test_negative_counts_are_refused(values_of, nothing):
     with pytest.raises(InputDataError) as caught:
         LogCpm().learn(values_of([[3, -1]]), np.arange(2), nothing)
     assert caught.value.code == "negative-count"
+
+
+@pytest.mark.parametrize("share", [0.0, 0.05, 0.3, 0.45])
+def test_trimming_is_by_mean_ranks(share):
+    """Whole numbers, so that cuts fall inside ties; `rankdata` gives mean ranks."""
+    rng = np.random.default_rng(int(100 * share))
+    for _ in range(50):
+        values = rng.integers(0, 6, rng.integers(1, 30)).astype(float)
+        rank, cut = rankdata(values), int(share * len(values))
+        expected = (rank >= cut + 1) & (rank <= len(values) - cut)
+        assert _trimmed(values, share).tolist() == expected.tolist()

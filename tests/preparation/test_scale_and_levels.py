@@ -82,3 +82,16 @@ def test_m_values_of_no_share_are_refused(wrong):
     with pytest.raises(InputDataError) as caught:
         MValues().change(np.array([[0.2, wrong]]))
     assert caught.value.code == "no-share"
+
+
+@pytest.mark.parametrize("seed", range(3))
+def test_both_ways_of_ordering_give_the_same(seed):
+    """Zeros of both signs, ties, infinities of neither, gaps."""
+    rng = np.random.default_rng(seed)
+    sample = rng.normal(0, 2, 300).round(1).astype(np.float32)
+    sample[rng.random(300) < 0.1] = np.nan
+    sample[:4] = [0.0, -0.0, 0.0, -np.nan]
+    target = np.sort(rng.normal(size=300))
+    narrow = normalised_to(target, sample)
+    wide = normalised_to(target, sample.astype(np.float64))
+    assert narrow.tobytes() == wide.tobytes()
