@@ -1,4 +1,7 @@
-"""Cost of a fold's preparation beside its fits: `preparation_jobs.py FILE [P [REPEATS]]`."""
+"""Cost of a fold's preparation beside its fits.
+
+Run as `preparation_jobs.py FILE [FEATURES [REPEATS]]`.
+"""
 
 import sys
 import time

@@ -2,7 +2,9 @@
 
 import numpy as np
 import pytest
+from scipy.stats import ttest_ind
 
+from panelkit import fit_paths
 from panelkit.errors import InputDataError
 from panelkit.preparation import Recipe, learn_covariates
 from panelkit.preparation.filter import Detection, intraclass_correlations
@@ -153,6 +155,32 @@ def test_centring_without_batches_is_refused():
     assert caught.value.code == "no-batches"
 
 
+def test_centring_without_the_outcome_is_cautious_and_never_flatters():
+    """Nygaard, Rodland & Hovig 2016, Biostatistics 17:29, as a simulation.
+
+    2,000 features without a difference, batches of 12 with classes (10, 2) and (2, 10),
+    batch shifts of standard deviation 1.5, 20 repeats. Worked out with a program of our
+    own: the share of p < 0.05 is 0.386 as it stands and 0.014 after centring without
+    the classes; a centring that protects the classes gives 0.152.
+    """
+    group = np.repeat([0, 1, 0, 1], [10, 2, 2, 10])
+    known = batches(np.repeat(["one", "two"], 12))
+    recipe, rows = Recipe(("batch-centre", "median-fill")), np.arange(24)
+    raw, centred = [], []
+    for seed in range(20):
+        rng = np.random.default_rng(seed)
+        values = rng.normal(size=(2000, 24))
+        values += np.repeat(rng.normal(0, 1.5, (2000, 2)), 12, axis=1)
+        state = recipe.learn(values, rows, free(2000), known)
+        done = recipe.apply(state, values, rows, known)
+        for found, each in ((raw, values), (centred, done)):
+            p = ttest_ind(each[:, group == 0], each[:, group == 1], axis=1).pvalue
+            found.append((p < 0.05).mean())
+    assert np.mean(raw) == pytest.approx(0.386, abs=0.02)
+    assert np.mean(centred) == pytest.approx(0.014, abs=0.02)
+    assert np.mean(centred) < 0.03
+
+
 # analytes
 
 PROBES = np.array(
@@ -230,6 +258,26 @@ def test_a_word_among_numbers_is_refused():
         coding.apply(wrong, np.arange(5))
     assert caught.value.code == "covariate-not-numeric"
     assert "old" in caught.value.what
+
+
+def test_coded_covariates_enter_a_fit_without_a_penalty():
+    """Both coded columns are in the model at the largest penalty already."""
+    rng = np.random.default_rng(3)
+    n = 60
+    age = rng.normal(60, 9, n).round()
+    sheet = {
+        "age": np.array([f"{value:.0f}" for value in age], object),
+        "sex": rng.choice(np.array(["f", "m"], object), n),
+    }
+    columns = learn_covariates(sheet, np.arange(n)).apply(sheet, np.arange(n))
+    outcome = (age + rng.normal(0, 9, n) > 60).astype(float)
+    noise = rng.normal(size=(n, 30))
+    plain = fit_paths(noise, outcome)
+    with_them = fit_paths(noise, outcome, unpenalised=columns)
+    assert with_them.penalties[0, 0] != pytest.approx(plain.penalties[0, 0], rel=1e-3)
+    other = learn_covariates(sheet, np.arange(n)).apply(sheet, np.arange(n)) * 7.0 + 1.0
+    scaled = fit_paths(noise, outcome, unpenalised=other)
+    assert scaled.penalties[0, 0] == pytest.approx(with_them.penalties[0, 0], rel=1e-5)
 
 
 def test_no_covariates_are_no_columns():
