@@ -19,6 +19,8 @@ __all__ = ["BatchCentre"]
 class BatchCentre:
     """Moves each batch's training mean to the training rows' mean, feature by feature.
 
+    A sample without a batch is in an unseen one.
+
     Neither the outcome nor held-out rows enter. With classes spread unevenly over
     batches, part of their difference is taken out with the batch; no later step can
     bring it back.
@@ -69,7 +71,7 @@ class BatchCentre:
             The cohort has no batches.
         """
         batch = _batches(context)[rows]
-        known = np.unique(batch)
+        known = np.unique(batch[batch != ""])
         left = np.zeros((values.n_features, len(known)))
         for here, tile in values.tiles(rows):
             each = tile.astype(np.float64)
@@ -93,7 +95,8 @@ class BatchCentre:
             raise InputDataError(
                 code="unseen-batch",
                 where="[preparation] discovery, step 'batch-centre'",
-                what=f"no training row belongs to batch {name_some(unseen)}",
+                what="no training row belongs to batch "
+                f"{name_some([repr(name) for name in unseen])}",
                 accepted="batches of the training rows, since unseen = 'refuse'",
                 next_step="Write unseen = 'grand-mean' to leave such batches as they "
                 "are",
@@ -117,7 +120,7 @@ def _batches(context: RecipeContext) -> NDArray[np.object_]:
             accepted="a column of the sample sheet under [cohort] batch",
             next_step="Name it, or take the step out of the recipe",
         )
-    return np.array([str(name) for name in context.batch], object)
+    return np.array(["" if b is None else str(b) for b in context.batch], object)
 
 
 def _means(values: NDArray[np.float64]) -> NDArray[np.float64]:
