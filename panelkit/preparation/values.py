@@ -51,7 +51,9 @@ class Values:
         return np.asarray(self.reasons == "", np.bool_)
 
     def part(
-        self, here: slice | NDArray[np.int64], rows: NDArray[np.int64] | None = None
+        self,
+        here: slice | NDArray[np.int64],
+        rows: slice | NDArray[np.int64] | None = None,
     ) -> NDArray[np.floating[Any]]:
         """Return some features on some samples, missing cells left missing.
 
@@ -59,7 +61,7 @@ class Values:
         ----------
         here : slice or ndarray of int64
             Features.
-        rows : ndarray of int64, optional
+        rows : slice or ndarray of int64, optional
             Samples; None for all.
 
         Returns
@@ -69,7 +71,10 @@ class Values:
         """
         values = self.matrix[here]
         # `take` keeps rows of features together, which `values[:, rows]` does not
-        values = values.copy() if rows is None else np.take(values, rows, axis=1)
+        if rows is None or isinstance(rows, slice):
+            values = values[:, slice(None) if rows is None else rows].copy()
+        else:
+            values = np.take(values, rows, axis=1)
         if self.left.shape[1]:
             values = values.astype(np.float64)
             right = self.right if rows is None else self.right[:, rows]
@@ -78,13 +83,13 @@ class Values:
         return values
 
     def tiles(
-        self, rows: NDArray[np.int64] | None = None
+        self, rows: slice | NDArray[np.int64] | None = None
     ) -> Iterator[tuple[slice, NDArray[np.floating[Any]]]]:
         """Yield all features, tile by tile.
 
         Parameters
         ----------
-        rows : ndarray of int64, optional
+        rows : slice or ndarray of int64, optional
             Samples; None for all.
 
         Yields
@@ -119,10 +124,15 @@ class Values:
         kind = np.float64 if self.left.shape[1] else self.matrix.dtype
         for start in range(0, len(rows), BLOCK):
             chosen = rows[start : start + BLOCK]
-            block = np.empty((len(chosen), self.n_features), kind)
-            for here, tile in self.tiles(chosen):
+            first, last = int(chosen.min()), int(chosen.max()) + 1
+            near = last - first <= 2 * len(chosen)  # cheaper to read than to pick out
+            read = slice(first, last) if near else chosen
+            count = last - first if near else len(chosen)
+            block = np.empty((count, self.n_features), kind)
+            for here, tile in self.tiles(read):
                 block[:, here] = tile.T  # tile by tile: both sides stay in cache
-            yield np.arange(start, start + len(chosen)), block
+            at = np.arange(start, start + len(chosen))
+            yield at, block[chosen - first] if near else block
 
     def own(self, matrix: NDArray[np.float32]) -> "Values":
         """Return the values with a matrix of the fold's own, shifts taken up in it."""

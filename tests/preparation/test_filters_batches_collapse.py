@@ -169,9 +169,9 @@ def test_centring_without_the_outcome_is_cautious_and_never_flatters():
     """Nygaard, Rodland & Hovig 2016, Biostatistics 17:29, as a simulation.
 
     2,000 features without a difference, batches of 12 with classes (10, 2) and (2, 10),
-    one batch shifted with standard deviation 1.5, 20 repeats. Worked out with a program of our
-    own: the share of p < 0.05 is 0.386 as it stands and 0.014 after centring without
-    the classes; a centring that protects the classes gives 0.152.
+    one batch shifted with standard deviation 1.5, 20 repeats. Worked out with a program
+    of our own: the share of p < 0.05 is 0.386 as it stands and 0.014 after centring
+    without the classes; a centring that protects the classes gives 0.152.
     """
     group = np.repeat([0, 1, 0, 1], [10, 2, 2, 10])
     known = batches(np.repeat(["one", "two"], 12))
