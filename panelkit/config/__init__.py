@@ -5,6 +5,7 @@ from panelkit.config.defaults import (
     ACCURACY,
     CHOICE,
     COHORT,
+    DESIGN,
     ENGINE,
     PANELS,
     PLATFORM,
@@ -13,7 +14,9 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
     STEPS,
+    DesignKind,
 )
+from panelkit.config.design import DesignSection, check_design, outcome_kind
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
     PlatformSection,
@@ -40,6 +43,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "FAMILY_PRESETS",
     "MINOR_DIGITS",
@@ -55,6 +59,8 @@ __all__ = [
     "AccuracySection",
     "ChoiceSection",
     "CohortSection",
+    "DesignKind",
+    "DesignSection",
     "PanelsSection",
     "PlatformSection",
     "PreparationSection",
@@ -62,6 +68,8 @@ __all__ = [
     "ShortlistSection",
     "StatementSection",
     "Study",
+    "check_design",
+    "outcome_kind",
     "platform_section",
     "programme_section",
     "read_platform_file",

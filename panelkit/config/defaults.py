@@ -13,6 +13,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "PANELS",
     "PLATFORM",
@@ -21,9 +22,12 @@ __all__ = [
     "SEED",
     "SHORTLIST",
     "STEPS",
+    "DesignKind",
 ]
 
 SEED: Final = 1
+
+DesignKind = Literal["cohort", "case-control", "matched"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -31,6 +35,11 @@ class _Cohort:
     orientation: Literal["auto", "samples-in-rows", "features-in-rows"] = "auto"
     max_bad_cells: int = 100
     """Non-numeric cells read as missing; more than these are an error."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Design:
+    kind: DesignKind = "cohort"
 
 
 @dataclass(frozen=True, slots=True)
@@ -150,6 +159,7 @@ class _Platform:
 
 
 COHORT: Final = _Cohort()
+DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
 STEPS: Final = _Steps()
 ENGINE: Final = _Engine()

@@ -2,7 +2,7 @@
 
 from panelkit.costing.choice import choose
 from panelkit.costing.comparators import compare
-from panelkit.costing.folds import draw_folds
+from panelkit.costing.folds import draw_folds, given_folds
 from panelkit.costing.frontier import Judge, build_frontier
 from panelkit.costing.honest_accuracy import (
     Draws,
@@ -47,6 +47,7 @@ __all__ = [
     "estimate_accuracy",
     "evidence_of",
     "format_money",
+    "given_folds",
     "maker_named",
     "programme_cost",
     "round_money",

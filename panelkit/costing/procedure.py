@@ -28,7 +28,7 @@ from panelkit.fits import (
     standardised,
 )
 from panelkit.preparation import DesignView, Recipe
-from panelkit.records import RecipeContext, Stability, SubsamplePlan
+from panelkit.records import FoldPlan, RecipeContext, Stability, SubsamplePlan
 from panelkit.stability import ShortlistRules, select_markers
 
 __all__ = ["Learnt", "Procedure", "ProcedureData", "Selected", "Split"]
@@ -58,6 +58,10 @@ class ProcedureData:
         What preparation may read beside the values.
     values : ndarray of shape (n_features, n_samples), or None
         As read, for an assay part; None where there is none.
+    blocks : ndarray of shape (n_samples,), int64, or None
+        What stays together in folds and halves; None for the subjects.
+    folds : FoldPlan or None
+        The user's own outer folds; None has them drawn.
     """
 
     base: NDArray[np.floating[Any]]
@@ -68,6 +72,13 @@ class ProcedureData:
     always: NDArray[np.int64]
     context: RecipeContext = NOTHING_KNOWN
     values: NDArray[np.floating[Any]] | None = None
+    blocks: NDArray[np.int64] | None = None
+    folds: FoldPlan | None = None
+
+    @property
+    def units(self) -> NDArray[np.int64]:
+        """What is drawn as a whole: `blocks`, or the subjects."""
+        return self.subjects if self.blocks is None else self.blocks
 
 
 @dataclass(frozen=True, slots=True, eq=False)

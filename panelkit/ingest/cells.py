@@ -168,7 +168,7 @@ class BadCells:
             count = counted(len(absurd), "cell holds", "cells hold")
             found.append(
                 Finding(
-                    code="value-absurd",
+                    code="value-beyond-range",
                     severity="warning",
                     where=self.where,
                     message=f"{count} a number beyond 3.4e38, the range of single "

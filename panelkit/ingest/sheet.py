@@ -14,7 +14,7 @@ from panelkit.ingest.source_file import file_kind
 from panelkit.ingest.wording import nearest_hint, quoted
 from panelkit.records import Finding
 
-__all__ = ["Sheet", "Text", "build_sheet", "read_sheet"]
+__all__ = ["Sheet", "Text", "build_sheet", "read_columns", "read_sheet"]
 
 Text = NDArray[np.object_]
 
@@ -94,6 +94,36 @@ def read_sheet(path: Path, id_column: str) -> Sheet:
         When the file is no text, has no rows, lines differ in length, ids are blank
         or repeated, or column names are repeated.
     """
+    header, texts, findings = read_columns(path, id_column)
+    return replace(build_sheet(path.name, header, texts, id_column), findings=findings)
+
+
+def read_columns(
+    path: Path, id_column: str
+) -> tuple[list[str], list[Text], tuple[Finding, ...]]:
+    """Return the columns of a CSV or TSV file, all as text, no id looked at.
+
+    Parameters
+    ----------
+    path : Path
+        Plain or compressed text with a header line.
+    id_column : str
+        Name of a first column that the header leaves out.
+
+    Returns
+    -------
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content.
+    findings : tuple of Finding
+        What was noticed about the file itself.
+
+    Raises
+    ------
+    InputDataError
+        When the file is no text, has no rows, or lines differ in length.
+    """
     if file_kind(path) != "delimited":
         raise InputDataError(
             code="wrong-file-kind",
@@ -104,7 +134,7 @@ def read_sheet(path: Path, id_column: str) -> Sheet:
         )
     header, rows, findings = read_rows(path, id_column)
     texts = list(np.array(rows, dtype=object).reshape(len(rows), len(header)).T)
-    return replace(build_sheet(path.name, header, texts, id_column), findings=findings)
+    return header, texts, findings
 
 
 def build_sheet(

@@ -7,7 +7,8 @@ from panelkit.records.accuracy import (
     OutOfFold,
     TunedChoice,
 )
-from panelkit.records.cohort import Cohort, Design, Outcome
+from panelkit.records.assays import AssayMap
+from panelkit.records.cohort import Cohort, Design, DesignKind
 from panelkit.records.findings import Dropped, Finding, Findings, Flow, Severity
 from panelkit.records.frontier import (
     Choice,
@@ -17,6 +18,8 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
+from panelkit.records.openings import Opening
+from panelkit.records.outcome import Outcome, OutcomeKind
 from panelkit.records.panel_cost import CostLine, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeContext, RecipeState, StepState
@@ -29,6 +32,7 @@ from panelkit.records.prices import (
 )
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
+from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -41,12 +45,14 @@ __all__ = [
     "ANY_MARKER",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
+    "AssayMap",
     "AssayPrice",
     "Choice",
     "Cohort",
     "Comparator",
     "CostLine",
     "Design",
+    "DesignKind",
     "Dropped",
     "ErrorBound",
     "Finding",
@@ -58,14 +64,18 @@ __all__ = [
     "FrontierRow",
     "Headline",
     "MatrixSource",
+    "Opening",
     "OutOfFold",
     "Outcome",
+    "OutcomeKind",
     "PanelCost",
     "PathSet",
     "PriceList",
     "RecipeContext",
     "RecipeState",
     "Record",
+    "ReplicateAgreement",
+    "Replicates",
     "RuleChoice",
     "RunRecord",
     "RunSummary",

@@ -16,7 +16,10 @@ LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
 
 
 def run_record(
-    study: Study, inputs: Mapping[str, str], steps: Mapping[str, Any]
+    study: Study,
+    inputs: Mapping[str, str],
+    steps: Mapping[str, Any],
+    openings: int = 0,
 ) -> RunRecord:
     """Return the record of a run.
 
@@ -28,6 +31,8 @@ def run_record(
         Role of each input file to its SHA-256.
     steps : mapping of str to object
         Discovery and assay part with every default written out.
+    openings : int
+        How often the rows that were set aside have been opened so far.
 
     Returns
     -------
@@ -45,6 +50,7 @@ def run_record(
             "python": platform.python_version(),
             **{name: version(name) for name in LIBRARIES},
         },
+        openings=openings,
     )
 
 

@@ -37,6 +37,7 @@ from panelkit.workflow.tables import (
     frontier_content,
     write_accuracy,
     write_data_tables,
+    write_replicates,
     write_results,
 )
 
@@ -133,6 +134,7 @@ def run_study(
         plan,
         {**(cohort.sources or {}), **known.price_hashes},
         preparation_tables(procedure.recipe, procedure.assay),
+        len(cohort.openings),
     )
     content = record_bytes(record)
     folder = RunFolder(Path(out))
@@ -142,9 +144,10 @@ def run_study(
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
-    findings = Findings((*cohort.findings, *known.size_findings))
+    findings = Findings((*cohort.findings, *known.size_findings)).ordered()
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
+    write_replicates(folder, cohort)
     inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()

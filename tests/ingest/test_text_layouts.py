@@ -268,13 +268,13 @@ def test_findings_of_files_reach_the_cohort(small):
 def test_numbers_beyond_single_precision_are_named(tmp_path):
     text = "id,a,b\nS1,1e300,2\nS2,-3.5e38,4\nS3,3.4e38,1e-300\n"
     cohort = read_cohort(written(tmp_path, text))
-    [finding] = [each for each in cohort.findings if each.code == "value-absurd"]
+    [finding] = [each for each in cohort.findings if each.code == "value-beyond-range"]
     assert "2 cells hold" in finding.message
     assert "row 'S1', column 'a': '1e300'" in finding.message
     assert np.isnan(cohort.X[:2, 0]).all()
     assert cohort.X[2].tolist() == [3.4e38, 1e-300]
     frame = pd.DataFrame([[1e300, 2.0], [3.0, 4.0]], ["S1", "S2"], ["a", "b"])
-    assert "value-absurd" in codes(read_cohort(frame))
+    assert "value-beyond-range" in codes(read_cohort(frame))
 
 
 @pytest.mark.parametrize("sep", [",", ";", "\t"])
