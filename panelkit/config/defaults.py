@@ -98,6 +98,14 @@ class _Shortlist:
     subsamples: int = 100
     threshold: float = 0.75
     false_markers: float = 1.0
+    bound: Literal["worst-case", "unimodal", "r-concave"] = "worst-case"
+    selector: Literal["lasso", "elastic-net", "univariate"] = "lasso"
+    l1_share: float = 0.5
+    """Share of the L1 part of the elastic net."""
+    stratify_by_site: bool = False
+    shuffles: int = 50
+    precision: float = 0.1
+    """Half width of a frequency's interval from which subsamples are enough."""
     candidates: int = 25
     n_penalties: int = 40
     penalty_floor: float = 0.1

@@ -6,7 +6,7 @@ from decimal import Decimal
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-from pydantic import BeforeValidator, Field
+from pydantic import BeforeValidator, Field, model_validator
 
 from panelkit.config.defaults import (
     ACCURACY,
@@ -219,40 +219,83 @@ class PreparationSection(Section):
 class ShortlistSection(Section):
     """``[shortlist]``: stability selection.
 
+    Of threshold, false_markers and markers_per_subsample two are given and the third
+    follows; where fewer are given, the defaults of the first two stand in.
+
     Attributes
     ----------
     subsamples : int
-        Halves in all, an even number: complementary pairs.
-    threshold : float
+        Halves in all, an even number: complementary pairs. Fixed before the first fit.
+    threshold : float or None
         Selection frequency from which a feature is shortlisted.
-    false_markers : float
+    false_markers : float or None
         Tolerated expected number of low-chance features in the shortlist.
     markers_per_subsample : int or None
-        Given: the bound on false markers follows from it.
+        How many features each subsample may pick.
+    bound : str
+        The bound that decides: worst-case, unimodal, or r-concave (from threshold
+        0.6); the first two are always shown.
+    selector : str
+        What picks in a subsample: lasso, elastic-net, or univariate (the largest test
+        statistics).
+    l1_share : float
+        Share of the L1 part of the elastic net.
+    stratify_by_site : bool
+        Each half gets its share of every site.
     candidates : int
         Companion groups, and univariate features, that panels may be built from.
+    candidates_on : str or None
+        A platform: candidates are features that can be assayed there.
     always, never : tuple of str
         Features that are candidates whatever happens; features never used.
     companion_correlation : float
         Smallest absolute correlation of companions.
+    shuffles : int
+        Shuffles of the people that `panelkit shortlist` compares with, 0 for none;
+        from 1,000 every feature gets a p-value.
+    precision : float
+        Half width of a frequency's interval from which subsamples count as enough.
     n_penalties, penalty_floor : int, float
         Penalties of each path, and the last one relative to the largest.
     """
 
     subsamples: int = Field(default=SHORTLIST.subsamples, ge=4, le=100_000)
-    threshold: Annotated[float, Field(gt=0.5, le=1), BeforeValidator(plain_number)] = (
-        SHORTLIST.threshold
-    )
-    false_markers: Annotated[float, Field(gt=0), BeforeValidator(plain_number)] = (
-        SHORTLIST.false_markers
-    )
+    threshold: (
+        Annotated[float, Field(gt=0.5, le=1), BeforeValidator(plain_number)] | None
+    ) = SHORTLIST.threshold
+    false_markers: (
+        Annotated[float, Field(gt=0), BeforeValidator(plain_number)] | None
+    ) = SHORTLIST.false_markers
     markers_per_subsample: Size | None = None
+    bound: Literal["worst-case", "unimodal", "r-concave"] = SHORTLIST.bound
+    selector: Literal["lasso", "elastic-net", "univariate"] = SHORTLIST.selector
+    l1_share: Annotated[float, Field(gt=0, le=1), BeforeValidator(plain_number)] = (
+        SHORTLIST.l1_share
+    )
+    stratify_by_site: bool = SHORTLIST.stratify_by_site
     candidates: int = Field(default=SHORTLIST.candidates, ge=1, le=1000)
+    candidates_on: str | None = None
     always: tuple[str, ...] = ()
     never: tuple[str, ...] = ()
     companion_correlation: Share = SHORTLIST.companion_correlation
+    shuffles: int = Field(default=SHORTLIST.shuffles, ge=0, le=1_000_000)
+    precision: Share = SHORTLIST.precision
     n_penalties: int = Field(default=SHORTLIST.n_penalties, ge=2, le=1000)
     penalty_floor: Share = SHORTLIST.penalty_floor
+
+    @model_validator(mode="before")
+    @classmethod
+    def _two_of_three(cls, values: object) -> object:
+        """Make the figure that follows None, so that equal demands are equal."""
+        if not isinstance(values, dict) or "markers_per_subsample" not in values:
+            return values
+        if {"threshold", "false_markers"} <= values.keys():
+            raise ValueError(
+                "two of threshold, false_markers and markers_per_subsample, the third "
+                "follows"
+            )
+        follows = "threshold" if "false_markers" in values else "false_markers"
+        return {**values, follows: None}
 
 
 class PanelsSection(Section):

@@ -123,6 +123,7 @@ def draw_everything(
             y,
             subsamples // 2,
             generator(seed, "subsamples", *place),
+            site=data.pair_site,
         )
         return Split(training, test, pairs, inner)
 
@@ -155,7 +156,9 @@ def _inner_splits(
     for fold in range(n_inner):
         teach, test = (training[rows] for rows in plan.split(0, fold))
         draws = generator(seed, "inner-subsamples", *place, fold)
-        pairs = draw_pairs(teach, data.units, data.y, n_pairs, draws)
+        pairs = draw_pairs(
+            teach, data.units, data.y, n_pairs, draws, site=data.pair_site
+        )
         splits.append(Split(teach, test, pairs))
     return tuple(splits)
 

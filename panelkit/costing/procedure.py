@@ -62,6 +62,10 @@ class ProcedureData:
         What stays together in folds and halves; None for the subjects.
     folds : FoldPlan or None
         The user's own outer folds; None has them drawn.
+    allowed : ndarray of shape (n_features,), bool, or None
+        Features that may be candidates; None for all.
+    pair_site : ndarray of shape (n_samples,), object, or None
+        Site by which halves are stratified.
     """
 
     base: NDArray[np.floating[Any]]
@@ -74,6 +78,8 @@ class ProcedureData:
     values: NDArray[np.floating[Any]] | None = None
     blocks: NDArray[np.int64] | None = None
     folds: FoldPlan | None = None
+    allowed: NDArray[np.bool_] | None = None
+    pair_site: NDArray[np.object_] | None = None
 
     @property
     def units(self) -> NDArray[np.int64]:
@@ -254,6 +260,7 @@ class Procedure:
             self.rules,
             always=data.always,
             threads=threads,
+            allowed=data.allowed,
         )
         evidence = evidence_of(stability)
         panels = [

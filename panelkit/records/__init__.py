@@ -33,11 +33,20 @@ from panelkit.records.prices import (
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
 from panelkit.records.replicates import ReplicateAgreement, Replicates
+from panelkit.records.shortlist_results import ShortlistResults
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
     Stability,
     SubsamplePlan,
+)
+from panelkit.records.stability_details import (
+    Agreement,
+    Companions,
+    Convergence,
+    NullShortlist,
+    PathFrequencies,
+    SelectorResult,
 )
 from panelkit.records.summary import RESEARCH_USE, RunSummary
 
@@ -45,11 +54,14 @@ __all__ = [
     "ANY_MARKER",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
+    "Agreement",
     "AssayMap",
     "AssayPrice",
     "Choice",
     "Cohort",
+    "Companions",
     "Comparator",
+    "Convergence",
     "CostLine",
     "Design",
     "DesignKind",
@@ -64,11 +76,13 @@ __all__ = [
     "FrontierRow",
     "Headline",
     "MatrixSource",
+    "NullShortlist",
     "Opening",
     "OutOfFold",
     "Outcome",
     "OutcomeKind",
     "PanelCost",
+    "PathFrequencies",
     "PathSet",
     "PriceList",
     "RecipeContext",
@@ -79,7 +93,9 @@ __all__ = [
     "RuleChoice",
     "RunRecord",
     "RunSummary",
+    "SelectorResult",
     "Severity",
+    "ShortlistResults",
     "ShortlistTable",
     "Stability",
     "StepState",

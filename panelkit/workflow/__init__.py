@@ -4,12 +4,20 @@ from panelkit.workflow.check import check_study
 from panelkit.workflow.draft import draft_study
 from panelkit.workflow.run import Run, run_content, run_study
 from panelkit.workflow.set_aside import open_set_aside
+from panelkit.workflow.shortlist_run import (
+    ShortlistRun,
+    run_shortlist,
+    shortlist_content,
+)
 
 __all__ = [
     "Run",
+    "ShortlistRun",
     "check_study",
     "draft_study",
     "open_set_aside",
     "run_content",
+    "run_shortlist",
     "run_study",
+    "shortlist_content",
 ]

@@ -1,5 +1,8 @@
 """What is repeated in every fold, as a study asks for it."""
 
+import numpy as np
+from numpy.typing import NDArray
+
 from panelkit.config import Study
 from panelkit.costing import (
     Draws,
@@ -13,6 +16,7 @@ from panelkit.errors import InputDataError, StudyFileError
 from panelkit.records import Cohort, Finding
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.marker_facts import allowed_candidates
 from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
 __all__ = ["draws_of", "procedure_of"]
@@ -65,6 +69,9 @@ def procedure_of(
         threshold=section.threshold,
         false_markers=section.false_markers,
         markers_per_subsample=section.markers_per_subsample,
+        bound=section.bound,
+        selector=section.selector,
+        l1_share=section.l1_share,
         candidates=section.candidates,
         companion_correlation=section.companion_correlation,
         n_penalties=section.n_penalties,
@@ -96,8 +103,11 @@ def procedure_of(
         values=None if assay is None else cohort.values,
         blocks=cohort.design.blocks,
         folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
+        allowed=allowed_candidates(plan, cohort),
+        pair_site=_pair_site(plan, cohort),
     )
-    usable = min(section.candidates, int((barred == "").sum()))
+    free = (barred == "") & (True if data.allowed is None else data.allowed)
+    usable = min(section.candidates, int(free.sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
     if not sizes and usable:  # without any feature a finding has said so
         raise StudyFileError(
@@ -122,6 +132,27 @@ def procedure_of(
         )
     procedure = Procedure(recipe, rules, plan.panels.makers, sizes, assay=assay)
     return procedure, data, finding
+
+
+def _pair_site(plan: Study, cohort: Cohort) -> NDArray[np.object_] | None:
+    """Return the sites by which halves are stratified, None where they are not.
+
+    Raises
+    ------
+    StudyFileError
+        Sites are asked for and none are named.
+    """
+    if not plan.shortlist.stratify_by_site:
+        return None
+    if cohort.design.site is None:
+        raise StudyFileError(
+            code="site-missing",
+            where=f"{plan.path}, [shortlist], key 'stratify_by_site'",
+            what="the study names no site",
+            accepted="a column of the sample sheet as [cohort] site",
+            next_step="Name it, or take the key out",
+        )
+    return cohort.design.site
 
 
 def draws_of(plan: Study, data: ProcedureData) -> Draws:

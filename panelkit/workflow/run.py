@@ -10,18 +10,10 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
 from panelkit.config import Study, read_study
-from panelkit.costing import (
-    Selected,
-    choose_for_everyone,
-    estimate_accuracy,
-)
+from panelkit.costing import choose_for_everyone, estimate_accuracy
 from panelkit.records import (
     RESEARCH_USE,
-    Cohort,
-    Dropped,
     Findings,
     RunSummary,
 )
@@ -31,7 +23,7 @@ from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
 from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import record_bytes, run_record
-from panelkit.workflow.summary import summarise
+from panelkit.workflow.summary import left_out, summarise
 from panelkit.workflow.tables import (
     choice_content,
     frontier_content,
@@ -145,7 +137,7 @@ def run_study(
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
     findings = Findings((*cohort.findings, *known.size_findings)).ordered()
-    dropped = [*cohort.dropped, *_left_out(cohort, selected)]
+    dropped = [*cohort.dropped, *left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
     write_replicates(folder, cohort)
     inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
@@ -203,11 +195,3 @@ def run_content(run: Run) -> dict[str, Any]:
         "report": str(run.path / "report.html"),
         "research_use": RESEARCH_USE,
     }
-
-
-def _left_out(cohort: Cohort, selected: Selected) -> list[Dropped]:
-    reasons = selected.view.state.reasons
-    return [
-        Dropped("feature", str(cohort.features[j]), "preparation", str(reasons[j]))
-        for j in np.flatnonzero(reasons != "")
-    ]

@@ -8,6 +8,7 @@ from panelkit.costing import ProcedureData, Selected
 from panelkit.fits import rank_univariate
 from panelkit.metrics import auc
 from panelkit.records import ShortlistTable
+from panelkit.workflow.marker_facts import MarkerFacts
 
 __all__ = ["shortlist_table"]
 
@@ -17,6 +18,7 @@ def shortlist_table(
     selected: Selected,
     features: NDArray[np.object_],
     confidence: float,
+    facts: MarkerFacts,
 ) -> ShortlistTable:
     """Return every feature that was ever picked or is a candidate, best first.
 
@@ -30,6 +32,8 @@ def shortlist_table(
         Feature ids.
     confidence : float
         Of the interval of the difference.
+    facts : MarkerFacts
+        Symbols, assays, limits, replicates.
 
     Returns
     -------
@@ -54,7 +58,6 @@ def shortlist_table(
     )
     shown = shown[order]
     values = selected.view.columns(shown, rows)
-    share = data.weights / data.weights.sum()
     difference = ranked.means[shown, 1] - ranked.means[shown, 0]
     half = _half_width(data, ranked.variances[shown], confidence)
     higher = difference > 0.0
@@ -75,12 +78,16 @@ def shortlist_table(
         ),
         picked=picked[shown],
         candidate=candidate[shown],
-        mean_level=(values * share).sum(axis=1),
+        mean_level=values.mean(axis=1),
         difference=difference,
         difference_low=difference - half,
         difference_high=difference + half,
         single_marker_auc=np.where(higher, area, 1.0 - area),
         missing_share=np.isnan(data.base[shown]).mean(axis=1),
+        below_limit_share=facts.below_limit_share[shown],
+        replicate_icc=facts.replicate_icc[shown],
+        symbol=facts.symbol[shown],
+        assayable=facts.assayable[shown],
     )
 
 

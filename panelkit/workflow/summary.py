@@ -1,5 +1,7 @@
 """A run's results as the report and the terminal show them."""
 
+import numpy as np
+
 from panelkit.config import Study
 from panelkit.costing import (
     Draws,
@@ -13,10 +15,11 @@ from panelkit.costing import (
     choose,
     compare,
 )
-from panelkit.records import Cohort, Findings, PanelCost, RunRecord, RunSummary
+from panelkit.records import Cohort, Dropped, Findings, PanelCost, RunRecord, RunSummary
+from panelkit.workflow.marker_facts import marker_facts
 from panelkit.workflow.shortlist import shortlist_table
 
-__all__ = ["summarise"]
+__all__ = ["left_out", "outcome_words", "summarise"]
 
 
 def summarise(  # noqa: PLR0913 - everything that a report shows comes together here
@@ -58,7 +61,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
     n_included = int(selected.view.included.sum())
     return RunSummary(
         study=plan.path.name,
-        outcome=_outcome_words(cohort),
+        outcome=outcome_words(cohort),
         n_samples=cohort.n_samples,
         n_subjects=cohort.design.n_subjects,
         n_features=cohort.n_features,
@@ -68,7 +71,13 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         findings=findings,
         flow=cohort.flow,
         bound=selected.stability.bound,
-        shortlist=shortlist_table(data, selected, cohort.features, confidence),
+        shortlist=shortlist_table(
+            data,
+            selected,
+            cohort.features,
+            confidence,
+            marker_facts(plan, cohort),
+        ),
         frontier=frontier,
         choice=choice,
         comparators=compare(accuracy, judge, n_included),
@@ -83,7 +92,17 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
     )
 
 
-def _outcome_words(cohort: Cohort) -> str:
+def left_out(cohort: Cohort, selected: Selected) -> list[Dropped]:
+    """Return the features that the preparation left out, with the reasons."""
+    reasons = selected.view.state.reasons
+    return [
+        Dropped("feature", str(cohort.features[j]), "preparation", str(reasons[j]))
+        for j in np.flatnonzero(reasons != "")
+    ]
+
+
+def outcome_words(cohort: Cohort) -> str:
+    """Return column, classes and their sizes."""
     outcome = cohort.outcome
     if outcome is None:
         return ""

@@ -27,10 +27,12 @@ from panelkit.runtime import RunFolder
 __all__ = [
     "choice_content",
     "frontier_content",
+    "plain",
     "write_accuracy",
     "write_data_tables",
     "write_replicates",
     "write_results",
+    "write_shortlist",
 ]
 
 
@@ -179,7 +181,7 @@ def write_results(folder: RunFolder, summary: RunSummary) -> None:
     RunFolderError
         A file cannot be written.
     """
-    _write_shortlist(folder, summary.shortlist)
+    write_shortlist(folder, summary.shortlist)
     _write_frontier(folder, summary.frontier)
     folder.table(
         "comparators.csv",
@@ -199,7 +201,14 @@ def write_results(folder: RunFolder, summary: RunSummary) -> None:
     folder.json("choice.json", choice_content(summary.choice))
 
 
-def _write_shortlist(folder: RunFolder, table: ShortlistTable) -> None:
+def write_shortlist(folder: RunFolder, table: ShortlistTable) -> None:
+    """Write ``shortlist.csv``.
+
+    Raises
+    ------
+    RunFolderError
+        The file cannot be written.
+    """
     names = _names(ShortlistTable)
     columns = [getattr(table, name) for name in names]
     folder.table("shortlist.csv", names, zip(*columns, strict=True))

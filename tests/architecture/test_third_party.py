@@ -27,7 +27,7 @@ OWNERS = {
         "metrics/*": "distributions of test statistics",
         "preparation/*": "no other package of ours has them",
         "sizing/*": "distributions",
-        "stability/*": "hierarchical clustering of companions",
+        "stability/*": "clustering of companions, their ranks",
         "workflow/shortlist.py": "Student's quantile of the marker table",
     },
     "sklearn": {

@@ -92,7 +92,9 @@ def replicate_agreement():
 
 
 def bound():
-    return records.ErrorBound(0.75, 3, 2.5, N_FEATURES, 0.8)
+    return records.ErrorBound(
+        0.75, 3, 2.5, N_FEATURES, 0.8, 0.4, np.nan, "worst-case", 2, 0.5
+    )
 
 
 def stability():
@@ -100,6 +102,7 @@ def stability():
         frequency=floats(N_FEATURES),
         low=floats(N_FEATURES),
         high=floats(N_FEATURES),
+        simultaneous=floats(N_FEATURES),
         positive_share=floats(N_FEATURES),
         picks=(whole(2), whole(1)),
         bound=bound(),
@@ -118,9 +121,66 @@ def shortlist_table():
         "group": whole(2),
         "picked": np.array([True, False]),
         "candidate": np.array([True, True]),
+        "symbol": objects("", "ABL1"),
+        "assayable": objects("wells", ""),
     }
     names = records.ShortlistTable.__dataclass_fields__
     return records.ShortlistTable(**{n: kinds.get(n, floats(2)) for n in names})
+
+
+def agreement():
+    return records.Agreement(0.4, 0.3, 0.5, np.nan, 0.2, 4)
+
+
+def convergence():
+    return records.Convergence(
+        whole(2) + 1, whole(1), floats(2, 1), whole(2), whole(1), 0.75, 0.1, 0.1, 72
+    )
+
+
+def path_frequencies():
+    return records.PathFrequencies(
+        np.array([1.0, 0.5]), whole(2), floats(2, 2), floats(2), floats(2)
+    )
+
+
+def companions():
+    return records.Companions(
+        *(whole(2) for _ in range(3)),
+        *(floats(2) for _ in range(5)),
+        np.array([True, False]),
+    )
+
+
+def null_shortlist():
+    return records.NullShortlist(
+        whole(4), floats(4), floats(4), 1, 0.9, 0.9, 0.2, 0.2, 0.2,
+        floats(N_FEATURES), floats(N_FEATURES), floats(N_FEATURES),
+    )  # fmt: skip
+
+
+def selector_result():
+    return records.SelectorResult("lasso", bound(), whole(1), 0, 0.9, agreement())
+
+
+def shortlist_results():
+    return records.ShortlistResults(
+        study="study.toml",
+        outcome="response: yes against no",
+        n_samples=N_SAMPLES,
+        n_subjects=3,
+        features=cohort().features,
+        n_candidates_asked=2,
+        findings=findings(),
+        bound=bound(),
+        shortlist=shortlist_table(),
+        paths=path_frequencies(),
+        convergence=convergence(),
+        companions=companions(),
+        null=null_shortlist(),
+        selectors=(selector_result(),),
+        agreement=agreement(),
+    )
 
 
 def frontier_row(maker="frequency", size=2):
@@ -244,10 +304,13 @@ MADE = {
     "AssayMap": lambda: records.AssayMap(
         objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
     ),
+    "Agreement": agreement,
     "AssayPrice": assay,
     "Choice": choice,
     "Cohort": cohort,
     "Comparator": comparator,
+    "Companions": companions,
+    "Convergence": convergence,
     "CostLine": lambda: panel_cost().lines[0],
     "Design": design,
     "Dropped": lambda: cohort().dropped[0],
@@ -263,9 +326,11 @@ MADE = {
     "FrontierRow": frontier_row,
     "Headline": headline,
     "Opening": lambda: records.Opening.of(["S1"], "the panel is locked"),
+    "NullShortlist": null_shortlist,
     "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
     "Outcome": outcome,
     "PanelCost": panel_cost,
+    "PathFrequencies": path_frequencies,
     "PathSet": path_set,
     "PriceList": lambda: records.PriceList((assay(),), findings()),
     "RecipeContext": lambda: records.RecipeContext(
@@ -281,6 +346,8 @@ MADE = {
         1, "0.1.0", {"seed": 1}, {"samples": "0" * 64}, {"python": "3.11"}
     ),
     "RunSummary": run_summary,
+    "SelectorResult": selector_result,
+    "ShortlistResults": shortlist_results,
     "ShortlistTable": shortlist_table,
     "Stability": stability,
     "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
