@@ -8,6 +8,22 @@ from panelkit.records.accuracy import (
     TunedChoice,
 )
 from panelkit.records.cohort import Cohort, Design, Outcome
+from panelkit.records.conflicts import (
+    CONFLICT_COLUMNS,
+    NO_CONFLICTS,
+    Conflict,
+    Conflicts,
+)
+from panelkit.records.cost_answers import (
+    BreakEven,
+    Crossing,
+    Driver,
+    PriceQuestion,
+    Spares,
+    SplitCost,
+    Stair,
+    StepDown,
+)
 from panelkit.records.findings import Dropped, Finding, Findings, Flow, Severity
 from panelkit.records.frontier import (
     Choice,
@@ -17,7 +33,7 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
-from panelkit.records.panel_cost import CostLine, PanelCost
+from panelkit.records.panel_cost import CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeState
 from panelkit.records.prices import (
@@ -39,14 +55,21 @@ from panelkit.records.summary import RESEARCH_USE, RunSummary
 
 __all__ = [
     "ANY_MARKER",
+    "CONFLICT_COLUMNS",
+    "NO_CONFLICTS",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
     "AssayPrice",
+    "BreakEven",
     "Choice",
     "Cohort",
     "Comparator",
+    "Conflict",
+    "Conflicts",
     "CostLine",
+    "Crossing",
     "Design",
+    "Driver",
     "Dropped",
     "ErrorBound",
     "Finding",
@@ -57,12 +80,14 @@ __all__ = [
     "Frontier",
     "FrontierRow",
     "Headline",
+    "KitPurchase",
     "MatrixSource",
     "OutOfFold",
     "Outcome",
     "PanelCost",
     "PathSet",
     "PriceList",
+    "PriceQuestion",
     "RecipeState",
     "Record",
     "RuleChoice",
@@ -70,7 +95,11 @@ __all__ = [
     "RunSummary",
     "Severity",
     "ShortlistTable",
+    "Spares",
+    "SplitCost",
     "Stability",
+    "Stair",
+    "StepDown",
     "SubsamplePlan",
     "TunedChoice",
     "check_price_columns",

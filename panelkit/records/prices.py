@@ -38,6 +38,8 @@ PRICE_COLUMNS: Final = (
     "tiers",
     "slots",
     "class",
+    "channel",
+    "design_success",
     "fail_rate",
     "cv_pct",
     "concordance",
@@ -83,6 +85,11 @@ class AssayPrice(Record):
         Plex slots that the assay occupies.
     pool_class : str
         Assays of different class cannot share a pool.
+    channel : str
+        Detection channel that the assay is tied to; assays of one channel cannot
+        share a pool.
+    design_success : Decimal or None
+        Chance that the assay works once it is ordered; None takes the platform's.
     fail_rate : Decimal
         Chance that this assay forces a repeat.
     cv_pct : Decimal or None
@@ -109,6 +116,8 @@ class AssayPrice(Record):
     incremental: bool = False
     slots: int = 1
     pool_class: str = ""
+    channel: str = ""
+    design_success: Decimal | None = None
     fail_rate: Decimal = Decimal(0)
     cv_pct: Decimal | None = None
     concordance: Decimal | None = None
@@ -166,6 +175,8 @@ class AssayPrice(Record):
             incremental=incremental,
             slots=1 if slots is None else slots,
             pool_class=cells.text("class"),
+            channel=cells.text("channel"),
+            design_success=cells.chance("design_success"),
             fail_rate=cells.rate("fail_rate"),
             cv_pct=cells.amount("cv_pct"),
             concordance=cells.correlation("concordance"),
@@ -290,6 +301,18 @@ class _Cells:
                 next_step="Write the rate as a fraction",
             )
         return Decimal(0) if value is None else value
+
+    def chance(self, name: str) -> Decimal | None:
+        value = self.amount(name)
+        if value is not None and not 0 < value <= 1:
+            raise InputDataError(
+                code="chance-refused",
+                where=self.where(name),
+                what=f"the cell is no chance of success (got {value})",
+                accepted="a number above 0, up to 1 (90 % is 0.9), or an empty cell",
+                next_step="Correct the cell",
+            )
+        return value
 
     def correlation(self, name: str) -> Decimal | None:
         value = self.amount(name)
