@@ -17,6 +17,7 @@ __all__ = ["main"]
 COMMANDS: Final = {
     "draft": "Write a commented study file by looking at the data.",
     "check": "Read the data of a study and say what was noticed.",
+    "price": "Price marker lists on platforms; needs no expression data.",
     "run": "Run the whole job: priced panels with honest accuracy.",
 }
 

@@ -25,6 +25,7 @@ from panelkit.config.programme import (
     read_platform_file,
     read_programme_file,
 )
+from panelkit.config.sections import read_toml
 from panelkit.config.study import (
     AccuracySection,
     ChoiceSection,
@@ -73,5 +74,6 @@ __all__ = [
     "read_platform_file",
     "read_programme_file",
     "read_study",
+    "read_toml",
     "study_text",
 ]

@@ -17,6 +17,7 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
 )
+from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.programme import (
     PlatformSection,
     ProgrammeSection,
@@ -194,6 +195,8 @@ class PanelsSection(Section):
         Price list (CSV).
     platforms : tuple of str
         Platform files (TOML), beside any ``[platform.NAME]`` of the study file.
+    conflicts : str or None
+        Pairs of markers that must be kept apart (CSV).
     """
 
     sizes: Annotated[tuple[Size, ...], BeforeValidator(_ascending)] = Field(
@@ -202,6 +205,7 @@ class PanelsSection(Section):
     makers: tuple[str, ...] = Field(default=PANELS.makers, min_length=1)
     prices: str | None = None
     platforms: tuple[str, ...] = ()
+    conflicts: str | None = None
 
 
 class AccuracySection(Section):
@@ -293,6 +297,8 @@ class Study:
         None: nothing is priced.
     platforms : mapping of str to PlatformSection
         From the study file and from platform files.
+    kits : tuple of KitSection
+        From the same files.
     """
 
     path: Path
@@ -306,6 +312,7 @@ class Study:
     statement: StatementSection
     programme: ProgrammeSection | None
     platforms: Mapping[str, PlatformSection]
+    kits: tuple[KitSection, ...] = ()
 
     def file(self, name: str) -> Path:
         """Return the path of a file that the study names."""
@@ -324,7 +331,7 @@ class Study:
         for name in ("expression", "samples", "features"):
             cohort.pop(name)
         tables["cohort"] = cohort
-        for name in ("prices", "platforms"):
+        for name in ("prices", "platforms", "conflicts"):
             tables["panels"].pop(name)
         if self.programme is None:
             return tables
@@ -335,6 +342,8 @@ class Study:
             # where it comes from does not matter to results, its value does
             rate = platform.effective_repeat_rate(self.programme)
             tables["platform"][name] = values | {"repeat_rate": str(rate)}
+        if self.kits:
+            tables["kit"] = [kit.model_dump(mode="json") for kit in self.kits]
         return tables
 
 
@@ -348,7 +357,7 @@ PLAIN_SECTIONS: dict[str, type[Section]] = {
     "choice": ChoiceSection,
     "statement": StatementSection,
 }
-_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
+_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform", "kit")
 
 
 def read_study(path: str | Path) -> Study:
@@ -404,6 +413,7 @@ def read_study(path: str | Path) -> Study:
         seed=seed,
         programme=programme,
         platforms=_platforms(Path(path), tables, sections["panels"]),
+        kits=_kits(Path(path), tables, sections["panels"]),
         **sections,
     )
     _check_pricing(study)
@@ -466,6 +476,19 @@ def _platforms(
                 )
             platforms[key] = section
     return platforms
+
+
+def _kits(
+    path: Path, tables: Mapping[str, Any], panels: PanelsSection
+) -> tuple[KitSection, ...]:
+    """Return the kits of the study file and of the files that it names."""
+    own = tables.get("kit", [])
+    if not isinstance(own, list):
+        refuse_key("kit", ["[[kit]]"], str(path))
+    kits = list(kit_sections(own, f"{path}, [[kit]]"))
+    for name in panels.platforms:
+        kits += read_kits(path.parent / name)
+    return kit_sections(kits, f"{path} and its platform files")
 
 
 def _check_pricing(study: Study) -> None:

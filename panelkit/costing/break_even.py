@@ -28,6 +28,7 @@ __all__ = [
 ]
 
 FINER: Final = 4  # digits that a unit price may have beyond the minor unit
+N_DRAWN: Final = 60
 HIGHEST_PRICE: Final = 10**9
 
 
@@ -38,46 +39,88 @@ def break_even_volume(
 ) -> BreakEven:
     """Return at which numbers of samples the cheaper scenario changes (F18).
 
-    True costs go in steps and cross several times, so every number is priced.
+    True costs go in steps and cross several times. No crossing is missed: totals do
+    not fall when samples are added, so where one scenario costs less at the end of a
+    stretch than the other at its beginning it is the cheaper one throughout, and every
+    other stretch is halved down to single samples.
 
     Parameters
     ----------
     total_a, total_b : callable
-        From the number of samples to the total; None where it cannot be run.
+        From the number of samples to the total, not falling; None where it cannot be
+        run.
     largest : int
-        Numbers from 1 to this are priced.
+        Numbers from 1 to this are looked at.
 
     Returns
     -------
     BreakEven
         With every crossing. At equal totals the cheaper one stays what it was.
     """
-    samples: list[int] = []
-    totals: list[tuple[Decimal, Decimal]] = []
-    for number in range(1, largest + 1):
-        a, b = total_a(number), total_b(number)
-        if a is not None and b is not None:
-            samples.append(number)
-            totals.append((a, b))
+    scan = _Scan(total_a, total_b)
+    scan.look(1, largest)
+    scan.sample(largest)
     crossings: list[Crossing] = []
     cheaper = ""
-    for number, (a, b) in zip(samples, totals, strict=True):
+    first: int | None = None
+    stays: int | None = None
+    for number in sorted(scan.known):
+        a, b = scan.known[number]
+        if a is None or b is None:
+            continue
         now = "A" if a < b else "B" if b < a else cheaper
         if cheaper and now != cheaper:
             crossings.append(Crossing(number, now, a - b))
+        if now == "B" and cheaper != "B":
+            first, stays = first or number, number
         cheaper = now
-    first = next((n for n, (a, b) in zip(samples, totals, strict=True) if b < a), None)
-    stays = None
-    if cheaper == "B":
-        stays = crossings[-1].samples if crossings else first
+    both = [n for n in sorted(scan.known) if None not in scan.known[n]]
     return BreakEven(
         first=first,
         crossings=tuple(crossings),
-        stays_from=stays,
-        samples=tuple(samples),
-        total_a=tuple(a for a, _ in totals),
-        total_b=tuple(b for _, b in totals),
+        stays_from=stays if cheaper == "B" else None,
+        largest=largest,
+        samples=tuple(both),
+        total_a=tuple(scan.known[n][0] or Decimal(0) for n in both),
+        total_b=tuple(scan.known[n][1] or Decimal(0) for n in both),
     )
+
+
+class _Scan:
+    """Both totals at the numbers of samples that matter."""
+
+    def __init__(
+        self,
+        total_a: Callable[[int], Decimal | None],
+        total_b: Callable[[int], Decimal | None],
+    ) -> None:
+        self.totals = (total_a, total_b)
+        self.known: dict[int, tuple[Decimal | None, Decimal | None]] = {}
+
+    def at(self, number: int) -> tuple[Decimal | None, Decimal | None]:
+        if number not in self.known:
+            self.known[number] = (self.totals[0](number), self.totals[1](number))
+        return self.known[number]
+
+    def look(self, low: int, high: int) -> None:
+        """Halve a stretch until one scenario is the cheaper one throughout."""
+        a_low, b_low = self.at(low)
+        a_high, b_high = self.at(high)
+        if high - low <= 1:
+            return
+        if a_low is not None and b_low is not None:
+            if a_high is not None and a_high < b_low:
+                return
+            if b_high is not None and b_high < a_low:
+                return
+        middle = (low + high) // 2
+        self.look(low, middle)
+        self.look(middle, high)
+
+    def sample(self, largest: int) -> None:
+        """Price some more, evenly, for the picture."""
+        for k in range(1, N_DRAWN + 1):
+            self.at(max(1, largest * k // N_DRAWN))
 
 
 def break_even_hint(

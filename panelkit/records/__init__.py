@@ -36,6 +36,14 @@ from panelkit.records.matrix import MatrixSource
 from panelkit.records.panel_cost import CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeState
+from panelkit.records.price_answer import (
+    Assumption,
+    CostSheet,
+    PriceAnswer,
+    ScenarioAnswer,
+    SheetAssay,
+    Variation,
+)
 from panelkit.records.prices import (
     ANY_MARKER,
     PRICE_COLUMNS,
@@ -60,6 +68,7 @@ __all__ = [
     "PRICE_COLUMNS",
     "RESEARCH_USE",
     "AssayPrice",
+    "Assumption",
     "BreakEven",
     "Choice",
     "Cohort",
@@ -67,6 +76,7 @@ __all__ = [
     "Conflict",
     "Conflicts",
     "CostLine",
+    "CostSheet",
     "Crossing",
     "Design",
     "Driver",
@@ -86,6 +96,7 @@ __all__ = [
     "Outcome",
     "PanelCost",
     "PathSet",
+    "PriceAnswer",
     "PriceList",
     "PriceQuestion",
     "RecipeState",
@@ -93,7 +104,9 @@ __all__ = [
     "RuleChoice",
     "RunRecord",
     "RunSummary",
+    "ScenarioAnswer",
     "Severity",
+    "SheetAssay",
     "ShortlistTable",
     "Spares",
     "SplitCost",
@@ -102,6 +115,7 @@ __all__ = [
     "StepDown",
     "SubsamplePlan",
     "TunedChoice",
+    "Variation",
     "check_price_columns",
     "frame",
     "read_only",

@@ -121,8 +121,10 @@ class BreakEven(Record):
         Every change of the cheaper one, by number of samples.
     stays_from : int or None
         From where B stays cheaper up to `largest`; None where it does not.
+    largest : int
+        The largest number of samples that was looked at.
     samples : tuple of int
-        The numbers that were priced.
+        The numbers that were priced: all near a crossing, some elsewhere.
     total_a, total_b : tuple of Decimal
         At each of them.
     """
@@ -130,14 +132,10 @@ class BreakEven(Record):
     first: int | None
     crossings: tuple[Crossing, ...]
     stays_from: int | None
+    largest: int
     samples: tuple[int, ...]
     total_a: tuple[Decimal, ...]
     total_b: tuple[Decimal, ...]
-
-    @property
-    def largest(self) -> int:
-        """The largest number that was priced."""
-        return self.samples[-1]
 
 
 @dataclass(frozen=True, slots=True)

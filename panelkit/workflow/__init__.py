@@ -2,6 +2,21 @@
 
 from panelkit.workflow.check import check_study
 from panelkit.workflow.draft import draft_study
+from panelkit.workflow.price import PriceRequest, price_panels
+from panelkit.workflow.price_content import price_content
+from panelkit.workflow.price_files import write_prices
+from panelkit.workflow.price_inputs import PriceSource
 from panelkit.workflow.run import Run, run_content, run_study
 
-__all__ = ["Run", "check_study", "draft_study", "run_content", "run_study"]
+__all__ = [
+    "PriceRequest",
+    "PriceSource",
+    "Run",
+    "check_study",
+    "draft_study",
+    "price_content",
+    "price_panels",
+    "run_content",
+    "run_study",
+    "write_prices",
+]

@@ -8,8 +8,8 @@ from numpy.typing import NDArray
 from panelkit.config import Study
 from panelkit.costing import PanelPricer
 from panelkit.errors import InputDataError, StudyFileError, name_some
-from panelkit.ingest import read_cohort, read_price_list
-from panelkit.records import Cohort, Findings
+from panelkit.ingest import read_cohort, read_conflicts, read_price_list
+from panelkit.records import NO_CONFLICTS, Cohort, Findings
 from panelkit.runtime import hash_of_file
 
 __all__ = [
@@ -116,7 +116,14 @@ def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findi
             next_step="Add a row for each marker, or one with marker '*'",
         )
     hashes = {"prices": hash_of_file(path)}
-    pricer = PanelPricer(study.programme, study.platforms, prices)
+    conflicts = NO_CONFLICTS
+    if study.panels.conflicts is not None:
+        kept_apart = study.file(study.panels.conflicts)
+        conflicts = read_conflicts(kept_apart)
+        hashes["conflicts"] = hash_of_file(kept_apart)
+    pricer = PanelPricer(
+        study.programme, study.platforms, prices, study.kits, conflicts
+    )
     return pricer, hashes, prices.findings
 
 
