@@ -8,7 +8,7 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from panelkit.costing import programme_cost
+    from panelkit.costing import cheapest_cover, programme_cost
     from panelkit.errors import PanelkitError
     from panelkit.fits import fit_paths
     from panelkit.ingest import check_cohort, read_cohort
@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 __all__ = [
     "PanelkitError",
+    "cheapest_cover",
     "check_cohort",
     "check_study",
     "draft_study",
@@ -27,6 +28,7 @@ __all__ = [
 
 _HOMES = {
     "PanelkitError": "panelkit.errors",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",

@@ -13,6 +13,7 @@ import panelkit
 REPOSITORY = Path(__file__).parents[1]
 NAMES = {
     "PanelkitError": "panelkit.errors",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",

@@ -28,7 +28,7 @@ __all__ = [
 ]
 
 FINER: Final = 4  # digits that a unit price may have beyond the minor unit
-N_DRAWN: Final = 60
+N_DRAWN: Final = 120
 HIGHEST_PRICE: Final = 10**9
 
 

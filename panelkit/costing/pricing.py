@@ -39,7 +39,7 @@ from panelkit.costing.panel_rows import (
     missing_quotes,
 )
 from panelkit.costing.purchase import Bound, Offers, purchase_cost
-from panelkit.errors import NoPanelError, name_some
+from panelkit.errors import InputDataError, NoPanelError, name_some
 from panelkit.records import (
     NO_CONFLICTS,
     AssayPrice,
@@ -232,7 +232,7 @@ class _PanelJob:
             return None
         try:
             return self._job(markers).cheapest(bound)
-        except NoPanelError:
+        except (NoPanelError, InputDataError):  # no room, or too few quotes
             return None
 
     def _nothing_direct(self) -> Priced:

@@ -122,8 +122,7 @@ def drivers(
     for marker in markers:
         others = [name for name in markers if name != marker]
         rest = _cost(pricer, others, platform) if others else None
-        one_off: Decimal | None = Decimal(0)
-        reagent: Decimal | None = Decimal(0)
+        one_off = reagent = _money(Fraction(0), whole)
         if marker in bought:
             each = purchase_cost(rows[marker], bought[marker] // whole.lots)
             dev = rows[marker].dev

@@ -273,6 +273,7 @@ def _break_even(answer: PriceAnswer, found: BreakEven) -> Picture:
             [float(total) for total in totals],
             color=SERIES[k].colour,
             linestyle=SERIES[k].line,
+            drawstyle="steps-post",
             label=f"{scenario.name}: {len(scenario.markers)} markers on "
             f"{drawable(scenario.cost.platform, LONGEST_NAME)}",
         )

@@ -222,9 +222,11 @@ def _further(
     more = [
         row.marker
         for row in rows
-        if row.role == "marker" and row.marker != ANY_MARKER and row.status != "no"
+        if row.role == "marker"
+        and row.marker != ANY_MARKER
+        and row.status != "no"
+        and not row.is_missing_quote
     ]
-    more += [name for kit in pricer.kits for name in kit.markers]
     if any(row.marker == ANY_MARKER for row in rows):
         more += [f"further-{k}" for k in range(1, PRICING.stairs_beyond + 1)]
     fresh = [name for name in dict.fromkeys(more) if name not in markers]

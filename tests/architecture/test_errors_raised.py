@@ -17,6 +17,8 @@ CODE_IN_A_VARIABLE = {"fits/arguments.py"}
 CAUGHT_AS_AN_ANSWER = {
     ("costing/panel_prices.py", "NoPanelError"): "one of several platforms cannot run "
     "the panel",
+    ("costing/pricing.py", "NoPanelError"): "kits may run what single assays cannot",
+    ("costing/pricing.py", "InputDataError"): "kits need no quote of single assays",
     ("fits/budget.py", "FitError"): "separable data: no solution without a penalty",
 }
 BUILTIN_RAISED = {
