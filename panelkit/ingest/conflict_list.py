@@ -1,15 +1,15 @@
 """Reading a conflict list: pairs of markers that must be kept apart."""
 
 from pathlib import Path
-from typing import cast
+from typing import Literal, cast
 
 from panelkit.errors import InputDataError, name_some
 from panelkit.ingest.csv_rows import read_header, read_lines, take_cells
 from panelkit.records import CONFLICT_COLUMNS, Conflict, Conflicts
-from panelkit.records.conflicts import Scope
 
 __all__ = ["read_conflicts"]
 
+Scope = Literal["pool", "panel"]
 NEEDED_COLUMNS = ("marker_a", "marker_b")
 
 

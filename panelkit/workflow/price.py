@@ -1,6 +1,6 @@
 """`price_panels`: what given marker lists cost, without expression data."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from decimal import Decimal
 from fractions import Fraction
@@ -169,17 +169,7 @@ def _scenario(
     costs = pricer.costs(markers)
     parted = cheapest_split(pricer, markers) if split else None
     if not costs:
-        first = next(iter(refusals.values()))
-        if len(refusals) == 1:
-            raise first
-        raise NoPanelError(
-            code="no-platform-runs-it",
-            where=f"scenario {name}, {len(markers)} markers",
-            what=f"none of {name_some(refusals)} can run the panel "
-            f"({first.where}: {first.what})",
-            accepted="a panel that at least one platform can run",
-            next_step=first.next_step,
-        )
+        raise _refusal(name, len(markers), refusals)
     best = costs[0]
     return ScenarioAnswer(
         name=name,
@@ -194,6 +184,23 @@ def _scenario(
         drivers=drivers(pricer, markers, best.platform),
         assumptions=source.assumptions,
         sheet=_sheet(name, pricer, markers, best),
+    )
+
+
+def _refusal(
+    name: str, size: int, refusals: Mapping[str, NoPanelError]
+) -> NoPanelError:
+    """Return why no platform runs a panel: the reason itself where there is one."""
+    first = next(iter(refusals.values()))
+    if len(refusals) == 1:
+        return first
+    return NoPanelError(
+        code="no-platform-runs-it",
+        where=f"scenario {name}, {size} markers",
+        what=f"none of {name_some(refusals)} can run the panel "
+        f"({first.where}: {first.what})",
+        accepted="a panel that at least one platform can run",
+        next_step=first.next_step,
     )
 
 

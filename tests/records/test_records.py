@@ -11,10 +11,22 @@ from panelkit import records
 from panelkit.records import Record
 
 CLASSES = sorted(
-    name for name in records.__all__ if is_dataclass(getattr(records, name))
+    name
+    for name in records.__all__
+    if isinstance(getattr(records, name), type) and is_dataclass(getattr(records, name))
 )
 ROWS = {
+    "Assumption": "a row of ScenarioAnswer",
+    "Conflict": "a row of Conflicts",
     "CostLine": "a row of PanelCost",
+    "Crossing": "a row of BreakEven",
+    "Driver": "a row of ScenarioAnswer",
+    "KitPurchase": "a row of PanelCost",
+    "PriceQuestion": "a row of PriceAnswer",
+    "SheetAssay": "a row of CostSheet",
+    "Stair": "a row of ScenarioAnswer",
+    "StepDown": "part of ScenarioAnswer",
+    "Variation": "a row of PriceAnswer",
     "Dropped": "a row of dropped.csv, held by Cohort",
     "Finding": "a row of Findings",
     "Flow": "a row of flow.csv, held by Cohort",
@@ -108,6 +120,7 @@ def test_to_frame(make_record, name):
 
 ROW_COUNTS = {
     "Cohort": 4,
+    "Conflicts": 1,
     "Comparator": 1,
     "Findings": 2,
     "Frontier": 2,
