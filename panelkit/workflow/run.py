@@ -29,7 +29,7 @@ from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
-from panelkit.workflow.record import record_bytes, run_record
+from panelkit.workflow.record import record_bytes, run_record, without_prices
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
     choice_content,
@@ -131,7 +131,7 @@ def run_study(
     record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
     content = record_bytes(record)
     folder = RunFolder(Path(out))
-    resumed = folder.claim(content)
+    resumed = folder.claim(content, without_prices)
     clock = _Clock(folder, listener)
     clock.seconds["reading"] = reading
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
@@ -140,7 +140,8 @@ def run_study(
     findings = Findings((*cohort.findings, *known.size_findings))
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
-    inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
+    work = without_prices(content)
+    inputs, store = hashlib.sha256(work).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()
     taken = choose_for_everyone(procedure, data, draws, inputs, store, **how)
