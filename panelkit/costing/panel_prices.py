@@ -138,9 +138,19 @@ class PanelPricer:
                 self.platforms[platform],
                 self.prices.for_panel(list(markers), platform),
                 quotes=self.prices.quotes(platform),
-                kits=self.kits,
+                kits=[self._for_features(kit, markers) for kit in self.kits],
                 conflicts=self.conflicts,
             )
         except NoPanelError as refusal:
             return refusal
         return replace(cost, platform=platform)
+
+    def _for_features(self, kit: KitSection, markers: Sequence[str]) -> KitSection:
+        """Return a kit of analytes as a kit of the panel's features."""
+        of_analyte: dict[str, list[str]] = {}
+        for marker in markers:
+            analyte = self.prices.analytes.get(marker, marker)
+            if marker not in kit.markers:
+                of_analyte.setdefault(analyte, []).append(marker)
+        names = [name for own in kit.markers for name in of_analyte.get(own, [own])]
+        return kit.model_copy(update={"markers": tuple(names)}) if of_analyte else kit

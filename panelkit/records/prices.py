@@ -501,10 +501,14 @@ class PriceList(Record):
         In file order; marker and platform together are unique.
     findings : Findings
         What was noticed while reading.
+    analytes : mapping of str to str
+        Feature to what it measures: a feature without an own row takes the row of its
+        analyte, so that a list can be written by analyte.
     """
 
     rows: tuple[AssayPrice, ...]
     findings: Findings = field(default_factory=Findings)
+    analytes: Mapping[str, str] = field(default_factory=dict)
     _places: dict[str, dict[str, int]] = field(
         init=False, repr=False, default_factory=dict
     )
@@ -556,8 +560,8 @@ class PriceList(Record):
         -------
         tuple of AssayPrice
             Markers in file order, then those without an own row in the order
-            given (at the price for any marker, or without a price when the list
-            has none), then the platform's references in file order.
+            given (at the price of their analyte, else for any marker, else without
+            a price), then the platform's references in file order.
 
         Raises
         ------
@@ -593,8 +597,10 @@ class PriceList(Record):
         return (*(self.rows[place] for place in own), *others, *references)
 
     def _without_row(self, marker: str, platform: str) -> AssayPrice:
-        place = self._at(platform).get(ANY_MARKER)
-        if place is None:
+        places = self._at(platform)
+        analyte = self.analytes.get(marker, marker)
+        place = places.get(analyte, places.get(ANY_MARKER))
+        if place is None or self.rows[place].role == "reference":
             return AssayPrice(marker=marker, platform=platform)
         return replace(self.rows[place], marker=marker)
 

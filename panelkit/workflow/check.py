@@ -91,7 +91,7 @@ def checked(plan: Study) -> CheckedStudy:
     cohort = load_cohort(plan)
     procedure, data, size_findings = procedure_of(plan, cohort)
     draws = draws_of(plan, data)
-    pricer, price_hashes, price_findings = load_prices(plan)
+    pricer, price_hashes, price_findings = load_prices(plan, cohort)
     findings = (*cohort.findings, *price_findings)
     settled = tuple(_settled(item, plan) for item in findings)
     idle = tuple(_idle_acceptances(findings, plan))

@@ -1,5 +1,6 @@
 """From a study file to its cohort and its prices."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -93,7 +94,9 @@ def refuse_stops(findings: Findings) -> None:
         )
 
 
-def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findings]:
+def load_prices(
+    study: Study, cohort: Cohort
+) -> tuple[PanelPricer | None, dict[str, str], Findings]:
     """Return what prices panels, the hashes of its files, and what was noticed.
 
     Raises
@@ -104,7 +107,13 @@ def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findi
     if study.programme is None or study.panels.prices is None:
         return None, {}, Findings()
     path = study.file(study.panels.prices)
-    prices = read_price_list(path)
+    symbols = cohort.feature_columns.get("symbol", np.array([], object))
+    analytes = {
+        str(feature): str(symbol)
+        for feature, symbol in zip(cohort.features, symbols, strict=False)
+        if symbol
+    }
+    prices = replace(read_price_list(path), analytes=analytes)
     unknown = [name for name in study.platforms if name not in prices.platforms]
     if unknown:
         raise InputDataError(

@@ -9,11 +9,17 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from panelkit import cheapest_cover
-from panelkit.config import kit_sections, read_kits
+from panelkit.config import (
+    kit_sections,
+    platform_section,
+    programme_section,
+    read_kits,
+)
+from panelkit.costing import PanelPricer, programme_cost
 from panelkit.costing import cover as cover_module
-from panelkit.costing import programme_cost
 from panelkit.costing.kits import kit_units
 from panelkit.errors import NoPanelError, StudyFileError, UsageError
+from panelkit.records import AssayPrice, PriceList
 
 MARKERS = "ABCDEF"
 
@@ -331,3 +337,34 @@ def test_kit_files_are_refused(tmp_path, text, code):
         read_kits(path)
     assert caught.value.code == code
     assert str(path) in caught.value.where
+
+
+def test_lists_by_analyte():
+    """Two probes of one analyte: each takes its row, and a kit of it holds both."""
+    rows = (
+        AssayPrice.from_row(
+            {"marker": "GENE", "platform": "p", "dev": 5, "test": 1}, where="row"
+        ),
+        AssayPrice.from_row(
+            {"marker": "probe2", "platform": "p", "dev": 7, "test": 1}, where="row"
+        ),
+    )
+    analytes = {"probe1": "GENE", "probe2": "GENE", "probe3": "OTHER"}
+    prices = PriceList(rows, analytes=analytes)
+    found = prices.for_panel(["probe1", "probe2", "probe3"], "p")
+    assert {row.marker: row.dev for row in found} == {
+        "probe1": 5,
+        "probe2": 7,  # its own row goes before that of its analyte
+        "probe3": None,
+    }
+    kit = {"id": "K", "markers": ["GENE", "X"], "unit_price": 1, "tests_per_unit": 99}
+    pricer = PanelPricer(
+        programme_section({"currency": "EUR", "samples": 10, "repeat_mode": "none"}),
+        {"p": platform_section({"positions": 96})},
+        prices,
+        kit_sections([kit]),
+    )
+    cost = pricer.costs(["probe1", "probe2"])[0]
+    assert cost.total == 1
+    assert cost.kits[0].covers == ("probe1", "probe2")
+    assert cost.kits[0].unwanted == ("X",)
