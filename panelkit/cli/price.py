@@ -187,14 +187,14 @@ def command(  # noqa: PLR0913 - one parameter an option is how click hands them 
     assumptions: bool,
     as_json: bool,
 ) -> None:
-    r"""Price MARKERS: names, a file of names, or how many.
+    """Price MARKERS: names, a file of names, or how many.
 
     \b
     Four inputs are enough:
       panelkit price 8 --family rt-qpcr --samples 500 --currency EUR --reaction 0.60
     Files know more:
       panelkit price 12 --from programme.toml --prices prices.csv --against 8
-    """
+    """  # noqa: D301 - click reads this sign as: keep the lines
     source = PriceSource(
         file=file,
         prices=prices,

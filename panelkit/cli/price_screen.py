@@ -6,6 +6,7 @@ from typing import Final
 
 from panelkit.cli.screen import console, show_table
 from panelkit.records import (
+    LINE_WORDS,
     RESEARCH_USE,
     Assumption,
     BreakEven,
@@ -22,17 +23,6 @@ MOST_NAMED: Final = 8
 MOST_DRIVERS: Final = 8
 MOST_QUESTIONS: Final = 3
 MOST_STAIRS: Final = 14
-LINE_WORDS: Final = {
-    "collection": "collection of samples",
-    "setup": "set-up",
-    "development": "development of assays",
-    "runs": "runs",
-    "samples": "work on each sample",
-    "positions": "filled positions",
-    "assays": "reagents of assays",
-    "lots": "changes of lot",
-    "kits": "kits",
-}
 
 
 def show_answer(answer: PriceAnswer, *, every_assumption: bool) -> None:
@@ -243,12 +233,16 @@ def _drivers(answer: PriceAnswer, scenario: ScenarioAnswer) -> None:
         ]
         for each in scenario.drivers[:MOST_DRIVERS]
     ]
-    left = len(scenario.drivers) - MOST_DRIVERS
+    n, least = len(scenario.drivers), scenario.drivers[-1].saving
+    if n > 2 and least == scenario.drivers[0].saving:
+        _say(
+            f"Leaving out any one of the {n} markers saves the same: {_amount(least)} "
+            f"{answer.currency}."
+        )
+        return
+    few = f"; the first {MOST_DRIVERS} of {n}" if n > MOST_DRIVERS else ""
     show_table(
-        "Leaving one marker out saves (savings are no shares of the total)"
-        + (
-            f"; the first {MOST_DRIVERS} of {len(scenario.drivers)}" if left > 0 else ""
-        ),
+        f"Leaving one marker out saves (savings are no shares of the total){few}",
         ["marker", "saves", "its development", "its reagent", "kit"],
         rows,
         right=(1, 2, 3),
@@ -333,7 +327,7 @@ def _variations(answer: PriceAnswer) -> None:
         header = [*(["scenario"] if two else []), key, "platform", "total",
                   "per result", "runs", "full", "runs a sample"]  # fmt: skip
         right = tuple(i for i in range(len(header)) if header[i] != "platform")
-        show_table(f"With another {key}", header, rows, right=right)
+        show_table(f"Other values of {key}", header, rows, right=right)
 
 
 def _spares(answer: PriceAnswer, spares: Spares) -> None:

@@ -33,7 +33,7 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
-from panelkit.records.panel_cost import CostLine, KitPurchase, PanelCost
+from panelkit.records.panel_cost import LINE_WORDS, CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeState
 from panelkit.records.price_answer import (
@@ -64,6 +64,7 @@ from panelkit.records.summary import RESEARCH_USE, RunSummary
 __all__ = [
     "ANY_MARKER",
     "CONFLICT_COLUMNS",
+    "LINE_WORDS",
     "NO_CONFLICTS",
     "PRICE_COLUMNS",
     "RESEARCH_USE",

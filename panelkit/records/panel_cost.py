@@ -3,7 +3,7 @@
 from dataclasses import dataclass, field
 from decimal import Decimal
 from fractions import Fraction
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 from panelkit.records.findings import Findings
 from panelkit.records.record import Record, frame
@@ -11,7 +11,20 @@ from panelkit.records.record import Record, frame
 if TYPE_CHECKING:
     import pandas as pd
 
-__all__ = ["CostLine", "KitPurchase", "PanelCost"]
+__all__ = ["LINE_WORDS", "CostLine", "KitPurchase", "PanelCost"]
+
+LINE_WORDS: Final = {
+    "collection": "collection of samples",
+    "setup": "set-up",
+    "development": "development of assays",
+    "runs": "runs",
+    "samples": "work on each sample",
+    "positions": "filled positions",
+    "assays": "reagents of assays",
+    "lots": "changes of lot",
+    "kits": "kits",
+}
+"""The lines of a cost in words for people."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,7 +1,7 @@
 """The report of a run: one page, its figures and the numbers behind them."""
 
 from panelkit.report.page import render
-from panelkit.report.price_pictures import LINE_WORDS, draw_prices
+from panelkit.report.price_pictures import draw_prices
 from panelkit.report.price_workbook import price_workbook
 
-__all__ = ["LINE_WORDS", "draw_prices", "price_workbook", "render"]
+__all__ = ["draw_prices", "price_workbook", "render"]

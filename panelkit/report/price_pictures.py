@@ -6,7 +6,7 @@ from decimal import Decimal
 from matplotlib.axes import Axes
 from matplotlib.ticker import FuncFormatter, MaxNLocator
 
-from panelkit.records import BreakEven, PriceAnswer, ScenarioAnswer
+from panelkit.records import LINE_WORDS, BreakEven, PriceAnswer, ScenarioAnswer
 from panelkit.report.canvas import (
     FAINT,
     INK,
@@ -21,19 +21,8 @@ from panelkit.report.pictures import Picture
 from panelkit.report.tables import Table, csv_bytes
 from panelkit.report.wording import three_figures
 
-__all__ = ["LINE_WORDS", "draw_prices"]
+__all__ = ["draw_prices"]
 
-LINE_WORDS = {
-    "collection": "collection of samples",
-    "setup": "set-up",
-    "development": "development of assays",
-    "runs": "runs",
-    "samples": "work on each sample",
-    "positions": "filled positions",
-    "assays": "reagents of assays",
-    "lots": "changes of lot",
-    "kits": "kits",
-}
 LONGEST_NAME = 26
 MOST_BARS = 25
 

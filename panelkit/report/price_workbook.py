@@ -9,8 +9,7 @@ from decimal import Decimal
 from typing import TYPE_CHECKING, Any
 
 from panelkit.errors import RunFolderError
-from panelkit.records import RESEARCH_USE, CostSheet, SheetAssay
-from panelkit.report.price_pictures import LINE_WORDS
+from panelkit.records import LINE_WORDS, RESEARCH_USE, CostSheet, SheetAssay
 
 if TYPE_CHECKING:
     from openpyxl.workbook import Workbook

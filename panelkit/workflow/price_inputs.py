@@ -165,7 +165,9 @@ def _from_four(
         for key, value in source.settings
         if key.removeprefix(f"{family}.") in PlatformSection.model_fields
     }
-    platform = platform_section({"family": family, **own}, f"platform '{family}'")
+    platform = platform_section(
+        {"family": family, **own}, f"--family {family} (keys are given by --set)"
+    )
     n_references = USUAL_REFERENCES[family]
     amounts = {"dev": source.development or "0", "test": source.reaction}
     base = AssayPrice.from_row(

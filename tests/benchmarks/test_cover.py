@@ -1,4 +1,4 @@
-"""What processor time exact covers take, beside the same programme with the solver's defaults.
+"""Processor time of exact covers, beside the same programme by default settings.
 
 Only what is proved is asserted; times are printed and written as JSON.
 """

@@ -1,6 +1,7 @@
 """Other quotes price a finished run anew without learning a fold again."""
 
 import csv
+from itertools import combinations
 
 import pytest
 
@@ -43,3 +44,29 @@ def test_no_prices_at_all_is_another_run(tiny, copy_of_run):
 @pytest.mark.parametrize("junk", [b"", b"[]", b"{}", b"null", b'{"study": 3}'])
 def test_junk_is_no_record(junk):
     assert without_prices(junk) == junk
+
+
+def test_kits_and_conflicts_of_a_study(tiny, tmp_path):
+    """Kits of a platform file, and pairs that may not be in one panel, are used."""
+    study = tiny.write()
+    wells = study.parent / "wells.toml"
+    names = ", ".join(f'"F{number:02d}"' for number in range(57))
+    wells.write_text(
+        wells.read_text() + f"\n[[kit]]\nid = 'all of them'\nmarkers = [{names}]\n"
+        "unit_price = 1\ntests_per_unit = 1000\n"
+    )
+    run_study(study, tmp_path / "out", threads=1)
+    assert set(totals(tmp_path / "out")) == {"1.00"}
+    assert "all of them" in (tmp_path / "out" / "report.html").read_text()
+    pairs = study.parent / "apart.csv"
+    taken = [f"F{number:02d}" for number in range(57)]
+    lines = [f"{a},{b},panel" for a, b in combinations(taken, 2)]
+    pairs.write_text("marker_a,marker_b,scope\n" + "\n".join(lines) + "\n")
+    tiny.sections["panels"]["conflicts"] = "apart.csv"
+    kept = wells.read_text()
+    study = tiny.write()
+    wells.write_text(kept)
+    run_study(study, tmp_path / "out", threads=1)
+    with (tmp_path / "out" / "frontier.csv").open() as file:
+        for row in csv.DictReader(file):
+            assert row["cost_total"] == ("1.00" if row["size"] == "1" else "")
