@@ -12,6 +12,7 @@ from panelkit.errors import InputDataError, StudyFileError, name_some
 from panelkit.ingest import read_cohort, read_conflicts, read_price_list
 from panelkit.records import NO_CONFLICTS, Cohort, Findings
 from panelkit.runtime import hash_of_file
+from panelkit.workflow.price_checks import conflict_findings, kit_findings
 
 __all__ = [
     "NEVER_ACCEPTED",
@@ -133,7 +134,12 @@ def load_prices(
     pricer = PanelPricer(
         study.programme, study.platforms, prices, study.kits, conflicts
     )
-    return pricer, hashes, prices.findings
+    noticed = [
+        *prices.findings,
+        *kit_findings(study.kits, prices, "study and platform files"),
+        *conflict_findings(conflicts, prices, "conflict list"),
+    ]
+    return pricer, hashes, Findings(tuple(noticed))
 
 
 def feature_positions(

@@ -27,11 +27,10 @@ from panelkit.records import (
     NO_CONFLICTS,
     AssayPrice,
     Assumption,
-    Conflicts,
-    Finding,
     Findings,
     PriceList,
 )
+from panelkit.workflow.price_checks import conflict_findings, kit_findings
 
 __all__ = ["PriceSource", "Priceable", "apply_settings", "load_priceable"]
 
@@ -269,8 +268,8 @@ def _from_files(source: PriceSource) -> tuple[PanelPricer, Findings]:
             next_step="Add a row for each marker, or one with marker '*'",
         )
     pairs = NO_CONFLICTS if conflicts is None else read_conflicts(conflicts)
-    noticed = [*listed.findings, *_kit_findings(kits, listed, path)]
-    noticed += _conflict_findings(pairs, listed, conflicts)
+    noticed = [*listed.findings, *kit_findings(kits, listed, str(path))]
+    noticed += conflict_findings(pairs, listed, str(conflicts))
     pricer = PanelPricer(programme, platforms, listed, kits, pairs)
     return pricer, Findings(tuple(noticed))
 
@@ -288,42 +287,6 @@ _STUDY_TABLES: Final = (
     "platform",
     "kit",
 )
-
-
-def _kit_findings(
-    kits: Sequence[KitSection], prices: PriceList, path: Path
-) -> Iterator[Finding]:
-    known = {row.marker for row in prices.rows}
-    if ANY_MARKER in known:
-        return
-    for kit in kits:
-        strangers = [name for name in kit.markers if name not in known]
-        if strangers:
-            yield Finding(
-                code="kit-marker-unknown",
-                severity="warning",
-                where=f"{path}, [[kit]] '{kit.id}'",
-                message=f"{len(strangers)} of its {len(kit.markers)} markers are not "
-                f"in the price list: {name_some(strangers)}",
-                next_step="Check the spelling; they count as unwanted",
-            )
-
-
-def _conflict_findings(
-    pairs: Conflicts, prices: PriceList, path: Path | None
-) -> Iterator[Finding]:
-    known = {row.marker for row in prices.rows}
-    named = {name for p in pairs.pairs for name in (p.marker_a, p.marker_b)}
-    strangers = sorted(named - known)
-    if strangers and ANY_MARKER not in known:
-        yield Finding(
-            code="conflict-marker-unknown",
-            severity="warning",
-            where=str(path),
-            message=f"{len(strangers)} markers are not in the price list: "
-            f"{name_some(strangers)}",
-            next_step="Check the spelling",
-        )
 
 
 def _only(pricer: PanelPricer, names: tuple[str, ...]) -> PanelPricer:

@@ -329,3 +329,25 @@ def test_names_of_markers_never_become_markup_or_formulas(price, tmp_path):
     assert code == 0
     assert "[bold]x" in shown
     assert "'=1+1" in (out / "cost_drivers_a.csv").read_text()
+
+
+def test_intervals_through_the_same_quotes_are_compared_at_common_values(price):
+    """Both panels lack the same quote: the cheaper one is known all the same."""
+    words = ["--from", "configs/planner/quotes.toml", "--prices",
+             "configs/planner/prices.csv", "--json"]  # fmt: skip
+    _code, out, _err = price("m01", "m02", "m07", "--against", "m03,m04,m07", *words)
+    answer = json.loads(out)
+    costs = [answer["scenarios"][s]["platforms"]["qpcr"] for s in "AB"]
+    assert float(costs[0]["total_high"]) > float(costs[1]["total"])  # they overlap
+    assert answer["ranking"].startswith("A is cheaper at the lowest")
+    assert {q["break_even_price"] for q in answer["missing_quotes"]} == {None}
+
+
+def test_a_far_away_panel_needs_no_quote(price):
+    words = ["--from", "configs/planner/quotes.toml", "--prices",
+             "configs/planner/prices.csv", "--json"]  # fmt: skip
+    _code, out, _err = price("m07", "--against", "m01,m02,m03,m04,m05,m06", *words)
+    answer = json.loads(out)
+    assert answer["ranking"].startswith("A is cheaper, whatever the missing quotes")
+    (question,) = answer["missing_quotes"]
+    assert "any plausible price" in question["verdict"]
