@@ -296,6 +296,8 @@ def _comparison(answer: PriceAnswer) -> None:
 def _break_even(found: BreakEven) -> str:
     if found.first is None:
         return f"B is not cheaper at any number of samples up to {found.largest:,}."
+    if found.stays_from == 1:
+        return f"B is cheaper at every number of samples up to {found.largest:,}."
     text = f"Break-even: B is cheaper for the first time at {found.first:,} samples"
     if found.crossings:
         changes = [f"{each.samples:,} ({each.cheaper})" for each in found.crossings]

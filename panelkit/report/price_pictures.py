@@ -304,6 +304,8 @@ def _break_even(answer: PriceAnswer, found: BreakEven) -> Picture:
 def _break_even_caption(found: BreakEven) -> str:
     if found.first is None:
         return f"B is not cheaper than A at any number up to {found.largest:,}."
+    if found.stays_from == 1:
+        return f"B is cheaper at every number of samples up to {found.largest:,}."
     parts = [f"B is cheaper for the first time at {found.first:,} samples"]
     if found.crossings:
         crossed = ", ".join(f"{each.samples:,}" for each in found.crossings[:8])
