@@ -5,6 +5,7 @@ from panelkit.config.defaults import (
     ACCURACY,
     CHOICE,
     COHORT,
+    DESIGN,
     ENGINE,
     KIT,
     PANELS,
@@ -14,7 +15,9 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    DesignKind,
 )
+from panelkit.config.design import DesignSection, check_design, outcome_kind
 from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
@@ -43,6 +46,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "FAMILY_PRESETS",
     "KIT",
@@ -59,6 +63,8 @@ __all__ = [
     "AccuracySection",
     "ChoiceSection",
     "CohortSection",
+    "DesignKind",
+    "DesignSection",
     "KitSection",
     "PanelsSection",
     "PlatformSection",
@@ -67,7 +73,9 @@ __all__ = [
     "ShortlistSection",
     "StatementSection",
     "Study",
+    "check_design",
     "kit_sections",
+    "outcome_kind",
     "platform_section",
     "programme_section",
     "read_kits",

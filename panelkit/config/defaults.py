@@ -13,6 +13,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "KIT",
     "PANELS",
@@ -22,9 +23,12 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "DesignKind",
 ]
 
 SEED: Final = 1
+
+DesignKind = Literal["cohort", "case-control", "matched"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,6 +36,11 @@ class _Cohort:
     orientation: Literal["auto", "samples-in-rows", "features-in-rows"] = "auto"
     max_bad_cells: int = 100
     """Non-numeric cells read as missing; more than these are an error."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Design:
+    kind: DesignKind = "cohort"
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,6 +152,7 @@ class _Pricing:
 
 
 COHORT: Final = _Cohort()
+DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
 ENGINE: Final = _Engine()
 SHORTLIST: Final = _Shortlist()

@@ -11,7 +11,7 @@ from panelkit.costing.break_even import (
 from panelkit.costing.choice import choose
 from panelkit.costing.comparators import compare
 from panelkit.costing.cover import Cover, CoverKit, cheapest_cover
-from panelkit.costing.folds import draw_folds
+from panelkit.costing.folds import draw_folds, given_folds
 from panelkit.costing.frontier import Judge, build_frontier
 from panelkit.costing.honest_accuracy import (
     Draws,
@@ -71,6 +71,7 @@ __all__ = [
     "estimate_accuracy",
     "evidence_of",
     "format_money",
+    "given_folds",
     "maker_named",
     "next_step_down",
     "order_count",

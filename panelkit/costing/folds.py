@@ -5,8 +5,26 @@ from numpy.typing import NDArray
 
 from panelkit.errors import FitError
 from panelkit.records import FoldPlan
+from panelkit.stability import unit_strata
 
-__all__ = ["draw_folds"]
+__all__ = ["draw_folds", "given_folds"]
+
+
+def given_folds(fold: NDArray[np.int64]) -> FoldPlan:
+    """Return the user's own folds, once.
+
+    Parameters
+    ----------
+    fold : ndarray of shape (n_samples,), int64
+        Fold in which each sample is tested, 0 to n_folds - 1; checked when it was
+        read.
+
+    Returns
+    -------
+    FoldPlan
+        One repeat: there is nothing to draw anew.
+    """
+    return FoldPlan(fold[None, :].astype(np.int64), int(fold.max()) + 1)
 
 
 def draw_folds(
@@ -20,9 +38,9 @@ def draw_folds(
     Parameters
     ----------
     subjects : ndarray of shape (n_samples,), int64
-        Subject of each sample.
+        Subject of each sample, or the matched set that holds its subject.
     y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1; a subject counts with the class of its first sample.
+        Outcome, 0 and 1; units that hold both classes are spread on their own.
     n_folds : int
         Folds a repeat.
     generators : list of numpy.random.Generator
@@ -31,16 +49,15 @@ def draw_folds(
     Returns
     -------
     FoldPlan
-        Subjects of each class differ by at most one between folds.
+        Units of one class, and units of both, differ by at most one between folds.
 
     Raises
     ------
     FitError
         Fewer subjects than folds in a class.
     """
-    own, first = np.unique(subjects, return_index=True)
-    classes = [own[y[first] == value] for value in (0.0, 1.0)]
-    smallest = min(len(members) for members in classes)
+    classes, holding = unit_strata(subjects, y)
+    smallest = int(holding.min())
     if n_folds < 2 or smallest < n_folds:
         raise FitError(
             code="too-few-for-folds",
@@ -51,7 +68,7 @@ def draw_folds(
         )
     plan = np.empty((len(generators), len(y)), np.int64)
     for repeat, generator in enumerate(generators):
-        fold_of = np.empty(int(own.max()) + 1, np.int64)
+        fold_of = np.empty(int(subjects.max()) + 1, np.int64)
         shift = 0
         for members in classes:
             mixed = generator.permutation(members)

@@ -95,7 +95,7 @@ def draw_everything(
     seed : int
         Root of the tree.
     n_folds, n_repeats, n_inner : int
-        Outer folds, their repeats, inner folds.
+        Outer folds and their repeats, unless the data bring folds; inner folds.
     subsamples, inner_subsamples : int
         Halves of the stability selection, outside and inside inner folds.
 
@@ -109,7 +109,7 @@ def draw_everything(
     FitError
         Too few subjects in a class.
     """
-    y, subjects = data.y, data.subjects
+    y, units = data.y, data.units
 
     def split(
         training: NDArray[np.int64], test: NDArray[np.int64], *place: str | int
@@ -119,24 +119,22 @@ def draw_everything(
         )
         pairs = draw_pairs(
             training,
-            subjects,
+            units,
             y,
             subsamples // 2,
             generator(seed, "subsamples", *place),
         )
         return Split(training, test, pairs, inner)
 
-    folds = draw_folds(
-        subjects,
-        y,
-        n_folds,
-        [generator(seed, "folds", repeat) for repeat in range(n_repeats)],
-    )
+    folds = data.folds
+    if folds is None:
+        draws = [generator(seed, "folds", repeat) for repeat in range(n_repeats)]
+        folds = draw_folds(units, y, n_folds, draws)
     everyone = split(np.arange(len(y)), np.empty(0, np.int64), "everyone")
     splits = {
         (repeat, fold): split(*folds.split(repeat, fold), "fold", repeat, fold)
-        for repeat in range(n_repeats)
-        for fold in range(n_folds)
+        for repeat in range(folds.n_repeats)
+        for fold in range(folds.n_folds)
     }
     return Draws(folds, splits, everyone)
 
@@ -149,7 +147,7 @@ def _inner_splits(
     n_inner: int,
     n_pairs: int,
 ) -> tuple[Split, ...]:
-    own = np.unique(data.subjects[training], return_inverse=True)[1]
+    own = np.unique(data.units[training], return_inverse=True)[1]
     plan = draw_folds(
         own, data.y[training], n_inner, [generator(seed, "inner-folds", *place)]
     )
@@ -157,7 +155,7 @@ def _inner_splits(
     for fold in range(n_inner):
         teach, test = (training[rows] for rows in plan.split(0, fold))
         draws = generator(seed, "inner-subsamples", *place, fold)
-        pairs = draw_pairs(teach, data.subjects, data.y, n_pairs, draws)
+        pairs = draw_pairs(teach, data.units, data.y, n_pairs, draws)
         splits.append(Split(teach, test, pairs))
     return tuple(splits)
 

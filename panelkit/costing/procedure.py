@@ -28,7 +28,7 @@ from panelkit.fits import (
     standardised,
 )
 from panelkit.preparation import DesignView, Recipe
-from panelkit.records import Stability, SubsamplePlan
+from panelkit.records import FoldPlan, Stability, SubsamplePlan
 from panelkit.stability import ShortlistRules, select_markers
 
 __all__ = ["Learnt", "Procedure", "ProcedureData", "Selected", "Split"]
@@ -53,6 +53,10 @@ class ProcedureData:
         Reason why a feature may not be used, or ``""``.
     always : ndarray of int64
         Features that are candidates whatever happens.
+    blocks : ndarray of shape (n_samples,), int64, or None
+        What stays together in folds and halves; None for the subjects.
+    folds : FoldPlan or None
+        The user's own outer folds; None has them drawn.
     """
 
     base: NDArray[np.floating[Any]]
@@ -61,6 +65,13 @@ class ProcedureData:
     subjects: NDArray[np.int64]
     barred: NDArray[np.object_]
     always: NDArray[np.int64]
+    blocks: NDArray[np.int64] | None = None
+    folds: FoldPlan | None = None
+
+    @property
+    def units(self) -> NDArray[np.int64]:
+        """What is drawn as a whole: `blocks`, or the subjects."""
+        return self.subjects if self.blocks is None else self.blocks
 
 
 @dataclass(frozen=True, slots=True, eq=False)

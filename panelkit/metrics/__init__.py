@@ -14,19 +14,43 @@ from panelkit.metrics.intervals import (
     naive_se,
     paired_interval,
 )
+from panelkit.metrics.rank_tests import (
+    auc_score_interval,
+    false_discovery_adjusted,
+    fisher_exact_many,
+    holm_adjusted,
+    rank_sum_p,
+)
+from panelkit.metrics.reliability import (
+    LimitsOfAgreement,
+    Reliability,
+    coefficient_of_variation,
+    limits_of_agreement,
+    reliability,
+)
 
 __all__ = [
     "CrossValidated",
+    "LimitsOfAgreement",
+    "Reliability",
     "auc",
     "auc_placements",
+    "auc_score_interval",
     "brier",
     "calibration_slope",
+    "coefficient_of_variation",
     "contingency_table",
     "corrected_se",
     "cramers_v",
     "cramers_v_corrected",
     "cross_validated_auc",
+    "false_discovery_adjusted",
+    "fisher_exact_many",
+    "holm_adjusted",
+    "limits_of_agreement",
     "log_loss",
     "naive_se",
     "paired_interval",
+    "rank_sum_p",
+    "reliability",
 ]

@@ -7,7 +7,8 @@ from panelkit.records.accuracy import (
     OutOfFold,
     TunedChoice,
 )
-from panelkit.records.cohort import Cohort, Design, Outcome
+from panelkit.records.assays import AssayMap
+from panelkit.records.cohort import Cohort, Design, DesignKind
 from panelkit.records.conflicts import (
     CONFLICT_COLUMNS,
     NO_CONFLICTS,
@@ -33,6 +34,8 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
+from panelkit.records.openings import Opening
+from panelkit.records.outcome import Outcome, OutcomeKind
 from panelkit.records.panel_cost import LINE_WORDS, CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
 from panelkit.records.preparation import RecipeState
@@ -53,6 +56,7 @@ from panelkit.records.prices import (
 )
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
+from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -68,6 +72,7 @@ __all__ = [
     "NO_CONFLICTS",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
+    "AssayMap",
     "AssayPrice",
     "Assumption",
     "BreakEven",
@@ -80,6 +85,7 @@ __all__ = [
     "CostSheet",
     "Crossing",
     "Design",
+    "DesignKind",
     "Driver",
     "Dropped",
     "ErrorBound",
@@ -93,8 +99,10 @@ __all__ = [
     "Headline",
     "KitPurchase",
     "MatrixSource",
+    "Opening",
     "OutOfFold",
     "Outcome",
+    "OutcomeKind",
     "PanelCost",
     "PathSet",
     "PriceAnswer",
@@ -102,6 +110,8 @@ __all__ = [
     "PriceQuestion",
     "RecipeState",
     "Record",
+    "ReplicateAgreement",
+    "Replicates",
     "RuleChoice",
     "RunRecord",
     "RunSummary",

@@ -7,6 +7,7 @@ from panelkit.workflow.price_content import price_content
 from panelkit.workflow.price_files import write_prices
 from panelkit.workflow.price_inputs import PriceSource
 from panelkit.workflow.run import Run, run_content, run_study
+from panelkit.workflow.set_aside import open_set_aside
 
 __all__ = [
     "PriceRequest",
@@ -14,6 +15,7 @@ __all__ = [
     "Run",
     "check_study",
     "draft_study",
+    "open_set_aside",
     "price_content",
     "price_panels",
     "run_content",

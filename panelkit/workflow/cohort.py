@@ -10,7 +10,7 @@ from panelkit.config import Study
 from panelkit.costing import PanelPricer
 from panelkit.errors import InputDataError, StudyFileError, name_some
 from panelkit.ingest import read_cohort, read_conflicts, read_price_list
-from panelkit.records import NO_CONFLICTS, Cohort, Findings
+from panelkit.records import NO_CONFLICTS, Cohort, Findings, PriceList
 from panelkit.runtime import hash_of_file
 from panelkit.workflow.price_checks import conflict_findings, kit_findings
 
@@ -23,11 +23,21 @@ __all__ = [
     "refuse_stops",
 ]
 
-NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
+NEVER_ACCEPTED = (
+    "no-usable-feature",  # there is nothing to fit
+    "subject-in-both-classes",  # folds and halves need one class each
+)
 
 
-def load_cohort(study: Study) -> Cohort:
+def load_cohort(study: Study, *, open_set_aside: str | None = None) -> Cohort:
     """Return the checked cohort of a study.
+
+    Parameters
+    ----------
+    study : Study
+        The study.
+    open_set_aside : str or None
+        The reason for reading the rows that were set aside, and no other.
 
     Raises
     ------
@@ -37,13 +47,14 @@ def load_cohort(study: Study) -> Cohort:
         The data cannot be used.
     """
     section = study.cohort
-    if section.outcome is None and section.time is None:
+    if section.outcome is None and section.time is None and section.event is None:
         raise StudyFileError(
             code="outcome-missing",
             where=f"{study.path}, [cohort], key 'outcome'",
             what="no outcome is named",
-            accepted="a column of the sample sheet, with its positive class",
-            next_step="Add outcome and positive",
+            accepted="a column of the sample sheet: outcome with positive, classes or "
+            "kind; or time with event",
+            next_step="Add outcome and positive, or time and event",
         )
 
     def path(name: str | None) -> Path | None:
@@ -55,14 +66,31 @@ def load_cohort(study: Study) -> Cohort:
         outcome=section.outcome,
         positive=section.positive,
         negative=section.negative,
+        kind=section.kind,
+        classes=section.classes,
+        unit=section.unit,
         time=section.time,
         event=section.event,
+        event_value=section.event_value,
+        censored_value=section.censored_value,
+        horizon=section.horizon,
+        time_unit=section.time_unit,
         subject=section.subject,
         site=section.site,
         batch=section.batch,
+        matched_set=section.matched_set,
+        run_order=section.run_order,
         replicate_of=section.replicate_of,
+        folds=section.folds,
+        design=study.design.kind,
+        prevalence=study.design.prevalence,
         features=path(section.features),
+        assays=path(section.assays),
+        platforms=tuple(study.platforms) or None,
         keep=section.keep or None,
+        set_aside=section.set_aside or None,
+        open_set_aside=open_set_aside,
+        openings=path(section.openings),
         orientation=section.orientation,
         covariates=section.covariates,
         nuisance=section.nuisance,
@@ -95,6 +123,23 @@ def refuse_stops(findings: Findings) -> None:
         )
 
 
+PRICED_BY = ("assay", "analyte", "symbol")
+"""Columns of features by which a list may price them, the closest first."""
+
+
+def _priced_as(cohort: Cohort, study: Study, prices: PriceList) -> dict[str, str]:
+    """Return the assay, analyte or symbol of each feature that prices or kits name."""
+    known = {row.marker for row in prices.rows}
+    known |= {name for kit in study.kits for name in kit.markers}
+    found: dict[str, str] = {}
+    for column in PRICED_BY:
+        names = cohort.feature_columns.get(column, ())
+        for feature, name in zip(cohort.features, names, strict=False):
+            if name in known:
+                found.setdefault(str(feature), str(name))
+    return found
+
+
 def load_prices(
     study: Study, cohort: Cohort
 ) -> tuple[PanelPricer | None, dict[str, str], Findings]:
@@ -108,13 +153,8 @@ def load_prices(
     if study.programme is None or study.panels.prices is None:
         return None, {}, Findings()
     path = study.file(study.panels.prices)
-    symbols = cohort.feature_columns.get("symbol", np.array([], object))
-    analytes = {
-        str(feature): str(symbol)
-        for feature, symbol in zip(cohort.features, symbols, strict=False)
-        if symbol
-    }
-    prices = replace(read_price_list(path), analytes=analytes)
+    prices = read_price_list(path)
+    prices = replace(prices, analytes=_priced_as(cohort, study, prices))
     unknown = [name for name in study.platforms if name not in prices.platforms]
     if unknown:
         raise InputDataError(
@@ -178,6 +218,16 @@ def barred_features(study: Study, cohort: Cohort) -> NDArray[np.object_]:
     if roles is not None:
         for role in ("control", "reference"):
             reasons[roles == role] = f"its role is {role}"
+    assayable = cohort.feature_columns.get("assayable")
+    if assayable is not None:
+        own = set(study.platforms)
+        cannot = [
+            not (own & set(names) if own else any(names))
+            for names in (cell.split(";") for cell in assayable)
+        ]
+        reasons[np.array(cannot, bool) & (reasons == "")] = (
+            "the feature sheet names no platform on which it is assayable"
+        )
     where = f"{study.path}, [shortlist], key 'never'"
     reasons[feature_positions(cohort, study.shortlist.never, where)] = (
         "named under [shortlist] never"

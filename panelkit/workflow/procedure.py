@@ -6,6 +6,7 @@ from panelkit.costing import (
     Procedure,
     ProcedureData,
     draw_everything,
+    given_folds,
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
@@ -33,7 +34,8 @@ def procedure_of(
     Returns
     -------
     procedure : Procedure
-        Sizes above the number of candidates are left out.
+        Sizes above the number of candidates are left out; none are left where no
+        feature is usable, which a finding says.
     data : ProcedureData
         The matrix after the per-sample steps.
     findings : list of Finding
@@ -92,10 +94,12 @@ def procedure_of(
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        blocks=cohort.design.blocks,
+        folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
-    if not sizes:
+    if not sizes and usable:  # without any feature a finding has said so
         raise StudyFileError(
             code="sizes-too-large",
             where=f"{plan.path}, [panels], key 'sizes'",

@@ -15,7 +15,7 @@ __all__ = ["record_bytes", "run_record", "without_prices"]
 LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
 
 
-def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
+def run_record(study: Study, inputs: Mapping[str, str], openings: int = 0) -> RunRecord:
     """Return the record of a run.
 
     Parameters
@@ -24,6 +24,8 @@ def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
         Its effective settings enter, not its text.
     inputs : mapping of str to str
         Role of each input file to its SHA-256.
+    openings : int
+        How often the rows that were set aside have been opened so far.
 
     Returns
     -------
@@ -39,6 +41,7 @@ def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
             "python": platform.python_version(),
             **{name: version(name) for name in LIBRARIES},
         },
+        openings=openings,
     )
 
 

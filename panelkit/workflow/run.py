@@ -36,6 +36,7 @@ from panelkit.workflow.tables import (
     frontier_content,
     write_accuracy,
     write_data_tables,
+    write_replicates,
     write_results,
 )
 
@@ -128,7 +129,8 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
+    inputs_read = {**(cohort.sources or {}), **known.price_hashes}
+    record = run_record(plan, inputs_read, len(cohort.openings))
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content, without_prices)
@@ -137,9 +139,10 @@ def run_study(
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
-    findings = Findings((*cohort.findings, *known.size_findings))
+    findings = Findings((*cohort.findings, *known.size_findings)).ordered()
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
+    write_replicates(folder, cohort)
     work = without_prices(content)
     inputs, store = hashlib.sha256(work).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}

@@ -63,6 +63,31 @@ def cohort():
         dropped=(records.Dropped("sample", "S9", "matching", "no row"),),
         flow=(records.Flow("yes", 3, 2, 2, 2, 2),),
         sources={"expression": "0" * 64},
+        replicates=replicates(),
+    )
+
+
+def replicates():
+    return records.Replicates(
+        samples=objects("S0b", "S2b"),
+        of=np.array([0, 2]),
+        values=floats(N_FEATURES, 2),
+    )
+
+
+def replicate_agreement():
+    return records.ReplicateAgreement(
+        features=objects("F0", "F1", "F2"),
+        n_samples=whole(N_FEATURES),
+        n_measurements=whole(N_FEATURES),
+        mean=floats(N_FEATURES),
+        icc=floats(N_FEATURES),
+        within_sd=floats(N_FEATURES),
+        cv=floats(N_FEATURES),
+        difference=floats(N_FEATURES),
+        difference_low=floats(N_FEATURES),
+        difference_high=floats(N_FEATURES),
+        in_log2=True,
     )
 
 
@@ -239,6 +264,9 @@ def scenario():
 
 
 MADE = {
+    "AssayMap": lambda: records.AssayMap(
+        objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
+    ),
     "AssayPrice": assay,
     "Choice": choice,
     "Cohort": cohort,
@@ -257,6 +285,7 @@ MADE = {
     "Frontier": frontier,
     "FrontierRow": frontier_row,
     "Headline": headline,
+    "Opening": lambda: records.Opening.of(["S1"], "the panel is locked"),
     "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
     "Outcome": outcome,
     "PanelCost": panel_cost,
@@ -265,6 +294,8 @@ MADE = {
     "RecipeState": lambda: records.RecipeState(
         floats(N_FEATURES), np.ones(N_FEATURES, bool), objects("", "", "constant")
     ),
+    "ReplicateAgreement": replicate_agreement,
+    "Replicates": replicates,
     "RuleChoice": lambda: choice().rules[0],
     "RunRecord": lambda: records.RunRecord(
         1, "0.1.0", {"seed": 1}, {"samples": "0" * 64}, {"python": "3.11"}

@@ -32,6 +32,7 @@ ROWS = {
     "Flow": "a row of flow.csv, held by Cohort",
     "FrontierRow": "a row of Frontier",
     "Headline": "part of Choice",
+    "Opening": "a line of the openings file, held by Cohort",
     "RuleChoice": "part of Choice",
     "Choice": "choice.json: a document, no table",
     "RunRecord": "record.json: a document, no table",
@@ -119,6 +120,7 @@ def test_to_frame(make_record, name):
 
 
 ROW_COUNTS = {
+    "AssayMap": 2,
     "Cohort": 4,
     "Conflicts": 1,
     "Comparator": 1,
