@@ -6,8 +6,10 @@ from itertools import combinations
 import pytest
 
 from panelkit import run_study
+from panelkit.config import read_study
 from panelkit.costing import Procedure
 from panelkit.errors import RunFolderError
+from panelkit.workflow.cohort import load_cohort, load_prices
 from panelkit.workflow.record import without_prices
 
 
@@ -70,3 +72,30 @@ def test_kits_and_conflicts_of_a_study(tiny, tmp_path):
     with (tmp_path / "out" / "frontier.csv").open() as file:
         for row in csv.DictReader(file):
             assert row["cost_total"] == ("1.00" if row["size"] == "1" else "")
+
+
+def test_a_list_by_symbol_prices_features(tiny):
+    """Every feature's symbol has a row of its own: the symbol's price is found."""
+    study = tiny.write()
+    folder = study.parent
+    names = [f"F{number:02d}" for number in range(60)]
+    table = [f"{name},GENE{name[1:]},marker" for name in names]
+    (folder / "features.csv").write_text("feature,symbol,role\n" + "\n".join(table))
+    rows = [
+        f"GENE{name[1:]},{platform},ok,{number},1"
+        for number, name in enumerate(names)
+        for platform in ("wells", "pools")
+    ]
+    (folder / "prices.csv").write_text(
+        "marker,platform,status,dev,test\n" + "\n".join(rows) + "\n"
+    )
+    plan = read_study(study)
+    pricer, hashes, findings = load_prices(plan, load_cohort(plan))
+    assert set(hashes) == {"prices"}
+    assert not list(findings)
+    low = {cost.platform: cost for cost in pricer.costs(["F03"])}
+    high = {cost.platform: cost for cost in pricer.costs(["F45"])}
+    for platform in ("wells", "pools"):
+        assert low[platform].missing_quotes == ()
+        gap = high[platform].line("development") - low[platform].line("development")
+        assert gap == 42
