@@ -15,6 +15,7 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    STEPS,
     DesignKind,
 )
 from panelkit.config.design import DesignSection, check_design, outcome_kind
@@ -58,6 +59,7 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "STEPS",
     "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",
     "AccuracySection",

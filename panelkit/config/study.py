@@ -165,20 +165,50 @@ class CohortSection(Section):
     max_bad_cells: int = Field(default=COHORT.max_bad_cells, ge=0)
 
 
+def _steps(value: object) -> object:
+    """Let each step be a name, or a table with its name and its parameters."""
+    if not isinstance(value, list | tuple):
+        return value
+    steps: list[object] = []
+    for step in value:
+        named = step.get("step") if isinstance(step, Mapping) else step
+        if not isinstance(named, str):
+            raise ValueError(
+                'a list of steps, each a name or { step = "name", parameter = value }'
+            )
+        if isinstance(step, Mapping):
+            step = {key: plain_number(part) for key, part in step.items()}
+        steps.append(step)
+    return tuple(steps)
+
+
+StepEntries = Annotated[tuple[str | dict[str, Any], ...], BeforeValidator(_steps)]
+
+
 class PreparationSection(Section):
     """``[preparation]``: what is done to the values before anything is fitted.
 
     Attributes
     ----------
-    discovery : tuple of str or None
-        Steps in order: log2, filter, median-fill. None follows the scale finding.
+    discovery : tuple of str or table, or None
+        Steps in order, each a name or a table { step = "log-cpm", prior = 2.0 }:
+        log2, m-values, log-cpm, median-of-ratios, trimmed-mean, upper-quartile; then
+        quantile, median-difference; then batch-centre, reference-ratio; then
+        collapse; filter, variance, prevalence, detection, replicate-reliability; and
+        one of median-fill, half-minimum, below-limit, neighbours. None follows the
+        scale finding.
+    assay : tuple of str or table, or None
+        Steps that panels are refitted and judged with, from the panel's markers and
+        reference features alone: log2, m-values, reference-ratio, batch-centre,
+        median-fill, half-minimum, below-limit. None uses the discovery steps.
     log2_offset : float
         Added before the logarithm.
     max_missing_share : float
         Features missing in a larger share of the training rows are left out.
     """
 
-    discovery: tuple[str, ...] | None = None
+    discovery: StepEntries | None = None
+    assay: StepEntries | None = None
     log2_offset: Annotated[float, Field(ge=0), BeforeValidator(plain_number)] = (
         PREPARATION.log2_offset
     )

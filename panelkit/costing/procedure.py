@@ -28,13 +28,14 @@ from panelkit.fits import (
     standardised,
 )
 from panelkit.preparation import DesignView, Recipe
-from panelkit.records import FoldPlan, Stability, SubsamplePlan
+from panelkit.records import FoldPlan, RecipeContext, Stability, SubsamplePlan
 from panelkit.stability import ShortlistRules, select_markers
 
 __all__ = ["Learnt", "Procedure", "ProcedureData", "Selected", "Split"]
 
 RIDGE_PAIRS = 4  # pairs that tune ridge on all features
 RIDGE_PENALTIES = np.logspace(0.5, -3.5, 9)
+NOTHING_KNOWN = RecipeContext()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,7 +45,7 @@ class ProcedureData:
     Attributes
     ----------
     base : ndarray of shape (n_features, n_samples)
-        After the per-sample steps.
+        What the folds share: after the steps that learn nothing.
     y, weights : ndarray of shape (n_samples,)
         Outcome and observation weights.
     subjects : ndarray of shape (n_samples,), int64
@@ -53,6 +54,10 @@ class ProcedureData:
         Reason why a feature may not be used, or ``""``.
     always : ndarray of int64
         Features that are candidates whatever happens.
+    context : RecipeContext
+        What preparation may read beside the values.
+    values : ndarray of shape (n_features, n_samples), or None
+        As read, for an assay part; None where there is none.
     blocks : ndarray of shape (n_samples,), int64, or None
         What stays together in folds and halves; None for the subjects.
     folds : FoldPlan or None
@@ -65,6 +70,8 @@ class ProcedureData:
     subjects: NDArray[np.int64]
     barred: NDArray[np.object_]
     always: NDArray[np.int64]
+    context: RecipeContext = NOTHING_KNOWN
+    values: NDArray[np.floating[Any]] | None = None
     blocks: NDArray[np.int64] | None = None
     folds: FoldPlan | None = None
 
@@ -145,7 +152,7 @@ class Procedure:
     Attributes
     ----------
     recipe : Recipe
-        Preparation.
+        Preparation of everything that selects.
     rules : ShortlistRules
         Stability selection and candidates.
     makers : sequence of str
@@ -154,6 +161,9 @@ class Procedure:
         Panel sizes, ascending.
     ridge_penalties : sequence of float
         Ridge penalties of the refits, largest first.
+    assay : Recipe or None
+        Preparation of a panel's markers for its refit and its scores; None takes the
+        values that selected them.
     """
 
     recipe: Recipe
@@ -161,6 +171,7 @@ class Procedure:
     makers: Sequence[str]
     sizes: Sequence[int]
     ridge_penalties: Sequence[float] = ENGINE.ridge_penalties
+    assay: Recipe | None = None
 
     def learn(self, data: ProcedureData, split: Split, threads: int = 1) -> Learnt:
         """Learn everything from the training rows and predict the test rows.
@@ -192,8 +203,9 @@ class Procedure:
                 accepted="at least 2",
                 next_step="Draw inner folds for the training rows",
             )
-        selected = self.select(data, split, threads)
+        # first the inner folds: where a fold has a matrix of its own, one is held
         tuning = self.tune(data, split, threads)
+        selected = self.select(data, split, threads)
         n_folds = len(split.inner)
         # A ridge penalty on the mean loss is 1 / (n * prior variance): it was tuned on
         # fewer rows than it is used on.
@@ -204,7 +216,7 @@ class Procedure:
             tuning=tuning,
             chosen=self.choose(tuning, n_folds),
             penalties=penalties,
-            log_odds=_predict(selected, data, split, penalties[:, None])[:, 0],
+            log_odds=self.predict(selected, data, split, penalties[:, None])[:, 0],
         )
 
     def select(self, data: ProcedureData, split: Split, threads: int = 1) -> Selected:
@@ -229,8 +241,9 @@ class Procedure:
         FitError
             A fit that is not possible or did not converge.
         """
-        state = self.recipe.learn(data.base, split.training, data.barred)
-        view = self.recipe.view(state, data.base)
+        _state, view = self.recipe.prepare(
+            data.base, split.training, data.barred, data.context
+        )
         stability = select_markers(
             view,
             data.y,
@@ -292,7 +305,7 @@ class Procedure:
         shape = (len(self.makers), len(self.sizes))
         grid = np.tile(np.array(self.ridge_penalties), (shape[0] * shape[1], 1))
         log_odds = [
-            _predict(self.select(data, inner, threads), data, inner, grid)
+            self.predict(self.select(data, inner, threads), data, inner, grid)
             for inner in split.inner
         ]
         return judge(
@@ -329,34 +342,94 @@ class Procedure:
         log_odds: NDArray[np.float64] = predicted[0]
         return log_odds
 
+    def predict(
+        self,
+        selected: Selected,
+        data: ProcedureData,
+        split: Split,
+        penalties: NDArray[np.float64],
+    ) -> NDArray[np.float64]:
+        """Refit each panel on the training rows and score the test rows.
 
-def _predict(
-    selected: Selected,
-    data: ProcedureData,
-    split: Split,
-    penalties: NDArray[np.float64],
-) -> NDArray[np.float64]:
-    """Refit each panel on the training rows; return log-odds of the test rows.
+        Parameters
+        ----------
+        selected : Selected
+            Panels, and the values that selected them.
+        data : ProcedureData
+            Shared data.
+        split : Split
+            Its rows.
+        penalties : ndarray of shape (n_panels, n_penalties)
+            Ridge penalties of each panel.
 
-    penalties: (panels, penalties); returns (panels, penalties, test rows).
-    """
-    training, test = split.training, split.test
-    panels = selected.panels
-    features = np.unique(np.concatenate(panels))
-    rows = np.concatenate([training, test])
-    n = len(training)
-    Z, _mean, _deviation = standardised(
-        selected.view.columns(features, rows), np.arange(n), data.weights[training]
-    )
-    taught, tested = Z[:, :n].copy(), Z[:, n:].copy()
-    log_odds = np.empty((len(panels), penalties.shape[1], len(test)))
-    for p, panel in enumerate(panels):
-        fits = fit_panels(
-            taught,
-            [np.searchsorted(features, panel)],
-            data.y[training],
+        Returns
+        -------
+        ndarray of shape (n_panels, n_penalties, n_test)
+            Log-odds.
+
+        Raises
+        ------
+        FitError
+            A refit that did not converge.
+        """
+        training, test = split.training, split.test
+        panels = selected.panels
+        features = np.unique(np.concatenate(panels))
+        rows = np.concatenate([training, test])
+        n = len(training)
+        Z, _mean, _deviation = standardised(
+            self.marker_values(selected.view, data, training, features, rows),
+            np.arange(n),
             data.weights[training],
-            penalties[p],
         )
-        log_odds[p] = fits.linear_predictors(tested)[0]
-    return log_odds
+        taught, tested = Z[:, :n].copy(), Z[:, n:].copy()
+        log_odds = np.empty((len(panels), penalties.shape[1], len(test)))
+        for p, panel in enumerate(panels):
+            fits = fit_panels(
+                taught,
+                [np.searchsorted(features, panel)],
+                data.y[training],
+                data.weights[training],
+                penalties[p],
+            )
+            log_odds[p] = fits.linear_predictors(tested)[0]
+        return log_odds
+
+    def marker_values(
+        self,
+        view: DesignView,
+        data: ProcedureData,
+        training: NDArray[np.int64],
+        features: NDArray[np.int64],
+        rows: NDArray[np.int64],
+    ) -> NDArray[np.float64]:
+        """Return markers as their panel is fitted and scored with.
+
+        Parameters
+        ----------
+        view : DesignView
+            What selected them.
+        data : ProcedureData
+            Shared data.
+        training : ndarray of int64
+            Rows that teach the assay part.
+        features, rows : ndarray of int64
+            Markers, ascending, and samples.
+
+        Returns
+        -------
+        ndarray of shape (n_chosen, n_rows), float64
+            By the assay part, from the markers and the references alone; else as the
+            view has them.
+        """
+        if self.assay is None or data.values is None:
+            return view.columns(features, rows)
+        references = self.assay.reference_candidates(data.context)
+        measured = np.union1d(features, references)
+        _state, alone = self.assay.prepare(
+            self.assay.base(data.values[measured]),
+            training,
+            np.full(len(measured), "", object),
+            data.context.among(measured),
+        )
+        return alone.columns(np.searchsorted(measured, features), rows)

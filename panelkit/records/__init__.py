@@ -38,7 +38,7 @@ from panelkit.records.openings import Opening
 from panelkit.records.outcome import Outcome, OutcomeKind
 from panelkit.records.panel_cost import LINE_WORDS, CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
-from panelkit.records.preparation import RecipeState
+from panelkit.records.preparation import RecipeContext, RecipeState, StepState
 from panelkit.records.price_answer import (
     Assumption,
     CostSheet,
@@ -108,6 +108,7 @@ __all__ = [
     "PriceAnswer",
     "PriceList",
     "PriceQuestion",
+    "RecipeContext",
     "RecipeState",
     "Record",
     "ReplicateAgreement",
@@ -124,6 +125,7 @@ __all__ = [
     "Stability",
     "Stair",
     "StepDown",
+    "StepState",
     "SubsamplePlan",
     "TunedChoice",
     "Variation",

@@ -10,11 +10,10 @@ from panelkit.costing import (
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.ingest import guess_scale
-from panelkit.preparation import Recipe, default_steps
 from panelkit.records import Cohort, Finding
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
 __all__ = ["draws_of", "procedure_of"]
 
@@ -56,12 +55,11 @@ def procedure_of(
             accepted="a binary outcome",
             next_step="Name outcome and positive",
         )
-    steps = plan.preparation.discovery
-    if steps is None:
-        steps = default_steps(guess_scale(cohort.values).kind)
-    recipe = Recipe(
-        steps, plan.preparation.log2_offset, plan.preparation.max_missing_share
-    )
+    context = context_of(cohort)
+    recipe, assay = recipes_of(plan, cohort)
+    for part in (recipe, assay):
+        if part is not None:
+            part.check(context)
     section = plan.shortlist
     rules = ShortlistRules(
         threshold=section.threshold,
@@ -94,6 +92,8 @@ def procedure_of(
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        context=context,
+        values=None if assay is None else cohort.values,
         blocks=cohort.design.blocks,
         folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
     )
@@ -108,7 +108,7 @@ def procedure_of(
             "surely are",
             next_step="Name smaller sizes, or raise [shortlist] candidates",
         )
-    finding = []
+    finding = [] if assay is not None else assay_findings(recipe)
     if left := [size for size in plan.panels.sizes if size > usable]:
         finding.append(
             Finding(
@@ -120,7 +120,8 @@ def procedure_of(
                 "Raise [shortlist] candidates to have them",
             )
         )
-    return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+    procedure = Procedure(recipe, rules, plan.panels.makers, sizes, assay=assay)
+    return procedure, data, finding
 
 
 def draws_of(plan: Study, data: ProcedureData) -> Draws:

@@ -5,6 +5,7 @@ import platform
 from collections.abc import Mapping
 from dataclasses import asdict
 from importlib.metadata import version
+from typing import Any
 
 from panelkit.config import Study
 from panelkit.records import RunRecord
@@ -15,7 +16,12 @@ __all__ = ["record_bytes", "run_record", "without_prices"]
 LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
 
 
-def run_record(study: Study, inputs: Mapping[str, str], openings: int = 0) -> RunRecord:
+def run_record(
+    study: Study,
+    inputs: Mapping[str, str],
+    steps: Mapping[str, Any],
+    openings: int = 0,
+) -> RunRecord:
     """Return the record of a run.
 
     Parameters
@@ -24,6 +30,8 @@ def run_record(study: Study, inputs: Mapping[str, str], openings: int = 0) -> Ru
         Its effective settings enter, not its text.
     inputs : mapping of str to str
         Role of each input file to its SHA-256.
+    steps : mapping of str to object
+        Discovery and assay part with every default written out.
     openings : int
         How often the rows that were set aside have been opened so far.
 
@@ -32,10 +40,12 @@ def run_record(study: Study, inputs: Mapping[str, str], openings: int = 0) -> Ru
     RunRecord
         Equal for equal results.
     """
+    settings = study.effective()
+    settings["preparation"] = {**settings["preparation"], **steps}
     return RunRecord(
         format=1,
         panelkit=version("panelkit"),
-        study=study.effective(),
+        study=settings,
         inputs=dict(sorted(inputs.items())),
         versions={
             "python": platform.python_version(),

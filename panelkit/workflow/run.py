@@ -29,6 +29,7 @@ from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
+from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import record_bytes, run_record, without_prices
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
@@ -129,8 +130,12 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    inputs_read = {**(cohort.sources or {}), **known.price_hashes}
-    record = run_record(plan, inputs_read, len(cohort.openings))
+    record = run_record(
+        plan,
+        {**(cohort.sources or {}), **known.price_hashes},
+        preparation_tables(procedure.recipe, procedure.assay),
+        len(cohort.openings),
+    )
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content, without_prices)

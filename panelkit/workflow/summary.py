@@ -64,7 +64,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         n_features=cohort.n_features,
         scheme=_scheme(plan, draws),
         confidence=confidence,
-        preparation=procedure.recipe.steps,
+        preparation=procedure.recipe.words(),
         findings=findings,
         flow=cohort.flow,
         bound=selected.stability.bound,

@@ -291,6 +291,9 @@ MADE = {
     "PanelCost": panel_cost,
     "PathSet": path_set,
     "PriceList": lambda: records.PriceList((assay(),), findings()),
+    "RecipeContext": lambda: records.RecipeContext(
+        features=objects("F1", "F2", "F3"), batch=objects("a", "a", "b", "b")
+    ),
     "RecipeState": lambda: records.RecipeState(
         floats(N_FEATURES), np.ones(N_FEATURES, bool), objects("", "", "constant")
     ),
@@ -303,6 +306,7 @@ MADE = {
     "RunSummary": run_summary,
     "ShortlistTable": shortlist_table,
     "Stability": stability,
+    "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
     "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
 }
