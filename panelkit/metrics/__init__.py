@@ -6,6 +6,7 @@ from panelkit.metrics.association import (
     cramers_v_corrected,
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
+from panelkit.metrics.cross_validated import Measure, cross_validate
 from panelkit.metrics.discrimination import auc, auc_placements
 from panelkit.metrics.intervals import (
     CrossValidated,
@@ -14,19 +15,51 @@ from panelkit.metrics.intervals import (
     naive_se,
     paired_interval,
 )
+from panelkit.metrics.numeric import linear_slope, r_squared, root_mean_square
+from panelkit.metrics.several_classes import (
+    class_areas,
+    hand_till,
+    log_loss_of_classes,
+    softmax,
+)
+from panelkit.metrics.survival import (
+    censoring_curve,
+    concordance,
+    horizon_auc,
+    horizon_brier,
+    uno_concordance,
+)
+from panelkit.metrics.utility import balanced_accuracy, best_threshold, net_benefit
 
 __all__ = [
     "CrossValidated",
+    "Measure",
     "auc",
     "auc_placements",
+    "balanced_accuracy",
+    "best_threshold",
     "brier",
     "calibration_slope",
+    "censoring_curve",
+    "class_areas",
+    "concordance",
     "contingency_table",
     "corrected_se",
     "cramers_v",
     "cramers_v_corrected",
+    "cross_validate",
     "cross_validated_auc",
+    "hand_till",
+    "horizon_auc",
+    "horizon_brier",
+    "linear_slope",
     "log_loss",
+    "log_loss_of_classes",
     "naive_se",
+    "net_benefit",
     "paired_interval",
+    "r_squared",
+    "root_mean_square",
+    "softmax",
+    "uno_concordance",
 ]
