@@ -1,54 +1,99 @@
 """Panels, what they cost, and what their accuracy honestly is."""
 
 from panelkit.costing.choice import choose
-from panelkit.costing.comparators import compare
+from panelkit.costing.comparators import compare, no_better_than_random
+from panelkit.costing.comparisons import (
+    Comparison,
+    FoldWork,
+    LearntToo,
+    RandomPanels,
+    comparisons_for,
+)
+from panelkit.costing.data import ProcedureData, Split
 from panelkit.costing.folds import draw_folds
 from panelkit.costing.frontier import Judge, build_frontier
 from panelkit.costing.honest_accuracy import (
     Draws,
+    Everyone,
     HonestAccuracy,
-    choose_for_everyone,
     draw_everything,
     estimate_accuracy,
+    tune_on_everyone,
 )
-from panelkit.costing.makers import MAKERS, Evidence, Maker, evidence_of, maker_named
+from panelkit.costing.makers import (
+    MAKERS,
+    Evidence,
+    Maker,
+    maker_named,
+    register_maker,
+)
 from panelkit.costing.money import format_money, round_money
 from panelkit.costing.panel_prices import PanelPricer
 from panelkit.costing.pricing import programme_cost
-from panelkit.costing.procedure import (
-    Learnt,
-    Procedure,
-    ProcedureData,
-    Selected,
-    Split,
+from panelkit.costing.primary import Primary, apply_rule, choose_for_everyone
+from panelkit.costing.procedure import Learnt, Procedure, Selected
+from panelkit.costing.rules import (
+    RULES,
+    Curve,
+    Pick,
+    Rule,
+    pick,
+    within_margin,
+    within_one_se,
 )
-from panelkit.costing.tuning import choose_within_one_se, within_one_se
+from panelkit.costing.tasks import (
+    BinaryTask,
+    ClassesTask,
+    NumberTask,
+    SurvivalTask,
+    Task,
+)
 
 __all__ = [
     "MAKERS",
+    "RULES",
+    "BinaryTask",
+    "ClassesTask",
+    "Comparison",
+    "Curve",
     "Draws",
+    "Everyone",
     "Evidence",
+    "FoldWork",
     "HonestAccuracy",
     "Judge",
     "Learnt",
+    "LearntToo",
     "Maker",
+    "NumberTask",
     "PanelPricer",
+    "Pick",
+    "Primary",
     "Procedure",
     "ProcedureData",
+    "RandomPanels",
+    "Rule",
     "Selected",
     "Split",
+    "SurvivalTask",
+    "Task",
+    "apply_rule",
     "build_frontier",
     "choose",
     "choose_for_everyone",
-    "choose_within_one_se",
     "compare",
+    "comparisons_for",
     "draw_everything",
     "draw_folds",
     "estimate_accuracy",
-    "evidence_of",
     "format_money",
     "maker_named",
+    "no_better_than_random",
+    "pick",
     "programme_cost",
+    "register_maker",
     "round_money",
+    "tune_on_everyone",
+    "within_margin",
     "within_one_se",
 ]

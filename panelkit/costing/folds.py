@@ -10,19 +10,20 @@ __all__ = ["draw_folds"]
 
 
 def draw_folds(
-    subjects: NDArray[np.int64],
-    y: NDArray[np.float64],
+    units: NDArray[np.int64],
+    strata: NDArray[np.int64],
     n_folds: int,
     generators: list[np.random.Generator],
 ) -> FoldPlan:
-    """Draw repeated folds; a subject is never in training and test at once.
+    """Draw repeated folds; a unit is never in training and test at once.
 
     Parameters
     ----------
-    subjects : ndarray of shape (n_samples,), int64
-        Subject of each sample.
-    y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1; a subject counts with the class of its first sample.
+    units : ndarray of shape (n_samples,), int64
+        What stays together: the subject of each sample, or its matched set.
+    strata : ndarray of shape (n_samples,), int64
+        Labels kept in proportion, such as the outcome; a unit counts with the label of
+        its first sample.
     n_folds : int
         Folds a repeat.
     generators : list of numpy.random.Generator
@@ -31,16 +32,17 @@ def draw_folds(
     Returns
     -------
     FoldPlan
-        Subjects of each class differ by at most one between folds.
+        Units of each stratum differ by at most one between folds.
 
     Raises
     ------
     FitError
-        Fewer subjects than folds in a class.
+        Fewer units than folds in a stratum.
     """
-    own, first = np.unique(subjects, return_index=True)
-    classes = [own[y[first] == value] for value in (0.0, 1.0)]
-    smallest = min(len(members) for members in classes)
+    own, first = np.unique(units, return_index=True)
+    labels = np.unique(strata[first])
+    members = [own[strata[first] == label] for label in labels]
+    smallest = min(len(each) for each in members)
     if n_folds < 2 or smallest < n_folds:
         raise FitError(
             code="too-few-for-folds",
@@ -49,13 +51,13 @@ def draw_folds(
             accepted="at least 2 folds, and a subject of each class in every fold",
             next_step="Use fewer folds, or add subjects of the smaller class",
         )
-    plan = np.empty((len(generators), len(y)), np.int64)
+    plan = np.empty((len(generators), len(strata)), np.int64)
     for repeat, generator in enumerate(generators):
         fold_of = np.empty(int(own.max()) + 1, np.int64)
         shift = 0
-        for members in classes:
-            mixed = generator.permutation(members)
+        for each in members:
+            mixed = generator.permutation(each)
             fold_of[mixed] = (np.arange(len(mixed)) + shift) % n_folds
-            shift += len(mixed)  # the classes' larger folds fall on different folds
-        plan[repeat] = fold_of[subjects]
+            shift += len(mixed)  # the strata's larger folds fall on different folds
+        plan[repeat] = fold_of[units]
     return FoldPlan(plan, n_folds)

@@ -1,6 +1,6 @@
 """What a panel costs on each platform."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 from panelkit.config import PlatformSection, ProgrammeSection
 from panelkit.costing.pricing import programme_cost
@@ -60,6 +60,17 @@ class PanelPricer:
                 sorted(able, key=lambda cost: (cost.total, cost.platform))
             )
         return self._known[key]
+
+    def lowest(self, markers: Iterable[str]) -> float:
+        """Return the cost on the cheapest platform; NaN where none can run the panel.
+
+        Raises
+        ------
+        InputDataError
+            A price that is needed is missing.
+        """
+        costs = self.costs([str(marker) for marker in markers])
+        return float(costs[0].total) if costs else float("nan")
 
     def _cost(self, markers: Sequence[str], platform: str) -> PanelCost | None:
         try:

@@ -7,7 +7,7 @@ from panelkit.metrics.association import (
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
 from panelkit.metrics.cross_validated import Measure, cross_validate
-from panelkit.metrics.discrimination import auc, auc_placements
+from panelkit.metrics.discrimination import areas, auc, auc_placements
 from panelkit.metrics.intervals import (
     CrossValidated,
     corrected_se,
@@ -34,6 +34,7 @@ from panelkit.metrics.utility import balanced_accuracy, best_threshold, net_bene
 __all__ = [
     "CrossValidated",
     "Measure",
+    "areas",
     "auc",
     "auc_placements",
     "balanced_accuracy",

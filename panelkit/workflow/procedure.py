@@ -1,10 +1,20 @@
 """What is repeated in every fold, as a study asks for it."""
 
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+
 from panelkit.config import Study
 from panelkit.costing import (
+    BinaryTask,
+    Comparison,
     Draws,
     Procedure,
     ProcedureData,
+    RandomPanels,
+    Rule,
+    comparisons_for,
     draw_everything,
     maker_named,
 )
@@ -12,10 +22,17 @@ from panelkit.errors import InputDataError, StudyFileError
 from panelkit.ingest import guess_scale
 from panelkit.preparation import Recipe, default_steps
 from panelkit.records import Cohort, Finding
+from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
 
-__all__ = ["draws_of", "procedure_of"]
+__all__ = [
+    "comparisons_of",
+    "draws_of",
+    "primary_rule",
+    "procedure_of",
+    "secondary_rules",
+]
 
 
 def procedure_of(
@@ -87,7 +104,7 @@ def procedure_of(
         )
     data = ProcedureData(
         base=recipe.base(cohort.values),
-        y=cohort.outcome.values,
+        task=BinaryTask(cohort.outcome.values),
         weights=cohort.design.weights,
         subjects=cohort.design.subject,
         barred=barred,
@@ -148,3 +165,42 @@ def draws_of(plan: Study, data: ProcedureData) -> Draws:
         subsamples=plan.shortlist.subsamples,
         inner_subsamples=plan.accuracy.inner_subsamples,
     )
+
+
+def comparisons_of(
+    plan: Study, procedure: Procedure, data: ProcedureData
+) -> Sequence[Comparison]:
+    """Return what is learnt beside the panels in every fold."""
+    usable = np.flatnonzero(data.barred == "")
+    random = RandomPanels.drawn(
+        procedure.sizes,
+        usable,
+        plan.accuracy.random_panels,
+        2 * plan.shortlist.candidates + len(data.always),
+        generator(plan.seed, "random-panels"),
+    )
+    return comparisons_for(data, random)
+
+
+def primary_rule(plan: Study) -> Rule:
+    """Return the rule of the headline."""
+    choice = plan.choice
+    return Rule(
+        choice.rule,
+        margin=choice.demand("margin") or 0.0,
+        budget=choice.demand("budget"),
+        required_accuracy=choice.demand("required_accuracy"),
+    )
+
+
+def secondary_rules(plan: Study) -> list[Rule]:
+    """Return the rules that are shown beside the primary one."""
+    own = primary_rule(plan)
+    names = ["smallest-within-one-se", "cheapest-within-one-se"]
+    if own.margin:
+        names += ["smallest-within-margin", "cheapest-within-margin"]
+    if own.budget is not None:
+        names.append("best-under-budget")
+    if own.required_accuracy is not None:
+        names.append("cheapest-above-accuracy")
+    return [replace(own, name=name) for name in names]

@@ -6,7 +6,13 @@ from dataclasses import dataclass
 import numpy as np
 import pytest
 
-from panelkit.costing import Procedure, ProcedureData, Split, draw_folds
+from panelkit.costing import (
+    BinaryTask,
+    Procedure,
+    ProcedureData,
+    Split,
+    draw_folds,
+)
 from panelkit.fits import fit_panels, standardised
 from panelkit.metrics import auc
 from panelkit.preparation import Recipe
@@ -40,7 +46,7 @@ class Cohort:
         return dataclasses.replace(
             ProcedureData(
                 base=self.base if base is None else base,
-                y=self.y,
+                task=BinaryTask(self.y),
                 weights=self.weights,
                 subjects=self.subjects,
                 barred=np.full(p, "", object),
@@ -103,9 +109,8 @@ def everything(learnt):
     found["state"] = learnt.selected.view.state.digest()
     found["panels"] = [panel.tolist() for panel in learnt.selected.panels]
     found["penalties"] = learnt.penalties.tolist()
-    found["chosen"] = learnt.chosen
     found["best"] = learnt.tuning.best.tobytes()
-    found["area"] = learnt.tuning.area.tobytes()
+    found["area"] = learnt.tuning.metric.tobytes()
     return found
 
 
@@ -129,7 +134,7 @@ def test_held_out_rows_change_no_bit_of_what_is_learnt(kind, change, fold, proce
     other = procedure.learn(cohort.data(changed), split)
     assert everything(one) == everything(other)
     if change == "random":
-        assert one.log_odds.tobytes() != other.log_odds.tobytes()  # it was applied
+        assert one.predicted.tobytes() != other.predicted.tobytes()  # it was applied
 
 
 @pytest.mark.parametrize("seed", [2, 4])
@@ -157,9 +162,11 @@ def test_held_out_outcomes_change_nothing_at_all(threads, procedure):
     weights = cohort.weights.copy()
     weights[test] = 100.0
     one = procedure.learn(cohort.data(), split, threads)
-    two = procedure.learn(cohort.data(y=other, weights=weights), split, threads)
+    two = procedure.learn(
+        cohort.data(task=BinaryTask(other), weights=weights), split, threads
+    )
     assert everything(one) == everything(two)
-    assert one.log_odds.tobytes() == two.log_odds.tobytes()
+    assert one.predicted.tobytes() == two.predicted.tobytes()
 
 
 def test_a_training_value_does_change_what_is_learnt(procedure):
@@ -195,7 +202,7 @@ def test_threads_change_no_bit(procedure, monkeypatch):
     one = procedure.learn(cohort.data(), split, threads=1)
     two = procedure.learn(cohort.data(), split, threads=2)
     assert everything(one) == everything(two)
-    assert one.log_odds.tobytes() == two.log_odds.tobytes()
+    assert one.predicted.tobytes() == two.predicted.tobytes()
 
 
 def test_predictions_come_from_a_refit_on_the_training_rows(procedure):
@@ -216,7 +223,7 @@ def test_predictions_come_from_a_refit_on_the_training_rows(procedure):
             learnt.penalties[p : p + 1],
         )
         expected = fits.linear_predictors(Z[:, test])[0, 0]
-        assert learnt.log_odds[p] == pytest.approx(expected, abs=1e-12)
+        assert learnt.predicted[p] == pytest.approx(expected, abs=1e-12)
         # tuned on fewer rows than it is used on
         ratio = (len(split.inner) - 1) / len(split.inner)
         grid = np.array(procedure.ridge_penalties) * ratio
@@ -253,7 +260,7 @@ def test_no_test_rows_are_no_predictions(procedure):
     cohort = Cohort.drawn(9, 40, 100, signals=4)
     split = cohort.split(np.arange(40), np.empty(0, np.int64))
     learnt = procedure.learn(cohort.data(), split)
-    assert learnt.log_odds.shape == (6, 0)
+    assert learnt.predicted.shape == (6, 0)
 
 
 @pytest.mark.parametrize("seed", [0, 1])
@@ -265,7 +272,7 @@ def test_ridge_on_all_reads_no_held_out_outcome_and_learns_a_signal(seed, proced
     found = procedure.ridge_on_all(cohort.data(), split, view)
     other = cohort.y.copy()
     other[test] = 1.0 - other[test]
-    again = procedure.ridge_on_all(cohort.data(y=other), split, view)
+    again = procedure.ridge_on_all(cohort.data(task=BinaryTask(other)), split, view)
     assert found.tobytes() == again.tobytes()
     assert auc(found, cohort.y[test]) > 0.8
 
@@ -277,7 +284,7 @@ def test_signal_is_found_out_of_fold(procedure):
     for fold in range(3):
         training, test = folds.split(0, fold)
         learnt = procedure.learn(cohort.data(), cohort.split(training, test))
-        areas.append([auc(eta, cohort.y[test]) for eta in learnt.log_odds])
+        areas.append([auc(eta, cohort.y[test]) for eta in learnt.predicted])
     assert np.mean(areas, axis=0)[2] > 0.85  # six markers by frequency
 
 
@@ -305,7 +312,7 @@ def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
             split = cohort.split(training, test, seed)
             learnt = procedure.learn(data, split)
             for maker in range(2):
-                honest[seed, maker] += auc(learnt.log_odds[maker], data.y[test]) / 5
+                honest[seed, maker] += auc(learnt.predicted[maker], cohort.y[test]) / 5
                 panel = whole.panels[maker]
                 Z, _, _ = standardised(
                     whole.view.columns(panel, np.arange(40)),
@@ -315,11 +322,11 @@ def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
                 fits = fit_panels(
                     Z[:, training],
                     [np.arange(len(panel))],
-                    data.y[training],
+                    cohort.y[training],
                     np.ones(len(training)),
                     learnt.penalties[maker : maker + 1],
                 )
                 eta = fits.linear_predictors(Z[:, test])[0, 0]
-                flattering[seed, maker] += auc(eta, data.y[test]) / 5
+                flattering[seed, maker] += auc(eta, cohort.y[test]) / 5
     assert honest.mean(axis=0) == pytest.approx([0.5, 0.5], abs=0.06)
     assert (flattering.mean(axis=0) > 0.85).all()

@@ -250,7 +250,9 @@ MADE = {
     "ShortlistTable": shortlist_table,
     "Stability": stability,
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
-    "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
+    "TunedChoice": lambda: records.TunedChoice(
+        whole(2, 2), whole(2, 2), np.ones((2, 2), bool)
+    ),
 }
 
 
