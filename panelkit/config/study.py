@@ -217,6 +217,8 @@ class AccuracySection(Section):
         Halves of the stability selection inside an inner fold, an even number.
     random_panels : int
         Random panels of each size and kind, to compare with.
+    learning_curve : bool
+        Whether the headline is repeated with fewer training people.
     metric : {"auc"}
         Area under the ROC curve.
     confidence : float
@@ -228,6 +230,7 @@ class AccuracySection(Section):
     inner_folds: int = Field(default=ACCURACY.inner_folds, ge=2, le=20)
     inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
     random_panels: int = Field(default=ACCURACY.random_panels, ge=20, le=10_000)
+    learning_curve: bool = ACCURACY.learning_curve
     metric: Literal["auc"] = ACCURACY.metric
     confidence: Share = ACCURACY.confidence
 

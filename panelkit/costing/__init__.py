@@ -1,5 +1,6 @@
 """Panels, what they cost, and what their accuracy honestly is."""
 
+from panelkit.costing.added_value import added_value_of, handling_of
 from panelkit.costing.choice import choose
 from panelkit.costing.comparators import compare, no_better_than_random
 from panelkit.costing.comparisons import (
@@ -20,6 +21,7 @@ from panelkit.costing.honest_accuracy import (
     estimate_accuracy,
     tune_on_everyone,
 )
+from panelkit.costing.learning_curve import learning_curve
 from panelkit.costing.makers import (
     MAKERS,
     Evidence,
@@ -32,6 +34,7 @@ from panelkit.costing.panel_prices import PanelPricer
 from panelkit.costing.pricing import programme_cost
 from panelkit.costing.primary import Primary, apply_rule, choose_for_everyone
 from panelkit.costing.procedure import Learnt, Procedure, Selected
+from panelkit.costing.roles import RoleLosses, learn_roles
 from panelkit.costing.rules import (
     RULES,
     Curve,
@@ -41,6 +44,7 @@ from panelkit.costing.rules import (
     within_margin,
     within_one_se,
 )
+from panelkit.costing.subgroups import subgroups_of
 from panelkit.costing.tasks import (
     BinaryTask,
     ClassesTask,
@@ -48,6 +52,7 @@ from panelkit.costing.tasks import (
     SurvivalTask,
     Task,
 )
+from panelkit.costing.weaknesses import fragility_of, stand_ins_of
 
 __all__ = [
     "MAKERS",
@@ -72,11 +77,13 @@ __all__ = [
     "Procedure",
     "ProcedureData",
     "RandomPanels",
+    "RoleLosses",
     "Rule",
     "Selected",
     "Split",
     "SurvivalTask",
     "Task",
+    "added_value_of",
     "apply_rule",
     "build_frontier",
     "choose",
@@ -87,12 +94,18 @@ __all__ = [
     "draw_folds",
     "estimate_accuracy",
     "format_money",
+    "fragility_of",
+    "handling_of",
+    "learn_roles",
+    "learning_curve",
     "maker_named",
     "no_better_than_random",
     "pick",
     "programme_cost",
     "register_maker",
     "round_money",
+    "stand_ins_of",
+    "subgroups_of",
     "tune_on_everyone",
     "within_margin",
     "within_one_se",

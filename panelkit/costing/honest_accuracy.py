@@ -11,7 +11,7 @@ from panelkit.costing.comparisons import Comparison, FoldWork
 from panelkit.costing.data import ProcedureData, Split
 from panelkit.costing.folds import draw_folds
 from panelkit.costing.procedure import Procedure
-from panelkit.records import FoldPanels, FoldPlan, OutOfFold
+from panelkit.records import FoldPanels, FoldPlan, OutOfFold, SubsamplePlan
 from panelkit.runtime import (
     BlockResult,
     BlockStore,
@@ -24,16 +24,40 @@ from panelkit.runtime import (
 from panelkit.stability import draw_pairs
 
 __all__ = [
+    "DrawRules",
     "Draws",
     "Everyone",
     "HonestAccuracy",
     "draw_everything",
+    "draw_split",
     "estimate_accuracy",
     "tune_on_everyone",
 ]
 
 PREDICTED = "predicted "  # names of blocks' arrays that hold predictions of others
 FIGURE = "figure "
+
+
+@dataclass(frozen=True, slots=True)
+class DrawRules:
+    """How folds and subsamples are drawn.
+
+    Attributes
+    ----------
+    seed : int
+        Root of the seed tree.
+    n_folds, n_repeats, n_inner : int
+        Outer folds, their repeats, inner folds.
+    subsamples, inner_subsamples : int
+        Halves of the stability selection, outside and inside inner folds.
+    """
+
+    seed: int
+    n_folds: int
+    n_repeats: int
+    n_inner: int
+    subsamples: int
+    inner_subsamples: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -48,11 +72,14 @@ class Draws:
         Each outer fold with its pairs and inner folds.
     everyone : Split
         All rows teach, none is tested: for the printed panels.
+    rules : DrawRules
+        How they were drawn.
     """
 
     folds: FoldPlan
     splits: Mapping[tuple[int, int], Split]
     everyone: Split
+    rules: DrawRules
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -112,12 +139,8 @@ def draw_everything(
     ----------
     data : ProcedureData
         Outcome and subjects are used, no value of the matrix.
-    seed : int
-        Root of the tree.
-    n_folds, n_repeats, n_inner : int
-        Outer folds, their repeats, inner folds.
-    subsamples, inner_subsamples : int
-        Halves of the stability selection, outside and inside inner folds.
+    seed, n_folds, n_repeats, n_inner, subsamples, inner_subsamples : int
+        As in `DrawRules`.
 
     Returns
     -------
@@ -129,66 +152,82 @@ def draw_everything(
     FitError
         Too few subjects in a class.
     """
-    strata, subjects = data.task.strata, data.subjects
-
-    def split(
-        training: NDArray[np.int64], test: NDArray[np.int64], *place: str | int
-    ) -> Split:
-        inner = _inner_splits(
-            data, training, seed, place, n_inner, inner_subsamples // 2
-        )
-        pairs = draw_pairs(
-            training,
-            subjects,
-            strata.astype(np.float64),
-            subsamples // 2,
-            generator(seed, "subsamples", *place),
-        )
-        return Split(training, test, pairs, inner)
-
+    rules = DrawRules(seed, n_folds, n_repeats, n_inner, subsamples, inner_subsamples)
     folds = draw_folds(
-        subjects,
-        strata,
+        data.subjects,
+        data.task.strata,
         n_folds,
         [generator(seed, "folds", repeat) for repeat in range(n_repeats)],
     )
-    everyone = split(np.arange(data.n_samples), np.empty(0, np.int64), "everyone")
-    splits = {
-        (repeat, fold): split(*folds.split(repeat, fold), "fold", repeat, fold)
-        for repeat in range(n_repeats)
-        for fold in range(n_folds)
-    }
-    return Draws(folds, splits, everyone)
+    nobody = np.empty(0, np.int64)
+    return Draws(
+        folds,
+        {
+            (repeat, fold): draw_split(
+                data, *folds.split(repeat, fold), ("fold", repeat, fold), rules
+            )
+            for repeat in range(n_repeats)
+            for fold in range(n_folds)
+        },
+        draw_split(data, np.arange(data.n_samples), nobody, ("everyone",), rules),
+        rules,
+    )
 
 
-def _inner_splits(
+def draw_split(
     data: ProcedureData,
     training: NDArray[np.int64],
-    seed: int,
+    test: NDArray[np.int64],
     place: tuple[str | int, ...],
-    n_inner: int,
-    n_pairs: int,
-) -> tuple[Split, ...]:
+    rules: DrawRules,
+) -> Split:
+    """Draw the pairs and inner folds of some training rows.
+
+    Parameters
+    ----------
+    data : ProcedureData
+        Outcome and subjects are used.
+    training, test : ndarray of int64
+        Rows.
+    place : tuple of str or int
+        Where in the seed tree.
+    rules : DrawRules
+        How many of each.
+
+    Returns
+    -------
+    Split
+        With everything that is random in it.
+
+    Raises
+    ------
+    FitError
+        Too few subjects in a class.
+    """
     own = np.unique(data.subjects[training], return_inverse=True)[1]
     plan = draw_folds(
         own,
         data.task.strata[training],
-        n_inner,
-        [generator(seed, "inner-folds", *place)],
+        rules.n_inner,
+        [generator(rules.seed, "inner-folds", *place)],
     )
-    splits = []
-    for fold in range(n_inner):
-        teach, test = (training[rows] for rows in plan.split(0, fold))
-        draws = generator(seed, "inner-subsamples", *place, fold)
-        pairs = draw_pairs(
-            teach,
+
+    def pairs(rows: NDArray[np.int64], halves: int, *where: str | int) -> SubsamplePlan:
+        return draw_pairs(
+            rows,
             data.subjects,
             data.task.strata.astype(np.float64),
-            n_pairs,
-            draws,
+            halves // 2,
+            generator(rules.seed, *where),
         )
-        splits.append(Split(teach, test, pairs))
-    return tuple(splits)
+
+    inner = []
+    for fold in range(rules.n_inner):
+        teach, judged = (training[rows] for rows in plan.split(0, fold))
+        halves = pairs(teach, rules.inner_subsamples, "inner-subsamples", *place, fold)
+        inner.append(Split(teach, judged, halves))
+    own_pairs = pairs(training, rules.subsamples, "subsamples", *place)
+    return Split(training, test, own_pairs, tuple(inner))
 
 
 def estimate_accuracy(

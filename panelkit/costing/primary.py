@@ -10,7 +10,7 @@ from panelkit.costing.procedure import Procedure
 from panelkit.costing.rules import Curve, Pick, Rule, pick
 from panelkit.records import FoldPlan, OutOfFold, TunedChoice
 
-__all__ = ["PRIMARY", "Primary", "apply_rule", "choose_for_everyone"]
+__all__ = ["PRIMARY", "Primary", "apply_rule", "choose_for_everyone", "curve_of_folds"]
 
 PRIMARY = "primary-rule"
 
@@ -40,11 +40,12 @@ class Primary:
     taken: Pick
 
 
-def _curve(
+def curve_of_folds(
     procedure: Procedure,
     metric: NDArray[np.float64],
-    cost: NDArray[np.float64] | None,
+    cost: NDArray[np.float64] | None = None,
 ) -> Curve:
+    """Return the curve of inner folds, (n_inner, n_panels), with costs if known."""
     sizes = np.array([size for _maker, size in procedure.kinds], np.float64)
     return Curve(
         metric=metric,
@@ -89,7 +90,7 @@ def apply_rule(
     met = np.empty(grid, np.bool_)
     for repeat, fold in np.ndindex(*grid):
         own = None if cost is None else cost[:, repeat, fold]
-        curve = _curve(procedure, accuracy.inner_metric[repeat, fold], own)
+        curve = curve_of_folds(procedure, accuracy.inner_metric[repeat, fold], own)
         taken = pick(rule, curve)
         test = folds.split(repeat, fold)[1]
         panel = accuracy.panels[taken.row].predicted
@@ -124,4 +125,4 @@ def choose_for_everyone(
     Pick
         Position among the panels, makers first.
     """
-    return pick(rule, _curve(procedure, everyone.metric, cost))
+    return pick(rule, curve_of_folds(procedure, everyone.metric, cost))

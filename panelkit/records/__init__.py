@@ -9,6 +9,15 @@ from panelkit.records.accuracy import (
 )
 from panelkit.records.cohort import Cohort, Design, Outcome
 from panelkit.records.findings import Dropped, Finding, Findings, Flow, Severity
+from panelkit.records.fragility import (
+    AddedValue,
+    Aftermath,
+    Fragility,
+    Handling,
+    LearningPoint,
+    StandIn,
+    Subgroup,
+)
 from panelkit.records.frontier import (
     Choice,
     Frontier,
@@ -41,6 +50,8 @@ __all__ = [
     "ANY_MARKER",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
+    "AddedValue",
+    "Aftermath",
     "AssayPrice",
     "Choice",
     "Cohort",
@@ -54,9 +65,12 @@ __all__ = [
     "Flow",
     "FoldPanels",
     "FoldPlan",
+    "Fragility",
     "Frontier",
     "FrontierRow",
+    "Handling",
     "Headline",
+    "LearningPoint",
     "MatrixSource",
     "OutOfFold",
     "Outcome",
@@ -71,6 +85,8 @@ __all__ = [
     "Severity",
     "ShortlistTable",
     "Stability",
+    "StandIn",
+    "Subgroup",
     "SubsamplePlan",
     "TunedChoice",
     "check_price_columns",

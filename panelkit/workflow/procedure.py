@@ -4,6 +4,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from panelkit.config import Study
 from panelkit.costing import (
@@ -25,6 +26,7 @@ from panelkit.records import Cohort, Finding
 from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.columns import coded_columns
 
 __all__ = [
     "comparisons_of",
@@ -109,6 +111,9 @@ def procedure_of(
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        covariates=coded_columns(cohort, plan.cohort.covariates),
+        nuisance=coded_columns(cohort, plan.cohort.nuisance),
+        controls=_controls(cohort),
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
@@ -134,6 +139,14 @@ def procedure_of(
             )
         )
     return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+
+
+def _controls(cohort: Cohort) -> NDArray[np.int64]:
+    """Return the control features of the feature sheet."""
+    roles = cohort.feature_columns.get("role")
+    if roles is None:
+        return np.empty(0, np.int64)
+    return np.flatnonzero(np.array([str(role) == "control" for role in roles]))
 
 
 def draws_of(plan: Study, data: ProcedureData) -> Draws:

@@ -27,6 +27,7 @@ from panelkit.records import (
 )
 from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
+from panelkit.workflow.aftermath import learn_aftermath, write_aftermath
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
 from panelkit.workflow.primary import primary_of
@@ -159,8 +160,15 @@ def run_study(
     )
     clock.seconds["accuracy"] = round(time.perf_counter() - start, 3)
     folder.log(f"accuracy: {clock.seconds['accuracy']:.2f} s")
+    primary = primary_of(plan, known, selected, everyone, accuracy)
+    start = time.perf_counter()
+    aftermath = learn_aftermath(
+        plan, known, selected, primary, accuracy, inputs, store, how
+    )
+    clock.seconds["stand-ins and learning curve"] = round(
+        time.perf_counter() - start, 3
+    )
     with clock.stage("pricing and choice"):
-        primary = primary_of(plan, known, selected, everyone, accuracy)
         summary = summarise(
             plan, cohort, record, findings, procedure, data, draws, selected,
             primary, accuracy, pricer,
@@ -169,6 +177,7 @@ def run_study(
             folder, cohort, draws.folds, accuracy, primary, data.task, pricer
         )
         write_results(folder, summary)
+        write_aftermath(folder, aftermath)
     with clock.stage("report"):
         for name, page in render(summary).items():
             folder.write(name, page)
