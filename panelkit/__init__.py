@@ -11,8 +11,13 @@ if TYPE_CHECKING:
     from panelkit.costing import programme_cost
     from panelkit.errors import PanelkitError
     from panelkit.fits import fit_paths
-    from panelkit.ingest import check_cohort, read_cohort
-    from panelkit.workflow import check_study, draft_study, run_study
+    from panelkit.ingest import check_cohort, read_cohort, read_openings
+    from panelkit.workflow import (
+        check_study,
+        draft_study,
+        open_set_aside,
+        run_study,
+    )
 
 __all__ = [
     "PanelkitError",
@@ -20,8 +25,10 @@ __all__ = [
     "check_study",
     "draft_study",
     "fit_paths",
+    "open_set_aside",
     "programme_cost",
     "read_cohort",
+    "read_openings",
     "run_study",
 ]
 
@@ -31,8 +38,10 @@ _HOMES = {
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
     "fit_paths": "panelkit.fits",
+    "open_set_aside": "panelkit.workflow",
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
+    "read_openings": "panelkit.ingest",
     "run_study": "panelkit.workflow",
 }
 

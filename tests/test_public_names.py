@@ -17,8 +17,10 @@ NAMES = {
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
     "fit_paths": "panelkit.fits",
+    "open_set_aside": "panelkit.workflow",
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
+    "read_openings": "panelkit.ingest",
     "run_study": "panelkit.workflow",
 }
 IMPORT = "import sys, panelkit\nassert {home!r} not in sys.modules\npanelkit.{name}\n"

@@ -30,12 +30,20 @@ def command(study: Path, as_json: bool, quiet: bool) -> None:
         show_findings(cohort.findings)
         show_table(
             "participant flow",
-            ["class", "received", "matched", "with outcome", "kept", "analysed"],
+            [
+                "class",
+                "received",
+                "matched",
+                "with outcome",
+                "kept",
+                "analysed",
+                "set aside",
+            ],
             [
                 [str(value) or "(none)" for value in asdict(row).values()]
                 for row in cohort.flow
             ],
-            right=(1, 2, 3, 4, 5),
+            right=(1, 2, 3, 4, 5, 6),
         )
         console().print(
             f"{cohort.n_samples} samples of {cohort.design.n_subjects} subjects, "

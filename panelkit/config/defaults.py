@@ -13,6 +13,7 @@ __all__ = [
     "ACCURACY",
     "CHOICE",
     "COHORT",
+    "DESIGN",
     "ENGINE",
     "PANELS",
     "PLATFORM",
@@ -20,9 +21,13 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "STEPS",
+    "DesignKind",
 ]
 
 SEED: Final = 1
+
+DesignKind = Literal["cohort", "case-control", "matched"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,10 +38,46 @@ class _Cohort:
 
 
 @dataclass(frozen=True, slots=True)
+class _Design:
+    kind: DesignKind = "cohort"
+
+
+@dataclass(frozen=True, slots=True)
 class _Preparation:
     log2_offset: float = 1.0
     max_missing_share: float = 0.5
     """A feature missing in more than this share of training rows is left out."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Steps:
+    """Parameters of the steps of a recipe, beside those of [preparation] itself."""
+
+    cpm_prior: float = 2.0
+    """Counts added to every cell of a library of average size."""
+    count_offset: float = 1.0
+    """Added to counts that are already divided by their size factor."""
+    ratio_trim: float = 0.3
+    level_trim: float = 0.05
+    upper_quantile: float = 0.75
+    m_value_offset: float = 0.001
+    variance_number: int = 5000
+    prevalence_above: float = 0.0
+    prevalence_share: float = 0.1
+    detection_level: float = 0.0
+    detection_samples: int = 3
+    detection_unit: Literal["value", "per-million"] = "value"
+    least_reliability: float = 0.5
+    neighbours: int = 5
+    unseen_batch: Literal["grand-mean", "refuse"] = "grand-mean"
+    reference_measure: Literal["pairwise-variation", "variance-components"] = (
+        "pairwise-variation"
+    )
+    reference_number: int = 3
+    collapse_rule: Literal["highest-mean", "highest-variance", "median"] = (
+        "highest-mean"
+    )
+    value_scale: Literal["log2", "linear"] = "log2"
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,7 +161,9 @@ class _Platform:
 
 
 COHORT: Final = _Cohort()
+DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
+STEPS: Final = _Steps()
 ENGINE: Final = _Engine()
 SHORTLIST: Final = _Shortlist()
 PANELS: Final = _Panels()

@@ -11,7 +11,7 @@ from pydantic import BaseModel, ConfigDict, ValidationError
 
 from panelkit.errors import StudyFileError, name_some
 
-__all__ = ["Section", "check_section", "read_toml", "refuse_key"]
+__all__ = ["Section", "check_section", "plain_number", "read_toml", "refuse_key"]
 
 MAX_SHOWN: Final = 60
 
@@ -20,6 +20,11 @@ class Section(BaseModel):
     """A table of a TOML file: frozen, no key but its own."""
 
     model_config = ConfigDict(frozen=True, extra="forbid", allow_inf_nan=False)
+
+
+def plain_number(value: object) -> object:
+    """Return a decimal as a float; TOML decimals arrive as Decimal."""
+    return float(value) if isinstance(value, Decimal) else value
 
 
 S = TypeVar("S", bound=Section)

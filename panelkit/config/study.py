@@ -17,6 +17,7 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
 )
+from panelkit.config.design import DesignSection, check_design, outcome_kind
 from panelkit.config.programme import (
     PlatformSection,
     ProgrammeSection,
@@ -24,7 +25,13 @@ from panelkit.config.programme import (
     programme_section,
     read_platform_file,
 )
-from panelkit.config.sections import Section, check_section, read_toml, refuse_key
+from panelkit.config.sections import (
+    Section,
+    check_section,
+    plain_number,
+    read_toml,
+    refuse_key,
+)
 from panelkit.errors import StudyFileError, name_some
 
 __all__ = [
@@ -46,11 +53,6 @@ def _text(value: object) -> object:
     return str(value) if isinstance(value, int | Decimal) else value
 
 
-def _number(value: object) -> object:
-    """TOML decimals arrive as Decimal; statistics want floats."""
-    return float(value) if isinstance(value, Decimal) else value
-
-
 def _ascending(value: object) -> object:
     if isinstance(value, list | tuple):
         whole = all(type(size) is int for size in value)
@@ -59,8 +61,8 @@ def _ascending(value: object) -> object:
     return value
 
 
-Number = Annotated[float, BeforeValidator(_number)]
-Share = Annotated[float, Field(gt=0, lt=1), BeforeValidator(_number)]
+Number = Annotated[float, BeforeValidator(plain_number)]
+Share = Annotated[float, Field(gt=0, lt=1), BeforeValidator(plain_number)]
 ClassName = Annotated[str, BeforeValidator(_text)]
 Size = Annotated[int, Field(ge=1, le=1000)]
 
@@ -75,19 +77,46 @@ class CohortSection(Section):
     samples : str or None
         The sample sheet; an .h5ad file brings its own.
     features : str or None
-        Optional feature sheet with the columns feature, symbol, role.
+        Optional feature sheet with the columns feature, symbol, analyte, role and
+        assayable (platform names joined by ``;``), or a column assayable_NAME for each
+        platform.
+    assays : str or None
+        Optional sheet with the columns feature, analyte, assay: what measures what.
     outcome : str or None
-        A column of the sample sheet.
+        A column of the sample sheet: classes or a number.
+    kind : str or None
+        binary, classes, number or survival. Without it the other keys tell.
     positive : str
-        The class that scores point to.
+        Binary: the class that scores point to.
     negative : str or None
-        The other class; samples of further classes are then left out and counted.
+        Binary: the other class; samples of further classes are then left out and
+        counted.
+    classes : tuple of str
+        Three or more classes, in order; all of the column where only the kind is given.
+    unit : str
+        Of an outcome that is a number.
     time, event : str or None
-        Survival outcomes; not built yet and refused.
+        Survival: the columns with the time and with the event codes.
+    event_value, censored_value : str or None
+        Survival: the codes that mean event and censored, when they aren't 1 and 0.
+    horizon : float or None
+        Survival: the time up to which chances are asked for.
+    time_unit : str
+        Survival: unit of the times.
     keep : mapping
-        Row filters: column to a list of values, or to ``{ min, max }``.
-    subject, site, batch, replicate_of : str or None
+        Row filters: column to a list of values, to ``{ min, max }``, or to
+        ``{ from, to }`` with numbers or dates such as "2019-06-30"; ends included.
+    set_aside : mapping
+        Rows that nothing reads until they are opened, as ``{ column, values }`` or
+        ``{ column, from, to }``.
+    openings : str or None
+        File in which every opening of the rows set aside is recorded.
+    subject, site, batch, matched_set, replicate_of : str or None
         Columns of the sample sheet.
+    run_order : str or None
+        Column with each sample's place in the order of measurement.
+    folds : str or None
+        Column with the fold in which each sample is tested, in place of drawn folds.
     covariates, nuisance : tuple of str
         Columns that are checked against the outcome.
     accept : mapping of str to str
@@ -101,16 +130,31 @@ class CohortSection(Section):
     expression: str
     samples: str | None = None
     features: str | None = None
+    assays: str | None = None
     outcome: str | None = None
+    kind: Literal["binary", "classes", "number", "survival"] | None = None
     positive: ClassName | None = None
     negative: ClassName | None = None
+    classes: tuple[ClassName, ...] = ()
+    unit: str = ""
     time: str | None = None
     event: str | None = None
+    event_value: ClassName | None = None
+    censored_value: ClassName | None = None
+    horizon: Annotated[
+        Annotated[float, Field(gt=0)] | None, BeforeValidator(plain_number)
+    ] = None
+    time_unit: str = ""
     keep: Mapping[str, Any] = Field(default_factory=dict)
+    set_aside: Mapping[str, Any] = Field(default_factory=dict)
+    openings: str | None = None
     subject: str | None = None
     site: str | None = None
     batch: str | None = None
+    matched_set: str | None = None
+    run_order: str | None = None
     replicate_of: str | None = None
+    folds: str | None = None
     covariates: tuple[str, ...] = ()
     nuisance: tuple[str, ...] = ()
     accept: Mapping[str, str] = Field(default_factory=dict)
@@ -120,26 +164,56 @@ class CohortSection(Section):
     max_bad_cells: int = Field(default=COHORT.max_bad_cells, ge=0)
 
 
+def _steps(value: object) -> object:
+    """Let each step be a name, or a table with its name and its parameters."""
+    if not isinstance(value, list | tuple):
+        return value
+    steps: list[object] = []
+    for step in value:
+        named = step.get("step") if isinstance(step, Mapping) else step
+        if not isinstance(named, str):
+            raise ValueError(
+                'a list of steps, each a name or { step = "name", parameter = value }'
+            )
+        if isinstance(step, Mapping):
+            step = {key: plain_number(part) for key, part in step.items()}
+        steps.append(step)
+    return tuple(steps)
+
+
+StepEntries = Annotated[tuple[str | dict[str, Any], ...], BeforeValidator(_steps)]
+
+
 class PreparationSection(Section):
     """``[preparation]``: what is done to the values before anything is fitted.
 
     Attributes
     ----------
-    discovery : tuple of str or None
-        Steps in order: log2, filter, median-fill. None follows the scale finding.
+    discovery : tuple of str or table, or None
+        Steps in order, each a name or a table { step = "log-cpm", prior = 2.0 }:
+        log2, m-values, log-cpm, median-of-ratios, trimmed-mean, upper-quartile; then
+        quantile, median-difference; then batch-centre, reference-ratio; then
+        collapse; filter, variance, prevalence, detection, replicate-reliability; and
+        one of median-fill, half-minimum, below-limit, neighbours. None follows the
+        scale finding.
+    assay : tuple of str or table, or None
+        Steps that panels are refitted and judged with, from the panel's markers and
+        reference features alone: log2, m-values, reference-ratio, batch-centre,
+        median-fill, half-minimum, below-limit. None uses the discovery steps.
     log2_offset : float
         Added before the logarithm.
     max_missing_share : float
         Features missing in a larger share of the training rows are left out.
     """
 
-    discovery: tuple[str, ...] | None = None
-    log2_offset: Annotated[float, Field(ge=0), BeforeValidator(_number)] = (
+    discovery: StepEntries | None = None
+    assay: StepEntries | None = None
+    log2_offset: Annotated[float, Field(ge=0), BeforeValidator(plain_number)] = (
         PREPARATION.log2_offset
     )
-    max_missing_share: Annotated[float, Field(ge=0, le=1), BeforeValidator(_number)] = (
-        PREPARATION.max_missing_share
-    )
+    max_missing_share: Annotated[
+        float, Field(ge=0, le=1), BeforeValidator(plain_number)
+    ] = PREPARATION.max_missing_share
 
 
 class ShortlistSection(Section):
@@ -166,10 +240,10 @@ class ShortlistSection(Section):
     """
 
     subsamples: int = Field(default=SHORTLIST.subsamples, ge=4, le=100_000)
-    threshold: Annotated[float, Field(gt=0.5, le=1), BeforeValidator(_number)] = (
+    threshold: Annotated[float, Field(gt=0.5, le=1), BeforeValidator(plain_number)] = (
         SHORTLIST.threshold
     )
-    false_markers: Annotated[float, Field(gt=0), BeforeValidator(_number)] = (
+    false_markers: Annotated[float, Field(gt=0), BeforeValidator(plain_number)] = (
         SHORTLIST.false_markers
     )
     markers_per_subsample: Size | None = None
@@ -320,7 +394,8 @@ class Study:
         Where it was read; its relative paths are relative to this file's folder.
     seed : int
         Root of every random draw.
-    cohort, preparation, shortlist, panels, accuracy, choice, statement : Section
+    cohort, design, preparation, shortlist, panels, accuracy, choice, statement : \
+Section
         The tables, defaults filled in.
     programme : ProgrammeSection or None
         None: nothing is priced.
@@ -331,6 +406,7 @@ class Study:
     path: Path
     seed: int
     cohort: CohortSection
+    design: DesignSection
     preparation: PreparationSection
     shortlist: ShortlistSection
     panels: PanelsSection
@@ -350,11 +426,11 @@ class Study:
         File names are left out, since the record holds the files' hashes.
         """
         tables: dict[str, Any] = {"seed": self.seed}
-        for name in ("preparation", "shortlist", "panels", "accuracy", "choice"):
+        for name in _DECIDING:
             section: Section = getattr(self, name)
             tables[name] = section.model_dump(mode="json")
         cohort = self.cohort.model_dump(mode="json")
-        for name in ("expression", "samples", "features"):
+        for name in ("expression", "samples", "features", "assays", "openings"):
             cohort.pop(name)
         tables["cohort"] = cohort
         for name in ("prices", "platforms"):
@@ -374,6 +450,7 @@ class Study:
 # tables read as they stand; programme and platform have readers of their own
 PLAIN_SECTIONS: dict[str, type[Section]] = {
     "cohort": CohortSection,
+    "design": DesignSection,
     "preparation": PreparationSection,
     "shortlist": ShortlistSection,
     "panels": PanelsSection,
@@ -381,6 +458,7 @@ PLAIN_SECTIONS: dict[str, type[Section]] = {
     "choice": ChoiceSection,
     "statement": StatementSection,
 }
+_DECIDING = ("design", "preparation", "shortlist", "panels", "accuracy", "choice")
 _KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
 
 
@@ -428,6 +506,7 @@ def read_study(path: str | Path) -> Study:
     }
     _check_lists(sections, str(path))
     _check_rule(sections["choice"], str(path), priced="programme" in tables)
+    _check_cohort(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
         _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
     programme = None
@@ -494,6 +573,28 @@ def _check_rule(choice: ChoiceSection, path: str, *, priced: bool) -> None:
             what="a rule about money is asked for, and nothing is priced",
             accepted="[programme], platforms and [panels] prices beside such a rule",
             next_step="Add prices, or take a rule about size",
+        )
+
+
+def _check_cohort(sections: Mapping[str, Any], path: str) -> None:
+    """Refuse a design and folds that contradict the columns."""
+    cohort: CohortSection = sections["cohort"]
+    design: DesignSection = sections["design"]
+    check_design(
+        design.kind,
+        design.prevalence,
+        cohort.matched_set,
+        outcome_kind(cohort.kind, cohort.time, cohort.event, cohort.classes),
+        f"{path}, [design]",
+    )
+    drawn = {"folds", "repeats"} & sections["accuracy"].model_fields_set
+    if cohort.folds is not None and drawn:
+        raise StudyFileError(
+            code="folds-twice",
+            where=f"{path}, [accuracy], key '{min(drawn)}'",
+            what=f"folds are given by the column {cohort.folds!r} and drawn as well",
+            accepted="[cohort] folds, or folds and repeats under [accuracy]",
+            next_step="Remove one of them",
         )
 
 

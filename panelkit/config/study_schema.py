@@ -33,6 +33,9 @@ EVEN: Final = {"multipleOf": 2}
 BEYOND_TYPES: Final[dict[tuple[str, str], dict[str, Any]]] = {
     ("CohortSection", "positive"): CLASS_NAME,
     ("CohortSection", "negative"): CLASS_NAME,
+    ("CohortSection", "event_value"): CLASS_NAME,
+    ("CohortSection", "censored_value"): CLASS_NAME,
+    ("CohortSection", "classes"): {"items": CLASS_NAME, "uniqueItems": True},
     ("ShortlistSection", "subsamples"): EVEN,
     ("AccuracySection", "inner_subsamples"): EVEN,
     ("PanelsSection", "sizes"): {"uniqueItems": True},

@@ -56,6 +56,7 @@ def study_text(
     proposed: Mapping[str, Mapping[str, Any]],
     notes: Mapping[str, Mapping[str, str]] | None = None,
     seed: int | None = None,
+    suggested: Mapping[str, Mapping[str, Any]] | None = None,
 ) -> str:
     """Return a commented study file.
 
@@ -67,6 +68,8 @@ def study_text(
         Why a value is proposed, written above it.
     seed : int, optional
         Written as a line when given.
+    suggested : mapping of section to mapping of key to value, optional
+        Keys that are written as a comment with this value.
 
     Returns
     -------
@@ -78,7 +81,13 @@ def study_text(
         parts.append(f"# Root of every random draw.\nseed = {seed}")
     for name, kind in TEMPLATE_SECTIONS.items():
         parts.append(
-            _section_text(name, kind, proposed.get(name), (notes or {}).get(name, {}))
+            _section_text(
+                name,
+                kind,
+                proposed.get(name),
+                (notes or {}).get(name, {}),
+                (suggested or {}).get(name, {}),
+            )
         )
     return "\n\n".join(parts) + "\n"
 
@@ -88,6 +97,7 @@ def _section_text(
     kind: type[Section],
     proposed: Mapping[str, Any] | None,
     notes: Mapping[str, str],
+    suggested: Mapping[str, Any],
 ) -> str:
     explained = explanations(kind)
     off = "" if proposed or name != "programme" else "# "
@@ -98,6 +108,9 @@ def _section_text(
             lines += _comment(text)
         if proposed is not None and key in proposed:
             lines.append(f"{key} = {toml_value(proposed[key])}")
+            continue
+        if key in suggested:
+            lines.append(f"# {key} = {toml_value(suggested[key])}")
             continue
         default = field.get_default(call_default_factory=True)
         if field.is_required():

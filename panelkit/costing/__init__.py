@@ -11,7 +11,7 @@ from panelkit.costing.comparisons import (
     comparisons_for,
 )
 from panelkit.costing.data import ProcedureData, Split
-from panelkit.costing.folds import draw_folds
+from panelkit.costing.folds import draw_folds, given_folds
 from panelkit.costing.frontier import Judge, build_frontier
 from panelkit.costing.honest_accuracy import (
     Draws,
@@ -95,6 +95,7 @@ __all__ = [
     "estimate_accuracy",
     "format_money",
     "fragility_of",
+    "given_folds",
     "handling_of",
     "learn_roles",
     "learning_curve",

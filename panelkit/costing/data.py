@@ -7,9 +7,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.costing.tasks import Task
-from panelkit.records import SubsamplePlan
+from panelkit.records import FoldPlan, RecipeContext, SubsamplePlan
 
 __all__ = ["ProcedureData", "Split"]
+
+
+NOTHING_KNOWN = RecipeContext()
 
 
 def _none() -> NDArray[np.float64]:
@@ -23,7 +26,7 @@ class ProcedureData:
     Attributes
     ----------
     base : ndarray of shape (n_features, n_samples)
-        After the per-sample steps.
+        What the folds share: after the steps that learn nothing.
     task : Task
         Outcome, loss and metric.
     weights : ndarray of shape (n_samples,)
@@ -42,6 +45,14 @@ class ProcedureData:
         What each marker costs alone; NaN where unknown.
     reliability : ndarray of shape (n_features,) or None
         Intraclass correlation of technical replicates; NaN where unknown.
+    context : RecipeContext
+        What preparation may read beside the values.
+    values : ndarray of shape (n_features, n_samples), or None
+        As read, for an assay part; None where there is none.
+    blocks : ndarray of shape (n_samples,), int64, or None
+        What stays together in folds and halves; None for the subjects.
+    folds : FoldPlan or None
+        The user's own outer folds; None has them drawn.
     """
 
     base: NDArray[np.floating[Any]]
@@ -55,6 +66,15 @@ class ProcedureData:
     controls: NDArray[np.int64] = field(default_factory=lambda: np.empty(0, np.int64))
     price: NDArray[np.float64] | None = None
     reliability: NDArray[np.float64] | None = None
+    context: RecipeContext = NOTHING_KNOWN
+    values: NDArray[np.floating[Any]] | None = None
+    blocks: NDArray[np.int64] | None = None
+    folds: FoldPlan | None = None
+
+    @property
+    def units(self) -> NDArray[np.int64]:
+        """What is drawn as a whole: `blocks`, or the subjects."""
+        return self.subjects if self.blocks is None else self.blocks
 
     @property
     def n_samples(self) -> int:

@@ -5,8 +5,26 @@ from numpy.typing import NDArray
 
 from panelkit.errors import FitError
 from panelkit.records import FoldPlan
+from panelkit.stability import unit_strata
 
-__all__ = ["draw_folds"]
+__all__ = ["draw_folds", "given_folds"]
+
+
+def given_folds(fold: NDArray[np.int64]) -> FoldPlan:
+    """Return the user's own folds, once.
+
+    Parameters
+    ----------
+    fold : ndarray of shape (n_samples,), int64
+        Fold in which each sample is tested, 0 to n_folds - 1; checked when it was
+        read.
+
+    Returns
+    -------
+    FoldPlan
+        One repeat: there is nothing to draw anew.
+    """
+    return FoldPlan(fold[None, :].astype(np.int64), int(fold.max()) + 1)
 
 
 def draw_folds(
@@ -39,10 +57,8 @@ def draw_folds(
     FitError
         Fewer units than folds in a stratum.
     """
-    own, first = np.unique(units, return_index=True)
-    labels = np.unique(strata[first])
-    members = [own[strata[first] == label] for label in labels]
-    smallest = min(len(each) for each in members)
+    members, holding = unit_strata(units, strata)
+    smallest = int(holding.min())
     if n_folds < 2 or smallest < n_folds:
         raise FitError(
             code="too-few-for-folds",
@@ -53,7 +69,7 @@ def draw_folds(
         )
     plan = np.empty((len(generators), len(strata)), np.int64)
     for repeat, generator in enumerate(generators):
-        fold_of = np.empty(int(own.max()) + 1, np.int64)
+        fold_of = np.empty(int(units.max()) + 1, np.int64)
         shift = 0
         for each in members:
             mixed = generator.permutation(each)

@@ -153,12 +153,10 @@ def draw_everything(
         Too few subjects in a class.
     """
     rules = DrawRules(seed, n_folds, n_repeats, n_inner, subsamples, inner_subsamples)
-    folds = draw_folds(
-        data.subjects,
-        data.task.strata,
-        n_folds,
-        [generator(seed, "folds", repeat) for repeat in range(n_repeats)],
-    )
+    folds = data.folds
+    if folds is None:
+        draws = [generator(seed, "folds", repeat) for repeat in range(n_repeats)]
+        folds = draw_folds(data.units, data.task.strata, n_folds, draws)
     nobody = np.empty(0, np.int64)
     return Draws(
         folds,
@@ -166,8 +164,8 @@ def draw_everything(
             (repeat, fold): draw_split(
                 data, *folds.split(repeat, fold), ("fold", repeat, fold), rules
             )
-            for repeat in range(n_repeats)
-            for fold in range(n_folds)
+            for repeat in range(folds.n_repeats)
+            for fold in range(folds.n_folds)
         },
         draw_split(data, np.arange(data.n_samples), nobody, ("everyone",), rules),
         rules,
@@ -204,7 +202,7 @@ def draw_split(
     FitError
         Too few subjects in a class.
     """
-    own = np.unique(data.subjects[training], return_inverse=True)[1]
+    own = np.unique(data.units[training], return_inverse=True)[1]
     plan = draw_folds(
         own,
         data.task.strata[training],
@@ -215,7 +213,7 @@ def draw_split(
     def pairs(rows: NDArray[np.int64], halves: int, *where: str | int) -> SubsamplePlan:
         return draw_pairs(
             rows,
-            data.subjects,
+            data.units,
             data.task.strata.astype(np.float64),
             halves // 2,
             generator(rules.seed, *where),

@@ -9,6 +9,7 @@ from panelkit.costing.honest_accuracy import DrawRules, Draws, draw_split
 from panelkit.costing.primary import curve_of_folds
 from panelkit.costing.procedure import Procedure
 from panelkit.costing.rules import Rule, pick
+from panelkit.errors import FitError
 from panelkit.metrics import corrected_se
 from panelkit.records import FoldPlan, LearningPoint, OutOfFold
 from panelkit.runtime import (
@@ -20,6 +21,7 @@ from panelkit.runtime import (
     map_blocks,
     silent,
 )
+from panelkit.stability import unit_strata
 
 __all__ = ["SHARES", "learning_curve"]
 
@@ -42,14 +44,13 @@ def thinned(
         Too few subjects are left.
     """
     training = split.training
-    own, first = np.unique(data.subjects[training], return_index=True)
-    strata = data.task.strata[training][first]
+    strata, _ = unit_strata(data.units[training], data.task.strata[training])
     draws = generator(rules.seed, "learning-curve", *place)
     kept: list[NDArray[np.int64]] = []
-    for label in np.unique(strata):
-        members = draws.permutation(own[strata == label])
+    for units in strata:
+        members = draws.permutation(units)
         kept.append(members[: max(1, round(share * len(members)))])
-    rows = training[np.isin(data.subjects[training], np.concatenate(kept))]
+    rows = training[np.isin(data.units[training], np.concatenate(kept))]
     return draw_split(data, rows, split.test, ("learning-curve", *place), rules)
 
 
@@ -86,26 +87,33 @@ def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs
     Returns
     -------
     tuple of LearningPoint
-        Ascending; the last one is all training subjects.
+        Ascending; the last one is all training subjects. Shares that leave too few
+        people to learn from are left out.
 
     Raises
     ------
     FitError
-        A fit that is not possible or did not converge; too few subjects.
+        A fit that is not possible or did not converge.
     """
     folds = FoldPlan(draws.folds.test_fold[:1], draws.folds.n_folds)
     plain = Rule("smallest-within-one-se") if rule.needs_prices else rule
-    splits = {
-        f"{share:g}-{fold}": thinned(
-            draws.splits[0, fold],
-            data,
-            share,
-            (round(100 * share), fold),
-            draws.rules,
-        )
-        for share in SHARES
-        for fold in range(folds.n_folds)
-    }
+    splits: dict[str, Split] = {}
+    shares = []
+    for share in SHARES:
+        try:
+            splits |= {
+                f"{share:g}-{fold}": thinned(
+                    draws.splits[0, fold],
+                    data,
+                    share,
+                    (round(100 * share), fold),
+                    draws.rules,
+                )
+                for fold in range(folds.n_folds)
+            }
+        except FitError:  # too few people are left to halve or to fold
+            continue
+        shares.append(share)
 
     def task(split: Split) -> BlockResult:
         learnt = procedure.learn(data, split)
@@ -123,7 +131,7 @@ def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs
     )
     found = []
     first = Judge(data.task, data.subjects, data.weights, folds, judge.confidence)
-    for share in SHARES:
+    for share in shares:
         predicted = np.full((1, *data.task.predictors, data.n_samples), np.nan)
         n_subjects = []
         for fold in range(folds.n_folds):

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from panelkit.config import ENGINE
 from panelkit.costing.data import ProcedureData, Split
 from panelkit.costing.makers import Evidence, maker_named
-from panelkit.costing.refits import TrainingObjective, columns_of, refit
+from panelkit.costing.refits import MarkerValues, TrainingObjective, columns_of, refit
 from panelkit.costing.tuning import Tuning, judge, tune_ridge
 from panelkit.errors import FitError
 from panelkit.fits import fit_paths, kernel_matrix, ridge_predictions
@@ -79,7 +79,7 @@ class Procedure:
     Attributes
     ----------
     recipe : Recipe
-        Preparation.
+        Preparation of everything that selects.
     rules : ShortlistRules
         Stability selection and candidates.
     makers : sequence of str
@@ -88,6 +88,9 @@ class Procedure:
         Panel sizes, ascending.
     ridge_penalties : sequence of float
         Ridge penalties of the refits, largest first.
+    assay : Recipe or None
+        Preparation of a panel's markers for its refit and its scores; None takes the
+        values that selected them.
     """
 
     recipe: Recipe
@@ -95,6 +98,7 @@ class Procedure:
     makers: Sequence[str]
     sizes: Sequence[int]
     ridge_penalties: Sequence[float] = ENGINE.ridge_penalties
+    assay: Recipe | None = None
 
     @property
     def kinds(self) -> list[tuple[str, int]]:
@@ -131,8 +135,9 @@ class Procedure:
                 accepted="at least 2",
                 next_step="Draw inner folds for the training rows",
             )
-        selected = self.select(data, split, threads)
+        # first the inner folds: where a fold has a matrix of its own, one is held
         tuning = self.tune(data, split, threads)
+        selected = self.select(data, split, threads)
         penalties = self.penalties(tuning, len(split.inner))
         predicted = self.predict(selected, data, split, penalties[:, None])
         return Learnt(selected, tuning, penalties, predicted[:, 0])
@@ -159,8 +164,9 @@ class Procedure:
         FitError
             A fit that is not possible or did not converge.
         """
-        state = self.recipe.learn(data.base, split.training, data.barred)
-        view = self.recipe.view(state, data.base)
+        _state, view = self.recipe.prepare(
+            data.base, split.training, data.barred, data.context
+        )
         stability = select_markers(
             view,
             data.task.outcome(),
@@ -193,7 +199,8 @@ class Procedure:
         def judged(panels: Sequence[NDArray[np.int64]]) -> NDArray[np.float64]:
             if not objective:
                 candidates = stability.candidates
-                objective.append(TrainingObjective(view, candidates, data, training))
+                markers = self.markers(view, data, training)
+                objective.append(TrainingObjective(markers, candidates, data, training))
             return objective[0](panels)
 
         def entry_order(weights: NDArray[np.float64]) -> NDArray[np.int64]:
@@ -295,13 +302,20 @@ class Procedure:
         """
         chosen = selected.panels if panels is None else panels
         features = np.unique(np.concatenate([*chosen, np.empty(0, np.int64)]))
+        markers = self.markers(selected.view, data, split.training)
         return refit(
-            columns_of(selected.view, features, data, split),
+            columns_of(markers, features, data, split),
             [np.searchsorted(features, panel) for panel in chosen],
             data,
             split,
             penalties,
         )
+
+    def markers(
+        self, view: DesignView, data: ProcedureData, training: NDArray[np.int64]
+    ) -> MarkerValues:
+        """Return markers as their panel is fitted and scored with."""
+        return MarkerValues(self.assay, view, data, training)
 
     def ridge_on_all(
         self, data: ProcedureData, split: Split, view: DesignView

@@ -2,16 +2,19 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.costing.data import ProcedureData, Split
 from panelkit.fits import fit_panels, standardised
-from panelkit.preparation import DesignView
+from panelkit.preparation import DesignView, Recipe
 
 __all__ = [
     "Columns",
+    "MarkerValues",
+    "Prepared",
     "TrainingObjective",
     "columns_of",
     "refit",
@@ -49,8 +52,60 @@ def standardised_columns(
     return Columns(Z[:, :n].copy(), Z[:, n:].copy())
 
 
+class Prepared(Protocol):
+    """Anything that gives prepared features: a fold's view, or its assay part."""
+
+    def columns(
+        self, features: NDArray[np.int64], rows: NDArray[np.int64]
+    ) -> NDArray[np.float64]:
+        """Return several features, shape (n_chosen, n_rows)."""
+        ...
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class MarkerValues:
+    """Markers as their panel is fitted and scored with.
+
+    By the assay part, from the markers and the references alone; without one as the
+    view has them.
+
+    Attributes
+    ----------
+    assay : Recipe or None
+        The assay part.
+    view : DesignView
+        What selected the markers.
+    data : ProcedureData
+        Shared data.
+    training : ndarray of int64
+        Rows that teach the assay part.
+    """
+
+    assay: Recipe | None
+    view: DesignView
+    data: ProcedureData
+    training: NDArray[np.int64]
+
+    def columns(
+        self, features: NDArray[np.int64], rows: NDArray[np.int64]
+    ) -> NDArray[np.float64]:
+        """Return several markers, ascending, shape (n_chosen, n_rows)."""
+        values, context = self.data.values, self.data.context
+        if self.assay is None or values is None:
+            return self.view.columns(features, rows)
+        references = self.assay.reference_candidates(context)
+        measured = np.union1d(features, references)
+        _state, alone = self.assay.prepare(
+            self.assay.base(values[measured]),
+            self.training,
+            np.full(len(measured), "", object),
+            context.among(measured),
+        )
+        return alone.columns(np.searchsorted(measured, features), rows)
+
+
 def columns_of(
-    view: DesignView,
+    prepared: Prepared,
     features: NDArray[np.int64],
     data: ProcedureData,
     split: Split,
@@ -59,10 +114,10 @@ def columns_of(
 
     Parameters
     ----------
-    view : DesignView
-        Preparation learnt on the training rows.
+    prepared : Prepared
+        A view, or markers by their assay part, learnt on the training rows.
     features : ndarray of int64
-        Which features, one a column.
+        Which features, ascending, one a column.
     data : ProcedureData
         Weights.
     split : Split
@@ -74,7 +129,7 @@ def columns_of(
         For `refit`.
     """
     rows = np.concatenate([split.training, split.test])
-    return standardised_columns(view.columns(features, rows), data, split)
+    return standardised_columns(prepared.columns(features, rows), data, split)
 
 
 def refit(
@@ -132,8 +187,8 @@ class TrainingObjective:
 
     Parameters
     ----------
-    view : DesignView
-        Preparation learnt on the training rows.
+    prepared : Prepared
+        A view, or markers by their assay part, learnt on the training rows.
     features : ndarray of int64
         The candidates, from which panels are formed.
     data : ProcedureData
@@ -144,7 +199,7 @@ class TrainingObjective:
 
     def __init__(
         self,
-        view: DesignView,
+        prepared: Prepared,
         features: NDArray[np.int64],
         data: ProcedureData,
         training: NDArray[np.int64],
@@ -153,7 +208,7 @@ class TrainingObjective:
         self._data = data
         self._training = training
         split = Split(training, np.empty(0, np.int64))
-        self._taught = columns_of(view, self._features, data, split).taught
+        self._taught = columns_of(prepared, self._features, data, split).taught
 
     def __call__(self, panels: Sequence[NDArray[np.int64]]) -> NDArray[np.float64]:
         """Return the penalised loss of each panel of features."""

@@ -236,11 +236,12 @@ def _of_fold(
     predicted[0, :roles] = found[:roles]
     predicted[2, :roles] = found[roles : 2 * roles]
     predicted[3, :roles] = found[2 * roles :]
-    predicted[1, :roles] = _imputed(selected, data, split, panel, penalty)
+    predicted[1, :roles] = _imputed(procedure, selected, data, split, panel, penalty)
     return {"predicted": predicted, "replaced by": replaced}
 
 
 def _imputed(
+    procedure: Procedure,
     selected: Selected,
     data: ProcedureData,
     split: Split,
@@ -248,10 +249,12 @@ def _imputed(
     penalty: float,
 ) -> NDArray[np.float64]:
     """Return predictions by the whole panel's model with each marker at its mean."""
-    columns = columns_of(selected.view, panel, data, split)
+    features = np.sort(panel)
+    markers = procedure.markers(selected.view, data, split.training)
+    columns = columns_of(markers, features, data, split)
     fits = fit_panels(
         columns.taught,
-        [np.arange(len(panel))],
+        [np.searchsorted(features, panel)],
         data.task.outcome(split.training),
         data.weights[split.training],
         np.array([penalty]),
@@ -260,6 +263,6 @@ def _imputed(
     found = []
     for role in range(len(panel)):
         without = columns.tested.copy()
-        without[role] = 0.0  # standardised: the training mean
+        without[np.searchsorted(features, panel[role])] = 0.0  # the training mean
         found.append(fits.linear_predictors(without)[0, 0])
     return np.array(found)

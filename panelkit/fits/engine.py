@@ -16,9 +16,19 @@ import numpy as np
 from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
+from panelkit.fits.decisions import Candidates, DecisionRules, decide, take_in
 from panelkit.fits.families import Problem, Solver, SolveRules
 from panelkit.fits.kernel_cache import kernel_cache
 from panelkit.fits.product import Question, TileProduct
+from panelkit.fits.refits import (
+    DONE,
+    FRESH,
+    PENDING,
+    STEP,
+    WORKING,
+    Refits,
+    new_refits,
+)
 from panelkit.records import MatrixSource
 
 with kernel_cache():
@@ -26,8 +36,7 @@ with kernel_cache():
 
 __all__ = ["BlockSpecification", "run_block"]
 
-CHUNK = 8  # refits settled per kernel call
-FIRST_WORKING = 64  # working features for which space is made at first
+CHUNK = 8  # refits per kernel call
 NULL_MODEL_SCALE = 1e-3  # what the tolerance is relative to before there is a penalty
 
 
@@ -74,7 +83,7 @@ class BlockSpecification:
 
 def run_block(
     source: MatrixSource, block: BlockSpecification, threads: int = 1
-) -> "kernels.Refits":
+) -> Refits:
     """Solve a block of refits in lockstep.
 
     Parameters
@@ -88,7 +97,7 @@ def run_block(
 
     Returns
     -------
-    kernel_paths.Refits
+    Refits
         Final state: penalties, stored solutions, order of entry, certificate.
         Refits with ``state[:, DONE] == 2`` did not reach the tolerance.
     """
@@ -112,15 +121,21 @@ class _Lockstep:
         self.source = source
         self.block = block
         self.n_features = source.base.shape[0]
-        self.rules = kernels.Rules(
-            block.scaled, block.relative, block.mixing, block.tol, block.max_markers
+        self.rules = DecisionRules(
+            block.relative, block.mixing, block.tol, block.max_markers
         )
         self.solve_rules = SolveRules(block.mixing, block.tol, block.steps)
         weights = block.feature_weights
         self.product = TileProduct(
             source, block.rows, block.problem.n_predictors, weights, block.scaled
         )
-        self.refits = _new_refits(block, self.product.columns)
+        self.refits = new_refits(
+            block.rows,
+            block.problem.weights,
+            block.penalties,
+            block.problem.n_predictors,
+            self.product.columns,
+        )
         self.solver: Solver = block.problem.solver(block.rows, self.refits.weight)
         # relative penalties: the first working set is known with the largest gradient
         self.opening = 1.0
@@ -136,29 +151,31 @@ class _Lockstep:
     def run(self, mapper: Mapper) -> None:
         """Advance until every refit is done."""
         everyone = np.arange(len(self.block.rows))
-        self._start(everyone)
-        mapper(self._solve, list(_chunks(everyone)))
+        self._start(everyone, mapper)
+        self._solve(mapper)
         mapper(self.product.survey, self.product.starts)
         self.product.copy_tiles(mapper)
         self.top = self._largest(mapper)
-        while len(live := np.flatnonzero(self.refits.state[:, kernels.DONE] == 0)):
+        while len(live := np.flatnonzero(self.refits.state[:, DONE] == 0)):
             self._pass(live, mapper)
 
-    def _start(self, everyone: NDArray[np.int64]) -> None:
+    def _start(self, everyone: NDArray[np.int64], mapper: Mapper) -> None:
         """Prepare the null model of each refit: intercepts and unpenalised features."""
-        unpenalised = self.unpenalised
-        self._make_room(len(unpenalised))
-        shape = (len(everyone), len(unpenalised), self.refits.rows.shape[1])
-        columns = np.zeros(shape)
-        for b, rows in enumerate(self.block.rows):
-            for c, feature in enumerate(unpenalised):
-                columns[b, c, : len(rows)] = self._column(int(feature), rows)
-        kernels.start_refits(
-            self.refits, self.block.scaled, unpenalised, columns, self.weights
-        )
-        self.solver.start(self.refits)
-        self.refits.now[:] = NULL_MODEL_SCALE
-        self.refits.state[:, kernels.PENDING] = 1
+        refits, count = self.refits, len(self.unpenalised)
+        self._make_room(count)
+        if count:
+            for b, rows in enumerate(self.block.rows):
+                for c, feature in enumerate(self.unpenalised):
+                    refits.Z[b, c, : len(rows)] = self._column(int(feature), rows)
+            refit = np.repeat(everyone, count)
+            feature = np.tile(self.unpenalised, len(everyone))
+            found = self._graded(everyone, refit, feature, mapper)
+            usable = found.moments[:, 1] > 0.0
+            where = take_in(refits, found, usable, self.weights)
+            refits.entered[where] = True  # not picked: they were given
+        self.solver.start(refits)
+        refits.now[:] = NULL_MODEL_SCALE
+        refits.state[:, PENDING] = 1
 
     def _column(self, feature: int, rows: NDArray[np.int64]) -> NDArray[np.float64]:
         if feature < self.n_features:
@@ -167,24 +184,24 @@ class _Lockstep:
         covariate = self.block.covariates[feature - self.n_features, rows]
         return covariate
 
-    def _solve(self, chunk: NDArray[np.int64]) -> None:
-        """Solve what is pending in a chunk and hand its residuals to the product."""
+    def _solve(self, mapper: Mapper) -> None:
+        """Solve what is pending and hand the residuals to the product."""
         refits = self.refits
-        pending = chunk[refits.state[chunk, kernels.PENDING] == 1]
-        if not len(pending):
-            return
-        self.solver.solve(refits, pending, self.solve_rules)
-        kernels.publish_chunk(
-            pending,
-            self.block.tol,
-            refits.n_rows,
-            refits.slots,
-            refits.r,
-            refits.violation,
-            refits.state,
-            refits.certificate,
-            refits.residuals,
-        )
+        pending = np.flatnonzero(refits.state[:, PENDING] == 1)
+
+        def solve(chunk: NDArray[np.int64]) -> None:
+            self.solver.solve(refits, chunk, self.solve_rules)
+            kernels.publish_chunk(
+                chunk, refits.n_rows, refits.slots, refits.r, refits.residuals
+            )
+
+        mapper(solve, list(_chunks(pending)))
+        refits.state[pending, PENDING] = 0
+        violation = refits.violation[pending]
+        step = refits.state[pending, STEP]
+        on_path = step >= 0
+        refits.certificate[pending[on_path], step[on_path]] = violation[on_path]
+        refits.state[pending[~(violation <= self.block.tol)], DONE] = 2
 
     def _largest(self, mapper: Mapper) -> NDArray[np.float32]:
         """Return a lower bound of each refit's largest |gradient| over deviation."""
@@ -206,8 +223,8 @@ class _Lockstep:
     def _question(self, live: NDArray[np.int64]) -> Question:
         """Return what this pass asks: thresholds below every decision's own."""
         refits = self.refits
-        step = refits.state[live, kernels.STEP]
-        fresh = refits.state[live, kernels.FRESH] == 1
+        step = refits.state[live, STEP]
+        fresh = refits.state[live, FRESH] == 1
         last = refits.penalties.shape[1] - 1
         now = refits.penalties[live, np.maximum(step, 0)]
         following = refits.penalties[live, np.minimum(step + 1, last)]
@@ -229,145 +246,77 @@ class _Lockstep:
         )
 
     def _pass(self, live: NDArray[np.int64], mapper: Mapper) -> None:
-        """Ask the matrix once, then settle every living refit."""
+        """Ask the matrix once, decide for every living refit, and solve."""
         ask = self._question(live)
-        found = mapper(
+        pairs = mapper(
             lambda start: self.product.candidates(start, ask), self.product.starts
         )
-        refit = np.concatenate([pair[0] for pair in found])
-        feature = np.concatenate([pair[1] for pair in found])
+        refit = np.concatenate([pair[0] for pair in pairs])
+        feature = np.concatenate([pair[1] for pair in pairs])
         order = np.argsort(refit, kind="stable")  # features ascend within a refit
         refit, feature = refit[order], feature[order]
-        borders = np.searchsorted(refit, np.arange(len(self.block.rows) + 1))
-        working = self.refits.state[:, kernels.WORKING] + np.diff(borders)
-        self._make_room(int(working[live].max()))
+        found = self._graded(live, refit, feature, mapper, gather=True)
+        accepted = decide(self.refits, live, self.rules, found, self.weights)
+        settled = accepted | (found.moments[:, 1] == 0.0)  # constant: out for good
+        self.product.code[feature[settled], refit[settled]] = kernels.CODE_SETTLED
+        self._solve(mapper)
 
-        def settle(chunk: NDArray[np.int64]) -> None:
-            self._settle(chunk, borders, feature)
-
-        mapper(settle, list(_chunks(live)))
-
-    def _settle(
+    def _graded(
         self,
-        chunk: NDArray[np.int64],
-        borders: NDArray[np.int64],
+        live: NDArray[np.int64],
+        refit: NDArray[np.int64],
         feature: NDArray[np.int64],
-    ) -> None:
-        cut = np.zeros(len(chunk) + 1, np.int64)
-        np.cumsum(borders[chunk + 1] - borders[chunk], out=cut[1:])
-        candidates = np.concatenate(
-            [feature[borders[b] : borders[b + 1]] for b in chunk]
-        )
-        fresh = np.empty((len(candidates), self.refits.rows.shape[1]))
-        kernels.gather_chunk(
-            self.source.base,
-            self.source.fill,
-            *self.source.shift,
-            self.refits.rows,
-            self.refits.n_rows,
-            chunk,
-            cut,
-            candidates,
-            fresh,
-        )
-        kernels.decide_chunk(
-            self.refits,
-            chunk,
-            self.rules,
-            cut,
-            candidates,
-            fresh,
-            self.weights,
-            self.product.code,
-        )
-        self._solve(chunk)
+        mapper: Mapper,
+        gather: bool = False,
+    ) -> Candidates:
+        """Return the candidates, standardised behind the working sets, and graded."""
+        refits = self.refits
+        borders = np.searchsorted(refit, np.arange(len(self.block.rows) + 1))
+        working = refits.state[:, WORKING].copy()
+        self._make_room(int((working + np.diff(borders))[live].max()))
+        moments, gradient = np.empty((len(refit), 2)), np.empty(len(refit))
+
+        def grade(chunk: NDArray[np.int64]) -> None:
+            if gather:
+                kernels.gather_chunk(
+                    self.source.base,
+                    self.source.fill,
+                    *self.source.shift,
+                    refits.rows,
+                    refits.n_rows,
+                    chunk,
+                    borders,
+                    feature,
+                    working,
+                    refits.Z,
+                )
+            kernels.grade_chunk(
+                chunk,
+                borders,
+                working,
+                refits.n_rows,
+                refits.weight,
+                self.block.scaled,
+                refits.r,
+                refits.Z,
+                moments,
+                gradient,
+            )
+
+        mapper(grade, list(_chunks(live)))
+        if gather:
+            gradient /= self.weights[feature]
+        return Candidates(refit, feature, borders, moments, gradient)
 
     def _make_room(self, working: int) -> None:
-        """Grow the working-set arrays to hold this many features a refit."""
+        """Grow the refits' arrays to hold this many working features a refit."""
         refits = self.refits
-        changes: dict[str, Any] = {}
-        if working > refits.work.shape[1]:
-            size = max(working, 2 * refits.work.shape[1])
-            for name in _WORKING_ARRAYS:
-                changes[name] = _grown(getattr(refits, name), size)
-            changes["beta"] = _grown(refits.beta, size, axis=2)
         # every penalty at or above the largest one stores the unpenalised features
         given = len(self.unpenalised) * refits.penalties.shape[1]
         stored = int(refits.stored_at.max()) + max(working, given)
-        if stored > refits.stored_work.shape[1]:
-            size = max(stored, 2 * refits.stored_work.shape[1])
-            for name in ("stored_work", "stored_beta"):
-                changes[name] = _grown(getattr(refits, name), size)
-        if changes:
-            self.refits = refits._replace(**changes)
-
-
-_WORKING_ARRAYS = (
-    "Z", "work", "pull", "mean", "deviation", "grad", "grad_before", "entered",
-    "order", "order_step",
-)  # fmt: skip
-
-
-def _grown(array: NDArray[Any], size: int, axis: int = 1) -> NDArray[Any]:
-    """Return the array with one axis grown by zeros."""
-    shape = list(array.shape)
-    shape[axis] = size
-    grown = np.zeros(shape, array.dtype)  # pages that nobody writes cost no memory
-    grown[tuple(slice(0, extent) for extent in array.shape)] = array
-    return grown
+        refits.make_room(working, stored)
 
 
 def _chunks(live: NDArray[np.int64]) -> Iterator[NDArray[np.int64]]:
     for start in range(0, len(live), CHUNK):
         yield live[start : start + CHUNK]
-
-
-def _new_refits(block: BlockSpecification, used: NDArray[np.int64]) -> "kernels.Refits":
-    """Return the refits' arrays before the null model is fitted."""
-    n_refits = len(block.rows)
-    n_rows = np.array([len(rows) for rows in block.rows], np.int64)
-    shape = (n_refits, int(n_rows.max()))
-    n_penalties = len(block.penalties)
-    rows, slots = np.zeros(shape, np.int64), np.zeros(shape, np.int64)
-    weight = np.zeros(shape)
-    n_classes = block.problem.n_predictors
-    for b, chosen in enumerate(block.rows):
-        n = len(chosen)
-        rows[b, :n] = chosen
-        slots[b, :n] = np.searchsorted(used, chosen)
-        share = block.problem.weights[chosen]
-        weight[b, :n] = share / share.sum()
-    state = np.zeros((n_refits, 6), np.int64)
-    state[:, kernels.STEP] = -1
-    working = (n_refits, FIRST_WORKING)
-    return kernels.Refits(
-        rows=rows,
-        n_rows=n_rows,
-        weight=weight,
-        eta=np.zeros((n_refits, n_classes, shape[1])),
-        r=np.zeros((n_refits, n_classes, shape[1])),
-        slots=slots,
-        residuals=np.zeros((n_refits, n_classes, len(used)), np.float32),
-        Z=np.zeros((n_refits, FIRST_WORKING, shape[1])),
-        work=np.zeros(working, np.int64),
-        pull=np.zeros(working),
-        mean=np.zeros(working),
-        deviation=np.ones(working),
-        beta=np.zeros((n_refits, n_classes, FIRST_WORKING)),
-        grad=np.zeros(working),
-        grad_before=np.zeros(working),
-        entered=np.zeros(working, np.bool_),
-        order=np.zeros(working, np.int64),
-        order_step=np.zeros(working, np.int64),
-        penalties=np.tile(block.penalties, (n_refits, 1)),
-        certificate=np.full((n_refits, n_penalties), np.nan),
-        now=np.zeros(n_refits),
-        largest=np.zeros(n_refits),
-        b0=np.zeros((n_refits, n_classes)),
-        violation=np.zeros(n_refits),
-        intercept=np.full((n_refits, n_penalties, n_classes), np.nan),
-        stored_at=np.zeros((n_refits, n_penalties + 1), np.int64),
-        stored_work=np.zeros((n_refits, 4 * FIRST_WORKING), np.int64),
-        stored_beta=np.zeros((n_refits, 4 * FIRST_WORKING, n_classes)),
-        state=state,
-    )

@@ -15,7 +15,9 @@ from panelkit.fits.kernel_cache import kernel_cache
 
 with kernel_cache():
     from panelkit.fits import kernel_grouped, kernel_scalar
-    from panelkit.fits.kernel_paths import WORKING
+    from panelkit.fits.kernel_algebra import DEPTH
+
+from panelkit.fits.refits import WORKING, Refits
 
 __all__ = ["FAMILIES", "Family", "Problem", "SolveRules", "Solver"]
 
@@ -35,11 +37,13 @@ class SolveRules(NamedTuple):
 class Solver(Protocol):
     """Solves the refits of one block; holds their outcomes."""
 
-    def start(self, refits: Any) -> None:
+    def start(self, refits: Refits) -> None:
         """Set the linear predictors from which the null model is fitted."""
         ...
 
-    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
+    def solve(
+        self, refits: Refits, pending: NDArray[np.int64], rules: SolveRules
+    ) -> None:
         """Solve the pending refits at their present penalty."""
         ...
 
@@ -86,12 +90,28 @@ class Problem:
         }
         return int(codes[self.family])
 
-    def order(self, rows: NDArray[np.int64] | None = None) -> NDArray[np.int64]:
-        """Return rows by stratum, then descending time; one zero but for Cox."""
+    def survival(
+        self, rows: NDArray[np.int64] | None = None
+    ) -> NDArray[np.int64] | None:
+        """Return what the Cox kernels read of rows, (5, n); None for other families."""
         if self.family != "cox":
-            return np.zeros(1, np.int64)
+            return None
         here = slice(None) if rows is None else rows
-        return np.lexsort((-self.y[here], self.strata[here]))
+        time, stratum = self.y[here], self.strata[here]
+        order = np.lexsort((-time, stratum))
+        time, stratum = time[order], stratum[order]
+        new_stratum = np.r_[True, stratum[1:] != stratum[:-1]]
+        new_time = new_stratum | np.r_[True, time[1:] != time[:-1]]
+        starts = np.flatnonzero(new_time)
+        group = np.cumsum(new_time) - 1
+        table = np.empty((5, len(order)), np.int64)
+        table[kernel_scalar.ORDER] = order
+        table[kernel_scalar.TIE_START] = starts[group]
+        table[kernel_scalar.TIE_END] = np.append(starts[1:], len(order))[group]
+        strata_starts = np.flatnonzero(new_stratum)
+        table[kernel_scalar.STRATUM] = strata_starts[np.cumsum(new_stratum) - 1]
+        table[kernel_scalar.EVENT] = self.event[here] > 0.5
+        return table
 
     def start(
         self, share: NDArray[np.float64], rows: NDArray[np.int64] | None = None
@@ -131,29 +151,32 @@ class _Scalar:
 
     def __init__(self, problem: Problem, rows: Sequence[NDArray[np.int64]]) -> None:
         widest = max(len(chosen) for chosen in rows)
-        survival = problem.family == "cox"
         self.code = problem.code
         self.y = _padded(rows, problem.y, widest)
-        # only Cox reads these three; the others carry one column of them
-        width = widest if survival else 1
-        self.event = _padded(rows, problem.event, width)
-        self.strata = _padded(rows, problem.strata, width)
-        self.order = np.zeros((len(rows), width), np.int64)
-        if survival:
+        self.survival: NDArray[np.int64] | None = None
+        if problem.family == "cox":
+            self.survival = np.zeros((len(rows), 5, widest), np.int64)
             for b, chosen in enumerate(rows):
-                self.order[b, : len(chosen)] = problem.order(chosen)
+                table = problem.survival(chosen)
+                assert table is not None
+                self.survival[b, :, : len(chosen)] = table
 
-    def start(self, refits: Any) -> None:
+    def start(self, refits: Refits) -> None:
         """Start from zero, or from the log-odds of the classes."""
         if self.code == kernel_scalar.BINOMIAL:
             share = (refits.weight * self.y).sum(axis=1)
             refits.b0[:, 0] = np.log(share / (1.0 - share))
             refits.eta[:, 0] = refits.b0[:, :1]
 
-    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
+    def solve(
+        self, refits: Refits, pending: NDArray[np.int64], rules: SolveRules
+    ) -> None:
         """Solve the pending refits at their present penalty."""
+        m = int(refits.state[pending, WORKING].max())
+        n = refits.Z.shape[2]
         kernel_scalar.solve_chunk(
             self.code,
+            self.survival,
             pending,
             refits.now,
             rules.mixing,
@@ -163,9 +186,6 @@ class _Scalar:
             refits.state[:, WORKING],
             refits.n_rows,
             self.y,
-            self.event,
-            self.strata,
-            self.order,
             refits.weight,
             refits.pull,
             refits.beta,
@@ -174,6 +194,11 @@ class _Scalar:
             refits.r,
             refits.grad,
             refits.violation,
+            np.empty((6, n)),
+            np.empty((6, m)),
+            np.empty(m, np.int64),
+            np.empty((m, n)),
+            np.empty((DEPTH, m + 1)),
         )
 
 
@@ -196,15 +221,19 @@ class _Grouped:
                 weight[b, : len(chosen)],
             )
 
-    def start(self, refits: Any) -> None:
+    def start(self, refits: Refits) -> None:
         """Start from the log shares of the classes that each refit has."""
         with np.errstate(divide="ignore"):
             logs = np.where(self.share > 0.0, np.log(self.share), ABSENT)
         refits.b0[:] = logs
         refits.eta[:] = logs[:, :, None]
 
-    def solve(self, refits: Any, pending: NDArray[np.int64], rules: SolveRules) -> None:
+    def solve(
+        self, refits: Refits, pending: NDArray[np.int64], rules: SolveRules
+    ) -> None:
         """Solve the pending refits at their present penalty."""
+        m = int(refits.state[pending, WORKING].max())
+        k, n = refits.eta.shape[1:]
         kernel_grouped.solve_chunk(
             pending,
             refits.now,
@@ -223,4 +252,11 @@ class _Grouped:
             refits.r,
             refits.grad,
             refits.violation,
+            np.empty((5, k, n)),
+            np.empty((3, k)),
+            np.empty((2, k, m + 1)),
+            np.empty((3, m)),
+            np.empty(m, np.int64),
+            np.empty((DEPTH, (m + 1) * k)),
+            np.ones(n),
         )

@@ -2,31 +2,28 @@
 
 The penalty of a feature is the Euclidean norm of its coefficients over the classes. The
 solve is prox-Newton with the exact curvature diag(p) - p p', block coordinate descent
-inside. Plain functions on arrays, no panelkit imports, float64, fixed order.
+inside. Plain functions on arrays, float64, fixed order.
 
 Symbols: K classes, n rows, m working features; p chances (K, n); D change of the linear
 predictors since the Newton step began (K, n); q residual of the quadratic model (K, n).
 """
 
 import math
-from typing import Any
 
 import numpy as np
-from numba import njit
 
-FAST = {"reassoc", "contract", "arcp", "nsz"}  # NaN must stay visible
+from panelkit.fits.kernel_algebra import (
+    DEPTH,
+    cholesky_solve,
+    combine,
+    door,
+    fast_door,
+    fast_inner,
+)
 
-DEPTH = 6  # sweeps kept for one extrapolation
+SWEEPS = 1000  # of one Newton step at most
 POWER_STEPS = 6
 SAFETY = 1.02  # a power iteration stays below the largest eigenvalue
-
-# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
-# has to be compiled for them.
-DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
-INNER: dict[str, Any] = {**DOOR, "no_cpython_wrapper": True}
-door = njit(**DOOR)
-fast_door = njit(fastmath=FAST, **DOOR)
-fast_inner = njit(fastmath=FAST, **INNER)
 
 
 @fast_door
@@ -56,7 +53,7 @@ def multinomial_terms(y, weight, eta, n, r, p):
 def curvature_bound(z, p, weight, n):
     """Return an upper bound of the largest curvature of one feature's block."""
     n_classes = p.shape[0]
-    V = np.zeros((n_classes, n_classes))
+    V = np.empty((n_classes, n_classes))
     for a in range(n_classes):
         for b in range(a + 1):
             s = 0.0
@@ -70,6 +67,7 @@ def curvature_bound(z, p, weight, n):
         V[a, a] += s
     widest = 0.0
     x = np.empty(n_classes)
+    new = np.empty(n_classes)
     for a in range(n_classes):
         if V[a, a] >= widest:
             widest = V[a, a]
@@ -77,7 +75,6 @@ def curvature_bound(z, p, weight, n):
                 x[b] = V[a, b]  # never orthogonal to the leading direction
     length = 0.0
     for _step in range(POWER_STEPS):
-        new = np.zeros(n_classes)
         norm = 0.0
         for a in range(n_classes):
             norm += x[a] * x[a]
@@ -86,6 +83,7 @@ def curvature_bound(z, p, weight, n):
             break
         length = 0.0
         for a in range(n_classes):
+            new[a] = 0.0
             for b in range(n_classes):
                 new[a] += V[a, b] * x[b] / norm
             length += new[a] * new[a]
@@ -135,56 +133,20 @@ def norm_of(beta, j):
 
 
 @fast_inner
-def combine(path, length, c):
-    """Write the Anderson weights of the stored sweeps to c; True if they exist."""
-    depth = DEPTH - 1
-    gram = np.empty((depth, depth))
-    trace = 0.0
-    for a in range(depth):
-        c[a] = 1.0
-        for b in range(a + 1):
-            s = 0.0
-            for k in range(length):
-                s += (path[a + 1, k] - path[a, k]) * (path[b + 1, k] - path[b, k])
-            gram[a, b] = s
-            gram[b, a] = s
-        trace += gram[a, a]
-    for a in range(depth):
-        gram[a, a] += 1e-10 * trace
-    for a in range(depth):
-        if gram[a, a] <= 0.0:
-            return False
-        for b in range(a + 1, depth):
-            f = gram[b, a] / gram[a, a]
-            for k in range(a, depth):
-                gram[b, k] -= f * gram[a, k]
-            c[b] -= f * c[a]
-    total = 0.0
-    for a in range(depth - 1, -1, -1):
-        for k in range(a + 1, depth):
-            c[a] -= gram[a, k] * c[k]
-        c[a] /= gram[a, a]
-        total += c[a]
-    if not abs(total) > 1e-300:
-        return False
-    for a in range(depth):
-        c[a] /= total
-    return True
-
-
-@fast_inner
 def extrapolate(
-    path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
-):
-    """Take an Anderson step over the stored sweeps where it lowers the model."""
+    path, c, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q, trial,
+    trial_beta,
+):  # fmt: skip
+    """Take an Anderson step over the stored sweeps where it lowers the model.
+
+    c: the step's weights.
+    """
     n_classes = p.shape[0]
-    c = np.empty(DEPTH - 1)
-    if not combine(path, (na + 1) * n_classes, c):
-        return
     before = model_value(r, p, weight, n, D)
-    trial_beta = np.zeros((n_classes, na + 1))
-    trial = np.zeros((n_classes, n))
     after = 0.0
+    for k in range(n_classes):
+        for i in range(n):
+            trial[k, i] = 0.0
     for a in range(na + 1):
         for k in range(n_classes):
             x = 0.0
@@ -227,26 +189,18 @@ def extrapolate(
 
 @fast_inner
 def descend(
-    Z, n, na, active, r, p, weight, curvature, ones, bound0, l1, l2,
-    beta, b0, old, old0, D, q, goal, path,
+    Z, n, na, active, p, weight, curvature, ones, bound0, l1, l2, beta, b0, D, q, goal,
+    path, sweeps, change, v,
 ):  # fmt: skip
-    """Block coordinate descent on the quadratic model, until a sweep moves little."""
+    """Return the largest move of the last of some sweeps of block descent."""
     n_classes = p.shape[0]
-    change = np.empty(n_classes)
-    v = np.empty(n_classes)
-    kept = 0
-    for _sweep in range(1000):
-        if kept == DEPTH:
-            extrapolate(
-                path, na, active, Z, n, r, p, weight, l1, l2, beta, b0, old, old0, D, q
-            )
-            kept = 0
+    largest = 0.0
+    for sweep in range(sweeps):
         for a in range(na):
             for k in range(n_classes):
-                path[kept, a * n_classes + k] = beta[k, active[a]]
+                path[sweep, a * n_classes + k] = beta[k, active[a]]
         for k in range(n_classes):
-            path[kept, na * n_classes + k] = b0[k]
-        kept += 1
+            path[sweep, na * n_classes + k] = b0[k]
         largest = 0.0
         for k in range(n_classes):
             s = 0.0
@@ -279,6 +233,7 @@ def descend(
                 largest = max(largest, (curvature[a] + l2[j]) * math.sqrt(moved))
         if largest < goal:
             break
+    return largest
 
 
 @fast_inner
@@ -313,129 +268,90 @@ def optimality(Z, m, n, r, l1, l2, beta, grad, active):
     return worst, na
 
 
-@fast_inner
-def solve(
-    Z, m, n, y, weight, pull, penalty, mixing, beta, b0, eta, r, grad, tol, steps
-):
-    """Solve one multinomial refit at one penalty over its working set.
+@fast_door
+def solve_chunk(
+    chunk, penalty, mixing, tol, steps, columns, working, n_rows, y, weight, pull,
+    betas, intercepts, etas, residuals, grads, violation, tables, classes, coefs,
+    places, active, path, ones,
+):  # fmt: skip
+    """Solve the refits of a chunk, each at its own penalty: prox-Newton descent.
 
-    Returns the largest KKT violation relative to the penalty.
+    pull: feature weights of the working sets. Warm start from betas, intercepts, etas;
+    leaves residuals and grads (|gradient| of the loss) at the solution, and the
+    largest KKT violation relative to the penalty. Work space: tables (5, K, n), classes
+    (3, K), coefs (2, K, m + 1), places (3, m), active (m), path (DEPTH, (m + 1) K);
+    ones (n).
     """
-    n_classes = eta.shape[0]
-    p = np.empty((n_classes, n))
-    q = np.empty((n_classes, n))
-    D = np.empty((n_classes, n))
-    old_eta = np.empty((n_classes, n))
-    ones = np.ones(n)
-    curvature = np.empty(m)
-    old = np.empty((n_classes, m))
-    old0 = np.empty(n_classes)
-    l1 = np.empty(m)
-    l2 = np.empty(m)
-    active = np.empty(m, np.int64)
-    path = np.empty((DEPTH, (m + 1) * n_classes))
-    for j in range(m):
-        l1[j] = penalty * mixing * pull[j]
-        l2[j] = penalty * (1.0 - mixing) * pull[j]
-    unit = penalty * mixing
-    best = np.inf
-    worst = 0.0
-    halved = 0
-    for _newton in range(steps):
-        value = multinomial_terms(y, weight, eta, n, r, p)
+    n_classes = etas.shape[1]
+    p, q, D, old_eta = tables[0], tables[1], tables[2], tables[3]
+    old0, old = classes[0], coefs[0]
+    curvature, l1, l2 = places[0], places[1], places[2]
+    c = np.empty(DEPTH - 1)
+    for t in range(chunk.shape[0]):
+        f = chunk[t]
+        Z, m, n = columns[f], working[f], n_rows[f]
+        beta, b0, eta, r, w = betas[f], intercepts[f], etas[f], residuals[f], weight[f]
+        unit = penalty[f] * mixing
         for j in range(m):
-            own = norm_of(beta, j)
-            value += l1[j] * own + 0.5 * l2[j] * own * own
-        if not value <= best + 1e-10 * abs(best) and halved < 30:
-            for k in range(n_classes):  # the model was too bold: half the step
-                b0[k] = old0[k] + 0.5 * (b0[k] - old0[k])
-                for j in range(m):
-                    beta[k, j] = old[k, j] + 0.5 * (beta[k, j] - old[k, j])
-                for i in range(n):
-                    eta[k, i] = old_eta[k, i] + 0.5 * (eta[k, i] - old_eta[k, i])
-            halved += 1
-            continue
-        best = value
-        halved = 0
-        worst, na = optimality(Z, m, n, r, l1, l2, beta, grad, active)
-        if worst <= tol * unit:
-            break
-        for a in range(na):
-            curvature[a] = curvature_bound(Z[active[a]], p, weight, n)
-        bound0 = curvature_bound(ones, p, weight, n)
+            l1[j] = penalty[f] * mixing * pull[f, j]
+            l2[j] = penalty[f] * (1.0 - mixing) * pull[f, j]
         for k in range(n_classes):
             old0[k] = b0[k]
             for j in range(m):
                 old[k, j] = beta[k, j]
             for i in range(n):
                 old_eta[k, i] = eta[k, i]
-                q[k, i] = r[k, i]
-                D[k, i] = 0.0
-        goal = max(0.1 * worst, 0.3 * tol * unit)
-        descend(
-            Z, n, na, active, r, p, weight, curvature, ones, bound0, l1, l2,
-            beta, b0, old, old0, D, q, goal, path,
-        )  # fmt: skip
-        for k in range(n_classes):
-            for i in range(n):
-                eta[k, i] += D[k, i]
-    return worst / unit
-
-
-@door
-def solve_chunk(
-    chunk, penalty, mixing, tol, steps, Z, working, n_rows, y, weight, pull, beta, b0,
-    eta, r, grad, violation,
-):  # fmt: skip
-    """Solve the refits of a chunk, each at its own penalty."""
-    for t in range(chunk.shape[0]):
-        b = chunk[t]
-        violation[b] = solve(
-            Z[b],
-            working[b],
-            n_rows[b],
-            y[b],
-            weight[b],
-            pull[b],
-            penalty[b],
-            mixing,
-            beta[b],
-            b0[b],
-            eta[b],
-            r[b],
-            grad[b],
-            tol,
-            steps,
-        )
-
-
-@fast_inner
-def cholesky_solve(A, b, m):
-    """Solve A x = b in place (A symmetric positive definite, m x m); True if so."""
-    for j in range(m):
-        d = A[j, j]
-        for k in range(j):
-            d -= A[j, k] * A[j, k]
-        if not d > 0.0:
-            return False
-        d = math.sqrt(d)
-        A[j, j] = d
-        for i in range(j + 1, m):
-            s = A[i, j]
-            for k in range(j):
-                s -= A[i, k] * A[j, k]
-            A[i, j] = s / d
-    for i in range(m):
-        s = b[i]
-        for k in range(i):
-            s -= A[i, k] * b[k]
-        b[i] = s / A[i, i]
-    for i in range(m - 1, -1, -1):
-        s = b[i]
-        for k in range(i + 1, m):
-            s -= A[k, i] * b[k]
-        b[i] = s / A[i, i]
-    return True
+        best = np.inf
+        worst = 0.0
+        halved = 0
+        for _newton in range(steps):
+            value = multinomial_terms(y[f], w, eta, n, r, p)
+            for j in range(m):
+                own = norm_of(beta, j)
+                value += l1[j] * own + 0.5 * l2[j] * own * own
+            if not value <= best + 1e-10 * abs(best) and halved < 30:
+                for k in range(n_classes):  # the model was too bold: half the step
+                    b0[k] = old0[k] + 0.5 * (b0[k] - old0[k])
+                    for j in range(m):
+                        beta[k, j] = old[k, j] + 0.5 * (beta[k, j] - old[k, j])
+                    for i in range(n):
+                        eta[k, i] = old_eta[k, i] + 0.5 * (eta[k, i] - old_eta[k, i])
+                halved += 1
+                continue
+            best = value
+            halved = 0
+            worst, na = optimality(Z, m, n, r, l1, l2, beta, grads[f], active)
+            if worst <= tol * unit:
+                break
+            for a in range(na):
+                curvature[a] = curvature_bound(Z[active[a]], p, w, n)
+            bound0 = curvature_bound(ones, p, w, n)
+            for k in range(n_classes):
+                old0[k] = b0[k]
+                for j in range(m):
+                    old[k, j] = beta[k, j]
+                for i in range(n):
+                    old_eta[k, i] = eta[k, i]
+                    q[k, i] = r[k, i]
+                    D[k, i] = 0.0
+            goal = max(0.1 * worst, 0.3 * tol * unit)
+            for sweep in range(0, SWEEPS, DEPTH):
+                if sweep > 0 and combine(path, (na + 1) * n_classes, c):
+                    extrapolate(
+                        path, c, na, active, Z, n, r, p, w, l1, l2, beta, b0, old,
+                        old0, D, q, tables[4], coefs[1],
+                    )  # fmt: skip
+                largest = descend(
+                    Z, n, na, active, p, w, curvature, ones, bound0, l1, l2, beta, b0,
+                    D, q, goal, path, min(DEPTH, SWEEPS - sweep), classes[1],
+                    classes[2],
+                )  # fmt: skip
+                if largest < goal:
+                    break
+            for k in range(n_classes):
+                for i in range(n):
+                    eta[k, i] += D[k, i]
+        violation[f] = worst / unit
 
 
 @fast_inner

@@ -1,18 +1,13 @@
 """Kernel of the univariate ranking: one feature at a time.
 
-Plain function on arrays, no panelkit imports; float64, fixed order, lock released.
+Plain function on arrays, float64, fixed order, lock released.
 """
 
 import math
-from typing import Any
 
 import numpy as np
-from numba import njit
 
-# Doors are called from Python; inner kernels from kernels alone, so that no wrapper
-# has to be compiled for them.
-DOOR: dict[str, Any] = {"nogil": True, "cache": True, "no_cfunc_wrapper": True}
-door = njit(**DOOR)
+from panelkit.fits.kernel_algebra import door
 
 
 @door

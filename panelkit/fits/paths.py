@@ -20,12 +20,9 @@ from panelkit.fits.arguments import (
 )
 from panelkit.fits.engine import BlockSpecification, run_block
 from panelkit.fits.families import ABSENT, Family
-from panelkit.fits.kernel_cache import kernel_cache
+from panelkit.fits.refits import DONE, ENTRIES, STEP, Refits
 from panelkit.fits.sources import ArraySource
 from panelkit.records import MatrixSource, PathSet
-
-with kernel_cache():
-    from panelkit.fits import kernel_paths as kernels
 
 __all__ = ["fit_paths"]
 
@@ -154,12 +151,12 @@ def fit_paths(  # noqa: PLR0913 - the face of the engine: one argument a choice
 
 
 def _path_set(
-    refits: kernels.Refits,
+    refits: Refits,
     block: BlockSpecification,
     classes: tuple[object, ...],
     n_features: int,
 ) -> PathSet:
-    failed = np.flatnonzero(refits.state[:, kernels.DONE] == 2)
+    failed = np.flatnonzero(refits.state[:, DONE] == 2)
     if len(failed):
         raise FitError(
             code="not-converged",
@@ -168,7 +165,7 @@ def _path_set(
             accepted=f"convergence within {block.steps} Newton steps",
             next_step="Raise penalty_floor or tol, or check for separable data",
         )
-    reached = refits.state[:, kernels.STEP][:, None]
+    reached = refits.state[:, STEP][:, None]
     solved = np.arange(len(block.penalties)) < reached
     paths = [_one_path(refits, block, b, n_features) for b in range(len(block.rows))]
     several = block.problem.family == "multinomial"
@@ -179,7 +176,7 @@ def _path_set(
     values = tuple(path[2] if several else path[2][:, 0] for path in paths)
     order, entries = [], []
     for b in range(len(block.rows)):
-        n_picked = min(int(refits.state[b, kernels.ENTRIES]), block.max_markers)
+        n_picked = min(int(refits.state[b, ENTRIES]), block.max_markers)
         order.append(refits.work[b, refits.order[b, :n_picked]])
         entries.append(refits.order_step[b, :n_picked].copy())
     return PathSet(
@@ -200,7 +197,7 @@ def _path_set(
 
 
 def _one_path(
-    refits: kernels.Refits, block: BlockSpecification, b: int, n_features: int
+    refits: Refits, block: BlockSpecification, b: int, n_features: int
 ) -> tuple[
     NDArray[np.float64],
     NDArray[np.int64],
@@ -213,7 +210,7 @@ def _one_path(
     Intercepts (penalties, K), features and values (stored, K) with their borders, and
     the covariates' coefficients (penalties, covariates, K).
     """
-    reached = int(refits.state[b, kernels.STEP])
+    reached = int(refits.state[b, STEP])
     borders = refits.stored_at[b].copy()
     borders[reached + 1 :] = borders[reached]
     stop = borders[reached]

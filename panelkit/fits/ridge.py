@@ -148,13 +148,9 @@ class _One:
     ) -> None:
         self._family = problem.code
         self._K = K
-        self._terms = (
-            np.ascontiguousarray(problem.y[training]),
-            np.ascontiguousarray(problem.event[training]),
-            np.ascontiguousarray(problem.strata[training]),
-            problem.order(training),
-            share,
-        )
+        self._survival = problem.survival(training)
+        self._y = np.ascontiguousarray(problem.y[training])
+        self._share = share
         self._intercept = problem.start(share, training)
         self._free = problem.family != "cox"
         self._dual = np.zeros(len(training))
@@ -166,7 +162,16 @@ class _One:
             return h[:, None]  # diagonal: one column stands for it
         HZ, diagonal, active = np.empty((n, n)), np.empty(n), np.arange(n)
         kernel_scalar.curves(
-            self._family, *self._terms, h, n, np.eye(n), active, n, HZ, diagonal
+            self._family,
+            self._survival,
+            self._share,
+            h,
+            n,
+            np.eye(n),
+            active,
+            n,
+            HZ,
+            diagonal,
         )
         return HZ
 
@@ -181,7 +186,14 @@ class _One:
             for _halving in range(30):
                 eta = intercept + K @ dual
                 value = kernel_scalar.loss_terms(
-                    self._family, *self._terms, eta, n, r, h
+                    self._family,
+                    self._survival,
+                    self._y,
+                    self._share,
+                    eta,
+                    n,
+                    r,
+                    h,
                 )
                 value += 0.5 * penalty * float(dual @ (eta - intercept))
                 if value <= best + 1e-12 * abs(best):

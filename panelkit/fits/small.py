@@ -153,13 +153,11 @@ def _scalar_fits(
     coefs = np.zeros((len(sizes), len(penalties), 1 + members.shape[1]))
     worst = kernel_scalar.ridge_panels(
         problem.code,
+        problem.survival(),
         Z,
         members,
         sizes,
         problem.y,
-        problem.event,
-        problem.strata,
-        problem.order(),
         share,
         penalties,
         problem.start(share),

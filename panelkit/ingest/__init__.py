@@ -3,14 +3,21 @@
 from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
 from panelkit.ingest.cohort_reader import read_cohort
+from panelkit.ingest.openings import read_openings, record_opening
 from panelkit.ingest.price_list import read_price_list
+from panelkit.ingest.replicate_checks import replicate_agreement
 from panelkit.ingest.scale import ScaleGuess, guess_scale
+from panelkit.ingest.usable import check_usable
 
 __all__ = [
     "ScaleGuess",
     "check_cohort",
+    "check_usable",
     "guess_scale",
     "is_missing",
     "read_cohort",
+    "read_openings",
     "read_price_list",
+    "record_opening",
+    "replicate_agreement",
 ]

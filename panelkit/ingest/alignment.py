@@ -19,8 +19,8 @@ __all__ = [
     "Orientation",
     "check_orientation",
     "mismatch_hint",
-    "near_equal_ids",
     "orient",
+    "refuse_strangers",
 ]
 
 Orientation = Literal["auto", "samples-in-rows", "features-in-rows"]
@@ -153,7 +153,30 @@ def _decide(table: MatrixTable, sheet: Sheet) -> str:
     return "samples-in-rows" if in_rows > in_columns else "features-in-rows"
 
 
-def _no_match(table: MatrixTable, sheet: Sheet) -> InputDataError:
+def refuse_strangers(table: MatrixTable, sheet: Sheet, missing: Sequence[str]) -> None:
+    """Refuse a sheet and a matrix that have no id in common.
+
+    Parameters
+    ----------
+    table : MatrixTable
+        As it was read.
+    sheet : Sheet
+        The sample sheet.
+    missing : sequence of str
+        Columns that the sheet does not have either: it may be another study's.
+
+    Raises
+    ------
+    InputDataError
+        With the first ids of both sides, their counts, and what keeps them apart.
+    """
+    if set(sheet.ids).isdisjoint({*table.row_ids, *table.column_ids}):
+        raise _no_match(table, sheet, missing)
+
+
+def _no_match(
+    table: MatrixTable, sheet: Sheet, missing: Sequence[str] = ()
+) -> InputDataError:
     hints = [
         hint
         for hint in (
@@ -170,10 +193,11 @@ def _no_match(table: MatrixTable, sheet: Sheet) -> InputDataError:
         f"({quoted(sheet.ids, 3)}) is among the {len(table.row_ids)} ids of the "
         f"matrix's first column ({quoted(table.row_ids, 3)}) or the "
         f"{len(table.column_ids)} of its header ({quoted(table.column_ids, 3)})"
-        + advice,
+        + advice
+        + (f"; nor has the sheet a column {quoted(missing)}" if missing else ""),
         accepted="ids are compared as text, character by character",
-        next_step="Make the ids equal in both files, or name the sheet's id column "
-        "sample_id",
+        next_step="Check that both files are of the same study; make the ids equal in "
+        "both, or name the sheet's id column sample_id",
     )
 
 
@@ -229,38 +253,6 @@ def mismatch_hint(wanted: Iterable[str], found: Iterable[str], place: str) -> st
     if not hits:
         return ""
     return f"{hits} would match those of {place} but for {label}"
-
-
-def near_equal_ids(names: Sequence[str], where: str) -> list[Finding]:
-    """Return the finding that names ids which differ only by case or blanks.
-
-    Parameters
-    ----------
-    names : sequence of str
-        Unique ids.
-    where : str
-        What they are ids of.
-
-    Returns
-    -------
-    list of Finding
-        One or none.
-    """
-    plain = [" ".join(name.split()).casefold() for name in names]
-    counts = Counter(plain)
-    if len(counts) == len(names):
-        return []
-    alike = [name for name, key in zip(names, plain, strict=True) if counts[key] > 1]
-    return [
-        Finding(
-            code="ids-nearly-equal",
-            severity="warning",
-            where=where,
-            message=f"{len(alike)} ids differ from another one only by letter case or "
-            f"blanks: {quoted(alike)}",
-            next_step="Check that they are not the same thing entered twice.",
-        )
-    ]
 
 
 def _check_unique(names: list[str], kind: str, where: str) -> None:

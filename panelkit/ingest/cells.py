@@ -9,9 +9,24 @@ from panelkit.errors import InputDataError
 from panelkit.ingest.wording import counted
 from panelkit.records import Finding
 
-__all__ = ["BadCell", "BadCells", "cell_number", "is_missing"]
+__all__ = [
+    "LARGEST",
+    "MISSING_SPELLINGS",
+    "BadCell",
+    "BadCells",
+    "cell_number",
+    "is_missing",
+]
 
-_MISSING = frozenset({"", "na", "nan", "n/a", "null", "none"})
+_MISSING = frozenset({"", "na", "nan", "-nan", "+nan", "n/a", "null", "none"})
+
+MISSING_SPELLINGS = (
+    "", "NA", "na", "N/A", "n/a", "NULL", "null", "None", "none", "Null", "NONE",
+)  # fmt: skip
+"""The usual ones beside nan; rarer ones take the way of the single cell."""
+
+LARGEST = 3.4028234663852886e38
+"""Of single precision: beyond it, a matrix in float32 would hold infinity."""
 N_EXAMPLES = 5
 _DECIMAL_COMMA = re.compile(r"[+-]?\d+,\d+")
 
@@ -43,7 +58,7 @@ def cell_number(text: str) -> float | None:
     Returns
     -------
     float or None
-        None for text and for infinity.
+        None for text, for infinity and beyond the range of single precision.
     """
     if is_missing(text):
         return math.nan
@@ -54,7 +69,7 @@ def cell_number(text: str) -> float | None:
         value = float(text)
     except ValueError:
         return None
-    return value if math.isfinite(value) else None
+    return value if abs(value) <= LARGEST else None
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,17 +129,11 @@ class BadCells:
                 code="text-everywhere",
                 where=self.where,
                 what=f"more than {self.limit} cells are text instead of numbers "
-                f"({self._examples()})",
+                f"({_examples(self.cells)})",
                 accepted="cells hold numbers with a decimal point, or are blank, NA, "
                 "NaN, n/a, null or None",
                 next_step=self._advice(),
             )
-
-    def _examples(self) -> str:
-        # a semicolon, since each example holds a comma
-        left = len(self.cells) - N_EXAMPLES
-        shown = "; ".join(map(str, self.cells[:N_EXAMPLES]))
-        return f"{shown} and {left} more" if left > 0 else shown
 
     def _advice(self) -> str:
         columns = Counter(cell.column for cell in self.cells)
@@ -139,17 +148,49 @@ class BadCells:
         return "Correct these cells, or raise max_bad_cells if they may be missing"
 
     def findings(self) -> list[Finding]:
-        """Return the finding that names the bad cells, if there are any."""
-        if not self.cells:
-            return []
-        count = len(self.cells)
-        return [
-            Finding(
-                code="cells-not-numeric",
-                severity="warning",
-                where=self.where,
-                message=f"{counted(count, 'cell is', 'cells are')} neither a number "
-                f"nor blank and read as missing: {self._examples()}",
-                next_step="Correct them in the file, or leave them to be imputed.",
+        """Return the findings that name the bad cells, if there are any."""
+        absurd = [cell for cell in self.cells if _is_number(cell.text)]
+        text = [cell for cell in self.cells if not _is_number(cell.text)]
+        found = []
+        if text:
+            count = counted(len(text), "cell is", "cells are")
+            found.append(
+                Finding(
+                    code="cells-not-numeric",
+                    severity="warning",
+                    where=self.where,
+                    message=f"{count} neither a number nor blank and read as missing: "
+                    f"{_examples(text)}",
+                    next_step="Correct them in the file, or leave them to be imputed.",
+                )
             )
-        ]
+        if absurd:
+            count = counted(len(absurd), "cell holds", "cells hold")
+            found.append(
+                Finding(
+                    code="value-beyond-range",
+                    severity="warning",
+                    where=self.where,
+                    message=f"{count} a number beyond 3.4e38, the range of single "
+                    f"precision, and read as missing: {_examples(absurd)}",
+                    next_step="Correct them in the file: no assay reports such values.",
+                )
+            )
+        return found
+
+
+def _examples(cells: list[BadCell]) -> str:
+    # a semicolon, since each example holds a comma
+    left = len(cells) - N_EXAMPLES
+    shown = "; ".join(map(str, cells[:N_EXAMPLES]))
+    return f"{shown} and {left} more" if left > 0 else shown
+
+
+def _is_number(text: str) -> bool:
+    """Return whether a bad cell is a finite number, too large for single precision."""
+    if "_" in text or not text.isascii():
+        return False
+    try:
+        return LARGEST < abs(float(text.replace(",", "."))) < math.inf
+    except ValueError:
+        return False

@@ -14,7 +14,13 @@ from panelkit.ingest.wording import as_text
 if TYPE_CHECKING:
     import pandas as pd
 
-__all__ = ["frame_matrix", "frame_sheet", "index_sheet", "is_data_frame"]
+__all__ = [
+    "frame_matrix",
+    "frame_sheet",
+    "index_sheet",
+    "is_data_frame",
+    "series_text",
+]
 
 
 def is_data_frame(value: object) -> "TypeGuard[pd.DataFrame]":

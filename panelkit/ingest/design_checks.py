@@ -1,27 +1,20 @@
-"""What the design shows: classes, subjects, and an outcome tied to something else."""
+"""What the design shows: classes, subjects, and sites that lie higher than others."""
 
 import warnings
 from collections import Counter
-from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import PREPARATION
-from panelkit.ingest.cells import cell_number, is_missing
+from panelkit.ingest.cells import is_missing
 from panelkit.ingest.scale import ScaleGuess
-from panelkit.ingest.wording import counted, figure, quoted
-from panelkit.metrics import (
-    contingency_table,
-    cramers_v,
-    cramers_v_corrected,
-)
+from panelkit.ingest.wording import figure, quoted
 from panelkit.records import Cohort, Finding
 
-__all__ = ["check_design", "check_level_shift", "check_ties"]
+__all__ = ["check_design", "check_level_shift"]
 
 FEW_SUBJECTS = 10
-TIED = 0.3
 SHIFT = 0.25
 MIN_LEVEL = 3
 """Levels with fewer samples say too little about their height."""
@@ -49,7 +42,7 @@ def check_design(cohort: Cohort) -> list[Finding]:
 
 def _class_sizes(cohort: Cohort) -> list[Finding]:
     outcome = cohort.outcome
-    if outcome is None:
+    if outcome is None or outcome.kind != "binary":
         return []
     where = f"samples, column {outcome.column!r}"
     sizes = {
@@ -105,7 +98,7 @@ def _subjects(cohort: Cohort) -> list[Finding]:
             "samples share one weight.",
         )
     ]
-    if cohort.outcome is not None:
+    if cohort.outcome is not None and cohort.outcome.kind == "binary":
         positive = np.bincount(design.subject, weights=cohort.outcome.values)
         both = (positive > 0) & (positive < counts)
         if both.any():
@@ -121,126 +114,6 @@ def _subjects(cohort: Cohort) -> list[Finding]:
                 )
             )
     return findings
-
-
-def check_ties(
-    cohort: Cohort, nuisance: Sequence[str] = (), covariates: Sequence[str] = ()
-) -> list[Finding]:
-    """Return where the outcome goes along with site, batch or another column.
-
-    Parameters
-    ----------
-    cohort : Cohort
-        The cohort.
-    nuisance, covariates : sequence of str
-        Further columns of the sample sheet; those with many different numbers are
-        cut into quarters.
-
-    Returns
-    -------
-    list of Finding
-        ``outcome-tied-to-...``: stop where no level can compare the classes, warning
-        above a corrected Cramer's V of 0.3; blank entries.
-    """
-    findings = []
-    for role, column in (("site", cohort.design.site), ("batch", cohort.design.batch)):
-        if column is not None:
-            findings += _tie(cohort, column, role, f"samples, {role}")
-    for role, names in (("nuisance", nuisance), ("covariate", covariates)):
-        for name in names:
-            levels = _quarters(cohort.sample_columns[name])
-            findings += _tie(cohort, levels, role, f"samples, column {name!r}")
-    return findings
-
-
-def _quarters(cells: Text) -> Text:
-    """Return numbers with more than ten different values as quarters."""
-    numbers = np.array(
-        [np.nan if (v := cell_number(c)) is None else v for c in cells], dtype=float
-    )
-    text = [c for c, v in zip(cells, numbers, strict=True) if np.isnan(v)]
-    observed = numbers[~np.isnan(numbers)]
-    if len(np.unique(observed)) <= 10 or not all(is_missing(c) for c in text):
-        return cells
-    cuts = np.quantile(observed, [0.25, 0.5, 0.75])
-    quarter = np.searchsorted(cuts, numbers, side="left") + 1
-    return np.array(
-        [
-            "" if np.isnan(v) else f"quarter {q}"
-            for v, q in zip(numbers, quarter, strict=True)
-        ],
-        dtype=object,
-    )
-
-
-def _tie(cohort: Cohort, column: Text, role: str, where: str) -> list[Finding]:
-    present = np.array([not is_missing(cell) for cell in column], dtype=bool)
-    findings = []
-    if not present.all():
-        blank = int((~present).sum())
-        findings.append(
-            Finding(
-                code=f"{role}-blank",
-                severity="warning",
-                where=where,
-                message=f"{counted(blank, 'sample has', 'samples have')} "
-                f"a blank entry: {quoted(cohort.samples[~present])}",
-                next_step="Fill them in; they are left out of this check.",
-            )
-        )
-    if cohort.outcome is None:
-        return findings
-    classes = cohort.outcome.values[present].astype(int).astype(str).astype(object)
-    table, levels, _ = contingency_table(column[present], classes)
-    if min(table.shape) < 2:
-        return findings
-    return findings + _tie_finding(table, levels, role, where)
-
-
-def _tie_finding(
-    table: NDArray[np.int64], levels: list[str], role: str, where: str
-) -> list[Finding]:
-    plain, corrected = cramers_v(table), cramers_v_corrected(table)
-    comparable = table.min(axis=1) >= 2
-    # matched sets (one of each class in a level) are balanced, not confounded
-    confounded = not comparable.any() and plain > TIED
-    if not confounded and corrected <= TIED:
-        return []
-    shared = int(table[table.min(axis=1) >= 1].sum())
-    figures = (
-        f"Cramer's V {figure(plain)}, bias-corrected {figure(corrected)}; {shared} of "
-        f"{table.sum()} samples sit in a level with both classes; levels "
-        + _level_counts(table, levels)
-    )
-    if confounded:
-        return [
-            Finding(
-                code=f"outcome-tied-to-{role}",
-                severity="stop",
-                where=where,
-                message="no level holds at least 2 samples of each class, so that "
-                f"outcome and {role} cannot be told apart ({figures})",
-                next_step="Measure both classes in the same runs, or compare other "
-                "classes; no correction can mend this.",
-            )
-        ]
-    return [
-        Finding(
-            code=f"outcome-tied-to-{role}",
-            severity="warning",
-            where=where,
-            message=f"the outcome goes along with {role} ({figures})",
-            next_step=f"Keep to levels of {role} that hold both classes, or validate "
-            "where the two are balanced.",
-        )
-    ]
-
-
-def _level_counts(table: NDArray[np.int64], levels: list[str]) -> str:
-    order = np.argsort(-table.sum(axis=1), kind="stable")
-    shown = [f"{levels[i]!r} {table[i, 1]}/{table[i, 0]}" for i in order]
-    more = f" and {len(shown) - 5} more" if len(shown) > 5 else ""
-    return ", ".join(shown[:5]) + more + " (positive/negative)"
 
 
 def check_level_shift(cohort: Cohort, scale: ScaleGuess) -> list[Finding]:

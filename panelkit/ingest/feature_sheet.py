@@ -1,4 +1,4 @@
-"""The feature sheet: symbols and roles for the features of the matrix."""
+"""The feature sheet: symbols, roles and platforms of the features of the matrix."""
 
 from collections.abc import Sequence
 
@@ -6,6 +6,7 @@ import numpy as np
 
 from panelkit.errors import InputDataError
 from panelkit.ingest.alignment import mismatch_hint
+from panelkit.ingest.assayable import read_assayable
 from panelkit.ingest.sheet import Sheet, Text
 from panelkit.ingest.wording import nearest_hint, quoted
 from panelkit.records import Finding
@@ -16,7 +17,9 @@ ROLES = ("marker", "control", "reference")
 
 
 def feature_columns(
-    sheet: Sheet | None, features: Sequence[str]
+    sheet: Sheet | None,
+    features: Sequence[str],
+    platforms: Sequence[str] | None = None,
 ) -> tuple[dict[str, Text], list[Finding]]:
     """Return the sheet's columns in the order of the matrix's features.
 
@@ -26,22 +29,28 @@ def feature_columns(
         The feature sheet, if there is one.
     features : sequence of str
         Features of the matrix.
+    platforms : sequence of str or None
+        Platforms that exist; None when nothing is known of them.
 
     Returns
     -------
     columns : dict of str to ndarray of shape (n_features,), object
-        ``""`` for features without a row.
+        ``""`` for features without a row. `assayable` holds sorted platform names
+        joined by ``;``, whichever way the sheet says it.
     findings : list of Finding
         Features of one side only.
 
     Raises
     ------
     InputDataError
-        When no feature is found in the sheet, or a role is none of the three.
+        When no feature is found in the sheet, a role is none of the three, or a
+        platform does not exist.
     """
     if sheet is None:
         return {}, []
     _check_roles(sheet)
+    assayable = read_assayable(sheet, platforms)
+    given = {**sheet.columns, **({} if assayable is None else {"assayable": assayable})}
     place = {name: position for position, name in enumerate(sheet.ids)}
     rows = np.array([place.get(name, -1) for name in features])
     found = rows >= 0
@@ -57,7 +66,7 @@ def feature_columns(
             next_step="Make the ids equal, or put them into the column feature",
         )
     columns = {}
-    for name, text in sheet.columns.items():
+    for name, text in given.items():
         column = np.full(len(features), "", dtype=object)
         column[found] = text[rows[found]]
         columns[name] = column

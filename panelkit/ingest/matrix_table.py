@@ -7,7 +7,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from panelkit.ingest.cells import BadCells
+from panelkit.ingest.cells import LARGEST, BadCells
+from panelkit.records import Finding
 
 __all__ = ["MatrixTable", "infinite_to_missing"]
 
@@ -26,6 +27,8 @@ class MatrixTable:
         NaN where missing.
     bad_cells : BadCells
         Cells that were read as missing though they hold something.
+    findings : tuple of Finding
+        What was noticed about the file itself.
     """
 
     where: str
@@ -33,17 +36,18 @@ class MatrixTable:
     column_ids: list[str]
     values: NDArray[np.floating[Any]]
     bad_cells: BadCells
+    findings: tuple[Finding, ...] = ()
 
 
 def infinite_to_missing(
     values: NDArray[np.floating[Any]], note: Callable[[int, int, str], None]
 ) -> NDArray[np.floating[Any]]:
-    """Return the values with infinite ones noted and set to NaN.
+    """Return the values with those beyond single precision noted and set to NaN.
 
     Parameters
     ----------
     values : ndarray
-        Two-dimensional; copied only when something is infinite.
+        Two-dimensional; copied only when something is beyond it.
     note : callable
         Called with row position, column position and the number as text.
 
@@ -52,7 +56,7 @@ def infinite_to_missing(
     ndarray
         Same shape and dtype.
     """
-    infinite = np.isinf(values)
+    infinite = (values > LARGEST) | (values < -LARGEST)
     if not infinite.any():
         return values
     values = values.copy()

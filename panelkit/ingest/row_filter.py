@@ -1,4 +1,4 @@
-"""The `keep` row filter: accepted values, or a range of numbers."""
+"""The `keep` row filter: accepted values, or a range of numbers or dates."""
 
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -8,9 +8,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import UsageError
-from panelkit.ingest.cells import cell_number
+from panelkit.ingest.row_ranges import read_range
 from panelkit.ingest.sheet import Sheet
-from panelkit.ingest.wording import as_text, figure, nearest_hint, quoted
+from panelkit.ingest.wording import as_text, nearest_hint, quoted
 from panelkit.records import Finding
 
 __all__ = ["RowFilter", "row_filters"]
@@ -46,7 +46,8 @@ def row_filters(sheet: Sheet, keep: Mapping[str, Any] | None) -> list[RowFilter]
     sheet : Sheet
         The sample sheet.
     keep : mapping or None
-        Column to one value, several values, or a mapping with `min`, `max` or both.
+        Column to one value, several values, or a mapping with `min`, `max` or both,
+        or with `from`, `to` or both.
 
     Returns
     -------
@@ -101,38 +102,24 @@ def _value_filter(
 def _range_filter(
     sheet: Sheet, column: str, cells: NDArray[np.object_], wanted: Mapping[str, Any]
 ) -> RowFilter:
-    if not wanted or not set(wanted) <= {"min", "max"}:
+    span = read_range(wanted)
+    if span is None:
         raise _not_understood(column, dict(wanted))
-    try:
-        low = float(wanted.get("min", -np.inf))
-        high = float(wanted.get("max", np.inf))
-    except (TypeError, ValueError) as error:
-        raise _not_understood(column, dict(wanted)) from error
-    if not low <= high:
-        raise _not_understood(column, dict(wanted))
-    read = [cell_number(cell) for cell in cells]
-    numbers = np.array([np.nan if value is None else value for value in read])
-    text = sorted({str(c) for c, v in zip(cells, read, strict=True) if v is None})
+    inside, unreadable = span.holds(cells)
     findings: tuple[Finding, ...] = ()
-    if text:
+    if unreadable.any():
         findings = (
             Finding(
                 code="keep-cells-not-numeric",
                 severity="warning",
                 where=f"{sheet.where}, column {column!r}",
-                message=f"keep asks for a range, but {read.count(None)} cells are no "
-                f"numbers ({quoted(text)}); their rows are left out",
+                message=f"keep asks for a range, but {unreadable.sum()} cells are no "
+                f"{span.kind} ({quoted(sorted(set(cells[unreadable])))}); their rows "
+                "are left out",
                 next_step="Correct these cells, or keep by values instead.",
             ),
         )
-    bounds = [f"at least {figure(low)}"] * (low > -np.inf)
-    bounds += [f"at most {figure(high)}"] * (high < np.inf)
-    return RowFilter(
-        column,
-        (numbers >= low) & (numbers <= high),
-        f"{column} is not {' and '.join(bounds)}",
-        findings,
-    )
+    return RowFilter(column, inside, f"{column} is not {span.words}", findings)
 
 
 def _not_understood(column: str, wanted: Any) -> UsageError:
@@ -140,7 +127,8 @@ def _not_understood(column: str, wanted: Any) -> UsageError:
         code="keep-not-understood",
         where=f"keep, column {column!r}",
         what=f"this is neither values nor a range (got {wanted!r})",
-        accepted="accepted are a list of values, or a mapping with numbers min, max or "
-        "both, min not above max",
+        accepted="accepted are a list of values, a mapping with numbers min, max or "
+        "both, or one with numbers or dates from, to or both, the first not above the "
+        "second",
         next_step='Write for example {"lineage": ["B"]} or {"age": {"min": 18}}',
     )

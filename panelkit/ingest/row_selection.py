@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from panelkit.errors import InputDataError
 from panelkit.ingest.alignment import mismatch_hint
 from panelkit.ingest.cells import is_missing
-from panelkit.ingest.outcome_classes import OutcomeClasses
+from panelkit.ingest.outcome_column import OutcomeColumn
 from panelkit.ingest.row_filter import RowFilter
 from panelkit.ingest.sheet import Sheet
 from panelkit.ingest.wording import counted, quoted
@@ -28,8 +28,8 @@ class Selection:
     ----------
     rows : ndarray of shape (n_samples,), int64
         Positions in the sheet, ascending.
-    negative : str or None
-        The negative class; None without an outcome.
+    groups : tuple of str
+        Groups of the outcome that are analysed; empty without an outcome.
     dropped : tuple of Dropped
         Every row, and every sample of the matrix, that was left out.
     flow : tuple of Flow
@@ -39,7 +39,7 @@ class Selection:
     """
 
     rows: NDArray[np.int64]
-    negative: str | None
+    groups: tuple[str, ...]
     dropped: tuple[Dropped, ...]
     flow: tuple[Flow, ...]
     findings: tuple[Finding, ...]
@@ -58,7 +58,7 @@ class _Stages:
 def select_rows(
     sheet: Sheet,
     matrix_samples: Sequence[str],
-    classes: OutcomeClasses | None,
+    classes: OutcomeColumn | None,
     filters: Sequence[RowFilter],
     replicate_of: str | None,
 ) -> Selection:
@@ -70,7 +70,7 @@ def select_rows(
         The sample sheet.
     matrix_samples : sequence of str
         Sample ids of the matrix.
-    classes : OutcomeClasses or None
+    classes : OutcomeColumn or None
         The outcome, if there is one.
     filters : sequence of RowFilter
         The row filters.
@@ -86,7 +86,7 @@ def select_rows(
     Raises
     ------
     InputDataError
-        When no row is left, or not exactly two classes are.
+        When no row is left, or those that are make no outcome of its kind.
     """
     known = set(matrix_samples)
     matched = np.array([name in known for name in sheet.ids], dtype=bool)
@@ -102,13 +102,13 @@ def select_rows(
         matched & usable & passes & ~replicate,
     )
     _refuse_nothing(sheet, stages, filters)
-    negative = classes.settle_negative(stages.analysed) if classes else None
+    groups = classes.settle(stages.analysed) if classes else ()
     dropped = _dropped_rows(sheet, stages, classes, filters)
     return Selection(
         rows=np.flatnonzero(stages.analysed),
-        negative=negative,
+        groups=groups,
         dropped=(*dropped, *_dropped_matrix_samples(sheet, matrix_samples)),
-        flow=_flow(stages, classes, negative),
+        flow=_flow(stages, classes, groups),
         findings=(
             *_matching_findings(sheet, matrix_samples, stages.matched),
             *_outcome_findings(stages, classes),
@@ -166,7 +166,7 @@ def _refuse_nothing(
 def _dropped_rows(
     sheet: Sheet,
     stages: _Stages,
-    classes: OutcomeClasses | None,
+    classes: OutcomeColumn | None,
     filters: Sequence[RowFilter],
 ) -> list[Dropped]:
     reasons = []
@@ -183,7 +183,7 @@ def _dropped_rows(
     return reasons
 
 
-def _outcome_reason(classes: OutcomeClasses | None, row: int) -> str:
+def _outcome_reason(classes: OutcomeColumn | None, row: int) -> str:
     label = classes.labels[row] if classes else ""
     return f"outcome is {label!r}" if label else "no outcome"
 
@@ -198,15 +198,14 @@ def _dropped_matrix_samples(sheet: Sheet, samples: Sequence[str]) -> list[Droppe
 
 
 def _flow(
-    stages: _Stages, classes: OutcomeClasses | None, negative: str | None
+    stages: _Stages, classes: OutcomeColumn | None, groups: tuple[str, ...]
 ) -> tuple[Flow, ...]:
     if classes is None:
         labels = np.full(len(stages.matched), "", dtype=object)
         names = [""]
     else:
         labels = classes.labels
-        first = [classes.positive, str(negative)]
-        names = [*first, *sorted({*labels} - {*first, ""}), ""]
+        names = [*groups, *sorted({*labels} - {*groups, ""}), ""]
     entries = []
     for name in names:
         rows = np.asarray(labels == name, dtype=bool)
@@ -248,7 +247,7 @@ def _matching_findings(
     ]
 
 
-def _outcome_findings(stages: _Stages, classes: OutcomeClasses | None) -> list[Finding]:
+def _outcome_findings(stages: _Stages, classes: OutcomeColumn | None) -> list[Finding]:
     if classes is None:
         return []
     left = stages.matched & ~stages.with_outcome
@@ -275,7 +274,7 @@ def _outcome_findings(stages: _Stages, classes: OutcomeClasses | None) -> list[F
                 where=classes.where,
                 message=f"{counted(int(left.sum()) - blank, 'sample', 'samples')} of "
                 f"other classes left out: {quoted(others)}",
-                next_step="Nothing, if only the two named classes are of interest.",
+                next_step="Nothing, if only the named classes are of interest.",
             )
         )
     return findings

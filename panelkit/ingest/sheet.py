@@ -1,19 +1,20 @@
 """Sheets: one row for each sample or feature, every column as text."""
 
-import csv
 from collections import Counter
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.errors import InputDataError
-from panelkit.ingest.source_file import file_kind, open_text, sniff_delimiter
+from panelkit.ingest.sheet_text import read_rows
+from panelkit.ingest.source_file import file_kind
 from panelkit.ingest.wording import nearest_hint, quoted
+from panelkit.records import Finding
 
-__all__ = ["Sheet", "Text", "build_sheet", "read_sheet"]
+__all__ = ["Sheet", "Text", "build_sheet", "read_columns", "read_sheet"]
 
 Text = NDArray[np.object_]
 
@@ -30,11 +31,14 @@ class Sheet:
         As written, unique.
     columns : mapping of str to ndarray of shape (n_rows,), object
         The other columns, as text.
+    findings : tuple of Finding
+        What was noticed about the file itself.
     """
 
     where: str
     ids: Text
     columns: Mapping[str, Text]
+    findings: tuple[Finding, ...] = ()
 
     def column(self, name: str, role: str) -> Text:
         """Return one column.
@@ -90,54 +94,47 @@ def read_sheet(path: Path, id_column: str) -> Sheet:
         When the file is no text, has no rows, lines differ in length, ids are blank
         or repeated, or column names are repeated.
     """
+    header, texts, findings = read_columns(path, id_column)
+    return replace(build_sheet(path.name, header, texts, id_column), findings=findings)
+
+
+def read_columns(
+    path: Path, id_column: str
+) -> tuple[list[str], list[Text], tuple[Finding, ...]]:
+    """Return the columns of a CSV or TSV file, all as text, no id looked at.
+
+    Parameters
+    ----------
+    path : Path
+        Plain or compressed text with a header line.
+    id_column : str
+        Name of a first column that the header leaves out.
+
+    Returns
+    -------
+    names : list of str
+        Column names.
+    texts : list of ndarray of shape (n_rows,), object
+        Their content.
+    findings : tuple of Finding
+        What was noticed about the file itself.
+
+    Raises
+    ------
+    InputDataError
+        When the file is no text, has no rows, or lines differ in length.
+    """
     if file_kind(path) != "delimited":
         raise InputDataError(
             code="wrong-file-kind",
             where=str(path),
             what="the file is an HDF5 file",
-            accepted="sheets are CSV or TSV in UTF-8 (plain or .gz)",
+            accepted="sheets are CSV or TSV (plain, .gz, .bz2, .xz or .zst)",
             next_step="Save the sheet in one of these formats",
         )
-    header, rows = _read_rows(path)
-    if len(rows[0]) == len(header) + 1 and id_column not in header:
-        header = [id_column, *header]  # row names without a header of their own
-    for number, row in enumerate(rows, 1):
-        if len(row) != len(header):
-            raise InputDataError(
-                code="line-length-differs",
-                where=f"{path.name}, data row {number}",
-                what=f"the row has {len(row)} fields, the header {len(header)}",
-                accepted="every row has as many fields as the header",
-                next_step="Look for a missing or additional delimiter, or put fields "
-                "that contain one in quotes",
-            )
+    header, rows, findings = read_rows(path, id_column)
     texts = list(np.array(rows, dtype=object).reshape(len(rows), len(header)).T)
-    return build_sheet(path.name, header, texts, id_column)
-
-
-def _read_rows(path: Path) -> tuple[list[str], list[list[str]]]:
-    delimiter = sniff_delimiter(path)
-    with open_text(path, newline="") as text:
-        reader = csv.reader(text, delimiter=delimiter, strict=True)
-        try:
-            lines = [row for row in reader if any(field.strip() for field in row)]
-        except csv.Error as error:
-            raise InputDataError(
-                code="quotes-unbalanced",
-                where=f"{path.name}, line {reader.line_num}",
-                what=f"a quoted field does not end where it should ({error})",
-                accepted="quotes are closed and doubled inside a field",
-                next_step="Correct the quotes of this line",
-            ) from error
-    if len(lines) < 2:
-        raise InputDataError(
-            code="no-data-lines",
-            where=str(path),
-            what=f"there are no data lines (got {len(lines)} lines in all)",
-            accepted="a header line and one line for each row are needed",
-            next_step="Export the sheet again",
-        )
-    return lines[0], lines[1:]
+    return header, texts, findings
 
 
 def build_sheet(

@@ -1,35 +1,45 @@
 """Input files before their content: there at all, of which kind, and their hash."""
 
-import csv
-import gzip
 import hashlib
 import io
-import zlib
+import stat
 from collections.abc import Iterator
 from contextlib import contextmanager
-from itertools import islice
 from pathlib import Path
-from typing import BinaryIO, Literal, TextIO, cast
+from typing import Any, BinaryIO, Literal, TextIO, cast
 
 from panelkit.errors import InputDataError
+from panelkit.ingest.compression import (
+    ByteReader,
+    compression_of,
+    open_bytes,
+    reading,
+)
+from panelkit.ingest.text_lines import encoding_of
 
-__all__ = ["FileKind", "file_kind", "open_text", "sha256", "sniff_delimiter"]
+__all__ = ["FileKind", "file_kind", "file_start", "open_text", "sha256"]
 
 FileKind = Literal["delimited", "hdf5"]
 
-_GZIP = b"\x1f\x8b"
 _HDF5 = b"\x89HDF\r\n\x1a\n"
 _REFUSED = {
     b"PK\x03\x04": "a zip archive or an Excel workbook",
     b"\xd0\xcf\x11\xe0": "an old Excel workbook",
     b"PAR1": "a parquet file",
-    b"\xff\xfe": "text in UTF-16",
-    b"\xfe\xff": "text in UTF-16",
-    b"BZh": "a bzip2 archive",
-    b"\xfd7zXZ": "an xz archive",
+    b"7z\xbc\xaf\x27\x1c": "a 7z archive",
+    b"Rar!": "a rar archive",
+    b"\x1f\x9d": "compressed by compress (.Z)",
+    b"%PDF": "a PDF document",
+    b"RDX": "an R data file",
+    b"<!DOCTYPE": "a web page",
+    b"<!doctype": "a web page",
+    b"<html": "a web page",
+    b"<?xml": "an XML document",
 }
-_ACCEPTED = "tables are CSV or TSV in UTF-8 (plain or .gz), matrices also .h5ad"
-_DELIMITERS = ("\t", ",", ";")
+_ACCEPTED = "tables are CSV or TSV (plain, .gz, .bz2, .xz or .zst), matrices also .h5ad"
+_WIDE_MARKS = (b"\xff\xfe", b"\xfe\xff", b"\0\0\xfe\xff")
+_CONTROLS = bytes({*range(32)} - {*b"\0\t\n\v\f\r\x1a\x1b"})
+_START = 4096
 
 
 def file_kind(path: Path) -> FileKind:
@@ -55,17 +65,57 @@ def file_kind(path: Path) -> FileKind:
         return "hdf5"
     if path.suffix.lower() in {".h5ad", ".h5"}:
         raise _wrong_content(path, "named like an HDF5 file but is none")
+    if compression_of(start):
+        start = file_start(path)
+        if not start:
+            raise _empty(path)
+        if start.startswith(_HDF5) or compression_of(start):
+            inside = "an HDF5 file" if start.startswith(_HDF5) else "a compressed file"
+            raise _wrong_content(path, f"{inside} inside a compressed file")
+    _refuse_other_content(path, start)
+    return "delimited"
+
+
+def file_start(path: Path) -> bytes:
+    """Return the first bytes of a file, after any compression.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+
+    Returns
+    -------
+    bytes
+        At most 4,096; empty when the compressed file holds nothing.
+
+    Raises
+    ------
+    InputDataError
+        When the file is missing, a folder, empty or unreadable.
+    """
+    start = _first_bytes(path)
+    if compression_of(start):
+        with open_bytes(path) as stream:
+            start = stream.read(_START)
+    return start
+
+
+def _refuse_other_content(path: Path, start: bytes) -> None:
     for magic, name in _REFUSED.items():
         if start.startswith(magic):
             raise _wrong_content(path, name)
-    if start.startswith(_GZIP):
-        with _reading(path), gzip.open(path) as stream:
-            start = stream.read(4096)
-        if not start:
-            raise _empty(path)
-    if b"\0" in start:
-        raise _wrong_content(path, "binary data (it holds zero bytes)")
-    return "delimited"
+    if start[257:262] == b"ustar":
+        raise _wrong_content(path, "a tar archive")
+    if start.startswith(_WIDE_MARKS):
+        return  # UTF-16 or UTF-32, in which zero bytes are usual
+    text = start.rstrip(b"\0")  # zero bytes at the end of a text are left out
+    if b"\0" in text or not text:
+        wide = text[1:20:2].strip(b"\0") == b"" or text[0:20:2].strip(b"\0") == b""
+        hint = ", like UTF-16 without a byte order mark" if text and wide else ""
+        raise _wrong_content(path, f"binary data (it holds zero bytes{hint})")
+    if any(byte in text for byte in _CONTROLS):
+        raise _wrong_content(path, "binary data (it holds control characters)")
 
 
 def _first_bytes(path: Path) -> bytes:
@@ -85,8 +135,17 @@ def _first_bytes(path: Path) -> bytes:
             accepted="the path of an existing file is needed",
             next_step="Check the path and the folder that it starts from",
         )
-    with _reading(path), path.open("rb") as stream:
-        start = stream.read(4096)
+    with reading(path):
+        if not stat.S_ISREG(path.stat().st_mode):
+            raise InputDataError(
+                code="not-a-file",
+                where=str(path),
+                what="this is a pipe or a device, which can be read only once",
+                accepted="a regular file is needed",
+                next_step="Save its content in a file first",
+            )
+        with path.open("rb") as stream:
+            start = stream.read(_START)
     if not start:
         raise _empty(path)
     return start
@@ -113,31 +172,6 @@ def _wrong_content(path: Path, what: str) -> InputDataError:
 
 
 @contextmanager
-def _reading(path: Path) -> Iterator[None]:
-    """Turn every failure of reading bytes or text into one sentence."""
-    try:
-        yield
-    except (EOFError, gzip.BadGzipFile, zlib.error) as error:
-        raise InputDataError(
-            code="archive-damaged",
-            where=str(path),
-            what="the compressed file is damaged or cut short",
-            accepted="a complete gzip file is needed",
-            next_step="Copy or compress the file again",
-        ) from error
-    except UnicodeDecodeError as error:
-        raise _wrong_content(path, "not UTF-8 text") from error
-    except OSError as error:
-        raise InputDataError(
-            code="file-unreadable",
-            where=str(path),
-            what=f"the file cannot be read ({error.strerror or error})",
-            accepted="a readable file is needed",
-            next_step="Check its permissions and the disk",
-        ) from error
-
-
-@contextmanager
 def open_text(path: Path, newline: str | None = None) -> Iterator[TextIO]:
     """Open plain or compressed text; failures while it is open become one sentence.
 
@@ -156,15 +190,29 @@ def open_text(path: Path, newline: str | None = None) -> Iterator[TextIO]:
     Raises
     ------
     InputDataError
-        When the text is not UTF-8 or the compressed file is damaged.
+        When the text or the compressed file is damaged.
     """
-    with _reading(path), path.open("rb") as raw:
-        compressed = raw.read(2) == _GZIP
-        raw.seek(0)
-        opened = gzip.GzipFile(fileobj=raw) if compressed else raw
-        stream = cast("BinaryIO", opened)
-        with io.TextIOWrapper(stream, "utf-8-sig", newline=newline) as text:
+    encoding = encoding_of(path)
+    with open_bytes(path) as opened:
+        raw = io.BufferedReader(cast("io.RawIOBase", _Raw(opened)))
+        stream = cast("BinaryIO", raw)
+        with io.TextIOWrapper(stream, encoding.codec, newline=newline) as text:
             yield text
+
+
+class _Raw(io.RawIOBase):
+    """Blocks of bytes as what the standard library's text layer reads."""
+
+    def __init__(self, opened: ByteReader) -> None:
+        self._opened = opened
+
+    def readable(self) -> bool:
+        return True
+
+    def readinto(self, buffer: Any, /) -> int:
+        block = self._opened.read(len(buffer))
+        buffer[: len(block)] = block
+        return len(block)
 
 
 def sha256(path: Path) -> str:
@@ -185,42 +233,5 @@ def sha256(path: Path) -> str:
     InputDataError
         When the file cannot be read.
     """
-    with _reading(path), path.open("rb") as stream:
+    with reading(path), path.open("rb") as stream:
         return hashlib.file_digest(stream, "sha256").hexdigest()
-
-
-def sniff_delimiter(path: Path) -> str:
-    """Return the delimiter that splits the first two lines alike.
-
-    Parameters
-    ----------
-    path : Path
-        A file of kind "delimited".
-
-    Returns
-    -------
-    str
-        Tab, comma or semicolon; a comma when none occurs.
-
-    Raises
-    ------
-    InputDataError
-        When the text cannot be read.
-    """
-    with open_text(path) as text:
-        lines = list(islice((line for line in text if line.strip()), 2))
-
-    def merit(delimiter: str) -> tuple[bool, int]:
-        counts = [_count_fields(line, delimiter) for line in lines]
-        # a header may lack the field above the row names
-        alike = counts[-1] - counts[0] in (0, 1) and counts[-1] > 1
-        return alike, counts[0]
-
-    best = max(_DELIMITERS, key=merit) if lines else ","
-    return best if lines and merit(best)[1] > 1 else ","
-
-
-def _count_fields(line: str, delimiter: str) -> int:
-    if '"' not in line:
-        return line.count(delimiter) + 1
-    return len(next(csv.reader([line], delimiter=delimiter)))

@@ -9,7 +9,7 @@ __all__ = ["as_text", "counted", "figure", "nearest_hint", "percent", "quoted"]
 
 
 def figure(value: float) -> str:
-    """Return a number with three figures, never in powers of ten.
+    """Return a number with three figures, in powers of ten only beyond 1e15.
 
     Parameters
     ----------
@@ -21,7 +21,7 @@ def figure(value: float) -> str:
     str
         ``"285,004"``, ``"7.62"`` or ``"0.0312"``.
     """
-    if abs(value) >= 1000:
+    if 1000 <= abs(value) < 1e15:
         return f"{value:,.0f}"
     return f"{value:.3g}"
 

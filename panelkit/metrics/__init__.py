@@ -16,6 +16,20 @@ from panelkit.metrics.intervals import (
     paired_interval,
 )
 from panelkit.metrics.numeric import linear_slope, r_squared, root_mean_square
+from panelkit.metrics.rank_tests import (
+    auc_score_interval,
+    false_discovery_adjusted,
+    fisher_exact_many,
+    holm_adjusted,
+    rank_sum_p,
+)
+from panelkit.metrics.reliability import (
+    LimitsOfAgreement,
+    Reliability,
+    coefficient_of_variation,
+    limits_of_agreement,
+    reliability,
+)
 from panelkit.metrics.several_classes import (
     class_areas,
     hand_till,
@@ -33,16 +47,20 @@ from panelkit.metrics.utility import balanced_accuracy, best_threshold, net_bene
 
 __all__ = [
     "CrossValidated",
+    "LimitsOfAgreement",
     "Measure",
+    "Reliability",
     "areas",
     "auc",
     "auc_placements",
+    "auc_score_interval",
     "balanced_accuracy",
     "best_threshold",
     "brier",
     "calibration_slope",
     "censoring_curve",
     "class_areas",
+    "coefficient_of_variation",
     "concordance",
     "contingency_table",
     "corrected_se",
@@ -50,9 +68,13 @@ __all__ = [
     "cramers_v_corrected",
     "cross_validate",
     "cross_validated_auc",
+    "false_discovery_adjusted",
+    "fisher_exact_many",
     "hand_till",
+    "holm_adjusted",
     "horizon_auc",
     "horizon_brier",
+    "limits_of_agreement",
     "linear_slope",
     "log_loss",
     "log_loss_of_classes",
@@ -60,6 +82,8 @@ __all__ = [
     "net_benefit",
     "paired_interval",
     "r_squared",
+    "rank_sum_p",
+    "reliability",
     "root_mean_square",
     "softmax",
     "uno_concordance",

@@ -7,7 +7,8 @@ from panelkit.records.accuracy import (
     OutOfFold,
     TunedChoice,
 )
-from panelkit.records.cohort import Cohort, Design, Outcome
+from panelkit.records.assays import AssayMap
+from panelkit.records.cohort import Cohort, Design, DesignKind
 from panelkit.records.findings import Dropped, Finding, Findings, Flow, Severity
 from panelkit.records.fragility import (
     AddedValue,
@@ -26,9 +27,11 @@ from panelkit.records.frontier import (
     RuleChoice,
 )
 from panelkit.records.matrix import MatrixSource
+from panelkit.records.openings import Opening
+from panelkit.records.outcome import Outcome, OutcomeKind
 from panelkit.records.panel_cost import CostLine, PanelCost
 from panelkit.records.paths import PathSet
-from panelkit.records.preparation import RecipeState
+from panelkit.records.preparation import RecipeContext, RecipeState, StepState
 from panelkit.records.prices import (
     ANY_MARKER,
     PRICE_COLUMNS,
@@ -38,6 +41,7 @@ from panelkit.records.prices import (
 )
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
+from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -52,12 +56,14 @@ __all__ = [
     "RESEARCH_USE",
     "AddedValue",
     "Aftermath",
+    "AssayMap",
     "AssayPrice",
     "Choice",
     "Cohort",
     "Comparator",
     "CostLine",
     "Design",
+    "DesignKind",
     "Dropped",
     "ErrorBound",
     "Finding",
@@ -72,13 +78,18 @@ __all__ = [
     "Headline",
     "LearningPoint",
     "MatrixSource",
+    "Opening",
     "OutOfFold",
     "Outcome",
+    "OutcomeKind",
     "PanelCost",
     "PathSet",
     "PriceList",
+    "RecipeContext",
     "RecipeState",
     "Record",
+    "ReplicateAgreement",
+    "Replicates",
     "RuleChoice",
     "RunRecord",
     "RunSummary",
@@ -86,6 +97,7 @@ __all__ = [
     "ShortlistTable",
     "Stability",
     "StandIn",
+    "StepState",
     "Subgroup",
     "SubsamplePlan",
     "TunedChoice",

@@ -7,42 +7,20 @@ from typing import TYPE_CHECKING, Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from panelkit.records.assays import AssayMap
 from panelkit.records.findings import Dropped, Findings, Flow
-from panelkit.records.record import Record, frame
+from panelkit.records.openings import Opening
+from panelkit.records.outcome import Outcome
+from panelkit.records.record import Record
+from panelkit.records.replicates import Replicates
 
 if TYPE_CHECKING:
     import anndata
     import pandas as pd
 
-__all__ = ["Cohort", "Design", "Outcome"]
+__all__ = ["Cohort", "Design", "DesignKind"]
 
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Outcome(Record):
-    """The clinical outcome of each analysed sample.
-
-    Attributes
-    ----------
-    kind : {"binary"}
-        Kind of outcome.
-    column : str
-        Column of the sample sheet.
-    negative, positive : str
-        The classes as written; scores point to `positive`.
-    values : ndarray of shape (n_samples,), float64
-        1.0 for `positive`, 0.0 for `negative`.
-    """
-
-    kind: Literal["binary"]
-    column: str
-    negative: str
-    positive: str
-    values: NDArray[np.float64]
-
-    def to_frame(self) -> "pd.DataFrame":
-        """Return one row a sample: class and value."""
-        names = np.where(self.values == 1.0, self.positive, self.negative)
-        return frame({"outcome_class": names, "value": self.values})
+DesignKind = Literal["cohort", "case-control", "matched"]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -59,6 +37,20 @@ class Design(Record):
         Observation weights, 1 / rows of the subject, scaled to sum to 1.
     site, batch : ndarray of shape (n_samples,), object, or None
         As written in the sample sheet.
+    kind : {"cohort", "case-control", "matched"}
+        How people came into the study.
+    prevalence : float or None
+        Share of the positive class among the people that the test is meant for.
+    matched_set : ndarray of shape (n_samples,), int64, or None
+        Code of each sample's matched set, in order of first row; -1 for none.
+    matched_set_ids : ndarray of shape (n_sets,), object, or None
+        The sets as written.
+    run_order : ndarray of shape (n_samples,), float64, or None
+        Place in the order of measurement, NaN where blank.
+    fold : ndarray of shape (n_samples,), int64, or None
+        The user's own fold of each sample, in order of first row.
+    fold_ids : ndarray of shape (n_folds,), object, or None
+        These folds as written.
     """
 
     subject: NDArray[np.int64]
@@ -66,11 +58,33 @@ class Design(Record):
     weights: NDArray[np.float64]
     site: NDArray[np.object_] | None = None
     batch: NDArray[np.object_] | None = None
+    kind: DesignKind = "cohort"
+    prevalence: float | None = None
+    matched_set: NDArray[np.int64] | None = None
+    matched_set_ids: NDArray[np.object_] | None = None
+    run_order: NDArray[np.float64] | None = None
+    fold: NDArray[np.int64] | None = None
+    fold_ids: NDArray[np.object_] | None = None
 
     @property
     def n_subjects(self) -> int:
         """Number of subjects."""
         return len(self.subject_ids)
+
+    @property
+    def blocks(self) -> NDArray[np.int64]:
+        """Code of what must stay together in folds and halves, of shape (n_samples,).
+
+        Subjects, joined where they share a matched set; in order of first row.
+        """
+        if self.matched_set is None:
+            return self.subject
+        block = self.subject.copy()
+        for code in np.unique(self.matched_set[self.matched_set >= 0]):
+            joined = np.unique(block[self.matched_set == code])
+            block[np.isin(block, joined)] = joined[0]
+        first = {code: place for place, code in enumerate(dict.fromkeys(block))}
+        return np.array([first[code] for code in block], np.int64)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -101,6 +115,15 @@ class Cohort(Record):
         Participant flow, one entry a class.
     sources : mapping of str to str
         Role of each input file to its SHA-256, for the record.
+    replicates : Replicates or None
+        Repeated measurements of analysed samples, when they were named.
+    assays : AssayMap or None
+        Feature to analyte to assay, when such a sheet was given; `feature_columns`
+        then has `analyte` and `assay`.
+    set_aside : int
+        Rows of the sample sheet that were left unread.
+    openings : tuple of Opening
+        Every opening so far of the rows that were set aside.
     """
 
     values: NDArray[np.floating[Any]]
@@ -114,6 +137,10 @@ class Cohort(Record):
     dropped: tuple[Dropped, ...] = ()
     flow: tuple[Flow, ...] = ()
     sources: Mapping[str, str] | None = None
+    replicates: Replicates | None = None
+    assays: AssayMap | None = None
+    set_aside: int = 0
+    openings: tuple[Opening, ...] = ()
 
     @property
     def X(self) -> NDArray[np.floating[Any]]:

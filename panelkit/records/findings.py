@@ -2,7 +2,7 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import astuple, dataclass, fields
-from typing import TYPE_CHECKING, Literal, overload
+from typing import TYPE_CHECKING, Literal, get_args, overload
 
 from panelkit.records.record import Record, frame
 
@@ -64,6 +64,12 @@ class Findings(Record, Sequence[Finding]):
         """Return the findings of one severity."""
         return tuple(item for item in self.items if item.severity == severity)
 
+    def ordered(self) -> "Findings":
+        """Return each finding once: what stops first, then warnings, then info."""
+        rank = {severity: place for place, severity in enumerate(get_args(Severity))}
+        once = dict.fromkeys(self.items)
+        return Findings(tuple(sorted(once, key=lambda item: -rank[item.severity])))
+
     def to_frame(self) -> "pd.DataFrame":
         """Return one row a finding: code, severity, where, message, next_step."""
         names = [field.name for field in fields(Finding)]
@@ -111,6 +117,9 @@ class Flow:
         Of these, kept by the row filters.
     analysed : int
         Of these, analysed (technical replicates left out).
+    set_aside : int
+        Rows of the sample sheet that nothing may read yet. They have an entry of
+        their own, since their class is not read either.
     """
 
     outcome_class: str
@@ -119,3 +128,4 @@ class Flow:
     with_outcome: int
     kept: int
     analysed: int
+    set_aside: int = 0

@@ -23,6 +23,8 @@ class RunRecord:
         Role of each input file to its SHA-256.
     versions : mapping of str to str
         Python and the libraries whose arithmetic enters results.
+    openings : int
+        How often the rows that were set aside have been opened so far.
     """
 
     format: Literal[1]
@@ -30,3 +32,4 @@ class RunRecord:
     study: Mapping[str, Any]
     inputs: Mapping[str, str]
     versions: Mapping[str, str]
+    openings: int = 0

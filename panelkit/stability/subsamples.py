@@ -5,6 +5,7 @@ from numpy.typing import NDArray
 
 from panelkit.errors import FitError
 from panelkit.records import SubsamplePlan
+from panelkit.stability.units import unit_strata
 
 __all__ = ["draw_pairs"]
 
@@ -28,9 +29,9 @@ def draw_pairs(
     rows : ndarray of int64
         Rows that may be used (a fold's training rows).
     subjects : ndarray of shape (n_samples,), int64
-        Subject of each sample.
+        Subject of each sample, or the matched set that holds its subject.
     y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1; a subject counts with the class of its first row.
+        Outcome, 0 and 1; units that hold both classes are halved on their own.
     n_pairs : int
         Number of pairs.
     generator : numpy.random.Generator
@@ -51,9 +52,8 @@ def draw_pairs(
     Meinshausen & Buhlmann 2010, JRSS-B 72:417; Shah & Samworth 2013, JRSS-B 75:55.
     Stratified halves are outside the independent sampling of their theorems.
     """
-    own, first = np.unique(subjects[rows], return_index=True)
-    classes = [own[y[rows][first] == value] for value in (0.0, 1.0)]
-    smallest = min(len(members) for members in classes)
+    classes, holding = unit_strata(subjects[rows], y[rows])
+    smallest = int(holding.min())
     if smallest < SMALLEST_CLASS:
         raise FitError(
             code="too-few-for-halves",

@@ -7,9 +7,11 @@ from pathlib import Path
 
 from panelkit.config import Study, read_study
 from panelkit.costing import Draws, PanelPricer, Procedure, ProcedureData
+from panelkit.ingest import check_usable
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
 from panelkit.workflow.procedure import draws_of, procedure_of
+from panelkit.workflow.supported import can_run, refuse_unsupported
 
 __all__ = ["CheckedStudy", "check_study", "checked"]
 
@@ -67,7 +69,10 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
         With exit codes 2, 3 and 4.
     """
     plan = study if isinstance(study, Study) else read_study(Path(study))
-    return checked(plan).cohort
+    cohort = load_cohort(plan)
+    if not can_run(cohort):
+        return _settled_findings(plan, cohort, load_prices(plan)[2])
+    return _known(plan, cohort).cohort
 
 
 def checked(plan: Study) -> CheckedStudy:
@@ -86,17 +91,22 @@ def checked(plan: Study) -> CheckedStudy:
     Raises
     ------
     StudyFileError, InputDataError, FitError
-        With exit codes 2, 3 and 4.
+        With exit codes 2, 3 and 4; 2 also for an outcome that can only be checked.
     """
     cohort = load_cohort(plan)
+    refuse_unsupported(plan, cohort)
+    return _known(plan, cohort)
+
+
+def _known(plan: Study, cohort: Cohort) -> CheckedStudy:
     procedure, data, size_findings = procedure_of(plan, cohort)
     draws = draws_of(plan, data)
     pricer, price_hashes, price_findings = load_prices(plan)
-    findings = (*cohort.findings, *price_findings)
-    settled = tuple(_settled(item, plan) for item in findings)
-    idle = tuple(_idle_acceptances(findings, plan))
+    more = tuple(price_findings)
+    if not any(item.code == "no-usable-feature" for item in cohort.findings):
+        more = (*more, *check_usable(cohort, data.barred != ""))
     return CheckedStudy(
-        replace(cohort, findings=Findings((*settled, *idle))),
+        _settled_findings(plan, cohort, more),
         procedure,
         data,
         tuple(size_findings),
@@ -104,6 +114,14 @@ def checked(plan: Study) -> CheckedStudy:
         pricer,
         price_hashes,
     )
+
+
+def _settled_findings(plan: Study, cohort: Cohort, found: Iterable[Finding]) -> Cohort:
+    """Return the cohort with further findings, those accepted settled."""
+    findings = (*cohort.findings, *found)
+    settled = tuple(_settled(item, plan) for item in findings)
+    idle = tuple(_idle_acceptances(findings, plan))
+    return replace(cohort, findings=Findings((*settled, *idle)).ordered())
 
 
 def _idle_acceptances(findings: Iterable[Finding], plan: Study) -> Iterator[Finding]:

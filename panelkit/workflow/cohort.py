@@ -21,11 +21,21 @@ __all__ = [
     "refuse_stops",
 ]
 
-NEVER_ACCEPTED = ("subject-in-both-classes",)  # folds and halves need one class each
+NEVER_ACCEPTED = (
+    "no-usable-feature",  # there is nothing to fit
+    "subject-in-both-classes",  # folds and halves need one class each
+)
 
 
-def load_cohort(study: Study) -> Cohort:
+def load_cohort(study: Study, *, open_set_aside: str | None = None) -> Cohort:
     """Return the checked cohort of a study.
+
+    Parameters
+    ----------
+    study : Study
+        The study.
+    open_set_aside : str or None
+        The reason for reading the rows that were set aside, and no other.
 
     Raises
     ------
@@ -35,13 +45,14 @@ def load_cohort(study: Study) -> Cohort:
         The data cannot be used.
     """
     section = study.cohort
-    if section.outcome is None and section.time is None:
+    if section.outcome is None and section.time is None and section.event is None:
         raise StudyFileError(
             code="outcome-missing",
             where=f"{study.path}, [cohort], key 'outcome'",
             what="no outcome is named",
-            accepted="a column of the sample sheet, with its positive class",
-            next_step="Add outcome and positive",
+            accepted="a column of the sample sheet: outcome with positive, classes or "
+            "kind; or time with event",
+            next_step="Add outcome and positive, or time and event",
         )
 
     def path(name: str | None) -> Path | None:
@@ -53,14 +64,31 @@ def load_cohort(study: Study) -> Cohort:
         outcome=section.outcome,
         positive=section.positive,
         negative=section.negative,
+        kind=section.kind,
+        classes=section.classes,
+        unit=section.unit,
         time=section.time,
         event=section.event,
+        event_value=section.event_value,
+        censored_value=section.censored_value,
+        horizon=section.horizon,
+        time_unit=section.time_unit,
         subject=section.subject,
         site=section.site,
         batch=section.batch,
+        matched_set=section.matched_set,
+        run_order=section.run_order,
         replicate_of=section.replicate_of,
+        folds=section.folds,
+        design=study.design.kind,
+        prevalence=study.design.prevalence,
         features=path(section.features),
+        assays=path(section.assays),
+        platforms=tuple(study.platforms) or None,
         keep=section.keep or None,
+        set_aside=section.set_aside or None,
+        open_set_aside=open_set_aside,
+        openings=path(section.openings),
         orientation=section.orientation,
         covariates=section.covariates,
         nuisance=section.nuisance,
@@ -156,6 +184,16 @@ def barred_features(study: Study, cohort: Cohort) -> NDArray[np.object_]:
     if roles is not None:
         for role in ("control", "reference"):
             reasons[roles == role] = f"its role is {role}"
+    assayable = cohort.feature_columns.get("assayable")
+    if assayable is not None:
+        own = set(study.platforms)
+        cannot = [
+            not (own & set(names) if own else any(names))
+            for names in (cell.split(";") for cell in assayable)
+        ]
+        reasons[np.array(cannot, bool) & (reasons == "")] = (
+            "the feature sheet names no platform on which it is assayable"
+        )
     where = f"{study.path}, [shortlist], key 'never'"
     reasons[feature_positions(cohort, study.shortlist.never, where)] = (
         "named under [shortlist] never"

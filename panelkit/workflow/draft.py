@@ -10,7 +10,13 @@ from typing import Any
 from panelkit.config import SEED, study_text
 from panelkit.errors import InputDataError
 from panelkit.ingest import guess_scale, is_missing, read_cohort
-from panelkit.preparation import default_steps
+from panelkit.preparation import DEFAULT_REASONS, default_steps
+from panelkit.workflow.draft_columns import (
+    SurvivalPair,
+    files_beside,
+    suggestions,
+    survival_pairs,
+)
 
 __all__ = ["draft_study"]
 
@@ -35,6 +41,8 @@ NEGATIVE = (
     r"non.?responder|asymptomatic|asx|unaffected|benign)$"
 )
 MAX_CLASSES = 6
+NAMED = 2.0
+"""Score of a column that is an outcome by its name."""
 SMALLEST_CLASS = 4
 
 
@@ -86,35 +94,61 @@ def draft_study(
     if samples is not None:
         proposed["samples"] = _relative(samples, base)
     roles = _roles(columns)
-    outcomes = _outcomes(columns, set(roles.values()), SEX_AND_AGE)
-    if not outcomes:  # sex is the outcome where there is nothing else
-        outcomes = _outcomes(columns, set(roles.values()), "^$")
-    if not outcomes:
+    pairs = survival_pairs(
+        {name: cells for name, cells in columns.items() if name not in roles.values()}
+    )
+    taken = {*roles.values(), *(c for pair in pairs for c in (pair.time, pair.event))}
+    outcomes = _outcomes(columns, taken, SEX_AND_AGE)
+    if not outcomes and not pairs:  # sex is the outcome where there is nothing else
+        outcomes = _outcomes(columns, taken, "^$")
+    if not outcomes and not pairs:
         raise InputDataError(
             code="no-outcome-found",
             where=str(samples or expression),
             what=f"no column looks like an outcome among {len(columns)}",
             accepted=f"a column with 2 to {MAX_CLASSES} classes of at least "
-            f"{SMALLEST_CLASS} samples",
+            f"{SMALLEST_CLASS} samples, or a time with an event",
             next_step="Add the outcome to the sample sheet, or write [cohort] outcome "
             "and positive by hand",
         )
-    _propose_outcome(outcomes, proposed, notes)
+    suggested = suggestions(columns, taken)
+    if outcomes and (not pairs or outcomes[0].score >= NAMED):
+        _propose_outcome(outcomes, proposed, notes)
+        _note_survival(pairs, suggested["cohort"], notes)
+    else:
+        _note_survival(pairs, proposed, notes)
+    for role, file in files_beside(Path(expression)).items():
+        proposed[role] = _relative(file, base)
+        notes[role] = "Found beside the expression matrix. Check this line."
+    design = _paired(columns, roles, proposed, notes)
     for role, column in roles.items():
         proposed[role] = column
         notes[role] = f"Guessed by the column's name; {_spread(columns[column])}."
-    _propose_columns(columns, set(roles.values()), outcomes, proposed)
+    _propose_columns(columns, {*taken, *map(str, proposed.values())}, proposed)
+    _note_suggestions(suggested, columns, notes)
     scale = guess_scale(cohort.values).kind
     preparation = {
         "discovery": (
             f"The values look like {scale}; without this key the steps would be "
-            f"{', '.join(default_steps(scale))}."
+            f"{', '.join(default_steps(scale))}: {DEFAULT_REASONS[scale]}."
         )
     }
     return study_text(
-        {"cohort": proposed, "choice": {"primary": {"rule": "smallest-within-one-se"}}},
-        {"cohort": notes, "preparation": preparation},
+        {
+            "cohort": proposed,
+            "design": design,
+            "choice": {"primary": {"rule": "smallest-within-one-se"}},
+        },
+        {
+            "cohort": notes,
+            "preparation": preparation,
+            "design": {
+                key: "To be set together with matched_set."
+                for key in (*design, *suggested.get("design", {}))
+            },
+        },
         SEED,
+        suggested,
     )
 
 
@@ -175,16 +209,84 @@ def _propose_outcome(
     proposed.update(outcome=best.column, positive=positive, negative=negative)
 
 
+def _paired(
+    columns: dict[str, list[str]],
+    roles: dict[str, str],
+    proposed: dict[str, Any],
+    notes: dict[str, str],
+) -> dict[str, Any]:
+    """Take people with samples of both classes for matched sets, not for subjects."""
+    if "subject" not in roles or "outcome" not in proposed:
+        return {}
+    pair = (proposed["positive"], proposed["negative"])
+    classes: dict[str, set[str]] = {}
+    for person, value in zip(
+        columns[roles["subject"]], columns[proposed["outcome"]], strict=True
+    ):
+        if value in pair:
+            classes.setdefault(person, set()).add(value)
+    both = sum(len(found) == len(pair) for found in classes.values())
+    if 2 * both < len(classes):
+        return {}
+    column = roles.pop("subject")
+    proposed["matched_set"] = column
+    notes["matched_set"] = (
+        f"Guessed: {both} of {len(classes)} values of this column hold both classes, "
+        "so each is a matched set (such as tumour and normal tissue of one person). "
+        "Check this line."
+    )
+    return {"kind": "matched"}
+
+
+def _note_survival(
+    pairs: list[SurvivalPair], keys: dict[str, Any], notes: dict[str, str]
+) -> None:
+    """Put the likeliest survival outcome among the keys, and say where it is from."""
+    if not pairs:
+        return
+    best = pairs[0]
+    keys.update(best.keys())
+    others = ", ".join(f"{pair.time} with {pair.event}" for pair in pairs[1:5])
+    counts = ", ".join(f"{code} ({n})" for code, n in best.counts.most_common())
+    notes["time"] = (
+        f"Guessed: a time until the event in {best.event}. "
+        + (f"Other pairs that could be meant: {others}. " if others else "")
+        + "It stands in place of outcome and positive. Check this line."
+    )
+    notes["event"] = (
+        f"Guessed: {counts}; {best.codes[0]} means event, {best.codes[1]} censored. "
+        "Check this line."
+    )
+
+
+def _note_suggestions(
+    suggested: dict[str, dict[str, Any]],
+    columns: dict[str, list[str]],
+    notes: dict[str, str],
+) -> None:
+    cohort = suggested["cohort"]
+    if "matched_set" in cohort:
+        spread = _spread(columns[cohort["matched_set"]])
+        notes["matched_set"] = (
+            f"Perhaps, by the column's name; {spread}. "
+            'It needs kind = "matched" under [design].'
+        )
+    if "run_order" in cohort:
+        notes["run_order"] = "Perhaps, by the column's name."
+    if "set_aside" in cohort:
+        notes["set_aside"] = (
+            "Perhaps: the latest quarter, as a last test that nothing reads before all "
+            "choices are made. Name openings too."
+        )
+
+
 def _propose_columns(
     columns: dict[str, list[str]],
     taken: set[str],
-    outcomes: list[_Outcome],
     proposed: dict[str, Any],
 ) -> None:
     """Propose covariates and nuisance columns by name."""
-    free = [
-        name for name in columns if name not in taken and name != outcomes[0].column
-    ]
+    free = [name for name in columns if name not in taken]
     covariates = [name for name in free if re.search(SEX_AND_AGE, name.lower())]
     nuisance = [
         name

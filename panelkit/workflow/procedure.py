@@ -17,16 +17,16 @@ from panelkit.costing import (
     Rule,
     comparisons_for,
     draw_everything,
+    given_folds,
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.ingest import guess_scale
-from panelkit.preparation import Recipe, default_steps
 from panelkit.records import Cohort, Finding
 from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
 from panelkit.workflow.columns import coded_columns
+from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
 __all__ = [
     "comparisons_of",
@@ -52,7 +52,8 @@ def procedure_of(
     Returns
     -------
     procedure : Procedure
-        Sizes above the number of candidates are left out.
+        Sizes above the number of candidates are left out; none are left where no
+        feature is usable, which a finding says.
     data : ProcedureData
         The matrix after the per-sample steps.
     findings : list of Finding
@@ -73,12 +74,11 @@ def procedure_of(
             accepted="a binary outcome",
             next_step="Name outcome and positive",
         )
-    steps = plan.preparation.discovery
-    if steps is None:
-        steps = default_steps(guess_scale(cohort.values).kind)
-    recipe = Recipe(
-        steps, plan.preparation.log2_offset, plan.preparation.max_missing_share
-    )
+    context = context_of(cohort)
+    recipe, assay = recipes_of(plan, cohort)
+    for part in (recipe, assay):
+        if part is not None:
+            part.check(context)
     section = plan.shortlist
     rules = ShortlistRules(
         threshold=section.threshold,
@@ -114,10 +114,14 @@ def procedure_of(
         covariates=coded_columns(cohort, plan.cohort.covariates),
         nuisance=coded_columns(cohort, plan.cohort.nuisance),
         controls=_controls(cohort),
+        context=context,
+        values=None if assay is None else cohort.values,
+        blocks=cohort.design.blocks,
+        folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
     )
     usable = min(section.candidates, int((barred == "").sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
-    if not sizes:
+    if not sizes and usable:  # without any feature a finding has said so
         raise StudyFileError(
             code="sizes-too-large",
             where=f"{plan.path}, [panels], key 'sizes'",
@@ -126,7 +130,7 @@ def procedure_of(
             "surely are",
             next_step="Name smaller sizes, or raise [shortlist] candidates",
         )
-    finding = []
+    finding = [] if assay is not None else assay_findings(recipe)
     if left := [size for size in plan.panels.sizes if size > usable]:
         finding.append(
             Finding(
@@ -138,7 +142,8 @@ def procedure_of(
                 "Raise [shortlist] candidates to have them",
             )
         )
-    return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+    procedure = Procedure(recipe, rules, plan.panels.makers, sizes, assay=assay)
+    return procedure, data, finding
 
 
 def _controls(cohort: Cohort) -> NDArray[np.int64]:

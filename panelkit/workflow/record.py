@@ -4,6 +4,7 @@ import platform
 from collections.abc import Mapping
 from dataclasses import asdict
 from importlib.metadata import version
+from typing import Any
 
 from panelkit.config import Study
 from panelkit.records import RunRecord
@@ -14,7 +15,12 @@ __all__ = ["record_bytes", "run_record"]
 LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
 
 
-def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
+def run_record(
+    study: Study,
+    inputs: Mapping[str, str],
+    steps: Mapping[str, Any],
+    openings: int = 0,
+) -> RunRecord:
     """Return the record of a run.
 
     Parameters
@@ -23,21 +29,28 @@ def run_record(study: Study, inputs: Mapping[str, str]) -> RunRecord:
         Its effective settings enter, not its text.
     inputs : mapping of str to str
         Role of each input file to its SHA-256.
+    steps : mapping of str to object
+        Discovery and assay part with every default written out.
+    openings : int
+        How often the rows that were set aside have been opened so far.
 
     Returns
     -------
     RunRecord
         Equal for equal results.
     """
+    settings = study.effective()
+    settings["preparation"] = {**settings["preparation"], **steps}
     return RunRecord(
         format=1,
         panelkit=version("panelkit"),
-        study=study.effective(),
+        study=settings,
         inputs=dict(sorted(inputs.items())),
         versions={
             "python": platform.python_version(),
             **{name: version(name) for name in LIBRARIES},
         },
+        openings=openings,
     )
 
 

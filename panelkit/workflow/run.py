@@ -32,6 +32,7 @@ from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
 from panelkit.workflow.primary import primary_of
 from panelkit.workflow.procedure import comparisons_of
+from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import record_bytes, run_record
 from panelkit.workflow.summary import summarise
 from panelkit.workflow.tables import (
@@ -39,6 +40,7 @@ from panelkit.workflow.tables import (
     frontier_content,
     write_accuracy,
     write_data_tables,
+    write_replicates,
     write_results,
 )
 
@@ -131,7 +133,12 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    record = run_record(plan, {**(cohort.sources or {}), **known.price_hashes})
+    record = run_record(
+        plan,
+        {**(cohort.sources or {}), **known.price_hashes},
+        preparation_tables(procedure.recipe, procedure.assay),
+        len(cohort.openings),
+    )
     content = record_bytes(record)
     folder = RunFolder(Path(out))
     resumed = folder.claim(content)
@@ -140,9 +147,10 @@ def run_study(
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
-    findings = Findings((*cohort.findings, *known.size_findings))
+    findings = Findings((*cohort.findings, *known.size_findings)).ordered()
     dropped = [*cohort.dropped, *_left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
+    write_replicates(folder, cohort)
     inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()

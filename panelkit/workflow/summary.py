@@ -63,9 +63,9 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         n_samples=cohort.n_samples,
         n_subjects=cohort.design.n_subjects,
         n_features=cohort.n_features,
-        scheme=_scheme(plan, data),
+        scheme=_scheme(plan, data, draws),
         confidence=confidence,
-        preparation=procedure.recipe.steps,
+        preparation=procedure.recipe.words(),
         findings=findings,
         flow=cohort.flow,
         bound=selected.stability.bound,
@@ -95,11 +95,22 @@ def _outcome_words(cohort: Cohort) -> str:
     )
 
 
-def _scheme(plan: Study, data: ProcedureData) -> str:
+def _scheme(plan: Study, data: ProcedureData, draws: Draws) -> str:
     section = plan.accuracy
+    if plan.cohort.folds is None:
+        outer = (
+            f"{section.folds} folds, drawn {section.repeats} times, stratified by "
+            "outcome and grouped by subject"
+        )
+        if plan.cohort.matched_set is not None:
+            outer += " and matched set"
+    else:
+        outer = (
+            f"{draws.folds.n_folds} folds given by the column {plan.cohort.folds!r} of "
+            "the sample sheet"
+        )
     return (
-        f"{section.folds} folds, drawn {section.repeats} times, stratified by outcome "
-        "and grouped by subject; preparation, shortlist, candidates, panels, tuning "
+        f"{outer}; preparation, shortlist, candidates, panels, tuning "
         f"and coefficients learnt anew in every fold, with {section.inner_folds} inner "
         f"folds ({section.inner_subsamples} subsamples in each) for tuning and for the "
         f"primary rule; every subject counts once; {data.task.metric_words} within "

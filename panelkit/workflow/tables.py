@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.costing import HonestAccuracy, PanelPricer, Primary, Task
+from panelkit.ingest import replicate_agreement
 from panelkit.records import (
     Choice,
     Cohort,
@@ -31,6 +32,7 @@ __all__ = [
     "frontier_content",
     "write_accuracy",
     "write_data_tables",
+    "write_replicates",
     "write_results",
 ]
 
@@ -55,6 +57,22 @@ def write_data_tables(
     folder.table("findings.csv", _names(Finding), [astuple(row) for row in findings])
     folder.table("dropped.csv", _names(Dropped), [astuple(row) for row in dropped])
     folder.table("flow.csv", _names(Flow), [astuple(row) for row in flow])
+
+
+def write_replicates(folder: RunFolder, cohort: Cohort) -> None:
+    """Write ``replicates.csv`` where samples were measured more than once.
+
+    Raises
+    ------
+    RunFolderError
+        The file cannot be written.
+    """
+    agreement = replicate_agreement(cohort)
+    if agreement is not None:
+        columns = agreement.columns
+        folder.table(
+            "replicates.csv", list(columns), zip(*columns.values(), strict=True)
+        )
 
 
 def write_accuracy(

@@ -11,6 +11,7 @@ from pathlib import Path
 import measure
 import numpy as np
 from accuracy import certified, objective, solutions_of
+from check_jobs import checks
 from designs import cohort, halves
 from peers import GOAL, Draw, choose
 from threadpoolctl import threadpool_limits
@@ -440,6 +441,7 @@ JOBS = {
         folds,
         compilation,
         growth,
+        checks,
     )
 }
 

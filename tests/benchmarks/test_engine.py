@@ -26,6 +26,7 @@ JOBS = {
     "folds": (),
     "compilation": (),
     "growth": (),
+    "checks": (),
 }
 SAME_PROBLEM = ("skglm",)  # fits an intercept as we do; the others fit none
 

@@ -1,5 +1,6 @@
 """`panelkit check`: findings for people and for programs."""
 
+import numpy as np
 import pytest
 
 
@@ -80,6 +81,52 @@ def test_an_acceptance_that_changes_nothing_is_said(
     found = {item["code"]: item for item in read_json(answer.out)["findings"]}
     assert found["outcome-tied-to-batch"]["severity"] == "stop"
     assert why in found["acceptance-without-effect"]["message"]
+
+
+def test_nothing_that_could_be_a_marker_is_foreseen(panelkit, files, read_json):
+    """Forty features do not vary, the study bars the rest."""
+    files.expression.iloc[:, :40] = 3.0
+    barred = ", ".join(f'"{name}"' for name in files.expression.columns[40:])
+    files.change("candidates = 8", f"candidates = 8\nnever = [{barred}]")
+    files.change("[shortlist]", 'accept = { "no-usable-feature" = "so" }\n[shortlist]')
+    answer = panelkit("check", files.write(), "--json")
+    assert answer.code == 3
+    found = {item["code"]: item for item in read_json(answer.out)["findings"]}
+    assert found["no-usable-feature"]["severity"] == "stop"  # no reason can mend it
+    assert "20 may not enter a panel" in found["no-usable-feature"]["message"]
+    assert "40 have a single value" in found["no-usable-feature"]["message"]
+    refused = panelkit("run", files.path, "--out", files.folder / "out")
+    assert refused.code == 3
+    assert "no-usable-feature" in refused.sentence
+
+
+def test_every_feature_barred_is_foreseen(panelkit, files, read_json):
+    barred = ", ".join(f'"{name}"' for name in files.expression.columns)
+    files.change("candidates = 8", f"candidates = 8\nnever = [{barred}]")
+    answer = panelkit("check", files.write(), "--json")
+    assert answer.code == 3
+    codes = [item["code"] for item in read_json(answer.out)["findings"]]
+    assert codes[0] == "no-usable-feature"
+
+
+def test_an_absurd_cell_stops_and_can_be_accepted(panelkit, files, read_json):
+    files.expression.iloc[3, 5] = -999.0
+    answer = panelkit("check", files.write())
+    assert answer.code == 3
+    assert "feature 'F05', sample 'S03': -999" in answer.out
+    files.change("[shortlist]", 'accept = { "value-absurd" = "known" }\n[shortlist]')
+    assert panelkit("check", files.write(), "--quiet").code == 0
+
+
+def test_what_stops_is_printed_first(panelkit, files):
+    files.expression.iloc[3, 5] = np.nan
+    shown = [
+        line.split()[0]
+        for line in panelkit("check", tie(files)).out.splitlines()
+        if line.strip().startswith(("stop ", "warning ", "info "))
+    ]
+    assert shown[0] == "stop"
+    assert shown == sorted(shown, key=["stop", "warning", "info"].index)
 
 
 def test_quiet_leaves_a_stop_to_the_exit_code(panelkit, files):

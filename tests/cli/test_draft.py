@@ -96,3 +96,65 @@ def test_missing_file(panelkit, files, missing):
     assert answer.code == 3
     assert missing in answer.sentence
     assert answer.out == ""
+
+
+def test_an_event_is_no_binary_outcome_beside_its_time(panelkit, files):
+    """Who was followed for a month and who for years are not one class."""
+    files.samples["os_event"] = [0, 1] * 20
+    files.samples["os_days"] = range(100, 140)
+    _answer, out = drafted(panelkit, files)
+    cohort = read_study(out).cohort
+    assert (cohort.outcome, cohort.time) == ("response", None)
+    text = out.read_text()
+    assert '# time = "os_days"' in text
+    assert '# event = "os_event"' in text
+    assert "1 means event, 0 censored" in text
+    files.samples = files.samples.drop(columns="response")
+    out.unlink()
+    _answer, out = drafted(panelkit, files)
+    cohort = read_study(out).cohort
+    assert (cohort.outcome, cohort.time, cohort.event) == (None, "os_days", "os_event")
+    assert cohort.time_unit == "days"
+    assert panelkit("check", out, "--quiet").code == 0
+
+
+def test_codes_in_words_are_named(panelkit, files):
+    files.samples["vital_status"] = ["alive", "dead"] * 20
+    files.samples["months"] = range(1, 41)
+    files.samples = files.samples.drop(columns=["response", "plate"])
+    _answer, out = drafted(panelkit, files)
+    cohort = read_study(out).cohort
+    assert (cohort.event_value, cohort.censored_value) == ("dead", "alive")
+    assert panelkit("check", out, "--quiet").code == 0
+
+
+def test_people_with_both_classes_are_matched_sets(panelkit, files):
+    files.samples["patient"] = [f"P{number // 2}" for number in range(40)]
+    files.samples = files.samples.drop(columns="plate")
+    _answer, out = drafted(panelkit, files)
+    study = read_study(out)
+    assert (study.cohort.subject, study.cohort.matched_set) == (None, "patient")
+    assert study.design.kind == "matched"
+    assert panelkit("check", out, "--quiet").code == 0
+
+
+def test_what_could_be_meant_is_a_comment(panelkit, files):
+    files.samples["pair_id"] = [f"P{number // 4}" for number in range(40)]
+    files.samples["year"] = [2018 + number // 10 for number in range(40)]
+    files.samples["run_order"] = range(40)
+    _answer, out = drafted(panelkit, files)
+    text = out.read_text()
+    assert '# matched_set = "pair_id"' in text
+    assert '# kind = "matched"' in text
+    assert '# run_order = "run_order"' in text
+    assert '# set_aside = { "column" = "year", "from" = 2021 }' in text
+    assert read_study(out).cohort.set_aside == {}
+
+
+def test_sheets_beside_the_matrix_are_proposed(panelkit, files):
+    files.samples = files.samples.drop(columns="plate")
+    sheet = "feature,symbol\n" + "".join(f"F{k:02d},G{k}\n" for k in range(60))
+    (files.folder / "features.csv").write_text(sheet)
+    _answer, out = drafted(panelkit, files)
+    assert read_study(out).cohort.features == "features.csv"
+    assert panelkit("check", out, "--quiet").code == 0

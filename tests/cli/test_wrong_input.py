@@ -67,8 +67,53 @@ def no_positive(files):
     files.change('positive = "yes"\n', "")
 
 
-def survival(files):
+def two_outcomes(files):
     files.change("[shortlist]", 'time = "days"\nevent = "death"\n[shortlist]')
+
+
+def survival(files):
+    files.samples["days"] = range(1, 41)
+    files.samples["died"] = [0, 1] * 20
+    files.change(
+        'outcome = "response"\npositive = "yes"', 'time = "days"\nevent = "died"'
+    )
+
+
+def named(line):
+    """Return what puts a line with a name that does not exist into [cohort]."""
+
+    def spoil(files):
+        files.change("[shortlist]", f"{line}\n[shortlist]")
+
+    spoil.__name__ = line.partition(" ")[0]
+    return spoil
+
+
+def unknown_folds(files):
+    files.change("folds = 2\nrepeats = 1\n", "")
+    files.change("[shortlist]", 'folds = "part"\n[shortlist]')
+
+
+def unknown_maker(files):
+    files.change("[1, 2, 3]", '[1, 2, 3]\nmakers = ["guess"]')
+
+
+def missing_prices(files):
+    files.price()
+    files.change("prices.csv", "no prices.csv")
+
+
+def missing_platform(files):
+    files.change("[1, 2, 3]", '[1, 2, 3]\nplatforms = ["no platform.toml"]')
+
+
+def platform_without_prices(files):
+    files.price()
+    files.change("[platform.wells]", "[platform.welz]")
+
+
+def matched_without_sets(files):
+    files.study += '[design]\nkind = "matched"\n'
 
 
 def half_a_price(files):
@@ -91,7 +136,25 @@ WRONG = {
     not_toml: (2, "not valid TOML"),
     no_outcome: (2, "no outcome is named"),
     no_positive: (2, "positive"),
-    survival: (2, "survival"),
+    two_outcomes: (2, "to which outcome and positive does not belong"),
+    unknown_maker: (2, "makers are"),
+    missing_prices: (3, "no prices.csv"),
+    missing_platform: (2, "no platform.toml"),
+    platform_without_prices: (3, "welz"),
+    matched_without_sets: (2, "matched_set"),
+    # names that only the data can prove wrong: always 3
+    named('negative = "No"'): (3, "the nearest is 'no'"),
+    named('site = "clinc"'): (3, "'clinc'"),
+    named('matched_set = "pair"\n[design]\nkind = "matched"'): (3, "'pair'"),
+    named('run_order = "place"'): (3, "'place'"),
+    named('replicate_of = "copy"'): (3, "'copy'"),
+    unknown_folds: (3, "'part'"),
+    named('covariates = ["age"]'): (3, "'age'"),
+    named('nuisance = ["age"]'): (3, "'age'"),
+    named('keep = { age = ["3"] }'): (3, "'age'"),
+    named('set_aside = { column = "year", from = 2019 }'): (3, "'year'"),
+    named('features = "no features.csv"'): (3, "no features.csv"),
+    named('assays = "no assays.csv"'): (3, "no assays.csv"),
     half_a_price: (2, "cannot be priced without"),
 }
 
@@ -114,6 +177,18 @@ def test_one_sentence_and_its_exit_code(panelkit, files, command, spoil):
     assert answer.code == code
     assert answer.out == ""
     assert said in answer.err
+    clear(answer)
+    assert not out.exists()
+
+
+def test_an_outcome_that_can_be_checked_only(panelkit, files):
+    survival(files)
+    path, out = files.write(), files.folder / "out"
+    assert panelkit("check", path, "--quiet").code == 0
+    answer = panelkit("run", path, "--out", out, "--quiet")
+    assert answer.code == 2
+    assert "a survival outcome" in answer.err
+    assert "a binary outcome" in answer.err
     clear(answer)
     assert not out.exists()
 

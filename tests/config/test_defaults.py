@@ -14,6 +14,7 @@ from panelkit.config import (
     ACCURACY,
     CHOICE,
     COHORT,
+    DESIGN,
     ENGINE,
     PANELS,
     PLATFORM,
@@ -32,6 +33,7 @@ from panelkit.stability import ShortlistRules
 
 HOMES = {
     "cohort": COHORT,
+    "design": DESIGN,
     "preparation": PREPARATION,
     "shortlist": SHORTLIST,
     "panels": PANELS,
@@ -173,6 +175,7 @@ def test_signatures_take_the_same_defaults():
     assert default_of(fit_paths, "tol") == ENGINE.tol
     assert default_of(read_cohort, "orientation") == COHORT.orientation
     assert default_of(read_cohort, "max_bad_cells") == COHORT.max_bad_cells
+    assert default_of(read_cohort, "design") == DESIGN.kind
     assert default_of(Procedure, "ridge_penalties") == ENGINE.ridge_penalties
     for key in ("log2_offset", "max_missing_share"):
         assert default_of(Recipe, key) == getattr(PREPARATION, key)

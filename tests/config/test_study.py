@@ -127,3 +127,45 @@ def test_a_study_is_frozen(study):
         made.seed = 2
     with pytest.raises(ValueError, match="frozen"):
         made.accuracy.folds = 9
+
+
+@pytest.mark.parametrize(
+    ("keys", "design", "code"),
+    [
+        ("", 'kind = "matched"', "matched-without-sets"),
+        ('matched_set = "pair"\n', "", "sets-without-matched"),
+        ('matched_set = "pair"\n', 'kind = "case-control"', "sets-without-matched"),
+        ('time = "t"\nevent = "e"\n', "prevalence = 0.1", "design-needs-two-classes"),
+        ('kind = "number"\n', 'kind = "case-control"', "design-needs-two-classes"),
+        ("", "prevalence = 1.5", "value-refused"),
+        ("", 'kind = "cross-over"', "value-refused"),
+    ],
+)
+def test_designs_that_contradict_the_columns(refused, keys, design, code):
+    assert refused(f"{keys}[design]\n{design}\n").code == code
+
+
+def test_the_design_is_among_what_determines_results(study):
+    made = study('[design]\nkind = "case-control"\nprevalence = 0.02\n')
+    assert made.effective()["design"] == {"kind": "case-control", "prevalence": 0.02}
+    assert study().effective()["design"] == {"kind": "cohort", "prevalence": None}
+
+
+def test_folds_are_given_or_drawn(refused, study):
+    text = 'folds = "part"\n[accuracy]\n{}\n'
+    assert refused(text.format("folds = 5")).code == "folds-twice"
+    assert refused(text.format("repeats = 1")).code == "folds-twice"
+    assert study(text.format("inner_folds = 3")).cohort.folds == "part"
+
+
+def test_file_names_do_not_determine_results(study):
+    one = study('assays = "a.csv"\nopenings = "o.jsonl"\n').effective()
+    assert one == study().effective()
+
+
+def test_dates_of_the_study_file_reach_the_record(study):
+    made = study('set_aside = { column = "seen", from = 2019-06-30 }\n')
+    assert made.effective()["cohort"]["set_aside"] == {
+        "column": "seen",
+        "from": "2019-06-30",
+    }

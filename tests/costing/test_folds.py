@@ -5,7 +5,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from panelkit.costing import draw_folds
+from panelkit.costing import draw_folds, given_folds
 from panelkit.errors import FitError
 
 
@@ -108,3 +108,38 @@ def test_leave_one_pair_out_is_possible():
     plan = draw_folds(np.arange(8), y, 4, generators(6, 1))
     for fold in range(4):
         assert y[plan.split(0, fold)[1]].tolist() == [0.0, 1.0]
+
+
+@settings(derandomize=True, deadline=None, max_examples=60, database=None)
+@given(
+    seed=st.integers(0, 10_000),
+    n_both=st.integers(4, 20),
+    n_cases=st.integers(0, 6),
+    n_controls=st.integers(0, 6),
+)
+def test_matched_sets_of_both_classes_are_spread_evenly(
+    seed, n_both, n_cases, n_controls
+):
+    """Sets of a case and one to three controls, and samples without a partner."""
+    draws = np.random.default_rng(seed)
+    sets = [[1.0] + [0.0] * draws.integers(1, 4) for _ in range(n_both)]
+    sets += [[1.0]] * n_cases + [[0.0]] * n_controls
+    unit = np.repeat(np.arange(len(sets)), [len(each) for each in sets])
+    y = np.concatenate([np.array(each) for each in sets])
+    order = draws.permutation(len(y))
+    unit, y = unit[order], y[order]
+    plan = draw_folds(unit, y, 4, generators(seed))
+    for repeat in range(2):
+        counts = []
+        for fold in range(4):
+            training, test = plan.split(repeat, fold)
+            assert not np.intersect1d(unit[training], unit[test]).size
+            assert set(y[test]) == {0.0, 1.0}
+            counts.append(len(np.unique(unit[test][unit[test] < n_both])))
+        assert np.ptp(counts) <= 1
+
+
+def test_given_folds_are_one_repeat():
+    plan = given_folds(np.array([2, 0, 1, 0]))
+    assert (plan.n_repeats, plan.n_folds) == (1, 3)
+    assert [plan.split(0, fold)[1].tolist() for fold in range(3)] == [[1, 3], [2], [0]]

@@ -8,7 +8,7 @@ changed sum anywhere shows.
 import numpy as np
 import pytest
 
-from panelkit.fits import engine, fit_paths, product
+from panelkit.fits import engine, fit_paths, product, refits
 
 N, P = 60, 700
 
@@ -93,7 +93,7 @@ def test_copy_for_the_product_does_not_matter(
 
 def test_space_made_later_does_not_matter(fit, bits, monkeypatch):
     expected = bits(fit())
-    monkeypatch.setattr(engine, "FIRST_WORKING", 1)
+    monkeypatch.setattr(refits, "FIRST_WORKING", 1)
     assert bits(fit()) == expected
 
 

@@ -1,5 +1,6 @@
 """Compiled kernels are kept where the user may write, under a name of their own."""
 
+import subprocess
 import sys
 from pathlib import Path
 
@@ -85,3 +86,35 @@ def test_setting_of_numba_is_given_back(tmp_path, monkeypatch):
     with pytest.raises(KeyError):
         fail()
     assert before == config.CACHE_DIR
+
+
+FITS = """
+import warnings
+warnings.simplefilter("error")  # numba warns of a kernel that it cannot cache
+import numpy as np
+from panelkit.fits import fit_panels, fit_paths
+from panelkit.fits import kernel_algebra, kernel_grouped, kernel_paths, kernel_scalar
+draws = np.random.default_rng(0)
+X, y = draws.normal(size=(40, 30)), np.tile([0, 1, 2, 3], 10)
+outcomes = {
+    "gaussian": y, "binomial": y % 2, "multinomial": y, "cox": (y + 1.0, np.ones(40))
+}
+panel, ones = [np.array([0, 2])], np.ones(40)
+for family, outcome in outcomes.items():
+    fit_paths(X, outcome, family=family, n_penalties=3)
+    fit_panels(X.T.copy(), panel, outcome, ones, ones[:1], family=family)
+modules = kernel_algebra, kernel_grouped, kernel_paths, kernel_scalar
+stats = [k.stats for m in modules for k in vars(m).values() if hasattr(k, "stats")]
+print(sum(sum(s.cache_hits.values()) for s in stats))
+print(sum(sum(s.cache_misses.values()) for s in stats))
+"""
+
+
+def test_a_second_process_compiles_nothing():
+    """Every kernel of every family can be cached, and is found again."""
+    command = [sys.executable, "-c", FITS]
+    for _ in range(2):
+        run = subprocess.run(command, capture_output=True, text=True, check=True)
+    hits, misses = map(int, run.stdout.split())
+    assert hits > 10
+    assert misses == 0

@@ -24,7 +24,13 @@ def found(cohort, code):
 
 def test_clean_cohort_has_nothing_but_information(small):
     cohort = read(small, site="clinic")
-    assert [item.code for item in cohort.findings] == ["scale-guess", "class-sizes"]
+    assert [item.code for item in cohort.findings] == [
+        "ids-with-inner-blanks",  # the cohort has '0001' and 'd 4' on purpose
+        "ids-with-leading-zeros",
+        "ids-with-leading-zeros",
+        "scale-guess",
+        "class-sizes",
+    ]
     assert {item.severity for item in cohort.findings} == {"info"}
 
 
@@ -34,6 +40,17 @@ def test_checks_of_a_read_cohort_add_nothing(small):
     assert list(check_cohort(cohort)) == list(cohort.findings)
     bare = replace(cohort, findings=Findings())
     assert list(check_cohort(bare)) == list(cohort.findings)
+
+
+def test_what_stops_comes_first(small):
+    small.sheet["batch"] = np.where(small.sheet["group"] == "case", "b1", "b2")
+    small.sheet.loc[3, "clinic"] = ""
+    severities = [
+        i.severity for i in read(small, batch="batch", site="clinic").findings
+    ]
+    rank = ["stop", "warning", "info"]
+    assert severities == sorted(severities, key=rank.index)
+    assert set(severities) == set(rank)
 
 
 def test_missing_constant_and_copied_features(small):
@@ -66,7 +83,7 @@ def test_confounded_batch_stops(small):
     [finding] = found(read(small, batch="batch"), "outcome-tied-to-batch")
     assert finding.severity == "stop"
     assert "Cramer's V 1," in finding.message
-    assert "0 of 24 samples sit in a level with both classes" in finding.message
+    assert "0 of 24 samples sit in a batch with both classes" in finding.message
 
 
 def test_tied_site_warns_with_both_forms_of_the_coefficient(small):
@@ -97,6 +114,7 @@ def test_numbers_of_a_nuisance_column_are_cut_into_quarters(small):
     [finding] = found(read(small, nuisance=["storage"]), "outcome-tied-to-nuisance")
     assert finding.severity == "stop"
     assert "'quarter 1' 6/0" in finding.message
+    assert "AUC 0 (0 to 0." in finding.message
     assert not found(read(small), "outcome-tied-to-nuisance")
 
 

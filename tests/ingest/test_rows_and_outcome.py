@@ -17,12 +17,6 @@ def refused(kind, *files, **options):
     return caught.value
 
 
-def test_survival_outcomes_are_refused(small):
-    error = refused(UsageError, *small.write(), time="days", event="died")
-    assert error.code == "outcome-not-supported"
-    assert error.exit_code == 2
-
-
 def test_positive_class_is_never_guessed(small):
     error = refused(UsageError, *small.write(), outcome="group")
     assert error.code == "positive-class-missing"
@@ -133,7 +127,19 @@ def test_values_and_ranges_filter_rows_and_are_counted(small):
 
 
 @pytest.mark.parametrize(
-    "wanted", [[], {}, {"least": 3}, {"min": "x"}, {"min": 5, "max": 4}]
+    "wanted",
+    [
+        [],
+        {},
+        {"least": 3},
+        {"min": "x"},
+        {"min": 5, "max": 4},
+        {"min": 5, "to": 9},
+        {"from": "2019-13"},
+        {"from": "2019-02-30"},
+        {"from": "2020", "to": "2019-12-31"},
+        {"from": 3, "to": "2019"},
+    ],
 )
 def test_filters_that_cannot_be_meant(small, wanted):
     error = refused(UsageError, *small.write(), keep={"age": wanted})

@@ -51,3 +51,35 @@ def test_evidence_is_what_the_values_show():
     assert guess.evidence["share_whole"] == 0.8
     assert guess.evidence["share_negative"] == 0.2
     assert guess.evidence["share_zero"] == 0.2
+
+
+@pytest.mark.parametrize(
+    "kind", ["counts", "linear", "log2", "beta-values", "z-scores"]
+)
+@pytest.mark.parametrize("cell", [1e300, -1e300, 1e20, -999.0])
+@pytest.mark.filterwarnings("error")
+def test_one_absurd_cell_does_not_change_the_guess(kind, cell):
+    for case in CASES[kind]:
+        values = np.array(case, dtype=float)
+        values[7, 3] = cell
+        assert guess_scale(values).kind == kind
+        narrow = values.clip(-3e38, 3e38).astype(np.float32)
+        assert guess_scale(narrow).kind == kind
+
+
+def test_sparse_values_are_judged_by_those_that_are_not_zero():
+    values = np.where(draws.random((300, 40)) < 0.995, 0.0, 2**log2 + 0.5)
+    assert guess_scale(values).kind == "linear"
+
+
+def test_counts_without_zeros_are_no_floored_intensities():
+    values = 1 + draws.poisson(draws.gamma(0.5, 200, (300, 1)), (300, 40))
+    assert guess_scale(values).kind == "counts"
+    floored = np.maximum(np.rint(2**log2), 40)
+    assert guess_scale(floored).kind == "linear"
+
+
+def test_evidence_stands_in_the_message():
+    message = scale_finding(guess_scale(CASES["counts"][0]), "expression").message
+    assert message.startswith("the values seem to be counts: 98 % of the values")
+    assert "100 % whole numbers" in message

@@ -39,7 +39,7 @@ def test_quoted_fields_may_hold_delimiters_and_line_breaks(tmp_path):
     ("content", "code", "named"),
     [
         (b"", "file-empty", "samples.csv"),
-        (b"sample_id,group\n", "no-data-lines", "1 lines"),
+        (b"sample_id,group\n", "no-data-lines", "a header only"),
         (b"sample_id,group\n0001,case\n0001,case\n", "repeated-ids", "'0001'"),
         (b"sample_id,group\n0001,case\n,case\n", "blank-id", "'2'"),
         (b"sample_id,group\n0001,case\n0002\n", "line-length-differs", "row 2"),

@@ -63,6 +63,31 @@ def cohort():
         dropped=(records.Dropped("sample", "S9", "matching", "no row"),),
         flow=(records.Flow("yes", 3, 2, 2, 2, 2),),
         sources={"expression": "0" * 64},
+        replicates=replicates(),
+    )
+
+
+def replicates():
+    return records.Replicates(
+        samples=objects("S0b", "S2b"),
+        of=np.array([0, 2]),
+        values=floats(N_FEATURES, 2),
+    )
+
+
+def replicate_agreement():
+    return records.ReplicateAgreement(
+        features=objects("F0", "F1", "F2"),
+        n_samples=whole(N_FEATURES),
+        n_measurements=whole(N_FEATURES),
+        mean=floats(N_FEATURES),
+        icc=floats(N_FEATURES),
+        within_sd=floats(N_FEATURES),
+        cv=floats(N_FEATURES),
+        difference=floats(N_FEATURES),
+        difference_low=floats(N_FEATURES),
+        difference_high=floats(N_FEATURES),
+        in_log2=True,
     )
 
 
@@ -216,6 +241,9 @@ def run_summary():
 
 
 MADE = {
+    "AssayMap": lambda: records.AssayMap(
+        objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
+    ),
     "AssayPrice": assay,
     "Choice": choice,
     "Cohort": cohort,
@@ -234,14 +262,20 @@ MADE = {
     "Frontier": frontier,
     "FrontierRow": frontier_row,
     "Headline": headline,
+    "Opening": lambda: records.Opening.of(["S1"], "the panel is locked"),
     "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
     "Outcome": outcome,
     "PanelCost": panel_cost,
     "PathSet": path_set,
     "PriceList": lambda: records.PriceList((assay(),), findings()),
+    "RecipeContext": lambda: records.RecipeContext(
+        features=objects("F1", "F2", "F3"), batch=objects("a", "a", "b", "b")
+    ),
     "RecipeState": lambda: records.RecipeState(
         floats(N_FEATURES), np.ones(N_FEATURES, bool), objects("", "", "constant")
     ),
+    "ReplicateAgreement": replicate_agreement,
+    "Replicates": replicates,
     "RuleChoice": lambda: choice().rules[0],
     "RunRecord": lambda: records.RunRecord(
         1, "0.1.0", {"seed": 1}, {"samples": "0" * 64}, {"python": "3.11"}
@@ -249,7 +283,19 @@ MADE = {
     "RunSummary": run_summary,
     "ShortlistTable": shortlist_table,
     "Stability": stability,
+    "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
+    "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
+    "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "Fragility": lambda: records.Fragility(
+        "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
+    ),
+    "Handling": lambda: records.Handling("run", "1", 20, "spearman", 0.1, 0.6),
+    "LearningPoint": lambda: records.LearningPoint(0.4, 20.0, 0.7, 0.6, 0.8, 0.05),
+    "StandIn": lambda: records.StandIn(
+        "F1", "F2", "maker", 0.9, 0.01, 0.0, 0.02, "by role", 0.5, None
+    ),
+    "Subgroup": lambda: records.Subgroup("site", "A", 20, 8, 0.8, 0.7, 0.9, "words"),
     "TunedChoice": lambda: records.TunedChoice(
         whole(2, 2), whole(2, 2), np.ones((2, 2), bool)
     ),

@@ -20,6 +20,7 @@ ROWS = {
     "Flow": "a row of flow.csv, held by Cohort",
     "FrontierRow": "a row of Frontier",
     "Headline": "part of Choice",
+    "Opening": "a line of the openings file, held by Cohort",
     "RuleChoice": "part of Choice",
     "Choice": "choice.json: a document, no table",
     "RunRecord": "record.json: a document, no table",
@@ -107,6 +108,7 @@ def test_to_frame(make_record, name):
 
 
 ROW_COUNTS = {
+    "AssayMap": 2,
     "Cohort": 4,
     "Comparator": 1,
     "Findings": 2,

@@ -6,7 +6,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from panelkit.errors import FitError
-from panelkit.stability import draw_pairs
+from panelkit.stability import draw_pairs, unit_strata
 
 
 def drawn(seed, n_controls, n_cases, rows_per_subject, n_pairs=3, share=1.0):
@@ -103,3 +103,22 @@ def test_many_rows_of_few_subjects_do_not_pass_for_many():
     y = np.repeat([0.0, 1.0], [40, 30])  # three subjects are cases
     with pytest.raises(FitError):
         draw_pairs(np.arange(70), subjects, y, 2, np.random.default_rng(0))
+
+
+def test_units_of_both_classes_are_halved_on_their_own():
+    """Matched sets, the healthy sample always first: by first rows none is a case."""
+    subjects = np.repeat(np.arange(12), 2)
+    y = np.tile([0.0, 1.0], 12)
+    plan = draw_pairs(np.arange(24), subjects, y, 4, np.random.default_rng(0))
+    for left, right in zip(plan.rows[::2], plan.rows[1::2], strict=True):
+        assert y[left].mean() == y[right].mean() == 0.5
+        assert len(left) == len(right) == 12
+        assert not np.intersect1d(subjects[left], subjects[right]).size
+
+
+def test_strata_of_units():
+    strata, holding = unit_strata(np.array([5, 5, 7, 9, 9]), np.array([0, 1, 1, 0, 0]))
+    assert [each.tolist() for each in strata] == [[9], [7], [5]]
+    assert holding.tolist() == [2, 2]
+    strata, _ = unit_strata(np.array([1, 2]), np.array([0.0, 1.0]))
+    assert [each.tolist() for each in strata] == [[1], [2]]

@@ -37,7 +37,8 @@ def test_every_procedure_is_there(finished, procedures):
     expected = set(zip(frontier["maker"], frontier["size"], strict=True))
     assert len(expected) == 6
     assert set(procedures) == expected | {
-        (name, 0) for name in ("primary-rule", "ridge-on-all", *LASSO)
+        (name, 0)
+        for name in ("primary-rule", "ridge-on-all", "control-features", *LASSO)
     }
 
 

@@ -51,7 +51,8 @@ def covariates_with_panels(work: FoldWork) -> LearntToo:
     data, split, learnt = work.data, work.split, work.learnt
     panels = learnt.selected.panels
     features = np.unique(np.concatenate(panels))
-    markers = columns_of(learnt.selected.view, features, data, split)
+    own = work.procedure.markers(learnt.selected.view, data, split.training)
+    markers = columns_of(own, features, data, split)
     rows = np.concatenate([split.training, split.test])
     extra = standardised_columns(data.covariates[:, rows], data, split)
     both = Columns(

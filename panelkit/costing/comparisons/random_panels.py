@@ -99,7 +99,8 @@ class RandomPanels:
         view = work.learnt.selected.view
         included = view.included
         features = np.unique(chosen)
-        columns = columns_of(view, features, data, split)
+        markers = work.procedure.markers(view, data, split.training)
+        columns = columns_of(markers, features, data, split)
         found = np.full((len(self.sizes), len(chosen)), np.nan)
         for k, size in enumerate(self.sizes):
             panels = [
@@ -107,7 +108,12 @@ class RandomPanels:
                 for panel in chosen
             ]
             penalty = tuned_on_halves(
-                lambda own: columns_of(view, features, data, own),
+                lambda own: columns_of(
+                    work.procedure.markers(view, data, own.training),
+                    features,
+                    data,
+                    own,
+                ),
                 panels[:TUNED],
                 data,
                 split,
