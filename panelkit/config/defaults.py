@@ -118,6 +118,8 @@ class _Accuracy:
     repeats: int = 5
     inner_folds: int = 5
     inner_subsamples: int = 40
+    random_panels: int = 200
+    learning_curve: bool = True
     metric: Literal["auc"] = "auc"
     confidence: float = 0.95
 

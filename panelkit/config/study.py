@@ -293,6 +293,10 @@ class AccuracySection(Section):
         Inner folds that tune penalties and choose the size for the headline.
     inner_subsamples : int
         Halves of the stability selection inside an inner fold, an even number.
+    random_panels : int
+        Random panels of each size and kind, to compare with.
+    learning_curve : bool
+        Whether the headline is repeated with fewer training people.
     metric : {"auc"}
         Area under the ROC curve.
     confidence : float
@@ -303,6 +307,8 @@ class AccuracySection(Section):
     repeats: int = Field(default=ACCURACY.repeats, ge=1, le=1000)
     inner_folds: int = Field(default=ACCURACY.inner_folds, ge=2, le=20)
     inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
+    random_panels: int = Field(default=ACCURACY.random_panels, ge=20, le=10_000)
+    learning_curve: bool = ACCURACY.learning_curve
     metric: Literal["auc"] = ACCURACY.metric
     confidence: Share = ACCURACY.confidence
 
@@ -313,10 +319,27 @@ class PrimaryRule(Section):
     Attributes
     ----------
     rule : str
-        ``smallest-within-one-se``.
+        Smallest or cheapest within one standard error or within a margin of the most
+        accurate; best under a budget; cheapest above a required accuracy.
+    margin : float or None
+        Loss of the metric that counts as none; for the margin rules.
+    budget : Decimal or None
+        Largest programme cost; for ``best-under-budget``.
+    required_accuracy : float or None
+        Smallest metric; for ``cheapest-above-accuracy``.
     """
 
-    rule: Literal["smallest-within-one-se"]
+    rule: Literal[
+        "smallest-within-one-se",
+        "cheapest-within-one-se",
+        "smallest-within-margin",
+        "cheapest-within-margin",
+        "best-under-budget",
+        "cheapest-above-accuracy",
+    ]
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
 
 class ChoiceSection(Section):
@@ -326,14 +349,24 @@ class ChoiceSection(Section):
     ----------
     primary : PrimaryRule or None
         None: the default rule is used and the headline says exploratory.
+    margin, budget, required_accuracy : as in `primary`
+        For the rules shown beside the primary one, where they are given.
     """
 
     primary: PrimaryRule | None = None
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
     @property
     def rule(self) -> str:
         """Name of the rule that is used."""
         return CHOICE.rule if self.primary is None else self.primary.rule
+
+    def demand(self, name: str) -> Any:
+        """Return the primary rule's margin, budget or accuracy, else the section's."""
+        own = None if self.primary is None else getattr(self.primary, name)
+        return getattr(self, name) if own is None else own
 
 
 class StatementSection(Section):
@@ -481,6 +514,7 @@ def read_study(path: str | Path) -> Study:
         for name, kind in PLAIN_SECTIONS.items()
     }
     _check_lists(sections, str(path))
+    _check_rule(sections["choice"], str(path), priced="programme" in tables)
     _check_cohort(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
         _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
@@ -518,6 +552,37 @@ def _check_lists(sections: Mapping[str, Any], path: str) -> None:
             what=f"a maker is named twice (got {list(makers)})",
             accepted="each maker once",
             next_step="Remove the repeated one",
+        )
+
+
+_NEEDED = {
+    "smallest-within-margin": "margin",
+    "cheapest-within-margin": "margin",
+    "best-under-budget": "budget",
+    "cheapest-above-accuracy": "required_accuracy",
+}
+
+
+def _check_rule(choice: ChoiceSection, path: str, *, priced: bool) -> None:
+    """Refuse a primary rule without its figure, and money rules without money."""
+    if choice.primary is not None:
+        needed = _NEEDED.get(choice.primary.rule)
+        if needed is not None and choice.demand(needed) is None:
+            raise StudyFileError(
+                code="rule-without-figure",
+                where=f"{path}, [choice], key 'primary'",
+                what=f"the rule {choice.primary.rule} has no {needed}",
+                accepted=f"a {needed} fixed before the run",
+                next_step=f"Add {needed} to primary",
+            )
+    rule = choice.rule
+    if not priced and (rule.startswith("cheapest") or choice.demand("budget")):
+        raise StudyFileError(
+            code="rule-needs-prices",
+            where=f"{path}, [choice]",
+            what="a rule about money is asked for, and nothing is priced",
+            accepted="[programme], platforms and [panels] prices beside such a rule",
+            next_step="Add prices, or take a rule about size",
         )
 
 

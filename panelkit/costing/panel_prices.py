@@ -131,6 +131,17 @@ class PanelPricer:
             self.programme, self.platforms, prices, self.kits, self.conflicts
         )
 
+    def lowest(self, markers: Iterable[str]) -> float:
+        """Return the cost on the cheapest platform; NaN where none can run the panel.
+
+        Raises
+        ------
+        InputDataError
+            A price that is needed is missing.
+        """
+        costs = self.costs([str(marker) for marker in markers])
+        return float(costs[0].total) if costs else float("nan")
+
     def _price(self, markers: Sequence[str], platform: str) -> PanelCost | NoPanelError:
         try:
             cost = programme_cost(

@@ -15,8 +15,8 @@ import numpy as np
 from panelkit.config import Study, read_study
 from panelkit.costing import (
     Selected,
-    choose_for_everyone,
     estimate_accuracy,
+    tune_on_everyone,
 )
 from panelkit.records import (
     RESEARCH_USE,
@@ -27,8 +27,11 @@ from panelkit.records import (
 )
 from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
+from panelkit.workflow.aftermath import learn_aftermath, write_aftermath
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
+from panelkit.workflow.primary import primary_of
+from panelkit.workflow.procedure import comparisons_of
 from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import record_bytes, run_record, without_prices
 from panelkit.workflow.summary import summarise
@@ -152,19 +155,38 @@ def run_study(
     inputs, store = hashlib.sha256(work).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()
-    taken = choose_for_everyone(procedure, data, draws, inputs, store, **how)
+    everyone = tune_on_everyone(procedure, data, draws, inputs, store, **how)
     clock.seconds["choice"] = round(time.perf_counter() - start, 3)
     start = time.perf_counter()
-    accuracy = estimate_accuracy(procedure, data, draws, inputs, store, **how)
+    accuracy = estimate_accuracy(
+        procedure,
+        data,
+        draws,
+        inputs,
+        store,
+        comparisons=comparisons_of(plan, procedure, data),
+        **how,
+    )
     clock.seconds["accuracy"] = round(time.perf_counter() - start, 3)
     folder.log(f"accuracy: {clock.seconds['accuracy']:.2f} s")
+    primary = primary_of(plan, known, selected, everyone, accuracy)
+    start = time.perf_counter()
+    aftermath = learn_aftermath(
+        plan, known, selected, primary, accuracy, inputs, store, how
+    )
+    clock.seconds["stand-ins and learning curve"] = round(
+        time.perf_counter() - start, 3
+    )
     with clock.stage("pricing and choice"):
         summary = summarise(
             plan, cohort, record, findings, procedure, data, draws, selected,
-            taken, accuracy, pricer,
+            primary, accuracy, pricer,
         )  # fmt: skip
-        write_accuracy(folder, cohort, draws.folds, accuracy, pricer)
+        write_accuracy(
+            folder, cohort, draws.folds, accuracy, primary, data.task, pricer
+        )
         write_results(folder, summary)
+        write_aftermath(folder, aftermath)
     with clock.stage("report"):
         for name, page in render(summary).items():
             folder.write(name, page)

@@ -42,8 +42,9 @@ def shortlist_table(
     Welch 1947, Biometrika 34:28.
     """
     stability = selected.stability
-    rows = np.arange(len(data.y))
-    ranked = rank_univariate(selected.view, data.y, rows, data.subjects, data.weights)
+    y = data.task.outcome()
+    rows = np.arange(data.n_samples)
+    ranked = rank_univariate(selected.view, y, rows, data.subjects, data.weights)
     candidate = np.zeros(len(features), np.bool_)
     candidate[stability.candidates] = True
     picked = np.zeros(len(features), np.bool_)
@@ -58,7 +59,7 @@ def shortlist_table(
     difference = ranked.means[shown, 1] - ranked.means[shown, 0]
     half = _half_width(data, ranked.variances[shown], confidence)
     higher = difference > 0.0
-    area = np.array([auc(column, data.y, data.weights) for column in values])
+    area = np.array([auc(column, y, data.weights) for column in values])
     positive = stability.positive_share[shown]
     return ShortlistTable(
         feature=features[shown],
@@ -89,7 +90,7 @@ def _half_width(
 ) -> NDArray[np.float64]:
     """Return the half width of Welch's interval of a difference of two means."""
     units = np.array(
-        [len(np.unique(data.subjects[data.y == value])) for value in (0.0, 1.0)]
+        [len(np.unique(data.subjects[data.task.strata == value])) for value in (0, 1)]
     )
     parts = variances / units
     total = parts.sum(axis=1)

@@ -6,6 +6,7 @@ from panelkit.costing import (
     HonestAccuracy,
     Judge,
     PanelPricer,
+    Primary,
     Procedure,
     ProcedureData,
     Selected,
@@ -14,6 +15,7 @@ from panelkit.costing import (
     compare,
 )
 from panelkit.records import Cohort, Findings, PanelCost, RunRecord, RunSummary
+from panelkit.workflow.procedure import secondary_rules
 from panelkit.workflow.shortlist import shortlist_table
 
 __all__ = ["summarise"]
@@ -28,7 +30,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
     data: ProcedureData,
     draws: Draws,
     selected: Selected,
-    taken: int,
+    primary: Primary,
     accuracy: HonestAccuracy,
     pricer: PanelPricer | None,
 ) -> RunSummary:
@@ -40,21 +42,20 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         A price that is needed is missing.
     """
     confidence = plan.accuracy.confidence
-    judge = Judge(data.y, data.subjects, data.weights, draws.folds, confidence)
+    judge = Judge(data.task, data.subjects, data.weights, draws.folds, confidence)
     frontier, per_fold = build_frontier(
         accuracy, judge, selected.panels, cohort.features, pricer
     )
     choice, frontier = choose(
         frontier,
         per_fold,
-        accuracy,
         judge,
-        taken=taken,
-        declared=plan.choice.primary is not None,
+        primary=primary,
+        secondary=secondary_rules(plan),
     )
     costs: tuple[PanelCost, ...] = ()
     if pricer is not None:
-        costs = pricer.costs(frontier.rows[taken].markers)
+        costs = pricer.costs(frontier.rows[primary.taken.row].markers)
     n_included = int(selected.view.included.sum())
     return RunSummary(
         study=plan.path.name,
@@ -62,7 +63,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         n_samples=cohort.n_samples,
         n_subjects=cohort.design.n_subjects,
         n_features=cohort.n_features,
-        scheme=_scheme(plan, draws),
+        scheme=_scheme(plan, data, draws),
         confidence=confidence,
         preparation=procedure.recipe.words(),
         findings=findings,
@@ -71,7 +72,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         shortlist=shortlist_table(data, selected, cohort.features, confidence),
         frontier=frontier,
         choice=choice,
-        comparators=compare(accuracy, judge, n_included),
+        comparators=compare(accuracy, judge, primary, n_included),
         costs=costs,
         statement=plan.statement.model_dump(),
         provenance={
@@ -94,7 +95,7 @@ def _outcome_words(cohort: Cohort) -> str:
     )
 
 
-def _scheme(plan: Study, draws: Draws) -> str:
+def _scheme(plan: Study, data: ProcedureData, draws: Draws) -> str:
     section = plan.accuracy
     if plan.cohort.folds is None:
         outer = (
@@ -112,6 +113,6 @@ def _scheme(plan: Study, draws: Draws) -> str:
         f"{outer}; preparation, shortlist, candidates, panels, tuning "
         f"and coefficients learnt anew in every fold, with {section.inner_folds} inner "
         f"folds ({section.inner_subsamples} subsamples in each) for tuning and for the "
-        "primary rule; every subject counts once; area under the ROC curve within "
+        f"primary rule; every subject counts once; {data.task.metric_words} within "
         "test folds, averaged"
     )

@@ -308,7 +308,20 @@ MADE = {
     "Stability": stability,
     "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
-    "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
+    "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
+    "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "Fragility": lambda: records.Fragility(
+        "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
+    ),
+    "Handling": lambda: records.Handling("run", "1", 20, "spearman", 0.1, 0.6),
+    "LearningPoint": lambda: records.LearningPoint(0.4, 20.0, 0.7, 0.6, 0.8, 0.05),
+    "StandIn": lambda: records.StandIn(
+        "F1", "F2", "maker", 0.9, 0.01, 0.0, 0.02, "by role", 0.5, None
+    ),
+    "Subgroup": lambda: records.Subgroup("site", "A", 20, 8, 0.8, 0.7, 0.9, "words"),
+    "TunedChoice": lambda: records.TunedChoice(
+        whole(2, 2), whole(2, 2), np.ones((2, 2), bool)
+    ),
 }
 
 

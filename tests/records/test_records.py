@@ -168,20 +168,6 @@ def test_cohort_as_anndata(make_record):
     assert (whole.X == made.X).all()
 
 
-def test_scores_are_chances(make_record):
-    made = make_record("OutOfFold")
-    assert made.scores.shape == made.log_odds.shape
-    assert ((made.scores > 0.0) & (made.scores < 1.0)).all()
-    odds = made.scores / (1.0 - made.scores)
-    assert np.allclose(np.log(odds), made.log_odds)
-
-
-def test_scores_far_out_overflow_nothing():
-    """Warnings are errors here: exp(800) would be one."""
-    far = records.OutOfFold("frequency", 1, np.array([[-700.0, 0.0, 700.0]]))
-    assert far.scores[0].tolist() == pytest.approx([0.0, 0.5, 1.0], abs=1e-12)
-
-
 def test_a_split_is_a_partition(make_record):
     plan = make_record("FoldPlan")
     for repeat in range(plan.n_repeats):
