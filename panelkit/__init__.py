@@ -8,7 +8,7 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from panelkit.costing import programme_cost
+    from panelkit.costing import cheapest_cover, programme_cost
     from panelkit.errors import PanelkitError
     from panelkit.fits import fit_paths
     from panelkit.ingest import check_cohort, read_cohort, read_openings
@@ -24,6 +24,7 @@ if TYPE_CHECKING:
 __all__ = [
     "PanelkitError",
     "StabilitySelector",
+    "cheapest_cover",
     "check_cohort",
     "check_study",
     "draft_study",
@@ -39,6 +40,7 @@ __all__ = [
 _HOMES = {
     "PanelkitError": "panelkit.errors",
     "StabilitySelector": "panelkit.stability",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",

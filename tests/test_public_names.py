@@ -14,6 +14,7 @@ REPOSITORY = Path(__file__).parents[1]
 NAMES = {
     "PanelkitError": "panelkit.errors",
     "StabilitySelector": "panelkit.stability",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",

@@ -7,9 +7,11 @@ from panelkit.config.defaults import (
     COHORT,
     DESIGN,
     ENGINE,
+    KIT,
     PANELS,
     PLATFORM,
     PREPARATION,
+    PRICING,
     PROGRAMME,
     SEED,
     SHORTLIST,
@@ -17,6 +19,7 @@ from panelkit.config.defaults import (
     DesignKind,
 )
 from panelkit.config.design import DesignSection, check_design, outcome_kind
+from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
     PlatformSection,
@@ -26,6 +29,7 @@ from panelkit.config.programme import (
     read_platform_file,
     read_programme_file,
 )
+from panelkit.config.sections import read_toml
 from panelkit.config.study import (
     AccuracySection,
     ChoiceSection,
@@ -46,10 +50,12 @@ __all__ = [
     "DESIGN",
     "ENGINE",
     "FAMILY_PRESETS",
+    "KIT",
     "MINOR_DIGITS",
     "PANELS",
     "PLATFORM",
     "PREPARATION",
+    "PRICING",
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
@@ -61,6 +67,7 @@ __all__ = [
     "CohortSection",
     "DesignKind",
     "DesignSection",
+    "KitSection",
     "PanelsSection",
     "PlatformSection",
     "PreparationSection",
@@ -69,11 +76,14 @@ __all__ = [
     "StatementSection",
     "Study",
     "check_design",
+    "kit_sections",
     "outcome_kind",
     "platform_section",
     "programme_section",
+    "read_kits",
     "read_platform_file",
     "read_programme_file",
     "read_study",
+    "read_toml",
     "study_text",
 ]

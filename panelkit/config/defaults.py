@@ -15,9 +15,11 @@ __all__ = [
     "COHORT",
     "DESIGN",
     "ENGINE",
+    "KIT",
     "PANELS",
     "PLATFORM",
     "PREPARATION",
+    "PRICING",
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
@@ -124,6 +126,8 @@ class _Accuracy:
     repeats: int = 5
     inner_folds: int = 5
     inner_subsamples: int = 40
+    random_panels: int = 200
+    learning_curve: bool = True
     metric: Literal["auc"] = "auc"
     confidence: float = 0.95
 
@@ -140,6 +144,7 @@ class _Programme:
     repeat_rate: Decimal = Decimal(0)
     repeat_mode: Literal["none", "once", "until"] = "once"
     collection_cost: Decimal = Decimal(0)
+    sample_volume: Decimal = Decimal(0)
     missing_price: Literal["refuse", "bound", "impute", "exclude"] = "bound"
 
 
@@ -164,6 +169,28 @@ class _Platform:
     run_budget: Decimal = Decimal(0)
     slot_budget: Decimal = Decimal(0)
     max_positions_per_sample: int = 0
+    pool_volume: Decimal = Decimal(0)
+    design_success: Decimal = Decimal(1)
+
+
+@dataclass(frozen=True, slots=True)
+class _Kit:
+    once: Decimal = Decimal(0)
+    splittable: bool = False
+    shelf_months: int = 0
+    volume: Decimal = Decimal(0)
+
+
+@dataclass(frozen=True, slots=True)
+class _Pricing:
+    """What `panelkit price` and the cover do when nothing else is said."""
+
+    time_limit_s: float = 60.0
+    """For one integer programme; what is found by then is reported as not proved."""
+    probability: float = 0.95
+    """With which enough designs are to land when spares are ordered."""
+    stairs_beyond: int = 6
+    """Sizes above the panel's own that the staircase goes on for."""
 
 
 COHORT: Final = _Cohort()
@@ -177,3 +204,5 @@ ACCURACY: Final = _Accuracy()
 CHOICE: Final = _Choice()
 PROGRAMME: Final = _Programme()
 PLATFORM: Final = _Platform()
+KIT: Final = _Kit()
+PRICING: Final = _Pricing()

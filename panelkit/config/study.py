@@ -17,7 +17,8 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
 )
-from panelkit.config.design import DesignSection, check_design, outcome_kind
+from panelkit.config.design import DesignSection
+from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.programme import (
     PlatformSection,
     ProgrammeSection,
@@ -32,7 +33,13 @@ from panelkit.config.sections import (
     read_toml,
     refuse_key,
 )
-from panelkit.errors import StudyFileError, name_some
+from panelkit.config.study_checks import (
+    check_cohort_section,
+    check_even,
+    check_lists,
+    check_rule,
+)
+from panelkit.errors import StudyFileError
 
 __all__ = [
     "PLAIN_SECTIONS",
@@ -311,6 +318,8 @@ class PanelsSection(Section):
         Price list (CSV).
     platforms : tuple of str
         Platform files (TOML), beside any ``[platform.NAME]`` of the study file.
+    conflicts : str or None
+        Pairs of markers that must be kept apart (CSV).
     """
 
     sizes: Annotated[tuple[Size, ...], BeforeValidator(_ascending)] = Field(
@@ -319,6 +328,7 @@ class PanelsSection(Section):
     makers: tuple[str, ...] = Field(default=PANELS.makers, min_length=1)
     prices: str | None = None
     platforms: tuple[str, ...] = ()
+    conflicts: str | None = None
 
 
 class AccuracySection(Section):
@@ -332,6 +342,10 @@ class AccuracySection(Section):
         Inner folds that tune penalties and choose the size for the headline.
     inner_subsamples : int
         Halves of the stability selection inside an inner fold, an even number.
+    random_panels : int
+        Random panels of each size and kind, to compare with.
+    learning_curve : bool
+        Whether the headline is repeated with fewer training people.
     metric : {"auc"}
         Area under the ROC curve.
     confidence : float
@@ -342,6 +356,8 @@ class AccuracySection(Section):
     repeats: int = Field(default=ACCURACY.repeats, ge=1, le=1000)
     inner_folds: int = Field(default=ACCURACY.inner_folds, ge=2, le=20)
     inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
+    random_panels: int = Field(default=ACCURACY.random_panels, ge=20, le=10_000)
+    learning_curve: bool = ACCURACY.learning_curve
     metric: Literal["auc"] = ACCURACY.metric
     confidence: Share = ACCURACY.confidence
 
@@ -352,10 +368,27 @@ class PrimaryRule(Section):
     Attributes
     ----------
     rule : str
-        ``smallest-within-one-se``.
+        Smallest or cheapest within one standard error or within a margin of the most
+        accurate; best under a budget; cheapest above a required accuracy.
+    margin : float or None
+        Loss of the metric that counts as none; for the margin rules.
+    budget : Decimal or None
+        Largest programme cost; for ``best-under-budget``.
+    required_accuracy : float or None
+        Smallest metric; for ``cheapest-above-accuracy``.
     """
 
-    rule: Literal["smallest-within-one-se"]
+    rule: Literal[
+        "smallest-within-one-se",
+        "cheapest-within-one-se",
+        "smallest-within-margin",
+        "cheapest-within-margin",
+        "best-under-budget",
+        "cheapest-above-accuracy",
+    ]
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
 
 class ChoiceSection(Section):
@@ -365,14 +398,24 @@ class ChoiceSection(Section):
     ----------
     primary : PrimaryRule or None
         None: the default rule is used and the headline says exploratory.
+    margin, budget, required_accuracy : as in `primary`
+        For the rules shown beside the primary one, where they are given.
     """
 
     primary: PrimaryRule | None = None
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
     @property
     def rule(self) -> str:
         """Name of the rule that is used."""
         return CHOICE.rule if self.primary is None else self.primary.rule
+
+    def demand(self, name: str) -> Any:
+        """Return the primary rule's margin, budget or accuracy, else the section's."""
+        own = None if self.primary is None else getattr(self.primary, name)
+        return getattr(self, name) if own is None else own
 
 
 class StatementSection(Section):
@@ -411,6 +454,8 @@ Section
         None: nothing is priced.
     platforms : mapping of str to PlatformSection
         From the study file and from platform files.
+    kits : tuple of KitSection
+        From the same files.
     """
 
     path: Path
@@ -425,6 +470,7 @@ Section
     statement: StatementSection
     programme: ProgrammeSection | None
     platforms: Mapping[str, PlatformSection]
+    kits: tuple[KitSection, ...] = ()
 
     def file(self, name: str) -> Path:
         """Return the path of a file that the study names."""
@@ -443,7 +489,7 @@ Section
         for name in ("expression", "samples", "features", "assays", "openings"):
             cohort.pop(name)
         tables["cohort"] = cohort
-        for name in ("prices", "platforms"):
+        for name in ("prices", "platforms", "conflicts"):
             tables["panels"].pop(name)
         if self.programme is None:
             return tables
@@ -454,6 +500,8 @@ Section
             # where it comes from does not matter to results, its value does
             rate = platform.effective_repeat_rate(self.programme)
             tables["platform"][name] = values | {"repeat_rate": str(rate)}
+        if self.kits:
+            tables["kit"] = [kit.model_dump(mode="json") for kit in self.kits]
         return tables
 
 
@@ -469,7 +517,7 @@ PLAIN_SECTIONS: dict[str, type[Section]] = {
     "statement": StatementSection,
 }
 _DECIDING = ("design", "preparation", "shortlist", "panels", "accuracy", "choice")
-_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
+_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform", "kit")
 
 
 def read_study(path: str | Path) -> Study:
@@ -514,10 +562,11 @@ def read_study(path: str | Path) -> Study:
         name: check_section(kind, tables.get(name, {}), f"{path}, [{name}]")
         for name, kind in PLAIN_SECTIONS.items()
     }
-    _check_lists(sections, str(path))
-    _check_cohort(sections, str(path))
+    check_lists(sections, str(path))
+    check_rule(sections["choice"], str(path), priced="programme" in tables)
+    check_cohort_section(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
-        _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
+        check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
     programme = None
     if "programme" in tables:
         programme = programme_section(tables["programme"], f"{path}, [programme]")
@@ -526,65 +575,11 @@ def read_study(path: str | Path) -> Study:
         seed=seed,
         programme=programme,
         platforms=_platforms(Path(path), tables, sections["panels"]),
+        kits=_kits(Path(path), tables, sections["panels"]),
         **sections,
     )
     _check_pricing(study)
     return study
-
-
-def _check_lists(sections: Mapping[str, Any], path: str) -> None:
-    """Refuse lists that contradict themselves."""
-    always, never = sections["shortlist"].always, sections["shortlist"].never
-    if both := sorted(set(always) & set(never)):
-        raise StudyFileError(
-            code="always-and-never",
-            where=f"{path}, [shortlist], keys 'always' and 'never'",
-            what=f"both name {name_some(both)}",
-            accepted="a feature under one of the two",
-            next_step="Remove it from one of them",
-        )
-    makers = sections["panels"].makers
-    if len(set(makers)) < len(makers):
-        raise StudyFileError(
-            code="maker-twice",
-            where=f"{path}, [panels], key 'makers'",
-            what=f"a maker is named twice (got {list(makers)})",
-            accepted="each maker once",
-            next_step="Remove the repeated one",
-        )
-
-
-def _check_cohort(sections: Mapping[str, Any], path: str) -> None:
-    """Refuse a design and folds that contradict the columns."""
-    cohort: CohortSection = sections["cohort"]
-    design: DesignSection = sections["design"]
-    check_design(
-        design.kind,
-        design.prevalence,
-        cohort.matched_set,
-        outcome_kind(cohort.kind, cohort.time, cohort.event, cohort.classes),
-        f"{path}, [design]",
-    )
-    drawn = {"folds", "repeats"} & sections["accuracy"].model_fields_set
-    if cohort.folds is not None and drawn:
-        raise StudyFileError(
-            code="folds-twice",
-            where=f"{path}, [accuracy], key '{min(drawn)}'",
-            what=f"folds are given by the column {cohort.folds!r} and drawn as well",
-            accepted="[cohort] folds, or folds and repeats under [accuracy]",
-            next_step="Remove one of them",
-        )
-
-
-def _check_even(number: int, where: str) -> None:
-    if number % 2:
-        raise StudyFileError(
-            code="subsamples-odd",
-            where=where,
-            what=f"subsamples come in pairs (got {number})",
-            accepted="an even number of at least 4",
-            next_step=f"Write {number + 1}",
-        )
 
 
 def _platforms(
@@ -610,6 +605,19 @@ def _platforms(
                 )
             platforms[key] = section
     return platforms
+
+
+def _kits(
+    path: Path, tables: Mapping[str, Any], panels: PanelsSection
+) -> tuple[KitSection, ...]:
+    """Return the kits of the study file and of the files that it names."""
+    own = tables.get("kit", [])
+    if not isinstance(own, list):
+        refuse_key("kit", ["[[kit]]"], str(path))
+    kits = list(kit_sections(own, f"{path}, [[kit]]"))
+    for name in panels.platforms:
+        kits += read_kits(path.parent / name)
+    return kit_sections(kits, f"{path} and its platform files")
 
 
 def _check_pricing(study: Study) -> None:

@@ -1,25 +1,45 @@
 """What is repeated in every fold, as a study asks for it."""
 
+from collections.abc import Sequence
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import Study
 from panelkit.costing import (
+    BinaryTask,
+    ClassesTask,
+    Comparison,
     Draws,
+    NumberTask,
     Procedure,
     ProcedureData,
+    RandomPanels,
+    Rule,
+    SurvivalTask,
+    Task,
+    comparisons_for,
     draw_everything,
     given_folds,
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.records import Cohort, Finding
+from panelkit.records import Cohort, Finding, Outcome
+from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.columns import coded_columns
 from panelkit.workflow.marker_facts import allowed_candidates
 from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
-__all__ = ["draws_of", "procedure_of"]
+__all__ = [
+    "comparisons_of",
+    "draws_of",
+    "primary_rule",
+    "procedure_of",
+    "secondary_rules",
+]
 
 
 def procedure_of(
@@ -56,7 +76,7 @@ def procedure_of(
             code="outcome-missing",
             where="cohort",
             what="it has no outcome",
-            accepted="a binary outcome",
+            accepted="an outcome: outcome with positive, or time and event",
             next_step="Name outcome and positive",
         )
     context = context_of(cohort)
@@ -94,11 +114,14 @@ def procedure_of(
         )
     data = ProcedureData(
         base=recipe.base(cohort.values),
-        y=cohort.outcome.values,
+        task=task_of(cohort.outcome),
         weights=cohort.design.weights,
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        covariates=coded_columns(cohort, plan.cohort.covariates),
+        nuisance=coded_columns(cohort, plan.cohort.nuisance),
+        controls=_controls(cohort),
         context=context,
         values=None if assay is None else cohort.values,
         blocks=cohort.design.blocks,
@@ -155,6 +178,25 @@ def _pair_site(plan: Study, cohort: Cohort) -> NDArray[np.object_] | None:
     return cohort.design.site
 
 
+def task_of(outcome: Outcome) -> Task:
+    """Return what is predicted, and how predictions of it are judged."""
+    if outcome.kind == "classes":
+        return ClassesTask(outcome.values.astype(np.int64), outcome.classes)
+    if outcome.kind == "number":
+        return NumberTask(outcome.values)
+    if outcome.event is not None:
+        return SurvivalTask(outcome.values, outcome.event.astype(np.float64))
+    return BinaryTask(outcome.values)
+
+
+def _controls(cohort: Cohort) -> NDArray[np.int64]:
+    """Return the control features of the feature sheet."""
+    roles = cohort.feature_columns.get("role")
+    if roles is None:
+        return np.empty(0, np.int64)
+    return np.flatnonzero(np.array([str(role) == "control" for role in roles]))
+
+
 def draws_of(plan: Study, data: ProcedureData) -> Draws:
     """Return every fold and subsample that a study asks for.
 
@@ -184,3 +226,42 @@ def draws_of(plan: Study, data: ProcedureData) -> Draws:
         subsamples=plan.shortlist.subsamples,
         inner_subsamples=plan.accuracy.inner_subsamples,
     )
+
+
+def comparisons_of(
+    plan: Study, procedure: Procedure, data: ProcedureData
+) -> Sequence[Comparison]:
+    """Return what is learnt beside the panels in every fold."""
+    usable = np.flatnonzero(data.barred == "")
+    random = RandomPanels.drawn(
+        procedure.sizes,
+        usable,
+        plan.accuracy.random_panels,
+        2 * plan.shortlist.candidates + len(data.always),
+        generator(plan.seed, "random-panels"),
+    )
+    return comparisons_for(data, random)
+
+
+def primary_rule(plan: Study) -> Rule:
+    """Return the rule of the headline."""
+    choice = plan.choice
+    return Rule(
+        choice.rule,
+        margin=choice.demand("margin") or 0.0,
+        budget=choice.demand("budget"),
+        required_accuracy=choice.demand("required_accuracy"),
+    )
+
+
+def secondary_rules(plan: Study) -> list[Rule]:
+    """Return the rules that are shown beside the primary one."""
+    own = primary_rule(plan)
+    names = ["smallest-within-one-se", "cheapest-within-one-se"]
+    if own.margin:
+        names += ["smallest-within-margin", "cheapest-within-margin"]
+    if own.budget is not None:
+        names.append("best-under-budget")
+    if own.required_accuracy is not None:
+        names.append("cheapest-above-accuracy")
+    return [replace(own, name=name) for name in names]

@@ -1,5 +1,6 @@
 """The run record: what determines results."""
 
+import json
 import platform
 from collections.abc import Mapping
 from dataclasses import asdict
@@ -10,7 +11,7 @@ from panelkit.config import Study
 from panelkit.records import RunRecord
 from panelkit.runtime import json_bytes
 
-__all__ = ["record_bytes", "run_record"]
+__all__ = ["record_bytes", "run_record", "without_prices"]
 
 LIBRARIES = ("anndata", "numba", "numpy", "pandas", "scikit-learn", "scipy")
 
@@ -57,3 +58,33 @@ def run_record(
 def record_bytes(record: RunRecord) -> bytes:
     """Return the content of ``record.json``."""
     return json_bytes(asdict(record))
+
+
+def without_prices(content: bytes) -> bytes:
+    """Return what the finished folds of a run depend on: its record without prices.
+
+    No maker and no rule of a fold uses prices, so that other quotes need no fold to be
+    learnt again; whether anything is priced stays, since it decides which files there
+    are.
+
+    Parameters
+    ----------
+    content : bytes
+        A ``record.json``.
+
+    Returns
+    -------
+    bytes
+        Equal for equal folds; the content itself where it is no record.
+    """
+    try:
+        record = json.loads(content)
+        study, inputs = dict(record["study"]), dict(record["inputs"])
+    except (ValueError, KeyError, TypeError):
+        return content
+    for name in ("platform", "kit"):
+        study.pop(name, None)
+    study["programme"] = "programme" in study
+    for name in ("prices", "conflicts"):
+        inputs.pop(name, None)
+    return json_bytes({**record, "study": study, "inputs": inputs})

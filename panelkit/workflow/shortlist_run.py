@@ -157,7 +157,7 @@ def _null(
     labels = (design.site, design.matched_set)
     return shuffle_null(
         selected.view,
-        data.y,
+        data.task.outcome(),
         known.draws.everyone.training,
         data.subjects,
         data.weights,
@@ -167,6 +167,7 @@ def _null(
         seed=plan.seed,
         inputs=hashlib.sha256(content).hexdigest(),
         store=folder.store(),
+        family=data.task.family,
         design=NullDesign(
             within=tuple(each for each in labels if each is not None),
             pair_site=data.pair_site,
@@ -200,12 +201,28 @@ def _results(
         shortlist=shortlist_table(
             data, selected, cohort.features, plan.accuracy.confidence, facts
         ),
-        paths=trace_paths(view, data.y, data.weights, pairs, rules, threads=threads),
+        paths=trace_paths(
+            view,
+            data.task.outcome(),
+            data.weights,
+            pairs,
+            rules,
+            family=data.task.family,
+            threads=threads,
+        ),
         convergence=record_convergence(stability, plan.shortlist.precision),
         companions=describe_companions(view, rows, stability),
         null=null,
         selectors=compare_selectors(
-            view, data.y, rows, data.subjects, data.weights, pairs, rules, threads
+            view,
+            data.task.outcome(),
+            rows,
+            data.subjects,
+            data.weights,
+            pairs,
+            rules,
+            threads,
+            family=data.task.family,
         ),
         agreement=set_agreement(stability.picked[:, view.included]),
     )

@@ -1,12 +1,14 @@
 """The tables of a run folder."""
 
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import astuple, fields
 from decimal import Decimal
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from panelkit.costing import HonestAccuracy, PanelPricer
+from panelkit.costing import HonestAccuracy, PanelPricer, Primary, Task
 from panelkit.ingest import replicate_agreement
 from panelkit.records import (
     Choice,
@@ -19,6 +21,7 @@ from panelkit.records import (
     FoldPlan,
     Frontier,
     FrontierRow,
+    OutOfFold,
     RunSummary,
     ShortlistTable,
 )
@@ -79,6 +82,8 @@ def write_accuracy(
     cohort: Cohort,
     folds: FoldPlan,
     accuracy: HonestAccuracy,
+    primary: Primary,
+    task: Task,
     pricer: PanelPricer | None,
 ) -> None:
     """Write ``folds.csv``, ``predictions.csv`` and ``fold_panels.csv``.
@@ -105,17 +110,21 @@ def write_accuracy(
             for i, f in enumerate(folds.test_fold[r])
         ),
     )
-    outcome = _outcome(cohort)
-    everything = (*accuracy.panels, accuracy.primary, accuracy.ridge)
+    columns, classes = task.columns(), getattr(task, "names", ())
+    everything = (*accuracy.panels, primary.predictions, *accuracy.others.values())
     folder.table(
         "predictions.csv",
-        ["sample", "repeat", "fold", "maker", "size", "score", "outcome"],
-        (
-            (samples[i], r, folds.test_fold[r, i], each.maker, each.size, score, y)
-            for each in everything
-            for r in repeats
-            for i, (score, y) in enumerate(zip(each.scores[r], outcome, strict=True))
-        ),
+        [
+            "sample",
+            "repeat",
+            "fold",
+            "maker",
+            "size",
+            *(["class"] if classes else []),
+            "score",
+            *columns,
+        ],
+        _prediction_rows(everything, samples, folds, task, columns, classes),
     )
     folder.table(
         "fold_panels.csv",
@@ -130,20 +139,36 @@ def write_accuracy(
             "cost_total",
             "chosen_by_primary",
         ],
-        _fold_panels(cohort, folds, accuracy, pricer),
+        _fold_panels(cohort, folds, accuracy, primary, pricer),
     )
 
 
-def _outcome(cohort: Cohort) -> list[int]:
-    if cohort.outcome is None:
-        return []
-    return [int(value) for value in cohort.outcome.values]
+def _prediction_rows(
+    everything: Sequence[OutOfFold],
+    samples: NDArray[np.object_],
+    folds: FoldPlan,
+    task: Task,
+    columns: Mapping[str, NDArray[Any]],
+    classes: Sequence[str],
+) -> Iterator[tuple[Any, ...]]:
+    """Yield one row a prediction; one a class where there are several."""
+    own = list(zip(*columns.values(), strict=True))
+    for each in everything:
+        scores = task.scores(each.predicted)
+        for r in range(folds.n_repeats):
+            for i, fold in enumerate(folds.test_fold[r]):
+                lead = (samples[i], r, fold, each.maker, each.size)
+                if not classes:
+                    yield (*lead, scores[r, i], *own[i])
+                for k, name in enumerate(classes):
+                    yield (*lead, name, scores[r, k, i], *own[i])
 
 
 def _fold_panels(
     cohort: Cohort,
     folds: FoldPlan,
     accuracy: HonestAccuracy,
+    primary: Primary,
     pricer: PanelPricer | None,
 ) -> list[tuple[Any, ...]]:
     makers = list(dict.fromkeys(panels.maker for panels in accuracy.members))
@@ -153,8 +178,8 @@ def _fold_panels(
             members = panels.members[repeat, fold]
             markers = [str(cohort.features[j]) for j in members if j >= 0]
             chosen = (
-                accuracy.chosen.size[repeat, fold] == panels.size
-                and makers[accuracy.chosen.maker[repeat, fold]] == panels.maker
+                primary.chosen.size[repeat, fold] == panels.size
+                and makers[primary.chosen.maker[repeat, fold]] == panels.maker
             )
             costs = pricer.costs(markers) if pricer is not None and chosen else ()
             rows.append(

@@ -16,6 +16,7 @@ OWNERS = {
     "matplotlib": {"report/*": "owner"},
     "numba": {"fits/kernel*": "owner"},
     "numpy": {"*": "arrays are what records carry"},
+    "openpyxl": {"report/price_workbook.py": "spreadsheets with live formulas"},
     "pandas": {"ingest/*": "owner", "records/*": "to_frame"},
     "pyarrow": {"ingest/*": "owner"},
     "pydantic": {"config/*": "owner"},
@@ -41,7 +42,7 @@ OWNERS = {
         "fits/*": "the engine holds BLAS to one thread",
     },
 }
-SLOW = ("anndata", "h5py", "pandas", "pyarrow")
+SLOW = ("anndata", "h5py", "openpyxl", "pandas", "pyarrow")
 
 
 def third_party(source):

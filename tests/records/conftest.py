@@ -300,6 +300,29 @@ def run_summary():
     )
 
 
+TEN = Decimal("10.00")
+
+
+def break_even():
+    crossing = records.Crossing(2, "B", TEN)
+    return records.BreakEven(2, (crossing,), 2, 3, (1, 2), (TEN, TEN), (TEN, TEN))
+
+
+def cost_sheet():
+    row = records.SheetAssay(
+        "F0", "marker", 1, TEN, TEN, None, None, (), False, Decimal(0), 1
+    )
+    return records.CostSheet(
+        "A", panel_cost(), 2, (("samples", 10),), ((0, TEN),), (1,), (row,)
+    )
+
+
+def scenario():
+    return records.ScenarioAnswer(
+        "A", ("F0",), (panel_cost(),), (), None, (), None, (), (), cost_sheet()
+    )
+
+
 MADE = {
     "AssayMap": lambda: records.AssayMap(
         objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
@@ -352,7 +375,47 @@ MADE = {
     "Stability": stability,
     "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
-    "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
+    "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
+    "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "Fragility": lambda: records.Fragility(
+        "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
+    ),
+    "Handling": lambda: records.Handling("run", "1", 20, "spearman", 0.1, 0.6),
+    "LearningPoint": lambda: records.LearningPoint(0.4, 20.0, 0.7, 0.6, 0.8, 0.05),
+    "StandIn": lambda: records.StandIn(
+        "F1", "F2", "maker", 0.9, 0.01, 0.0, 0.02, "by role", 0.5, None
+    ),
+    "Subgroup": lambda: records.Subgroup("site", "A", 20, 8, 0.8, 0.7, 0.9, "words"),
+    "TunedChoice": lambda: records.TunedChoice(
+        whole(2, 2), whole(2, 2), np.ones((2, 2), bool)
+    ),
+}
+
+
+MADE |= {
+    "Assumption": lambda: records.Assumption("samples", "10", "given"),
+    "BreakEven": break_even,
+    "Conflict": lambda: records.Conflict("F0", "F1"),
+    "Conflicts": lambda: records.Conflicts((records.Conflict("F0", "F1"),)),
+    "CostSheet": cost_sheet,
+    "Crossing": lambda: break_even().crossings[0],
+    "Driver": lambda: records.Driver("F0", TEN, TEN, None, ""),
+    "KitPurchase": lambda: records.KitPurchase("K", 1, TEN, TEN, ("F0",), ()),
+    "PriceAnswer": lambda: records.PriceAnswer("EUR", 10, 12, (scenario(),)),
+    "PriceQuestion": lambda: records.PriceQuestion("F0", "wells", None, "Ask."),
+    "ScenarioAnswer": scenario,
+    "SheetAssay": lambda: cost_sheet().assays[0],
+    "Spares": lambda: records.Spares(
+        1, 0.95, 2, ("S",), 0.96, 0.8, TEN, TEN, True, True
+    ),
+    "SplitCost": lambda: records.SplitCost(
+        (panel_cost(),), (("F0",),), TEN, TEN, Fraction(10), TEN, True
+    ),
+    "Stair": lambda: records.Stair(1, "F0", TEN, TEN, None, ""),
+    "StepDown": lambda: records.StepDown(1, ("F0",), "1 pool", TEN),
+    "Variation": lambda: records.Variation(
+        "A", "samples", "10", "wells", TEN, TEN, 1, Fraction(1, 8), 1
+    ),
 }
 
 

@@ -108,10 +108,10 @@ def test_held_out_values_change_nothing_that_a_fold_learns(counted, discovery):
     )
     assert one.selected.view.state.digest() == two.selected.view.state.digest()
     assert one.penalties.tolist() == two.penalties.tolist()
-    assert one.tuning.area.tobytes() == two.tuning.area.tobytes()
+    assert one.tuning.metric.tobytes() == two.tuning.metric.tobytes()
     for first, second in zip(one.selected.panels, two.selected.panels, strict=True):
         assert first.tolist() == second.tolist()
-    assert one.log_odds.tobytes() != two.log_odds.tobytes()  # it was applied
+    assert one.predicted.tobytes() != two.predicted.tobytes()  # it was applied
 
 
 def test_the_assay_part_reads_markers_and_references_alone(counted):
@@ -126,8 +126,8 @@ def test_the_assay_part_reads_markers_and_references_alone(counted):
     measured = [*panel, 10, 11, 12]
     values[measured] = data.values[measured]
     whole, alone = (
-        procedure.marker_values(
-            selected.view, each, split.training, np.sort(panel), split.test
+        procedure.markers(selected.view, each, split.training).columns(
+            np.sort(panel), split.test
         )
         for each in (data, type(data)(**{**_fields(data), "values": values}))
     )
