@@ -8,19 +8,23 @@ import importlib
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from panelkit.costing import programme_cost
+    from panelkit.costing import cheapest_cover, programme_cost
     from panelkit.errors import PanelkitError
     from panelkit.fits import fit_paths
     from panelkit.ingest import check_cohort, read_cohort, read_openings
+    from panelkit.stability import StabilitySelector
     from panelkit.workflow import (
         check_study,
         draft_study,
         open_set_aside,
+        run_shortlist,
         run_study,
     )
 
 __all__ = [
     "PanelkitError",
+    "StabilitySelector",
+    "cheapest_cover",
     "check_cohort",
     "check_study",
     "draft_study",
@@ -29,11 +33,14 @@ __all__ = [
     "programme_cost",
     "read_cohort",
     "read_openings",
+    "run_shortlist",
     "run_study",
 ]
 
 _HOMES = {
     "PanelkitError": "panelkit.errors",
+    "StabilitySelector": "panelkit.stability",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
@@ -42,6 +49,7 @@ _HOMES = {
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
     "read_openings": "panelkit.ingest",
+    "run_shortlist": "panelkit.workflow",
     "run_study": "panelkit.workflow",
 }
 

@@ -13,6 +13,8 @@ import panelkit
 REPOSITORY = Path(__file__).parents[1]
 NAMES = {
     "PanelkitError": "panelkit.errors",
+    "StabilitySelector": "panelkit.stability",
+    "cheapest_cover": "panelkit.costing",
     "check_cohort": "panelkit.ingest",
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
@@ -21,6 +23,7 @@ NAMES = {
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
     "read_openings": "panelkit.ingest",
+    "run_shortlist": "panelkit.workflow",
     "run_study": "panelkit.workflow",
 }
 IMPORT = "import sys, panelkit\nassert {home!r} not in sys.modules\npanelkit.{name}\n"

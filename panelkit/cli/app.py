@@ -17,6 +17,8 @@ __all__ = ["main"]
 COMMANDS: Final = {
     "draft": "Write a commented study file by looking at the data.",
     "check": "Read the data of a study and say what was noticed.",
+    "shortlist": "Say which markers are picked again and again; no panels.",
+    "price": "Price marker lists on platforms; needs no expression data.",
     "run": "Run the whole job: priced panels with honest accuracy.",
 }
 

@@ -7,15 +7,19 @@ from panelkit.config.defaults import (
     COHORT,
     DESIGN,
     ENGINE,
+    KIT,
     PANELS,
     PLATFORM,
     PREPARATION,
+    PRICING,
     PROGRAMME,
     SEED,
     SHORTLIST,
+    STEPS,
     DesignKind,
 )
 from panelkit.config.design import DesignSection, check_design, outcome_kind
+from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.presets import FAMILY_PRESETS, USUAL_REFERENCES
 from panelkit.config.programme import (
     PlatformSection,
@@ -25,6 +29,7 @@ from panelkit.config.programme import (
     read_platform_file,
     read_programme_file,
 )
+from panelkit.config.sections import read_toml
 from panelkit.config.study import (
     AccuracySection,
     ChoiceSection,
@@ -45,13 +50,16 @@ __all__ = [
     "DESIGN",
     "ENGINE",
     "FAMILY_PRESETS",
+    "KIT",
     "MINOR_DIGITS",
     "PANELS",
     "PLATFORM",
     "PREPARATION",
+    "PRICING",
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "STEPS",
     "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",
     "AccuracySection",
@@ -59,6 +67,7 @@ __all__ = [
     "CohortSection",
     "DesignKind",
     "DesignSection",
+    "KitSection",
     "PanelsSection",
     "PlatformSection",
     "PreparationSection",
@@ -67,11 +76,14 @@ __all__ = [
     "StatementSection",
     "Study",
     "check_design",
+    "kit_sections",
     "outcome_kind",
     "platform_section",
     "programme_section",
+    "read_kits",
     "read_platform_file",
     "read_programme_file",
     "read_study",
+    "read_toml",
     "study_text",
 ]

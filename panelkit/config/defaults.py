@@ -15,12 +15,15 @@ __all__ = [
     "COHORT",
     "DESIGN",
     "ENGINE",
+    "KIT",
     "PANELS",
     "PLATFORM",
     "PREPARATION",
+    "PRICING",
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "STEPS",
     "DesignKind",
 ]
 
@@ -51,6 +54,37 @@ class _Preparation:
 
 
 @dataclass(frozen=True, slots=True)
+class _Steps:
+    """Parameters of the steps of a recipe, beside those of [preparation] itself."""
+
+    cpm_prior: float = 2.0
+    """Counts added to every cell of a library of average size."""
+    count_offset: float = 1.0
+    """Added to counts that are already divided by their size factor."""
+    ratio_trim: float = 0.3
+    level_trim: float = 0.05
+    upper_quantile: float = 0.75
+    m_value_offset: float = 0.001
+    variance_number: int = 5000
+    prevalence_above: float = 0.0
+    prevalence_share: float = 0.1
+    detection_level: float = 0.0
+    detection_samples: int = 3
+    detection_unit: Literal["value", "per-million"] = "value"
+    least_reliability: float = 0.5
+    neighbours: int = 5
+    unseen_batch: Literal["grand-mean", "refuse"] = "grand-mean"
+    reference_measure: Literal["pairwise-variation", "variance-components"] = (
+        "pairwise-variation"
+    )
+    reference_number: int = 3
+    collapse_rule: Literal["highest-mean", "highest-variance", "median"] = (
+        "highest-mean"
+    )
+    value_scale: Literal["log2", "linear"] = "log2"
+
+
+@dataclass(frozen=True, slots=True)
 class _Engine:
     n_penalties: int = 100
     penalty_floor_wide: float = 0.01
@@ -68,6 +102,14 @@ class _Shortlist:
     subsamples: int = 100
     threshold: float = 0.75
     false_markers: float = 1.0
+    bound: Literal["worst-case", "unimodal", "r-concave"] = "worst-case"
+    selector: Literal["lasso", "elastic-net", "univariate"] = "lasso"
+    l1_share: float = 0.5
+    """Share of the L1 part of the elastic net."""
+    stratify_by_site: bool = False
+    shuffles: int = 50
+    precision: float = 0.1
+    """Half width of a frequency's interval from which subsamples are enough."""
     candidates: int = 25
     n_penalties: int = 40
     penalty_floor: float = 0.1
@@ -86,6 +128,8 @@ class _Accuracy:
     repeats: int = 5
     inner_folds: int = 5
     inner_subsamples: int = 40
+    random_panels: int = 200
+    learning_curve: bool = True
     metric: Literal["auc"] = "auc"
     confidence: float = 0.95
 
@@ -102,6 +146,7 @@ class _Programme:
     repeat_rate: Decimal = Decimal(0)
     repeat_mode: Literal["none", "once", "until"] = "once"
     collection_cost: Decimal = Decimal(0)
+    sample_volume: Decimal = Decimal(0)
     missing_price: Literal["refuse", "bound", "impute", "exclude"] = "bound"
 
 
@@ -126,11 +171,34 @@ class _Platform:
     run_budget: Decimal = Decimal(0)
     slot_budget: Decimal = Decimal(0)
     max_positions_per_sample: int = 0
+    pool_volume: Decimal = Decimal(0)
+    design_success: Decimal = Decimal(1)
+
+
+@dataclass(frozen=True, slots=True)
+class _Kit:
+    once: Decimal = Decimal(0)
+    splittable: bool = False
+    shelf_months: int = 0
+    volume: Decimal = Decimal(0)
+
+
+@dataclass(frozen=True, slots=True)
+class _Pricing:
+    """What `panelkit price` and the cover do when nothing else is said."""
+
+    time_limit_s: float = 60.0
+    """For one integer programme; what is found by then is reported as not proved."""
+    probability: float = 0.95
+    """With which enough designs are to land when spares are ordered."""
+    stairs_beyond: int = 6
+    """Sizes above the panel's own that the staircase goes on for."""
 
 
 COHORT: Final = _Cohort()
 DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
+STEPS: Final = _Steps()
 ENGINE: Final = _Engine()
 SHORTLIST: Final = _Shortlist()
 PANELS: Final = _Panels()
@@ -138,3 +206,5 @@ ACCURACY: Final = _Accuracy()
 CHOICE: Final = _Choice()
 PROGRAMME: Final = _Programme()
 PLATFORM: Final = _Platform()
+KIT: Final = _Kit()
+PRICING: Final = _Pricing()

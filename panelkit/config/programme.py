@@ -21,8 +21,13 @@ from panelkit.config.sections import Section, check_section, read_toml
 from panelkit.errors import StudyFileError, name_some
 
 __all__ = [
+    "PROGRAMME_FILE_KEYS",
+    "Count",
+    "Money",
     "PlatformSection",
+    "Positive",
     "ProgrammeSection",
+    "TieredPrice",
     "platform_section",
     "programme_section",
     "read_platform_file",
@@ -160,10 +165,11 @@ def _check_position_prices(prices: list[Decimal], info: ValidationInfo) -> None:
 
 Money = Annotated[Decimal, Field(ge=0), BeforeValidator(_exact)]
 Rate = Annotated[Decimal, Field(ge=0, lt=1), BeforeValidator(_exact)]
+Chance = Annotated[Decimal, Field(gt=0, le=1), BeforeValidator(_exact)]
 Count = Annotated[int, Field(ge=0, le=MAX_COUNT), BeforeValidator(_whole)]
 Positive = Annotated[int, Field(ge=1, le=MAX_COUNT), BeforeValidator(_whole)]
 Groups = Annotated[int | Literal["auto", "each"], BeforeValidator(_groups)]
-PositionCost = Annotated[
+TieredPrice = Annotated[
     Decimal | tuple[tuple[int, Decimal], ...],
     BeforeValidator(_position_cost),
 ]
@@ -188,6 +194,8 @@ class ProgrammeSection(Section):
         Whether failed samples are run again, once, or until they succeed.
     collection_cost : Decimal
         For each sample, once, whatever the platforms.
+    sample_volume : Decimal
+        What is at hand of each sample for all pools and kits; 0 is no limit.
     missing_price : {"refuse", "bound", "impute", "exclude"}
         What to do about assays without a quote.
     """
@@ -199,6 +207,7 @@ class ProgrammeSection(Section):
     repeat_rate: Rate = PROGRAMME.repeat_rate
     repeat_mode: Literal["none", "once", "until"] = PROGRAMME.repeat_mode
     collection_cost: Money = PROGRAMME.collection_cost
+    sample_volume: Money = PROGRAMME.sample_volume
     missing_price: Literal["refuse", "bound", "impute", "exclude"] = (
         PROGRAMME.missing_price
     )
@@ -253,6 +262,11 @@ class PlatformSection(Section):
         position takes of it.
     max_positions_per_sample : int
         Limit by sample volume; 0 is none.
+    pool_volume : Decimal
+        Sample volume that one pool takes, in the unit of `sample_volume`.
+    design_success : Decimal
+        Chance that an assay ordered for this platform works, above 0 to 1; the
+        price list may say it for each marker.
     """
 
     family: Family | None = None
@@ -267,7 +281,7 @@ class PlatformSection(Section):
     setup: Money = PLATFORM.setup
     pool_setup: Money = PLATFORM.pool_setup
     run_cost: Money = PLATFORM.run_cost
-    position_cost: PositionCost = PLATFORM.position_cost
+    position_cost: TieredPrice = PLATFORM.position_cost
     sample_cost: Money = PLATFORM.sample_cost
     prep_positions: Count = PLATFORM.prep_positions
     prep_cost: Money = PLATFORM.prep_cost
@@ -277,6 +291,8 @@ class PlatformSection(Section):
     run_budget: Money = PLATFORM.run_budget
     slot_budget: Money = PLATFORM.slot_budget
     max_positions_per_sample: Count = PLATFORM.max_positions_per_sample
+    pool_volume: Money = PLATFORM.pool_volume
+    design_success: Chance = PLATFORM.design_success
 
     @model_validator(mode="wrap")
     @classmethod
@@ -387,7 +403,7 @@ def platform_section(
     return check_section(PlatformSection, values, where)
 
 
-_FILE_KEYS = ("programme", "platform", "kit")
+PROGRAMME_FILE_KEYS: Final = ("programme", "platform", "kit")
 
 
 def read_programme_file(path: str | Path) -> ProgrammeSection:
@@ -409,7 +425,7 @@ def read_programme_file(path: str | Path) -> ProgrammeSection:
     StudyFileError
         If the file cannot be read, or its ``[programme]`` cannot be used.
     """
-    tables = read_toml(path, _FILE_KEYS)
+    tables = read_toml(path, PROGRAMME_FILE_KEYS)
     if "programme" not in tables:
         raise StudyFileError(
             code="programme-missing",
@@ -427,7 +443,7 @@ def read_platform_file(path: str | Path) -> dict[str, PlatformSection]:
     Parameters
     ----------
     path : str or Path
-        The file; it may also hold ``[programme]``.
+        The file; it may also hold ``[programme]`` and ``[[kit]]``.
 
     Returns
     -------
@@ -437,18 +453,9 @@ def read_platform_file(path: str | Path) -> dict[str, PlatformSection]:
     Raises
     ------
     StudyFileError
-        If the file cannot be read, describes kits (which are not priced yet), or
-        one of its platforms cannot be used.
+        If the file cannot be read, or one of its platforms cannot be used.
     """
-    tables = read_toml(path, _FILE_KEYS)
-    if "kit" in tables:
-        raise StudyFileError(
-            code="kits-not-priced",
-            where=f"{path}, [[kit]]",
-            what="kits cannot be priced yet (got at least one)",
-            accepted="a file without [[kit]]",
-            next_step="Remove the kits; their assays can be priced one by one",
-        )
+    tables = read_toml(path, PROGRAMME_FILE_KEYS)
     platforms = tables.get("platform")
     if not isinstance(platforms, dict) or not all(
         isinstance(table, dict) for table in platforms.values()

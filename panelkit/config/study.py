@@ -6,7 +6,7 @@ from decimal import Decimal
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-from pydantic import BeforeValidator, Field
+from pydantic import BeforeValidator, Field, model_validator
 
 from panelkit.config.defaults import (
     ACCURACY,
@@ -17,7 +17,8 @@ from panelkit.config.defaults import (
     SEED,
     SHORTLIST,
 )
-from panelkit.config.design import DesignSection, check_design, outcome_kind
+from panelkit.config.design import DesignSection
+from panelkit.config.kits import KitSection, kit_sections, read_kits
 from panelkit.config.programme import (
     PlatformSection,
     ProgrammeSection,
@@ -32,7 +33,13 @@ from panelkit.config.sections import (
     read_toml,
     refuse_key,
 )
-from panelkit.errors import StudyFileError, name_some
+from panelkit.config.study_checks import (
+    check_cohort_section,
+    check_even,
+    check_lists,
+    check_rule,
+)
+from panelkit.errors import StudyFileError
 
 __all__ = [
     "PLAIN_SECTIONS",
@@ -193,20 +200,50 @@ class CohortSection(Section):
     max_bad_cells: int = Field(default=COHORT.max_bad_cells, ge=0)
 
 
+def _steps(value: object) -> object:
+    """Let each step be a name, or a table with its name and its parameters."""
+    if not isinstance(value, list | tuple):
+        return value
+    steps: list[object] = []
+    for step in value:
+        named = step.get("step") if isinstance(step, Mapping) else step
+        if not isinstance(named, str):
+            raise ValueError(
+                'a list of steps, each a name or { step = "name", parameter = value }'
+            )
+        if isinstance(step, Mapping):
+            step = {key: plain_number(part) for key, part in step.items()}
+        steps.append(step)
+    return tuple(steps)
+
+
+StepEntries = Annotated[tuple[str | dict[str, Any], ...], BeforeValidator(_steps)]
+
+
 class PreparationSection(Section):
     """``[preparation]``: what is done to the values before anything is fitted.
 
     Attributes
     ----------
-    discovery : tuple of str or None
-        Steps in order: log2, filter, median-fill. None follows the scale finding.
+    discovery : tuple of str or table, or None
+        Steps in order, each a name or a table { step = "log-cpm", prior = 2.0 }:
+        log2, m-values, log-cpm, median-of-ratios, trimmed-mean, upper-quartile; then
+        quantile, median-difference; then batch-centre, reference-ratio; then
+        collapse; filter, variance, prevalence, detection, replicate-reliability; and
+        one of median-fill, half-minimum, below-limit, neighbours. None follows the
+        scale finding.
+    assay : tuple of str or table, or None
+        Steps that panels are refitted and judged with, from the panel's markers and
+        reference features alone: log2, m-values, reference-ratio, batch-centre,
+        median-fill, half-minimum, below-limit. None uses the discovery steps.
     log2_offset : float
         Added before the logarithm.
     max_missing_share : float
         Features missing in a larger share of the training rows are left out.
     """
 
-    discovery: tuple[str, ...] | None = None
+    discovery: StepEntries | None = None
+    assay: StepEntries | None = None
     log2_offset: Annotated[float, Field(ge=0), BeforeValidator(plain_number)] = (
         PREPARATION.log2_offset
     )
@@ -218,40 +255,83 @@ class PreparationSection(Section):
 class ShortlistSection(Section):
     """``[shortlist]``: stability selection.
 
+    Of threshold, false_markers and markers_per_subsample two are given and the third
+    follows; where fewer are given, the defaults of the first two stand in.
+
     Attributes
     ----------
     subsamples : int
-        Halves in all, an even number: complementary pairs.
-    threshold : float
+        Halves in all, an even number: complementary pairs. Fixed before the first fit.
+    threshold : float or None
         Selection frequency from which a feature is shortlisted.
-    false_markers : float
+    false_markers : float or None
         Tolerated expected number of low-chance features in the shortlist.
     markers_per_subsample : int or None
-        Given: the bound on false markers follows from it.
+        How many features each subsample may pick.
+    bound : str
+        The bound that decides: worst-case, unimodal, or r-concave (from threshold
+        0.6); the first two are always shown.
+    selector : str
+        What picks in a subsample: lasso, elastic-net, or univariate (the largest test
+        statistics).
+    l1_share : float
+        Share of the L1 part of the elastic net.
+    stratify_by_site : bool
+        Each half gets its share of every site.
     candidates : int
         Companion groups, and univariate features, that panels may be built from.
+    candidates_on : str or None
+        A platform: candidates are features that can be assayed there.
     always, never : tuple of str
         Features that are candidates whatever happens; features never used.
     companion_correlation : float
         Smallest absolute correlation of companions.
+    shuffles : int
+        Shuffles of the people that `panelkit shortlist` compares with, 0 for none;
+        from 1,000 every feature gets a p-value.
+    precision : float
+        Half width of a frequency's interval from which subsamples count as enough.
     n_penalties, penalty_floor : int, float
         Penalties of each path, and the last one relative to the largest.
     """
 
     subsamples: int = Field(default=SHORTLIST.subsamples, ge=4, le=100_000)
-    threshold: Annotated[float, Field(gt=0.5, le=1), BeforeValidator(plain_number)] = (
-        SHORTLIST.threshold
-    )
-    false_markers: Annotated[float, Field(gt=0), BeforeValidator(plain_number)] = (
-        SHORTLIST.false_markers
-    )
+    threshold: (
+        Annotated[float, Field(gt=0.5, le=1), BeforeValidator(plain_number)] | None
+    ) = SHORTLIST.threshold
+    false_markers: (
+        Annotated[float, Field(gt=0), BeforeValidator(plain_number)] | None
+    ) = SHORTLIST.false_markers
     markers_per_subsample: Size | None = None
+    bound: Literal["worst-case", "unimodal", "r-concave"] = SHORTLIST.bound
+    selector: Literal["lasso", "elastic-net", "univariate"] = SHORTLIST.selector
+    l1_share: Annotated[float, Field(gt=0, le=1), BeforeValidator(plain_number)] = (
+        SHORTLIST.l1_share
+    )
+    stratify_by_site: bool = SHORTLIST.stratify_by_site
     candidates: int = Field(default=SHORTLIST.candidates, ge=1, le=1000)
+    candidates_on: str | None = None
     always: tuple[str, ...] = ()
     never: tuple[str, ...] = ()
     companion_correlation: Share = SHORTLIST.companion_correlation
+    shuffles: int = Field(default=SHORTLIST.shuffles, ge=0, le=1_000_000)
+    precision: Share = SHORTLIST.precision
     n_penalties: int = Field(default=SHORTLIST.n_penalties, ge=2, le=1000)
     penalty_floor: Share = SHORTLIST.penalty_floor
+
+    @model_validator(mode="before")
+    @classmethod
+    def _two_of_three(cls, values: object) -> object:
+        """Make the figure that follows None, so that equal demands are equal."""
+        if not isinstance(values, dict) or "markers_per_subsample" not in values:
+            return values
+        if {"threshold", "false_markers"} <= values.keys():
+            raise ValueError(
+                "two of threshold, false_markers and markers_per_subsample, the third "
+                "follows"
+            )
+        follows = "threshold" if "false_markers" in values else "false_markers"
+        return {**values, follows: None}
 
 
 class PanelsSection(Section):
@@ -267,6 +347,8 @@ class PanelsSection(Section):
         Price list (CSV).
     platforms : tuple of str
         Platform files (TOML), beside any ``[platform.NAME]`` of the study file.
+    conflicts : str or None
+        Pairs of markers that must be kept apart (CSV).
     """
 
     sizes: Annotated[tuple[Size, ...], BeforeValidator(_ascending)] = Field(
@@ -275,6 +357,7 @@ class PanelsSection(Section):
     makers: tuple[str, ...] = Field(default=PANELS.makers, min_length=1)
     prices: str | None = None
     platforms: tuple[str, ...] = ()
+    conflicts: str | None = None
 
 
 class AccuracySection(Section):
@@ -288,6 +371,10 @@ class AccuracySection(Section):
         Inner folds that tune penalties and choose the size for the headline.
     inner_subsamples : int
         Halves of the stability selection inside an inner fold, an even number.
+    random_panels : int
+        Random panels of each size and kind, to compare with.
+    learning_curve : bool
+        Whether the headline is repeated with fewer training people.
     metric : {"auc"}
         Area under the ROC curve.
     confidence : float
@@ -298,6 +385,8 @@ class AccuracySection(Section):
     repeats: int = Field(default=ACCURACY.repeats, ge=1, le=1000)
     inner_folds: int = Field(default=ACCURACY.inner_folds, ge=2, le=20)
     inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
+    random_panels: int = Field(default=ACCURACY.random_panels, ge=20, le=10_000)
+    learning_curve: bool = ACCURACY.learning_curve
     metric: Literal["auc"] = ACCURACY.metric
     confidence: Share = ACCURACY.confidence
 
@@ -308,10 +397,27 @@ class PrimaryRule(Section):
     Attributes
     ----------
     rule : str
-        ``smallest-within-one-se``.
+        Smallest or cheapest within one standard error or within a margin of the most
+        accurate; best under a budget; cheapest above a required accuracy.
+    margin : float or None
+        Loss of the metric that counts as none; for the margin rules.
+    budget : Decimal or None
+        Largest programme cost; for ``best-under-budget``.
+    required_accuracy : float or None
+        Smallest metric; for ``cheapest-above-accuracy``.
     """
 
-    rule: Literal["smallest-within-one-se"]
+    rule: Literal[
+        "smallest-within-one-se",
+        "cheapest-within-one-se",
+        "smallest-within-margin",
+        "cheapest-within-margin",
+        "best-under-budget",
+        "cheapest-above-accuracy",
+    ]
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
 
 class ChoiceSection(Section):
@@ -321,14 +427,24 @@ class ChoiceSection(Section):
     ----------
     primary : PrimaryRule or None
         None: the default rule is used and the headline says exploratory.
+    margin, budget, required_accuracy : as in `primary`
+        For the rules shown beside the primary one, where they are given.
     """
 
     primary: PrimaryRule | None = None
+    margin: Share | None = None
+    budget: Annotated[Decimal, Field(gt=0)] | None = None
+    required_accuracy: Share | None = None
 
     @property
     def rule(self) -> str:
         """Name of the rule that is used."""
         return CHOICE.rule if self.primary is None else self.primary.rule
+
+    def demand(self, name: str) -> Any:
+        """Return the primary rule's margin, budget or accuracy, else the section's."""
+        own = None if self.primary is None else getattr(self.primary, name)
+        return getattr(self, name) if own is None else own
 
 
 class StatementSection(Section):
@@ -367,6 +483,8 @@ Section
         None: nothing is priced.
     platforms : mapping of str to PlatformSection
         From the study file and from platform files.
+    kits : tuple of KitSection
+        From the same files.
     """
 
     path: Path
@@ -381,6 +499,7 @@ Section
     statement: StatementSection
     programme: ProgrammeSection | None
     platforms: Mapping[str, PlatformSection]
+    kits: tuple[KitSection, ...] = ()
 
     def file(self, name: str) -> Path:
         """Return the path of a file that the study names."""
@@ -399,7 +518,7 @@ Section
         for name in FILE_KEYS:
             cohort.pop(name)
         tables["cohort"] = cohort
-        for name in ("prices", "platforms"):
+        for name in ("prices", "platforms", "conflicts"):
             tables["panels"].pop(name)
         if self.programme is None:
             return tables
@@ -410,6 +529,8 @@ Section
             # where it comes from does not matter to results, its value does
             rate = platform.effective_repeat_rate(self.programme)
             tables["platform"][name] = values | {"repeat_rate": str(rate)}
+        if self.kits:
+            tables["kit"] = [kit.model_dump(mode="json") for kit in self.kits]
         return tables
 
 
@@ -435,7 +556,7 @@ FILE_KEYS = (
 )
 """Keys of ``[cohort]`` that name files; the record holds their hashes instead."""
 _DECIDING = ("design", "preparation", "shortlist", "panels", "accuracy", "choice")
-_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform")
+_KEYS = ("seed", *PLAIN_SECTIONS, "programme", "platform", "kit")
 
 
 def read_study(path: str | Path) -> Study:
@@ -480,10 +601,11 @@ def read_study(path: str | Path) -> Study:
         name: check_section(kind, tables.get(name, {}), f"{path}, [{name}]")
         for name, kind in PLAIN_SECTIONS.items()
     }
-    _check_lists(sections, str(path))
-    _check_cohort(sections, str(path))
+    check_lists(sections, str(path))
+    check_rule(sections["choice"], str(path), priced="programme" in tables)
+    check_cohort_section(sections, str(path))
     for table, key in (("shortlist", "subsamples"), ("accuracy", "inner_subsamples")):
-        _check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
+        check_even(getattr(sections[table], key), f"{path}, [{table}], key '{key}'")
     programme = None
     if "programme" in tables:
         programme = programme_section(tables["programme"], f"{path}, [programme]")
@@ -492,65 +614,11 @@ def read_study(path: str | Path) -> Study:
         seed=seed,
         programme=programme,
         platforms=_platforms(Path(path), tables, sections["panels"]),
+        kits=_kits(Path(path), tables, sections["panels"]),
         **sections,
     )
     _check_pricing(study)
     return study
-
-
-def _check_lists(sections: Mapping[str, Any], path: str) -> None:
-    """Refuse lists that contradict themselves."""
-    always, never = sections["shortlist"].always, sections["shortlist"].never
-    if both := sorted(set(always) & set(never)):
-        raise StudyFileError(
-            code="always-and-never",
-            where=f"{path}, [shortlist], keys 'always' and 'never'",
-            what=f"both name {name_some(both)}",
-            accepted="a feature under one of the two",
-            next_step="Remove it from one of them",
-        )
-    makers = sections["panels"].makers
-    if len(set(makers)) < len(makers):
-        raise StudyFileError(
-            code="maker-twice",
-            where=f"{path}, [panels], key 'makers'",
-            what=f"a maker is named twice (got {list(makers)})",
-            accepted="each maker once",
-            next_step="Remove the repeated one",
-        )
-
-
-def _check_cohort(sections: Mapping[str, Any], path: str) -> None:
-    """Refuse a design and folds that contradict the columns."""
-    cohort: CohortSection = sections["cohort"]
-    design: DesignSection = sections["design"]
-    check_design(
-        design.kind,
-        design.prevalence,
-        cohort.matched_set,
-        outcome_kind(cohort.kind, cohort.time, cohort.event, cohort.classes),
-        f"{path}, [design]",
-    )
-    drawn = {"folds", "repeats"} & sections["accuracy"].model_fields_set
-    if cohort.folds is not None and drawn:
-        raise StudyFileError(
-            code="folds-twice",
-            where=f"{path}, [accuracy], key '{min(drawn)}'",
-            what=f"folds are given by the column {cohort.folds!r} and drawn as well",
-            accepted="[cohort] folds, or folds and repeats under [accuracy]",
-            next_step="Remove one of them",
-        )
-
-
-def _check_even(number: int, where: str) -> None:
-    if number % 2:
-        raise StudyFileError(
-            code="subsamples-odd",
-            where=where,
-            what=f"subsamples come in pairs (got {number})",
-            accepted="an even number of at least 4",
-            next_step=f"Write {number + 1}",
-        )
 
 
 def _platforms(
@@ -576,6 +644,19 @@ def _platforms(
                 )
             platforms[key] = section
     return platforms
+
+
+def _kits(
+    path: Path, tables: Mapping[str, Any], panels: PanelsSection
+) -> tuple[KitSection, ...]:
+    """Return the kits of the study file and of the files that it names."""
+    own = tables.get("kit", [])
+    if not isinstance(own, list):
+        refuse_key("kit", ["[[kit]]"], str(path))
+    kits = list(kit_sections(own, f"{path}, [[kit]]"))
+    for name in panels.platforms:
+        kits += read_kits(path.parent / name)
+    return kit_sections(kits, f"{path} and its platform files")
 
 
 def _check_pricing(study: Study) -> None:

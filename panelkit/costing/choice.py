@@ -1,31 +1,63 @@
 """Which panel is taken: every rule side by side, the primary first."""
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.costing.frontier import Judge
-from panelkit.costing.honest_accuracy import HonestAccuracy
-from panelkit.costing.tuning import DECIMALS, within_one_se
+from panelkit.costing.primary import Primary
+from panelkit.costing.rules import Curve, Pick, Rule, fold_means, pick
 from panelkit.metrics import corrected_se, naive_se
-from panelkit.records import Choice, Frontier, FrontierRow, Headline, RuleChoice
+from panelkit.records import (
+    Choice,
+    Frontier,
+    FrontierRow,
+    Headline,
+    RuleChoice,
+    TunedChoice,
+)
 
-__all__ = ["choose"]
+__all__ = ["choose", "curve_of"]
 
-PRIMARY = "smallest-within-one-se"
-SMALLEST_ON_CURVE = "smallest-within-one-se-on-curve"
-CHEAPEST_ON_CURVE = "cheapest-within-one-se-on-curve"
+ON_CURVE = "-on-curve"
+DEMANDS = {
+    "smallest-within-one-se": "the smallest panel within one standard error of the "
+    "best",
+    "cheapest-within-one-se": "the cheapest panel within one standard error of the "
+    "best",
+    "smallest-within-margin": "the smallest panel shown to lose less than {margin:g} "
+    "to the best",
+    "cheapest-within-margin": "the cheapest panel shown to lose less than {margin:g} "
+    "to the best",
+    "best-under-budget": "the most accurate panel for at most {budget:,}",
+    "cheapest-above-accuracy": "the cheapest panel with an accuracy of at least "
+    "{required_accuracy:g}",
+}
+
+
+def curve_of(frontier: Frontier, per_fold: NDArray[np.float64], judge: Judge) -> Curve:
+    """Return the curve of the outer folds, by which secondary rules choose."""
+    costs = [
+        np.nan if row.cost_total is None else float(row.cost_total)
+        for row in frontier.rows
+    ]
+    return Curve(
+        per_fold,
+        np.array([row.size for row in frontier.rows], np.float64),
+        np.array(costs),
+        judge.test_to_train,
+    )
 
 
 def choose(
     frontier: Frontier,
     per_fold: NDArray[np.float64],
-    accuracy: HonestAccuracy,
     judge: Judge,
     *,
-    taken: int,
-    declared: bool,
+    primary: Primary,
+    secondary: Sequence[Rule],
 ) -> tuple[Choice, Frontier]:
     """Return the headline with every rule's choice, and the frontier marked by it.
 
@@ -38,15 +70,13 @@ def choose(
     frontier : Frontier
         All rows.
     per_fold : ndarray of shape (n_folds in all, n_rows)
-        Their areas within test folds.
-    accuracy : HonestAccuracy
-        For the nested figure of the primary rule.
+        Their metric within test folds.
     judge : Judge
         Outcome, subjects, folds.
-    taken : int
-        Row that the primary rule takes on all samples.
-    declared : bool
-        Whether the study file declares the primary rule.
+    primary : Primary
+        The rule of the headline and what it did.
+    secondary : sequence of Rule
+        Rules that read the curve.
 
     Returns
     -------
@@ -59,46 +89,50 @@ def choose(
     ----------
     Breiman, Friedman, Olshen & Stone 1984, section 3.4.3; Nadeau & Bengio 2003.
     """
-    near = within_one_se(per_fold, judge.test_to_train)
-    best = int(np.nanmean(per_fold, axis=0).round(DECIMALS).argmax())
-    rows = [row for row, within in zip(frontier.rows, near, strict=True) if within]
-    picks = {PRIMARY: frontier.rows[taken], SMALLEST_ON_CURVE: min(rows, key=_by_size)}
-    priced = [row for row in rows if row.cost_total is not None]
-    if priced:
-        picks[CHEAPEST_ON_CURVE] = min(priced, key=_by_cost)
+    curve = curve_of(frontier, per_fold, judge)
+    priced = not np.isnan(curve.cost).all()
+    picks = {primary.rule.name: (primary.rule, primary.taken)}
+    for rule in secondary:
+        if priced or not rule.needs_prices:
+            picks[rule.name + ON_CURVE] = (rule, pick(rule, curve))
+    best = int(fold_means(per_fold).argmax())
     rules = [
-        _rule(rule, row, frontier.rows[best], per_fold, frontier, judge)
-        for rule, row in picks.items()
+        _rule(name, rule, found, best, frontier, curve, judge)
+        for name, (rule, found) in picks.items()
     ]
     marked = tuple(
         replace(
             row,
-            chosen_by=";".join(rule for rule, pick in picks.items() if pick is row),
+            chosen_by=";".join(
+                name
+                for name, (_rule, found) in picks.items()
+                if found.met and found.row == position
+            ),
         )
-        for row in frontier.rows
+        for position, row in enumerate(frontier.rows)
     )
-    return Choice(_headline(accuracy, judge, declared), rules), Frontier(marked)
+    return Choice(_headline(primary, judge), rules), Frontier(marked)
 
 
-def _by_size(row: FrontierRow) -> tuple[float, float, float]:
-    cost = float("inf") if row.cost_total is None else float(row.cost_total)
-    return row.size, -round(row.metric, DECIMALS), cost
-
-
-def _by_cost(row: FrontierRow) -> tuple[float, float, float]:
-    return float(row.cost_total or 0), row.size, -round(row.metric, DECIMALS)
+def _demand(rule: Rule) -> str:
+    return DEMANDS[rule.name].format(
+        margin=rule.margin,
+        budget=rule.budget,
+        required_accuracy=rule.required_accuracy,
+    )
 
 
 def _rule(
-    rule: str,
-    row: FrontierRow,
-    best: FrontierRow,
-    per_fold: NDArray[np.float64],
+    name: str,
+    rule: Rule,
+    found: Pick,
+    best_row: int,
     frontier: Frontier,
+    curve: Curve,
     judge: Judge,
 ) -> RuleChoice:
-    position = {each.panel: k for k, each in enumerate(frontier.rows)}
-    difference = per_fold[:, position[best.panel]] - per_fold[:, position[row.panel]]
+    row, best = frontier.rows[found.row], frontier.rows[best_row]
+    difference = curve.metric[:, best_row] - curve.metric[:, found.row]
     gap = float(np.nanmean(difference))
     se = corrected_se(difference, judge.test_to_train)
     figures = {
@@ -110,28 +144,42 @@ def _rule(
         "size": float(row.size),
     }
     markers = "1 marker" if row.size == 1 else f"{row.size} markers"
-    figure = f"area under the ROC curve {row.metric:.3f}"
-    if rule == PRIMARY:
+    figure = f"{judge.task.metric_words} {row.metric:.3f}"
+    demand = _demand(rule)
+    nested = not name.endswith(ON_CURVE)
+    if not found.met:
         lead = (
-            "In inner folds of all samples the smallest panel within one standard "
-            f"error of the best has {markers} (maker {row.maker}). On the curve of the "
-            f"outer folds that maker at that size has an {figure}; expect the "
-            "headline, which counts the choosing."
+            f"No panel meets the demand: {demand}. The nearest miss has {markers} "
+            f"(maker {row.maker}, {figure}{_cost_words(row)})."
+        )
+    elif nested:
+        lead = (
+            f"In inner folds of all samples {demand} has {markers} (maker "
+            f"{row.maker}). On the curve of the outer folds that maker at that size "
+            f"has {_article(judge)} {figure}; expect the headline, which counts the "
+            "choosing."
         )
     else:
-        kind = "smallest" if rule == SMALLEST_ON_CURVE else "cheapest"
         lead = (
-            f"The {kind} panel within one standard error of the best of the curve has "
-            f"{markers} (maker {row.maker}, {figure}). It is picked from the curve, so "
-            "that figure is too good."
+            f"{demand[0].upper()}{demand[1:]}, on the curve, has {markers} (maker "
+            f"{row.maker}, {figure}). It is picked from the curve, so that figure is "
+            "too good."
         )
     return RuleChoice(
-        rule=rule,
-        primary=rule == PRIMARY,
-        panel=row.panel,
+        rule=name,
+        primary=nested,
+        panel=row.panel if found.met else "",
         figures=figures,
         sentence=f"{lead} {_against_best(row, best, frontier, gap, figures)}",
     )
+
+
+def _cost_words(row: FrontierRow) -> str:
+    return "" if row.cost_total is None else f", {row.cost_total:,} in all"
+
+
+def _article(judge: Judge) -> str:
+    return "an" if judge.task.metric_words[0] in "aeiou" else "a"
 
 
 def _against_best(
@@ -166,27 +214,37 @@ def _interval(low: float, high: float, confidence: float) -> str:
     return f"{100 * confidence:g} % interval {low:.3f} to {high:.3f}"
 
 
-def _headline(accuracy: HonestAccuracy, judge: Judge, declared: bool) -> Headline:
-    area = judge.area(accuracy.primary)
-    sizes = accuracy.chosen.size
-    spread = _interval(area.low, area.high, judge.confidence)
+def _headline(primary: Primary, judge: Judge) -> Headline:
+    found, chosen = judge.metric(primary.predictions), primary.chosen
+    spread = _interval(found.low, found.high, judge.confidence)
     sentence = (
         "Letting the rule choose maker and size anew inside every training set gives "
-        f"an area under the ROC curve of {area.mean:.3f} ({spread}) on people whom the "
-        "training had not "
-        f"seen. {_chosen_sizes(sizes)}"
+        f"{_article(judge)} {judge.task.metric_words} of {found.mean:.3f} ({spread}) "
+        "on people whom the training had not seen. "
+        f"{_chosen_sizes(chosen.size)}{_unmet(chosen)}"
     )
-    if not declared:
+    if not primary.declared:
         sentence = "Exploratory: the study file declares no primary rule. " + sentence
     return Headline(
         metric_of=(
-            f"the whole procedure with the rule {PRIMARY}, not of the printed panel"
+            f"the whole procedure with the rule {primary.rule.name}, not of the "
+            "printed panel"
         ),
-        metric=area.mean,
-        metric_low=area.low,
-        metric_high=area.high,
-        declared=declared,
+        metric=found.mean,
+        metric_low=found.low,
+        metric_high=found.high,
+        declared=primary.declared,
         sentence=sentence,
+    )
+
+
+def _unmet(chosen: TunedChoice) -> str:
+    missed = int((~chosen.met).sum())
+    if not missed:
+        return ""
+    return (
+        f" In {missed} of {chosen.met.size} training sets no panel met the rule's "
+        "demand and the nearest miss was taken."
     )
 
 

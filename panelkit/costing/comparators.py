@@ -1,18 +1,34 @@
-"""What else could be done with the same data, on the same folds."""
+"""What else could be done with the same data, on the same folds, in sentences."""
 
 import numpy as np
 from numpy.typing import NDArray
 
+from panelkit.costing.comparisons import FROM_ALL, FROM_CANDIDATES
+from panelkit.costing.comparisons.dense import (
+    LASSO,
+    LASSO_ONE_SE,
+    LASSO_SIZES,
+    RIDGE,
+)
+from panelkit.costing.comparisons.plain_columns import (
+    CONTROLS,
+    COVARIATES,
+    NUISANCE,
+    WITH_COVARIATES,
+)
 from panelkit.costing.frontier import Judge
 from panelkit.costing.honest_accuracy import HonestAccuracy
+from panelkit.costing.primary import Primary
 from panelkit.metrics import CrossValidated, paired_interval
 from panelkit.records import Comparator, OutOfFold
 
-__all__ = ["compare"]
+__all__ = ["compare", "no_better_than_random"]
+
+ENOUGH = 0.05  # p-value from which a panel is called no better than random ones
 
 
 def compare(
-    accuracy: HonestAccuracy, judge: Judge, n_features: int
+    accuracy: HonestAccuracy, judge: Judge, primary: Primary, n_features: int
 ) -> tuple[Comparator, ...]:
     """Return the comparators, each with a sentence against the primary rule.
 
@@ -22,67 +38,86 @@ def compare(
         Out-of-fold predictions.
     judge : Judge
         Outcome, subjects, folds.
+    primary : Primary
+        The primary rule.
     n_features : int
         Features that ridge reads.
 
     Returns
     -------
     tuple of Comparator
-        Ridge on all features, one marker, the majority class.
+        Dense models, one marker, random panels, covariates and nuisance columns where
+        there are any, no skill.
     """
-    primary = judge.area(accuracy.primary)
-    single = _best_single(accuracy)
-    found = [
-        ("ridge on all features", n_features, judge.area(accuracy.ridge)),
-    ]
-    if single is not None:
-        found.append(
-            ("single marker chosen by |t| in each fold", 1, judge.area(single))
-        )
+    nested = judge.metric(primary.predictions)
     rows = [
-        Comparator(
-            name,
-            size,
-            area.mean,
-            area.low,
-            area.high,
-            _sentence(name, area, primary, judge),
-        )
-        for name, size, area in found
+        _model(name, size, predictions, nested, judge)
+        for name, size, predictions in _models(accuracy, primary, n_features)
     ]
-    share = max(float(judge.y.mean()), 1.0 - float(judge.y.mean()))
-    rows.append(
-        Comparator(
-            "majority class",
-            0,
-            0.5,
-            float("nan"),
-            float("nan"),
-            "Calling everybody the commoner class separates nobody (area 0.5), though "
-            f"it is right for {share:.0%} of the samples.",
-        )
-    )
+    rows += _random(accuracy, judge, primary)
+    rows.append(_no_skill(judge))
     return tuple(rows)
 
 
-def _best_single(accuracy: HonestAccuracy) -> OutOfFold | None:
-    """Return the univariate maker at size one: chosen anew in every fold."""
+def _models(
+    accuracy: HonestAccuracy, primary: Primary, n_features: int
+) -> list[tuple[str, int, OutOfFold]]:
+    others = accuracy.others
+    found: list[tuple[str, int, OutOfFold]] = []
+
+    def add(key: str, name: str, size: int) -> None:
+        if key in others:
+            found.append((name, size, others[key]))
+
+    add(RIDGE, "ridge on all features", n_features)
+    if LASSO_SIZES in accuracy.figures:
+        sizes = np.median(accuracy.figures[LASSO_SIZES], axis=(0, 1)).astype(int)
+        add(LASSO, "lasso on all features, smallest loss", int(sizes[0]))
+        add(LASSO_ONE_SE, "lasso on all features, one SE", int(sizes[1]))
     for predictions in accuracy.panels:
         if (predictions.maker, predictions.size) == ("univariate", 1):
-            return predictions
-    return None
+            name = "one marker, the most different in each fold"
+            found.append((name, 1, predictions))
+    add(COVARIATES, "covariates alone", 0)
+    panel = accuracy.panels[primary.taken.row]
+    add(
+        f"{WITH_COVARIATES}{panel.maker}-{panel.size}",
+        f"covariates with {panel.maker}-{panel.size}",
+        panel.size,
+    )
+    add(NUISANCE, "nuisance columns alone", 0)
+    add(CONTROLS, "control features alone", 0)
+    return found
+
+
+def _model(
+    name: str,
+    size: int,
+    predictions: OutOfFold,
+    primary: CrossValidated,
+    judge: Judge,
+) -> Comparator:
+    found = judge.metric(predictions)
+    return Comparator(
+        name,
+        size,
+        found.mean,
+        found.low,
+        found.high,
+        _sentence(name, found, primary, judge),
+    )
 
 
 def _sentence(
     name: str,
-    area: CrossValidated,
+    found: CrossValidated,
     primary: CrossValidated,
     judge: Judge,
 ) -> str:
-    difference: NDArray[np.float64] = (area.per_fold - primary.per_fold).ravel()
+    difference: NDArray[np.float64] = (found.per_fold - primary.per_fold).ravel()
     gap, low, high = paired_interval(difference, judge.test_to_train, judge.confidence)
     name = f"{name[0].upper()}{name[1:]}"
-    figures = f"{area.mean:.3f} against {primary.mean:.3f}"
+    figures = f"{found.mean:.3f} against {primary.mean:.3f}"
     if np.isnan(low):
         return f"{name}: {figures}; too few folds for an interval of the difference."
     spread = (
@@ -91,12 +126,116 @@ def _sentence(
     )
     if low <= 0.0 <= high:
         return (
-            f"{name} is not told apart from the primary rule by these data ({figures}; "
+            f"{name}: not told apart from the primary rule by these data ({figures}; "
             f"{spread})."
         )
     if gap < 0.0:
-        return f"{name} is less accurate than the primary rule ({figures}; {spread})."
+        return f"{name}: less accurate than the primary rule ({figures}; {spread})."
     return (
-        f"{name} is more accurate than the primary rule ({figures}; {spread}): the "
+        f"{name}: more accurate than the primary rule ({figures}; {spread}), so the "
         "small panel gives something away."
+    )
+
+
+def random_figures(
+    figures: NDArray[np.float64], size: int, observed: float
+) -> tuple[float, float, float, float]:
+    """Return mean, 5th and 95th percentile of random panels, and a p-value.
+
+    Parameters
+    ----------
+    figures : ndarray of shape (n_repeats, n_folds, n_sizes, n_panels)
+        The metric of each random panel in each fold.
+    size : int
+        Position of the size.
+    observed : float
+        The metric to be judged.
+
+    Returns
+    -------
+    mean, low, high, p : float
+        p is (1 + random panels at least as accurate) / (panels + 1).
+
+    References
+    ----------
+    Phipson & Smyth 2010, Stat Appl Genet Mol Biol 9:39 (why p is never 0).
+    """
+    panels = np.nanmean(figures[:, :, size], axis=(0, 1))
+    low, high = np.quantile(panels, [0.05, 0.95])
+    p = (1 + int((panels >= observed).sum())) / (len(panels) + 1)
+    return float(panels.mean()), float(low), float(high), p
+
+
+def no_better_than_random(
+    accuracy: HonestAccuracy, judge: Judge, primary: Primary
+) -> bool:
+    """Return whether the headline is reached by more than 5 % of random panels."""
+    sizes = sorted({each.size for each in accuracy.panels})
+    observed = judge.metric(primary.predictions).mean
+    place = sizes.index(accuracy.panels[primary.taken.row].size)
+    return random_figures(accuracy.figures[FROM_ALL], place, observed)[3] > ENOUGH
+
+
+def _random(
+    accuracy: HonestAccuracy, judge: Judge, primary: Primary
+) -> list[Comparator]:
+    """Return random panels of each size against the chosen maker at that size."""
+    maker = accuracy.panels[primary.taken.row].maker
+    own = {each.size: each for each in accuracy.panels if each.maker == maker}
+    sizes = sorted(own)
+    rows = []
+    for key, source in ((FROM_ALL, "all features"), (FROM_CANDIDATES, "candidates")):
+        if key not in accuracy.figures:
+            continue
+        figures = accuracy.figures[key]
+        for place, size in enumerate(sizes):
+            observed = judge.metric(own[size]).mean
+            mean, low, high, p = random_figures(figures, place, observed)
+            rows.append(
+                Comparator(
+                    f"random panels of {size} from {source}",
+                    size,
+                    mean,
+                    low,
+                    high,
+                    _random_sentence(
+                        f"{figures.shape[-1]} panels of {_markers(size)} drawn by lot "
+                        f"from {source} reach {mean:.3f} on average, one in twenty "
+                        f"{high:.3f} or more, against {observed:.3f} of the maker "
+                        f"{maker} at that size (p = {p:.3g})",
+                        source,
+                        p,
+                    ),
+                )
+            )
+    return rows
+
+
+def _markers(size: int) -> str:
+    return "1 marker" if size == 1 else f"{size} markers"
+
+
+def _random_sentence(lead: str, source: str, p: float) -> str:
+    if source == "candidates":
+        if p > ENOUGH:
+            return f"{lead}: which of the candidates enter hardly matters."
+        return f"{lead}: choosing among the candidates helps."
+    if p > ENOUGH:
+        return f"{lead}: the maker is no better than random panels of this size."
+    return f"{lead}: choosing markers helps."
+
+
+def _no_skill(judge: Judge) -> Comparator:
+    task = judge.task
+    words = f"Without any feature the {task.metric_words} is {task.no_skill:g}."
+    strata = task.strata
+    if task.family in ("binomial", "multinomial"):
+        share = float(np.bincount(strata).max()) / len(strata)
+        words = (
+            "Calling everybody the commonest class separates nobody "
+            f"({task.metric_words} {task.no_skill:g}), though it is right for "
+            f"{share:.0%} of the samples."
+        )
+    return Comparator(
+        "no feature at all", 0, task.no_skill, float("nan"), float("nan"), words
     )

@@ -28,19 +28,20 @@ def given_folds(fold: NDArray[np.int64]) -> FoldPlan:
 
 
 def draw_folds(
-    subjects: NDArray[np.int64],
-    y: NDArray[np.float64],
+    units: NDArray[np.int64],
+    strata: NDArray[np.int64],
     n_folds: int,
     generators: list[np.random.Generator],
 ) -> FoldPlan:
-    """Draw repeated folds; a subject is never in training and test at once.
+    """Draw repeated folds; a unit is never in training and test at once.
 
     Parameters
     ----------
-    subjects : ndarray of shape (n_samples,), int64
-        Subject of each sample, or the matched set that holds its subject.
-    y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1; units that hold both classes are spread on their own.
+    units : ndarray of shape (n_samples,), int64
+        What stays together: the subject of each sample, or its matched set.
+    strata : ndarray of shape (n_samples,), int64
+        Labels kept in proportion, such as the outcome; a unit counts with the label of
+        its first sample.
     n_folds : int
         Folds a repeat.
     generators : list of numpy.random.Generator
@@ -49,14 +50,14 @@ def draw_folds(
     Returns
     -------
     FoldPlan
-        Units of one class, and units of both, differ by at most one between folds.
+        Units of each stratum differ by at most one between folds.
 
     Raises
     ------
     FitError
-        Fewer subjects than folds in a class.
+        Fewer units than folds in a stratum.
     """
-    classes, holding = unit_strata(subjects, y)
+    members, holding = unit_strata(units, strata)
     smallest = int(holding.min())
     if n_folds < 2 or smallest < n_folds:
         raise FitError(
@@ -66,13 +67,13 @@ def draw_folds(
             accepted="at least 2 folds, and a subject of each class in every fold",
             next_step="Use fewer folds, or add subjects of the smaller class",
         )
-    plan = np.empty((len(generators), len(y)), np.int64)
+    plan = np.empty((len(generators), len(strata)), np.int64)
     for repeat, generator in enumerate(generators):
-        fold_of = np.empty(int(subjects.max()) + 1, np.int64)
+        fold_of = np.empty(int(units.max()) + 1, np.int64)
         shift = 0
-        for members in classes:
-            mixed = generator.permutation(members)
+        for each in members:
+            mixed = generator.permutation(each)
             fold_of[mixed] = (np.arange(len(mixed)) + shift) % n_folds
-            shift += len(mixed)  # the classes' larger folds fall on different folds
-        plan[repeat] = fold_of[subjects]
+            shift += len(mixed)  # the strata's larger folds fall on different folds
+        plan[repeat] = fold_of[units]
     return FoldPlan(plan, n_folds)

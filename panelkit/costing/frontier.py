@@ -9,14 +9,9 @@ from numpy.typing import NDArray
 
 from panelkit.costing.honest_accuracy import HonestAccuracy
 from panelkit.costing.panel_prices import PanelPricer
-from panelkit.costing.tuning import DECIMALS
-from panelkit.metrics import (
-    CrossValidated,
-    calibration_slope,
-    corrected_se,
-    cross_validated_auc,
-    naive_se,
-)
+from panelkit.costing.rules import DECIMALS
+from panelkit.costing.tasks import Task
+from panelkit.metrics import CrossValidated, corrected_se, naive_se
 from panelkit.records import FoldPlan, Frontier, FrontierRow, OutOfFold
 
 __all__ = ["Judge", "build_frontier", "panel_name"]
@@ -33,8 +28,8 @@ class Judge:
 
     Attributes
     ----------
-    y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1.
+    task : Task
+        Outcome and metric.
     subjects : ndarray of shape (n_samples,), int64
         Subject codes.
     weights : ndarray of shape (n_samples,)
@@ -45,7 +40,7 @@ class Judge:
         Of intervals.
     """
 
-    y: NDArray[np.float64]
+    task: Task
     subjects: NDArray[np.int64]
     weights: NDArray[np.float64]
     folds: FoldPlan
@@ -56,12 +51,11 @@ class Judge:
         """Ratio of test to training samples."""
         return 1.0 / (self.folds.n_folds - 1)
 
-    def area(self, predictions: OutOfFold) -> CrossValidated:
-        """Return the area under the ROC curve within test folds."""
-        return cross_validated_auc(
-            predictions.log_odds,
-            self.y,
-            self.folds.test_fold,
+    def metric(self, predictions: OutOfFold) -> CrossValidated:
+        """Return the task's metric within test folds with its interval."""
+        return self.task.cross_validated(
+            predictions.predicted,
+            self.folds,
             self.subjects,
             self.weights,
             self.confidence,
@@ -69,9 +63,7 @@ class Judge:
 
     def slope(self, predictions: OutOfFold) -> float:
         """Return the out-of-fold calibration slope, mean over repeats; NaN if none."""
-        slopes = [
-            calibration_slope(row, self.y, self.weights) for row in predictions.log_odds
-        ]
+        slopes = [self.task.slope(row, self.weights) for row in predictions.predicted]
         return float(np.mean(slopes))
 
 
@@ -82,7 +74,7 @@ def build_frontier(
     features: NDArray[np.object_],
     pricer: PanelPricer | None,
 ) -> tuple[Frontier, NDArray[np.float64]]:
-    """Return the frontier and the area of each row in each fold.
+    """Return the frontier and the metric of each row in each fold.
 
     Parameters
     ----------
@@ -102,15 +94,15 @@ def build_frontier(
     frontier : Frontier
         A row a maker and size.
     per_fold : ndarray of shape (n_folds in all, n_rows)
-        Areas within test folds.
+        The metric within test folds.
     """
     rows, folds = [], []
     for predictions, panel in zip(accuracy.panels, panels, strict=True):
-        area = judge.area(predictions)
+        found = judge.metric(predictions)
         markers = tuple(str(features[j]) for j in panel)
         costs = pricer.costs(markers) if pricer is not None else ()
         cheapest = costs[0] if costs else None
-        folds.append(area.per_fold.ravel())
+        folds.append(found.per_fold.ravel())
         rows.append(
             FrontierRow(
                 panel=panel_name(predictions.maker, predictions.size),
@@ -118,11 +110,11 @@ def build_frontier(
                 size=predictions.size,
                 markers=markers,
                 metric_of="procedure",
-                metric=area.mean,
-                metric_low=area.low,
-                metric_high=area.high,
-                metric_se_naive=naive_se(area.per_fold),
-                metric_se_corrected=corrected_se(area.per_fold, judge.test_to_train),
+                metric=found.mean,
+                metric_low=found.low,
+                metric_high=found.high,
+                metric_se_naive=naive_se(found.per_fold),
+                metric_se_corrected=corrected_se(found.per_fold, judge.test_to_train),
                 slope=judge.slope(predictions),
                 cost_total=cheapest.total if cheapest else None,
                 cost_per_result=cheapest.cost_per_result if cheapest else None,

@@ -7,8 +7,9 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from panelkit.config import PlatformSection
+from panelkit.costing.packing import fewest_pools
 from panelkit.errors import NoPanelError, StudyFileError, UsageError
-from panelkit.records import AssayPrice
+from panelkit.records import NO_CONFLICTS, AssayPrice, Conflicts
 
 __all__ = ["Layout", "Pool", "PoolPlan", "ceil_ratio", "find_layouts", "plan_pools"]
 
@@ -94,12 +95,14 @@ def plan_pools(
     platform: PlatformSection,
     markers: Sequence[AssayPrice],
     references: Sequence[AssayPrice],
+    conflicts: Conflicts = NO_CONFLICTS,
 ) -> PoolPlan:
-    """Return the pools that hold the assays of a panel (F4).
+    """Return the fewest pools that hold the assays of a panel (F4).
 
     Assays are taken in file order, markers before references; each goes to the
     open pool of its class, and a full pool is followed by a new one. With one slot
-    size within a class no other filling needs fewer pools.
+    size within a class no other filling needs fewer pools; mixed sizes, channels and
+    conflicts are packed by an integer programme.
 
     Parameters
     ----------
@@ -107,6 +110,8 @@ def plan_pools(
         Gives plex and the scope of references.
     markers, references : sequence of AssayPrice
         In file order.
+    conflicts : Conflicts
+        Pairs that cannot share a pool.
 
     Returns
     -------
@@ -118,7 +123,9 @@ def plan_pools(
     StudyFileError
         If the references leave no room in a pool.
     UsageError
-        If slot sizes differ within a class, or an assay exceeds the room.
+        If an assay exceeds the room, or its channel is taken in every pool.
+    NoPanelError
+        If the fewest pools are not proved in time.
     """
     everywhere = tuple(references) if platform.refs_scope == "pool" else ()
     taken = sum(assay.slots for assay in everywhere)
@@ -133,37 +140,57 @@ def plan_pools(
             next_step="Raise plex, or take references once for the panel",
         )
     placed = list(markers) + ([] if everywhere else list(references))
-    _check_slots(placed, room)
-    pools: list[list[AssayPrice]] = []
-    open_pools: dict[str, list[AssayPrice]] = {}
-    for assay in placed:
-        pool = open_pools.get(assay.pool_class)
-        if pool is None or (len(pool) + 1) * assay.slots > room:
-            pool = open_pools[assay.pool_class] = []
-            pools.append(pool)
-        pool.append(assay)
+    _check_slots(placed, everywhere, room)
+    kept_apart = conflicts.among((assay.marker for assay in placed), "pool")
+    packed = None if kept_apart else _in_order(placed, room)
+    if packed is None:
+        packed = _packed(placed, room, conflicts)
     return PoolPlan(
         tuple(
             Pool(tuple(pool), taken + sum(assay.slots for assay in pool))
-            for pool in pools
+            for pool in packed
         ),
         everywhere,
     )
 
 
-def _check_slots(assays: Iterable[AssayPrice], room: int) -> None:
-    first: dict[str, AssayPrice] = {}
+def _in_order(assays: Sequence[AssayPrice], room: int) -> list[list[AssayPrice]] | None:
+    """Return pools filled in file order, or None where that may not be best.
+
+    With one slot size in a class, no channels and no conflicts it is.
+    """
+    pools: list[list[AssayPrice]] = []
+    open_pools: dict[str, list[AssayPrice]] = {}
     for assay in assays:
-        other = first.setdefault(assay.pool_class, assay)
-        if other.slots != assay.slots:
-            raise UsageError(
-                code="slot-sizes-mixed",
-                where=f"assays of class '{assay.pool_class}', column 'slots'",
-                what=f"slot sizes differ within a class (got {other.marker} with "
-                f"{other.slots}, {assay.marker} with {assay.slots})",
-                accepted="one slot size for all assays of a class",
-                next_step="Give assays of another size a class of their own",
-            )
+        pool = open_pools.get(assay.pool_class)
+        if assay.channel or (pool and pool[0].slots != assay.slots):
+            return None
+        if pool is None or (len(pool) + 1) * assay.slots > room:
+            pool = open_pools[assay.pool_class] = []
+            pools.append(pool)
+        pool.append(assay)
+    return pools
+
+
+def _packed(
+    assays: Sequence[AssayPrice], room: int, conflicts: Conflicts
+) -> list[list[AssayPrice]]:
+    """Return the fewest pools of each class, by the first assay of each pool."""
+    place = {assay.marker: i for i, assay in enumerate(assays)}
+    classes: dict[str, list[AssayPrice]] = {}
+    for assay in assays:
+        classes.setdefault(assay.pool_class, []).append(assay)
+    pools = [
+        pool for own in classes.values() for pool in fewest_pools(own, room, conflicts)
+    ]
+    return sorted(pools, key=lambda pool: place[pool[0].marker])
+
+
+def _check_slots(
+    assays: Iterable[AssayPrice], everywhere: Iterable[AssayPrice], room: int
+) -> None:
+    channels = {assay.channel: assay.marker for assay in everywhere if assay.channel}
+    for assay in assays:
         if assay.slots > room:
             raise UsageError(
                 code="assay-exceeds-pool",
@@ -171,6 +198,15 @@ def _check_slots(assays: Iterable[AssayPrice], room: int) -> None:
                 what=f"the assay does not fit in a pool (got {assay.slots} slots)",
                 accepted=f"at most the {room} slots that a pool offers",
                 next_step="Raise plex or leave the assay out",
+            )
+        if assay.channel in channels:
+            raise UsageError(
+                code="channel-taken",
+                where=f"assay '{assay.marker}', column 'channel'",
+                what=f"the reference {channels[assay.channel]} is in every pool on "
+                f"the same channel (got {assay.channel!r})",
+                accepted="another channel than that of references in every pool",
+                next_step="Move the assay or the reference to another channel",
             )
 
 

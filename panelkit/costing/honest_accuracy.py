@@ -1,14 +1,17 @@
 """Honest accuracy: the whole procedure learnt again in every fold."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from panelkit.costing.comparisons import Comparison, FoldWork
+from panelkit.costing.data import ProcedureData, Split
 from panelkit.costing.folds import draw_folds
-from panelkit.costing.procedure import Procedure, ProcedureData, Split
-from panelkit.records import FoldPanels, FoldPlan, OutOfFold, TunedChoice
+from panelkit.costing.procedure import Procedure
+from panelkit.records import FoldPanels, FoldPlan, OutOfFold, SubsamplePlan
 from panelkit.runtime import (
     BlockResult,
     BlockStore,
@@ -21,15 +24,40 @@ from panelkit.runtime import (
 from panelkit.stability import draw_pairs
 
 __all__ = [
+    "DrawRules",
     "Draws",
+    "Everyone",
     "HonestAccuracy",
-    "choose_for_everyone",
     "draw_everything",
+    "draw_split",
     "estimate_accuracy",
+    "tune_on_everyone",
 ]
 
-PRIMARY = "primary-rule"
-RIDGE = "ridge-on-all"
+PREDICTED = "predicted "  # names of blocks' arrays that hold predictions of others
+FIGURE = "figure "
+
+
+@dataclass(frozen=True, slots=True)
+class DrawRules:
+    """How folds and subsamples are drawn.
+
+    Attributes
+    ----------
+    seed : int
+        Root of the seed tree.
+    n_folds, n_repeats, n_inner : int
+        Outer folds, their repeats, inner folds.
+    subsamples, inner_subsamples : int
+        Halves of the stability selection, outside and inside inner folds.
+    """
+
+    seed: int
+    n_folds: int
+    n_repeats: int
+    n_inner: int
+    subsamples: int
+    inner_subsamples: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,36 +72,55 @@ class Draws:
         Each outer fold with its pairs and inner folds.
     everyone : Split
         All rows teach, none is tested: for the printed panels.
+    rules : DrawRules
+        How they were drawn.
     """
 
     folds: FoldPlan
     splits: Mapping[tuple[int, int], Split]
     everyone: Split
+    rules: DrawRules
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class HonestAccuracy:
-    """Out-of-fold predictions and what each fold chose.
+    """Out-of-fold predictions, and what each fold's training rows said of the curve.
 
     Attributes
     ----------
     panels : tuple of OutOfFold
         One a maker and size, makers first.
-    primary : OutOfFold
-        Maker and size chosen by the primary rule inside each training set.
-    ridge : OutOfFold
-        Ridge on all features.
     members : tuple of FoldPanels
         The panels, in the order of `panels`.
-    chosen : TunedChoice
-        What the primary rule chose in each fold.
+    inner_metric : ndarray of shape (n_repeats, n_folds, n_inner, n_panels)
+        The metric in the inner folds of each training set.
+    others : mapping of str to OutOfFold
+        Predictions of what is compared.
+    figures : mapping of str to ndarray of shape (n_repeats, n_folds, ...)
+        Further figures of each fold.
     """
 
     panels: tuple[OutOfFold, ...]
-    primary: OutOfFold
-    ridge: OutOfFold
     members: tuple[FoldPanels, ...]
-    chosen: TunedChoice
+    inner_metric: NDArray[np.float64]
+    others: Mapping[str, OutOfFold]
+    figures: Mapping[str, NDArray[np.float64]]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Everyone:
+    """What the inner folds of all samples say.
+
+    Attributes
+    ----------
+    metric : ndarray of shape (n_inner, n_panels)
+        The metric in each inner fold.
+    penalties : ndarray of shape (n_panels,)
+        Ridge penalty of each panel learnt on all samples.
+    """
+
+    metric: NDArray[np.float64]
+    penalties: NDArray[np.float64]
 
 
 def draw_everything(
@@ -92,12 +139,8 @@ def draw_everything(
     ----------
     data : ProcedureData
         Outcome and subjects are used, no value of the matrix.
-    seed : int
-        Root of the tree.
-    n_folds, n_repeats, n_inner : int
-        Outer folds and their repeats, unless the data bring folds; inner folds.
-    subsamples, inner_subsamples : int
-        Halves of the stability selection, outside and inside inner folds.
+    seed, n_folds, n_repeats, n_inner, subsamples, inner_subsamples : int
+        As in `DrawRules`.
 
     Returns
     -------
@@ -109,55 +152,81 @@ def draw_everything(
     FitError
         Too few subjects in a class.
     """
-    y, units = data.y, data.units
-
-    def split(
-        training: NDArray[np.int64], test: NDArray[np.int64], *place: str | int
-    ) -> Split:
-        inner = _inner_splits(
-            data, training, seed, place, n_inner, inner_subsamples // 2
-        )
-        pairs = draw_pairs(
-            training,
-            units,
-            y,
-            subsamples // 2,
-            generator(seed, "subsamples", *place),
-        )
-        return Split(training, test, pairs, inner)
-
+    rules = DrawRules(seed, n_folds, n_repeats, n_inner, subsamples, inner_subsamples)
     folds = data.folds
     if folds is None:
         draws = [generator(seed, "folds", repeat) for repeat in range(n_repeats)]
-        folds = draw_folds(units, y, n_folds, draws)
-    everyone = split(np.arange(len(y)), np.empty(0, np.int64), "everyone")
-    splits = {
-        (repeat, fold): split(*folds.split(repeat, fold), "fold", repeat, fold)
-        for repeat in range(folds.n_repeats)
-        for fold in range(folds.n_folds)
-    }
-    return Draws(folds, splits, everyone)
+        folds = draw_folds(data.units, data.task.strata, n_folds, draws)
+    nobody = np.empty(0, np.int64)
+    return Draws(
+        folds,
+        {
+            (repeat, fold): draw_split(
+                data, *folds.split(repeat, fold), ("fold", repeat, fold), rules
+            )
+            for repeat in range(folds.n_repeats)
+            for fold in range(folds.n_folds)
+        },
+        draw_split(data, np.arange(data.n_samples), nobody, ("everyone",), rules),
+        rules,
+    )
 
 
-def _inner_splits(
+def draw_split(
     data: ProcedureData,
     training: NDArray[np.int64],
-    seed: int,
+    test: NDArray[np.int64],
     place: tuple[str | int, ...],
-    n_inner: int,
-    n_pairs: int,
-) -> tuple[Split, ...]:
+    rules: DrawRules,
+) -> Split:
+    """Draw the pairs and inner folds of some training rows.
+
+    Parameters
+    ----------
+    data : ProcedureData
+        Outcome and subjects are used.
+    training, test : ndarray of int64
+        Rows.
+    place : tuple of str or int
+        Where in the seed tree.
+    rules : DrawRules
+        How many of each.
+
+    Returns
+    -------
+    Split
+        With everything that is random in it.
+
+    Raises
+    ------
+    FitError
+        Too few subjects in a class.
+    """
     own = np.unique(data.units[training], return_inverse=True)[1]
     plan = draw_folds(
-        own, data.y[training], n_inner, [generator(seed, "inner-folds", *place)]
+        own,
+        data.task.strata[training],
+        rules.n_inner,
+        [generator(rules.seed, "inner-folds", *place)],
     )
-    splits = []
-    for fold in range(n_inner):
-        teach, test = (training[rows] for rows in plan.split(0, fold))
-        draws = generator(seed, "inner-subsamples", *place, fold)
-        pairs = draw_pairs(teach, data.units, data.y, n_pairs, draws)
-        splits.append(Split(teach, test, pairs))
-    return tuple(splits)
+
+    def pairs(rows: NDArray[np.int64], halves: int, *where: str | int) -> SubsamplePlan:
+        return draw_pairs(
+            rows,
+            data.units,
+            data.task.strata,
+            halves // 2,
+            generator(rules.seed, *where),
+            site=data.pair_site,
+        )
+
+    inner = []
+    for fold in range(rules.n_inner):
+        teach, judged = (training[rows] for rows in plan.split(0, fold))
+        halves = pairs(teach, rules.inner_subsamples, "inner-subsamples", *place, fold)
+        inner.append(Split(teach, judged, halves))
+    own_pairs = pairs(training, rules.subsamples, "subsamples", *place)
+    return Split(training, test, own_pairs, tuple(inner))
 
 
 def estimate_accuracy(
@@ -167,6 +236,7 @@ def estimate_accuracy(
     inputs: str,
     store: BlockStore,
     *,
+    comparisons: Sequence[Comparison] = (),
     threads: int = 1,
     listener: Listener = silent,
 ) -> HonestAccuracy:
@@ -184,6 +254,8 @@ def estimate_accuracy(
         Hash of everything that determines the results.
     store : BlockStore
         Where finished folds are kept.
+    comparisons : sequence of Comparison
+        What else is learnt on the same folds.
     threads : int
         Folds at work at the same time.
     listener : callable
@@ -206,13 +278,20 @@ def estimate_accuracy(
         members = np.full((len(learnt.selected.panels), width), -1, np.int64)
         for row, panel in zip(members, learnt.selected.panels, strict=True):
             row[: len(panel)] = panel
-        return {
-            "log_odds": learnt.log_odds,
+        found: dict[str, NDArray[Any]] = {
+            "predicted": learnt.predicted,
             "members": members,
             "penalties": learnt.penalties,
-            "chosen": np.array(learnt.chosen, np.int64),
-            "ridge": procedure.ridge_on_all(data, split, learnt.selected.view),
+            "inner metric": learnt.tuning.metric.reshape(len(split.inner), -1),
         }
+        work = FoldWork(procedure, data, split, learnt)
+        for comparison in comparisons:
+            learnt_too = comparison(work)
+            for name, predicted in learnt_too.predicted.items():
+                found[PREDICTED + name] = predicted
+            for name, figure in learnt_too.figures.items():
+                found[FIGURE + name] = figure
+        return found
 
     names = {
         f"{repeat}-{fold}": split for (repeat, fold), split in draws.splits.items()
@@ -225,10 +304,10 @@ def estimate_accuracy(
         threads=threads,
         listener=listener,
     )
-    return _assemble(procedure, draws.folds, blocks)
+    return _assemble(procedure, data, draws.folds, blocks)
 
 
-def choose_for_everyone(
+def tune_on_everyone(
     procedure: Procedure,
     data: ProcedureData,
     draws: Draws,
@@ -237,11 +316,11 @@ def choose_for_everyone(
     *,
     threads: int = 1,
     listener: Listener = silent,
-) -> int:
-    """Return which panel the primary rule takes when all samples teach.
+) -> Everyone:
+    """Return what the inner folds of all samples say of each maker and size.
 
-    The inner folds of all samples choose maker and size, as those of every training set
-    do for the headline.
+    They choose and tune the printed panels as those of every training set do for the
+    headline.
 
     Parameters
     ----------
@@ -250,63 +329,82 @@ def choose_for_everyone(
 
     Returns
     -------
-    int
-        Position among the panels, makers first.
+    Everyone
+        Metric and penalties.
 
     Raises
     ------
     FitError
         A fit that is not possible or did not converge.
     """
+    n_inner = len(draws.everyone.inner)
 
     def task(split: Split) -> BlockResult:
         tuning = procedure.tune(data, split, threads)
-        chosen = procedure.choose(tuning, len(split.inner))
-        return {"chosen": np.array(chosen, np.int64)}
+        return {
+            "metric": tuning.metric.reshape(n_inner, -1),
+            "penalties": procedure.penalties(tuning, n_inner),
+        }
 
-    blocks = map_blocks(
+    block = map_blocks(
         task,
         {"everyone": draws.everyone},
         StageKey("choice", inputs),
         store,
         listener=listener,
-    )
-    maker, size = blocks["everyone"]["chosen"]
-    return int(maker * len(procedure.sizes) + size)
+    )["everyone"]
+    return Everyone(block["metric"], block["penalties"])
 
 
 def _assemble(
-    procedure: Procedure, folds: FoldPlan, blocks: Mapping[str, BlockResult]
+    procedure: Procedure,
+    data: ProcedureData,
+    folds: FoldPlan,
+    blocks: Mapping[str, BlockResult],
 ) -> HonestAccuracy:
-    n_samples = folds.test_fold.shape[1]
-    kinds = [(maker, size) for maker in procedure.makers for size in procedure.sizes]
-    n_sizes = len(procedure.sizes)
+    kinds = procedure.kinds
     grid = (folds.n_repeats, folds.n_folds)
-    log_odds = np.empty((len(kinds), folds.n_repeats, n_samples))
-    primary, ridge = (np.empty((folds.n_repeats, n_samples)) for _ in range(2))
+    lead = data.task.predictors
+    shape = (folds.n_repeats, *lead, data.n_samples)
+    first = blocks["0-0"]
+    predicted = np.full((len(kinds), *shape), np.nan)
+    others = {
+        name.removeprefix(PREDICTED): np.full(shape, np.nan)
+        for name in first
+        if name.startswith(PREDICTED)
+    }
     members = np.empty((len(kinds), *grid, max(procedure.sizes)), np.int64)
     penalties = np.empty((len(kinds), *grid))
-    chosen = np.empty((2, *grid), np.int64)
-    for repeat in range(folds.n_repeats):
-        for fold in range(folds.n_folds):
-            block = blocks[f"{repeat}-{fold}"]
-            test = folds.split(repeat, fold)[1]
-            log_odds[:, repeat, test] = block["log_odds"]
-            ridge[repeat, test] = block["ridge"]
-            maker, size = block["chosen"]
-            primary[repeat, test] = block["log_odds"][maker * n_sizes + size]
-            members[:, repeat, fold] = block["members"]
-            penalties[:, repeat, fold] = block["penalties"]
-            chosen[:, repeat, fold] = maker, procedure.sizes[size]
+    for repeat, fold in np.ndindex(*grid):
+        block = blocks[f"{repeat}-{fold}"]
+        test = folds.split(repeat, fold)[1]
+        predicted[:, repeat, ..., test] = np.moveaxis(block["predicted"], -1, 0)
+        for name, array in others.items():
+            array[repeat, ..., test] = np.moveaxis(block[PREDICTED + name], -1, 0)
+        members[:, repeat, fold] = block["members"]
+        penalties[:, repeat, fold] = block["penalties"]
+
+    def gathered(name: str) -> NDArray[np.float64]:
+        rows = [
+            [blocks[f"{repeat}-{fold}"][name] for fold in range(folds.n_folds)]
+            for repeat in range(folds.n_repeats)
+        ]
+        return np.array(rows)
+
     return HonestAccuracy(
         panels=tuple(
-            OutOfFold(maker, size, log_odds[p]) for p, (maker, size) in enumerate(kinds)
+            OutOfFold(maker, size, predicted[p])
+            for p, (maker, size) in enumerate(kinds)
         ),
-        primary=OutOfFold(PRIMARY, 0, primary),
-        ridge=OutOfFold(RIDGE, 0, ridge),
         members=tuple(
             FoldPanels(maker, size, members[p, ..., :size], penalties[p])
             for p, (maker, size) in enumerate(kinds)
         ),
-        chosen=TunedChoice(chosen[0], chosen[1]),
+        inner_metric=gathered("inner metric"),
+        others={name: OutOfFold(name, 0, array) for name, array in others.items()},
+        figures={
+            name.removeprefix(FIGURE): gathered(name)
+            for name in first
+            if name.startswith(FIGURE)
+        },
     )

@@ -1,11 +1,12 @@
 """What a panel costs on each platform."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import replace
 
-from panelkit.config import PlatformSection, ProgrammeSection
+from panelkit.config import KitSection, PlatformSection, ProgrammeSection
 from panelkit.costing.pricing import programme_cost
-from panelkit.errors import NoPanelError
-from panelkit.records import PanelCost, PriceList
+from panelkit.errors import NoPanelError, UsageError, name_some
+from panelkit.records import NO_CONFLICTS, Conflicts, PanelCost, PriceList
 
 __all__ = ["PanelPricer"]
 
@@ -21,6 +22,10 @@ class PanelPricer:
         Where panels may be run.
     prices : PriceList
         Quotes of all platforms.
+    kits : iterable of KitSection
+        Kits that may be bought beside the assays of any platform.
+    conflicts : Conflicts
+        Markers that must be kept apart.
     """
 
     def __init__(
@@ -28,11 +33,15 @@ class PanelPricer:
         programme: ProgrammeSection,
         platforms: Mapping[str, PlatformSection],
         prices: PriceList,
+        kits: Iterable[KitSection] = (),
+        conflicts: Conflicts = NO_CONFLICTS,
     ) -> None:
-        self._programme = programme
-        self._platforms = platforms
-        self._prices = prices
-        self._known: dict[frozenset[str], tuple[PanelCost, ...]] = {}
+        self.programme = programme
+        self.platforms = dict(platforms)
+        self.prices = prices
+        self.kits = tuple(kits)
+        self.conflicts = conflicts
+        self._known: dict[tuple[str, frozenset[str]], PanelCost | NoPanelError] = {}
 
     def costs(self, markers: Sequence[str]) -> tuple[PanelCost, ...]:
         """Return the panel's cost on each platform where it can be run, cheapest first.
@@ -52,22 +61,107 @@ class PanelPricer:
         InputDataError
             A price that is needed is missing.
         """
-        key = frozenset(markers)
-        if key not in self._known:
-            found = [self._cost(markers, name) for name in self._platforms]
-            able = [cost for cost in found if cost is not None]
-            self._known[key] = tuple(
-                sorted(able, key=lambda cost: (cost.total, cost.platform))
+        found = [self.attempt(markers, name) for name in self.platforms]
+        able = [cost for cost in found if isinstance(cost, PanelCost)]
+        return tuple(sorted(able, key=lambda cost: (cost.total, cost.platform)))
+
+    def attempt(
+        self, markers: Sequence[str], platform: str
+    ) -> PanelCost | NoPanelError:
+        """Return the panel's cost on one platform, or why it cannot be run there.
+
+        Parameters
+        ----------
+        markers : sequence of str
+            Features of the panel.
+        platform : str
+            Name of the platform.
+
+        Returns
+        -------
+        PanelCost or NoPanelError
+            The refusal is returned, not raised.
+
+        Raises
+        ------
+        UsageError
+            There is no platform of that name.
+        InputDataError
+            A price that is needed is missing.
+        """
+        if platform not in self.platforms:
+            raise UsageError(
+                code="platform-unknown",
+                where=f"platform '{platform}'",
+                what=f"no such platform is described (got {platform!r})",
+                accepted=f"described are {name_some(self.platforms)}",
+                next_step="Name one of these, or describe it",
             )
+        key = platform, frozenset(markers)
+        if key not in self._known:
+            self._known[key] = self._price(markers, platform)
         return self._known[key]
 
-    def _cost(self, markers: Sequence[str], platform: str) -> PanelCost | None:
+    def changed(self, platform: str = "", **keys: object) -> "PanelPricer":
+        """Return the same prices for another programme or another platform.
+
+        Parameters
+        ----------
+        platform : str
+            Platform whose keys change; empty for the programme.
+        **keys : object
+            Keys of ``[programme]`` or ``[platform.NAME]`` and their new values,
+            checked already.
+
+        Returns
+        -------
+        PanelPricer
+            This one stays as it is.
+        """
+        programme, platforms = self.programme, dict(self.platforms)
+        if platform:
+            platforms[platform] = platforms[platform].model_copy(update=keys)
+        else:
+            programme = programme.model_copy(update=keys)
+        return PanelPricer(programme, platforms, self.prices, self.kits, self.conflicts)
+
+    def repriced(self, prices: PriceList) -> "PanelPricer":
+        """Return the same programme and platforms with another price list."""
+        return PanelPricer(
+            self.programme, self.platforms, prices, self.kits, self.conflicts
+        )
+
+    def lowest(self, markers: Iterable[str]) -> float:
+        """Return the cost on the cheapest platform; NaN where none can run the panel.
+
+        Raises
+        ------
+        InputDataError
+            A price that is needed is missing.
+        """
+        costs = self.costs([str(marker) for marker in markers])
+        return float(costs[0].total) if costs else float("nan")
+
+    def _price(self, markers: Sequence[str], platform: str) -> PanelCost | NoPanelError:
         try:
-            return programme_cost(
-                self._programme,
-                self._platforms[platform],
-                self._prices.for_panel(list(markers), platform),
-                quotes=self._prices.quotes(platform),
+            cost = programme_cost(
+                self.programme,
+                self.platforms[platform],
+                self.prices.for_panel(list(markers), platform),
+                quotes=self.prices.quotes(platform),
+                kits=[self._for_features(kit, markers) for kit in self.kits],
+                conflicts=self.conflicts,
             )
-        except NoPanelError:
-            return None
+        except NoPanelError as refusal:
+            return refusal
+        return replace(cost, platform=platform)
+
+    def _for_features(self, kit: KitSection, markers: Sequence[str]) -> KitSection:
+        """Return a kit of analytes as a kit of the panel's features."""
+        of_analyte: dict[str, list[str]] = {}
+        for marker in markers:
+            analyte = self.prices.analytes.get(marker, marker)
+            if marker not in kit.markers:
+                of_analyte.setdefault(analyte, []).append(marker)
+        names = [name for own in kit.markers for name in of_analyte.get(own, [own])]
+        return kit.model_copy(update={"markers": tuple(names)}) if of_analyte else kit

@@ -1,67 +1,60 @@
-"""What one panel costs on one platform over a programme.
+"""What one panel costs on one platform over a programme, kits included.
 
-Formula numbers F1 to F13 are those of the panelkit cost model. Every sum is an
-exact fraction; each line is rounded once, and the total adds the rounded lines.
+Formula numbers F1 to F14 are those of the panelkit cost model. Every sum is an exact
+fraction; each line is rounded once, and the total adds the rounded lines.
 """
 
-import math
-import statistics
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from decimal import Decimal
 from fractions import Fraction
-from typing import Literal
+from itertools import combinations
 
 from panelkit.config import (
     USUAL_REFERENCES,
+    KitSection,
     PlatformSection,
     ProgrammeSection,
+    kit_sections,
     platform_section,
     programme_section,
 )
-from panelkit.costing.geometry import (
-    Layout,
-    Pool,
-    PoolPlan,
-    ceil_ratio,
-    find_layouts,
-    plan_pools,
+from panelkit.costing.direct_cost import (
+    LINE_NAMES,
+    DirectCost,
+    Panel,
+    Priced,
+    samples_run_and_results,
 )
+from panelkit.costing.geometry import Layout
+from panelkit.costing.kits import KitChoice, KitOffer, choose_kits, offer_of
 from panelkit.costing.money import from_minor_units, minor_units, round_money
-from panelkit.errors import (
-    InputDataError,
-    NoPanelError,
-    StudyFileError,
-    UsageError,
-    name_some,
+from panelkit.costing.panel_rows import (
+    Assay,
+    as_assays,
+    as_panel,
+    can_be_direct,
+    check_conflicts,
+    check_makeable,
+    missing_quotes,
 )
+from panelkit.costing.purchase import Bound, Offers, purchase_cost
+from panelkit.errors import InputDataError, NoPanelError, name_some
 from panelkit.records import (
-    ANY_MARKER,
+    NO_CONFLICTS,
     AssayPrice,
+    Conflicts,
     CostLine,
     Finding,
     Findings,
+    KitPurchase,
     PanelCost,
 )
 
 __all__ = ["programme_cost", "purchase_cost", "samples_run_and_results"]
 
-MIN_QUOTES = 3  # fewer say nothing about what a missing quote may be
-LINE_NAMES = (
-    "collection",
-    "setup",
-    "development",
-    "runs",
-    "samples",
-    "positions",
-    "assays",
-    "lots",
-)
 ONE_OFF_LINES = ("setup", "development")
-
-Assay = AssayPrice | Mapping[str, object]
-Bound = Literal["low", "middle", "high"]
-Buy = Callable[[int], Fraction]
+KIT_LINE = "kits"
 
 
 def programme_cost(
@@ -70,8 +63,10 @@ def programme_cost(
     assays: Iterable[Assay],
     *,
     quotes: Iterable[Assay] | None = None,
+    kits: Iterable[KitSection | Mapping[str, object]] = (),
+    conflicts: Conflicts = NO_CONFLICTS,
 ) -> PanelCost:
-    """Return what a panel costs on a platform, line by line (F1 to F13).
+    """Return what a panel costs on a platform, line by line (F1 to F14).
 
     Parameters
     ----------
@@ -85,6 +80,10 @@ def programme_cost(
     quotes : iterable of AssayPrice or mapping of str to object, optional
         All rows of the platform, from which missing prices are bounded or imputed
         (see `PriceList.quotes`); the panel's own assays when left out.
+    kits : iterable of KitSection or mapping of str to object
+        Kits that may be bought instead of assays; the cheapest choice is taken.
+    conflicts : Conflicts
+        Markers that must be kept apart.
 
     Returns
     -------
@@ -94,392 +93,211 @@ def programme_cost(
     Raises
     ------
     StudyFileError
-        If the programme or the platform cannot be used.
+        If the programme, the platform or a kit cannot be used.
     UsageError
         If the assays are no panel of one platform.
     InputDataError
         If a row cannot be used, or missing prices are refused or cannot be bounded.
     NoPanelError
-        If the panel cannot be made, does not fit, or may not enter for want of a
-        price.
+        If the panel cannot be made, does not fit, is of markers that exclude each
+        other, or may not enter for want of a price.
     """
-    plan_programme = programme_section(programme)
-    plan_platform = platform_section(platform)
-    panel = _as_panel(assays)
-    missing = _missing(plan_programme, panel)
-    known = panel.assays if quotes is None else _as_assays(quotes, "quotes")
-    offers = _Offers(known, missing)
-    job = _Job(plan_programme, plan_platform, panel, offers)
-    bounded = bool(missing) and plan_programme.missing_price == "bound"
-    low, layout = job.cheapest("low" if bounded else "middle")
-    high = job.cheapest("high")[0] if bounded else low
-    return job.record(layout, low, high, tuple(a.marker for a in missing))
-
-
-def samples_run_and_results(
-    samples: int, failure: Fraction, repeat_mode: Literal["none", "once", "until"]
-) -> tuple[int, Fraction]:
-    """Return the samples to run and the results to expect of them (F2).
-
-    Parameters
-    ----------
-    samples : int
-        Results wanted.
-    failure : Fraction
-        Chance that a panel run fails, 0 to below 1.
-    repeat_mode : {"none", "once", "until"}
-        Whether failed samples are run again, once, or until they succeed.
-
-    Returns
-    -------
-    tuple of (int, Fraction)
-        Samples run, a whole number; results expected, exactly.
-    """
-    if repeat_mode == "none":
-        return samples, samples * (1 - failure)
-    if repeat_mode == "once":
-        return math.ceil(samples * (1 + failure)), samples * (1 - failure**2)
-    return math.ceil(samples / (1 - failure)), Fraction(samples)
-
-
-def purchase_cost(assay: AssayPrice, reactions: int) -> Fraction | None:
-    """Return the price of a number of reactions bought at once (F12).
-
-    All-units tiers carry the right to buy up: to order the quantity from which a
-    lower price holds and leave the rest unused, so that more never costs less.
-
-    Parameters
-    ----------
-    assay : AssayPrice
-        Its pack, tiers or price of one reaction.
-    reactions : int
-        How many are needed.
-
-    Returns
-    -------
-    Fraction or None
-        The exact price; None where the assay has no reagent quote.
-    """
-    price = _reagent(assay)
-    if price is None:
-        return None
-    return price(reactions) if callable(price) else reactions * price
-
-
-def _reagent(assay: AssayPrice) -> Fraction | Buy | None:
-    """Return the price of one reaction, or the price as a function of quantity."""
-    if assay.tiers:
-        steps = [(quantity, Fraction(price)) for quantity, price in assay.tiers]
-        if assay.incremental:
-            return lambda reactions: _by_bracket(steps, reactions)
-        return lambda reactions: min(
-            max(reactions, quantity) * price for quantity, price in steps
-        )
-    if assay.pack is not None and assay.pack_price is not None:
-        size, pack_price = assay.pack, Fraction(assay.pack_price)
-        return lambda reactions: ceil_ratio(reactions, size) * pack_price
-    return None if assay.test is None else Fraction(assay.test)
-
-
-def _by_bracket(steps: Sequence[tuple[int, Fraction]], reactions: int) -> Fraction:
-    ends = [quantity - 1 for quantity, _ in steps[1:]] + [reactions]
-    total = Fraction(0)
-    for (start, price), end in zip(steps, ends, strict=True):
-        total += max(0, min(reactions, end) - start + 1) * price
-    return total
+    panel = as_panel(assays)
+    job = _PanelJob(
+        programme=programme_section(programme),
+        platform=platform_section(platform),
+        panel=panel,
+        quotes=panel.assays if quotes is None else tuple(as_assays(quotes, "quotes")),
+        kits=kit_sections(kits),
+        conflicts=conflicts,
+    )
+    check_conflicts(panel, conflicts)
+    return job.cost()
 
 
 @dataclass(frozen=True, slots=True)
-class _Panel:
-    platform: str
-    markers: tuple[AssayPrice, ...]
-    references: tuple[AssayPrice, ...]
+class _Bought:
+    """A panel at one bound of missing prices."""
+
+    direct: frozenset[str]
+    priced: Priced
+    kits: tuple[KitOffer, ...]
+    kit_units: int
+    proved: bool
+    bound: int
 
     @property
-    def assays(self) -> tuple[AssayPrice, ...]:
-        return self.markers + self.references
+    def total(self) -> int:
+        return self.priced.total + self.kit_units
 
 
-def _as_assays(rows: Iterable[Assay], argument: str) -> list[AssayPrice]:
-    if isinstance(rows, Mapping | str):
-        raise UsageError(
-            code="rows-expected",
-            where=argument,
-            what=f"one row alone is no list of rows (got {type(rows).__name__})",
-            accepted="a list of rows of the price list",
-            next_step="Put the rows in a list",
-        )
-    assays = []
-    for number, row in enumerate(rows, start=1):
-        if not isinstance(row, AssayPrice | Mapping):
-            raise UsageError(
-                code="row-expected",
-                where=f"{argument}, row {number}",
-                what=f"the row has no columns (got {type(row).__name__})",
-                accepted="a mapping from column to cell, or an AssayPrice",
-                next_step="Pass rows of the price list",
-            )
-        if isinstance(row, Mapping):
-            row = AssayPrice.from_row(row, where=f"{argument}, row {number}")
-        assays.append(row)
-    return assays
-
-
-def _as_panel(rows: Iterable[Assay]) -> _Panel:
-    assays = _as_assays(rows, "assays")
-    _check_names(assays)
-    impossible = [assay.marker for assay in assays if assay.status == "no"]
-    if impossible:
-        raise NoPanelError(
-            code="marker-cannot-be-assayed",
-            where="assays, column 'status'",
-            what=f"these cannot be assayed here (got {name_some(impossible)})",
-            accepted="assays with status ok or unknown",
-            next_step="Leave them out, name stand-ins, or take another platform",
-        )
-    platforms = sorted({assay.platform for assay in assays})
-    if len(platforms) > 1:
-        raise UsageError(
-            code="platforms-mixed",
-            where="assays, column 'platform'",
-            what=f"the rows are of several platforms (got {name_some(platforms)})",
-            accepted="rows of one platform",
-            next_step="Price each platform on its own",
-        )
-    markers = tuple(assay for assay in assays if assay.role == "marker")
-    if not markers:
-        raise UsageError(
-            code="panel-empty",
-            where="assays",
-            what=f"the panel has no marker (got {len(assays)} references)",
-            accepted="at least one row with role 'marker'",
-            next_step="Add the markers of the panel",
-        )
-    references = tuple(assay for assay in assays if assay.role == "reference")
-    return _Panel(platforms[0], markers, references)
-
-
-def _check_names(assays: Sequence[AssayPrice]) -> None:
-    names = [assay.marker for assay in assays]
-    if ANY_MARKER in names:
-        raise UsageError(
-            code="marker-unnamed",
-            where="assays, column 'marker'",
-            what=f"'{ANY_MARKER}' prices other markers and is none itself "
-            f"(got {ANY_MARKER!r})",
-            accepted="rows of named markers",
-            next_step="Name the markers; PriceList.for_panel looks up their prices",
-        )
-    repeated = sorted({name for name in names if names.count(name) > 1})
-    if repeated:
-        raise UsageError(
-            code="marker-repeated",
-            where="assays, column 'marker'",
-            what=f"assays are listed twice (got {name_some(repeated)})",
-            accepted="one row for each marker and reference",
-            next_step="Remove the repeated rows",
-        )
-
-
-def _missing(programme: ProgrammeSection, panel: _Panel) -> list[AssayPrice]:
-    missing = [assay for assay in panel.assays if assay.is_missing_quote]
-    named = name_some(assay.marker for assay in missing)
-    if missing and programme.missing_price == "refuse":
-        raise InputDataError(
-            code="price-missing",
-            where="assays, columns 'dev' and 'test'",
-            what=f"{len(missing)} assays have no complete quote (got {named})",
-            accepted="a one-off cost, and a test price, pack or tiers, for each",
-            next_step='Ask for quotes, or set missing_price = "bound"',
-        )
-    if missing and programme.missing_price == "exclude":
-        raise NoPanelError(
-            code="marker-without-price",
-            where="assays, columns 'dev' and 'test'",
-            what=f"assays without a complete quote may not enter a panel (got {named})",
-            accepted="panels of priced assays, since missing_price is 'exclude'",
-            next_step='Leave them out, or set missing_price = "bound"',
-        )
-    return missing
-
-
-class _Offers:
-    """Prices of the panel's assays; missing ones from the platform's quotes."""
-
-    def __init__(
-        self, quotes: Sequence[AssayPrice], missing: Sequence[AssayPrice]
-    ) -> None:
-        usable = [quote for quote in quotes if quote.status != "no" and missing]
-        self.devs = [Fraction(q.dev) for q in usable if q.dev is not None]
-        priced = [_reagent(quote) for quote in usable if quote.has_reagent_quote]
-        self.flat = [price for price in priced if isinstance(price, Fraction)]
-        self.stepped = [price for price in priced if callable(price)]
-        if any(assay.dev is None for assay in missing):
-            _check_number(len(self.devs), "dev", missing)
-        if not all(assay.has_reagent_quote for assay in missing):
-            _check_number(len(priced), "test", missing)
-
-    def dev(self, assay: AssayPrice, bound: Bound) -> Fraction:
-        return _of_bound(self.devs, bound) if assay.dev is None else Fraction(assay.dev)
-
-    def reagent(self, assay: AssayPrice, bound: Bound) -> Fraction | Buy:
-        own = _reagent(assay)
-        if own is not None:
-            return own
-        flat, stepped = self.flat, self.stepped
-        if not stepped:
-            return _of_bound(flat, bound)
-        if flat and bound != "middle":
-            flat = [_of_bound(flat, bound)]
-        # Packs and tiers have no price of one reaction, so quotes are compared at
-        # the quantity that is bought.
-        return lambda reactions: _of_bound(
-            [reactions * price for price in flat] + [buy(reactions) for buy in stepped],
-            bound,
-        )
-
-
-def _check_number(n_quotes: int, column: str, missing: Sequence[AssayPrice]) -> None:
-    if n_quotes < MIN_QUOTES:
-        raise InputDataError(
-            code="quotes-too-few",
-            where=f"quotes, column '{column}'",
-            what=f"too few quotes to bound {name_some(a.marker for a in missing)} "
-            f"(got {n_quotes})",
-            accepted=f"at least {MIN_QUOTES} quotes on the platform",
-            next_step="Ask for quotes of these assays or of others like them",
-        )
-
-
-def _of_bound(values: Sequence[Fraction], bound: Bound) -> Fraction:
-    if bound == "low":
-        return min(values)
-    return max(values) if bound == "high" else statistics.median(values)
-
-
-class _Job:
-    """One panel on one platform, ready to be priced."""
+class _PanelJob:
+    """One panel on one platform, by single assays and kits."""
 
     def __init__(
         self,
         programme: ProgrammeSection,
         platform: PlatformSection,
-        panel: _Panel,
-        offers: _Offers,
+        panel: Panel,
+        quotes: Sequence[AssayPrice],
+        kits: Sequence[KitSection],
+        conflicts: Conflicts,
     ) -> None:
         self.programme = programme
         self.platform = platform
         self.panel = panel
-        self.offers = offers
-        success = 1 - Fraction(platform.effective_repeat_rate(programme))
-        for assay in panel.assays:
+        self.quotes = quotes
+        self.conflicts = conflicts
+        self.markers = tuple(assay.marker for assay in panel.markers)
+        self.everything = frozenset(self.markers)
+        self.kits = [kit for kit in kits if self.everything & set(kit.markers)]
+        self._jobs: dict[frozenset[str], DirectCost] = {}
+
+    def cost(self) -> PanelCost:
+        """Return the priced panel as a record."""
+        if not self.kits:
+            return self._without_kits()
+        low = self._with_kits("low" if self._may_be_bounded() else "middle")
+        if low is None:
+            return self._without_kits()  # it says why the panel cannot be had
+        bounded = any(
+            assay.is_missing_quote for assay in self._panel_of(low.direct).assays
+        )
+        high = self._with_kits("high") if bounded and self._may_be_bounded() else low
+        return self._record(low, high or low)
+
+    def _may_be_bounded(self) -> bool:
+        return self.programme.missing_price == "bound"
+
+    def _without_kits(self) -> PanelCost:
+        check_makeable(self.panel)
+        missing = missing_quotes(self.programme, self.panel)
+        bounded = bool(missing) and self._may_be_bounded()
+        low = self._direct_only("low" if bounded else "middle")
+        return self._record(low, self._direct_only("high") if bounded else low)
+
+    def _direct_only(self, bound: Bound) -> _Bought:
+        priced = self._job(self.everything).cheapest(bound)
+        if not self._allowed((), self.everything):
+            raise NoPanelError(
+                code="sample-volume-exceeded",
+                where="programme, key 'sample_volume'",
+                what=f"{len(self._job(self.everything).plan.pools)} pools need more "
+                f"of a sample than there is (got {self.programme.sample_volume})",
+                accepted="panels whose pools stay within the volume of a sample",
+                next_step="Take fewer markers or pools, or collect more",
+            )
+        total = priced.total
+        return _Bought(self.everything, priced, (), 0, True, total)
+
+    def _with_kits(self, bound: Bound) -> _Bought | None:
+        # Whether references are run moves the share that fails, so kits are priced
+        # for a panel that runs them; without them it is a few samples fewer.
+        samples_run = self._samples(bool(self.panel.references))[0]
+        offers = [offer_of(kit, self.programme, samples_run) for kit in self.kits]
+        priced: dict[frozenset[str], Priced] = {}
+
+        def direct_total(markers: frozenset[str]) -> int | None:
+            if markers not in priced:
+                found = self._priced(markers, bound)
+                if found is None:
+                    return None
+                priced[markers] = found
+            return priced[markers].total
+
+        choice = choose_kits(
+            self.markers, offers, direct_total, self._units, self._allowed
+        )
+        if choice is None:
+            return None
+        return self._bought(choice, priced[choice.direct])
+
+    def _bought(self, choice: KitChoice, priced: Priced) -> _Bought:
+        cost = sum((offer.cost for offer in choice.kits), Fraction(0))
+        return _Bought(
+            direct=choice.direct,
+            priced=priced,
+            kits=choice.kits,
+            kit_units=self._units(cost),
+            proved=choice.proved,
+            bound=choice.bound,
+        )
+
+    def _priced(self, markers: frozenset[str], bound: Bound) -> Priced | None:
+        """Return the lines of single assays, or None where they cannot be run."""
+        if not markers:
+            return self._nothing_direct()
+        panel = self._panel_of(markers)
+        if not all(can_be_direct(self.programme, assay) for assay in panel.assays):
+            return None
+        try:
+            return self._job(markers).cheapest(bound)
+        except (NoPanelError, InputDataError):  # no room, or too few quotes
+            return None
+
+    def _nothing_direct(self) -> Priced:
+        collection = self.programme.samples * Fraction(self.programme.collection_cost)
+        lines = dict.fromkeys(LINE_NAMES, 0)
+        lines["collection"] = self._units(collection)
+        return Priced(lines, Layout((), (), (), self.platform.positions, 0, 0))
+
+    def _panel_of(self, markers: frozenset[str]) -> Panel:
+        own = tuple(a for a in self.panel.markers if a.marker in markers)
+        references = self.panel.references if own else ()
+        return Panel(self.panel.platform, own, references)
+
+    def _job(self, markers: frozenset[str]) -> DirectCost:
+        if markers not in self._jobs:
+            panel = self._panel_of(markers)
+            missing = [assay for assay in panel.assays if assay.is_missing_quote]
+            self._jobs[markers] = DirectCost(
+                self.programme,
+                self.platform,
+                panel,
+                Offers(self.quotes, missing),
+                self._samples(bool(panel.references)),
+                self.conflicts,
+            )
+        return self._jobs[markers]
+
+    def _samples(self, with_references: bool) -> tuple[int, Fraction]:
+        """Return samples run and results expected: all markers can fail (F1, F2)."""
+        success = 1 - Fraction(self.platform.effective_repeat_rate(self.programme))
+        references = self.panel.references if with_references else ()
+        for assay in (*self.panel.markers, *references):
             success *= 1 - Fraction(assay.fail_rate)
-        self.samples_run, self.results = samples_run_and_results(
+        programme = self.programme
+        return samples_run_and_results(
             programme.samples, 1 - success, programme.repeat_mode
         )
-        self.plan = plan_pools(platform, panel.markers, panel.references)
-        self.layouts = find_layouts(
-            platform, self.plan, self.samples_run, programme.deliveries
-        )
-        self.overage = 1 + Fraction(platform.overage)
-        positions = platform.replicates * len(self.plan.pools)
-        feeds = platform.prep_positions
-        self.preparations = ceil_ratio(positions, feeds) if feeds else 0
-        months = platform.lot_months
-        self.lots = ceil_ratio(programme.horizon_months, months) if months else 1
 
-    def cheapest(self, bound: Bound) -> tuple[dict[str, int], Layout]:
-        """Return the lines in minor units, and the layout, of the lowest total.
+    def _allowed(self, kits: tuple[KitOffer, ...], direct: frozenset[str]) -> bool:
+        for one, other in combinations((offer.section for offer in kits), 2):
+            if one.id in other.excludes or other.id in one.excludes:
+                return False
+        limit = Fraction(self.programme.sample_volume)
+        if not limit:
+            return True
+        volume = sum((Fraction(offer.section.volume) for offer in kits), Fraction(0))
+        if direct:
+            pools = len(self._job(direct).plan.pools)
+            volume += pools * Fraction(self.platform.pool_volume)
+        return volume <= limit
 
-        Of equal totals the first wins, which has the fewest groups (F6).
-        """
-        fixed = self._fixed_lines(bound)
-        reagents = _Reagents(self.plan, self.offers, bound)
-        priced = []
-        for layout in self.layouts:
-            exact = {**fixed, **self._layout_lines(layout, reagents)}
-            lines = {
-                name: minor_units(exact[name], self.programme.currency)
-                for name in LINE_NAMES
-            }
-            priced.append((lines, layout))
-        return min(priced, key=lambda pair: sum(pair[0].values()))
+    def _units(self, amount: Fraction) -> int:
+        return minor_units(amount, self.programme.currency)
 
-    def _fixed_lines(self, bound: Bound) -> dict[str, Fraction]:
-        """Return the lines that do not depend on the spread over runs (F13)."""
-        platform = self.platform
-        sample = Fraction(platform.sample_cost)
-        sample += self.preparations * Fraction(platform.prep_cost)
-        pool_setup = len(self.plan.pools) * Fraction(platform.pool_setup)
-        collection = Fraction(self.programme.collection_cost)
-        devs = [self.offers.dev(assay, bound) for assay in self.panel.assays]
-        return {
-            "collection": self.programme.samples * collection,
-            "setup": Fraction(platform.setup) + pool_setup,
-            "development": sum(devs, Fraction(0)),
-            "samples": self.samples_run * sample,
-            "lots": (self.lots - 1) * Fraction(platform.lot_cost),
-        }
-
-    def _layout_lines(
-        self, layout: Layout, reagents: "_Reagents"
-    ) -> dict[str, Fraction]:
-        """Return the lines that depend on the spread over runs (F10 to F13)."""
-        platform = self.platform
-        filled = platform.replicates * self.samples_run
-        controls = platform.controls_per_pool
-        bought = Fraction(0)
-        for group, runs in zip(layout.groups, layout.runs, strict=True):
-            each = self._reactions_per_lot(filled + controls * runs)
-            bought += sum((reagents.of_pool(pool, each) for pool in group), Fraction(0))
-        if self.plan.everywhere:
-            n_pools = len(self.plan.pools)
-            pool_runs = sum(
-                size * runs
-                for size, runs in zip(layout.sizes, layout.runs, strict=True)
-            )
-            each = self._reactions_per_lot(filled * n_pools + controls * pool_runs)
-            bought += reagents.of_everywhere(each)
-        return {
-            "runs": sum(layout.runs) * Fraction(platform.run_cost),
-            "positions": self.overage * self._positions(layout),
-            "assays": self.lots * bought,
-        }
-
-    def _reactions_per_lot(self, positions: int) -> int:
-        return ceil_ratio(math.ceil(self.overage * positions), self.lots)
-
-    def _positions(self, layout: Layout) -> Fraction:
-        """Return the cost of the filled positions, before overage.
-
-        With tiers each position is paid by the slots of its own pool; controls that
-        belong to the run as a whole are paid like the run's fullest pool.
-        """
-        platform = self.platform
-        tiers = platform.position_cost
-        if isinstance(tiers, Decimal):
-            return layout.filled * Fraction(tiers)
-        total = Fraction(0)
-        for group, runs in zip(layout.groups, layout.runs, strict=True):
-            each = platform.replicates * self.samples_run
-            each += platform.controls_per_pool * runs
-            prices = [_tier_price(tiers, pool) for pool in group]
-            fullest = max(group, key=lambda pool: pool.slots)
-            total += each * sum(prices, Fraction(0))
-            total += platform.controls_per_run * runs * _tier_price(tiers, fullest)
-        return total
-
-    def record(
-        self,
-        layout: Layout,
-        low: dict[str, int],
-        high: dict[str, int],
-        missing: tuple[str, ...],
-    ) -> PanelCost:
-        """Return the priced panel as a record."""
+    def _record(self, low: _Bought, high: _Bought) -> PanelCost:
         currency = self.programme.currency
-        total, total_high = sum(low.values()), sum(high.values())
-        one_off = sum(low[name] for name in ONE_OFF_LINES)
+        job = self._job(low.direct) if low.direct else None
+        layout = low.priced.layout
+        with_references = bool(self.panel.references) and (
+            bool(low.direct) or bool(low.kits)
+        )
+        samples_run, results = self._samples(with_references)
+        total, total_high = low.total, high.total
+        one_off = sum(low.priced.lines[name] for name in ONE_OFF_LINES)
+        one_off += self._units(sum((kit.once for kit in low.kits), Fraction(0)))
 
         def money(units: int) -> Decimal:
             return from_minor_units(units, currency)
@@ -487,77 +305,69 @@ class _Job:
         def share(units: int, parts: Fraction) -> Decimal:
             return round_money(Fraction(money(units)) / parts, currency)
 
+        lines = [
+            CostLine(
+                name, money(low.priced.lines[name]), money(high.priced.lines[name])
+            )
+            for name in LINE_NAMES
+        ]
+        if low.kits or high.kits:
+            lines.append(
+                CostLine(KIT_LINE, money(low.kit_units), money(high.kit_units))
+            )
+        direct = self._panel_of(low.direct)
         return PanelCost(
             currency=currency,
             platform=self.panel.platform,
-            lines=tuple(
-                CostLine(name, money(low[name]), money(high[name]))
-                for name in LINE_NAMES
-            ),
+            lines=tuple(lines),
             total=money(total),
             total_high=money(total_high),
-            cost_per_result=share(total, self.results),
-            cost_per_result_high=share(total_high, self.results),
+            cost_per_result=share(total, results),
+            cost_per_result_high=share(total_high, results),
             one_off=money(one_off),
             recurring=money(total - one_off),
             per_year=share(
                 total - one_off, Fraction(self.programme.horizon_months, 12)
             ),
-            samples_run=self.samples_run,
-            results=self.results,
-            pools=len(self.plan.pools),
+            samples_run=samples_run,
+            results=results,
+            pools=len(job.plan.pools) if job else 0,
             groups=layout.sizes,
             samples_per_run=layout.samples_per_run,
             runs=sum(layout.runs),
             positions_per_run=layout.positions_per_run,
             filled_positions=layout.filled,
             control_positions=layout.controls,
-            preparations=self.preparations,
-            missing_quotes=missing,
-            findings=_findings(self.platform, self.panel),
+            preparations=job.preparations if job else 0,
+            missing_quotes=tuple(
+                assay.marker for assay in direct.assays if assay.is_missing_quote
+            ),
+            assays=tuple(assay.marker for assay in direct.assays),
+            reactions=job.reactions(layout) if job else (),
+            pool_of=job.pool_of() if job else (),
+            fullest_pool=max(pool.slots for pool in job.plan.pools) if job else 0,
+            lots=job.lots if job else 1,
+            kits=tuple(self._purchase(offer) for offer in low.kits),
+            proved=low.proved and high.proved,
+            bound=None if low.proved else money(low.bound),
+            findings=_findings(self.platform, direct),
+        )
+
+    def _purchase(self, offer: KitOffer) -> KitPurchase:
+        currency = self.programme.currency
+        return KitPurchase(
+            kit=offer.section.id,
+            units=offer.units,
+            once=round_money(offer.once, currency),
+            cost=round_money(offer.cost, currency),
+            covers=tuple(m for m in self.markers if m in offer.section.markers),
+            unwanted=tuple(
+                m for m in offer.section.markers if m not in self.everything
+            ),
         )
 
 
-class _Reagents:
-    """Reagent prices by pool: prices of one reaction are summed once."""
-
-    def __init__(self, plan: PoolPlan, offers: _Offers, bound: Bound) -> None:
-        self.offers = offers
-        self.bound: Bound = bound
-        self.pools = {id(pool): self._split(pool.assays) for pool in plan.pools}
-        self.everywhere = self._split(plan.everywhere)
-
-    def of_pool(self, pool: Pool, reactions: int) -> Fraction:
-        return _bought(*self.pools[id(pool)], reactions)
-
-    def of_everywhere(self, reactions: int) -> Fraction:
-        return _bought(*self.everywhere, reactions)
-
-    def _split(self, assays: Sequence[AssayPrice]) -> tuple[Fraction, list[Buy]]:
-        prices = [self.offers.reagent(assay, self.bound) for assay in assays]
-        flat = sum((p for p in prices if isinstance(p, Fraction)), Fraction(0))
-        return flat, [price for price in prices if callable(price)]
-
-
-def _bought(flat: Fraction, others: Sequence[Buy], reactions: int) -> Fraction:
-    return sum((buy(reactions) for buy in others), reactions * flat)
-
-
-def _tier_price(tiers: Sequence[tuple[int, Decimal]], pool: Pool) -> Fraction:
-    for slots, price in tiers:
-        if pool.slots <= slots:
-            return Fraction(price)
-    raise StudyFileError(
-        code="position-tiers-too-short",
-        where="platform, key 'position_cost'",
-        what=f"no tier holds the fullest pool (got {pool.slots} slots, "
-        f"tiers up to {tiers[-1][0]})",
-        accepted="tiers that reach the slots of every pool, references included",
-        next_step="Add a tier or lower plex",
-    )
-
-
-def _findings(platform: PlatformSection, panel: _Panel) -> Findings:
+def _findings(platform: PlatformSection, panel: Panel) -> Findings:
     found = []
     unknown = [assay.marker for assay in panel.assays if assay.status == "unknown"]
     if unknown:
@@ -572,7 +382,7 @@ def _findings(platform: PlatformSection, panel: _Panel) -> Findings:
             )
         )
     usual = USUAL_REFERENCES[platform.family] if platform.family else 0
-    if len(panel.references) < usual:
+    if panel.markers and len(panel.references) < usual:
         found.append(
             Finding(
                 code="references-few",

@@ -7,91 +7,25 @@ its training rows; the printed panels come from running it with all rows.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import ENGINE
-from panelkit.costing.makers import evidence_of, maker_named
-from panelkit.costing.tuning import (
-    Tuning,
-    choose_within_one_se,
-    judge,
-    tune_ridge,
-)
+from panelkit.costing.data import ProcedureData, Split
+from panelkit.costing.makers import Evidence, maker_named
+from panelkit.costing.refits import MarkerValues, TrainingObjective, columns_of, refit
+from panelkit.costing.tuning import Tuning, judge, tune_ridge
 from panelkit.errors import FitError
-from panelkit.fits import (
-    fit_panels,
-    kernel_matrix,
-    ridge_predictions,
-    standardised,
-)
+from panelkit.fits import fit_paths, kernel_matrix, ridge_predictions
 from panelkit.preparation import DesignView, Recipe
-from panelkit.records import FoldPlan, Stability, SubsamplePlan
+from panelkit.records import Stability
 from panelkit.stability import ShortlistRules, select_markers
 
-__all__ = ["Learnt", "Procedure", "ProcedureData", "Selected", "Split"]
+__all__ = ["Learnt", "Procedure", "Selected"]
 
 RIDGE_PAIRS = 4  # pairs that tune ridge on all features
 RIDGE_PENALTIES = np.logspace(0.5, -3.5, 9)
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class ProcedureData:
-    """The data that a procedure works on, shared by all folds.
-
-    Attributes
-    ----------
-    base : ndarray of shape (n_features, n_samples)
-        After the per-sample steps.
-    y, weights : ndarray of shape (n_samples,)
-        Outcome and observation weights.
-    subjects : ndarray of shape (n_samples,), int64
-        Subject codes.
-    barred : ndarray of shape (n_features,), object
-        Reason why a feature may not be used, or ``""``.
-    always : ndarray of int64
-        Features that are candidates whatever happens.
-    blocks : ndarray of shape (n_samples,), int64, or None
-        What stays together in folds and halves; None for the subjects.
-    folds : FoldPlan or None
-        The user's own outer folds; None has them drawn.
-    """
-
-    base: NDArray[np.floating[Any]]
-    y: NDArray[np.float64]
-    weights: NDArray[np.float64]
-    subjects: NDArray[np.int64]
-    barred: NDArray[np.object_]
-    always: NDArray[np.int64]
-    blocks: NDArray[np.int64] | None = None
-    folds: FoldPlan | None = None
-
-    @property
-    def units(self) -> NDArray[np.int64]:
-        """What is drawn as a whole: `blocks`, or the subjects."""
-        return self.subjects if self.blocks is None else self.blocks
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Split:
-    """Rows that teach and rows that are tested, with all that was drawn for them.
-
-    Attributes
-    ----------
-    training, test : ndarray of int64
-        Rows; `test` may be empty.
-    pairs : SubsamplePlan
-        Complementary pairs of the training rows.
-    inner : tuple of Split
-        Inner folds of the training rows.
-    """
-
-    training: NDArray[np.int64]
-    test: NDArray[np.int64]
-    pairs: SubsamplePlan
-    inner: "tuple[Split, ...]" = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -104,12 +38,15 @@ class Selected:
         Preparation learnt on the training rows.
     stability : Stability
         Frequencies, shortlist, candidates.
+    evidence : Evidence
+        What the makers were given.
     panels : list of ndarray of int64
         One a maker and size, makers first.
     """
 
     view: DesignView
     stability: Stability
+    evidence: Evidence
     panels: list[NDArray[np.int64]]
 
 
@@ -123,19 +60,16 @@ class Learnt:
         Preparation, stability, panels.
     tuning : Tuning
         Judgement of the inner folds.
-    chosen : tuple of int
-        Maker and size position that the primary rule takes.
     penalties : ndarray of shape (n_panels,)
         Ridge penalty of each panel.
-    log_odds : ndarray of shape (n_panels, n_test)
-        Predictions for the test rows.
+    predicted : ndarray of shape (n_panels[, n_classes], n_test)
+        Linear predictors of the test rows.
     """
 
     selected: Selected
     tuning: Tuning
-    chosen: tuple[int, int]
     penalties: NDArray[np.float64]
-    log_odds: NDArray[np.float64]
+    predicted: NDArray[np.float64]
 
 
 @dataclass(frozen=True, slots=True)
@@ -145,7 +79,7 @@ class Procedure:
     Attributes
     ----------
     recipe : Recipe
-        Preparation.
+        Preparation of everything that selects.
     rules : ShortlistRules
         Stability selection and candidates.
     makers : sequence of str
@@ -154,6 +88,9 @@ class Procedure:
         Panel sizes, ascending.
     ridge_penalties : sequence of float
         Ridge penalties of the refits, largest first.
+    assay : Recipe or None
+        Preparation of a panel's markers for its refit and its scores; None takes the
+        values that selected them.
     """
 
     recipe: Recipe
@@ -161,6 +98,12 @@ class Procedure:
     makers: Sequence[str]
     sizes: Sequence[int]
     ridge_penalties: Sequence[float] = ENGINE.ridge_penalties
+    assay: Recipe | None = None
+
+    @property
+    def kinds(self) -> list[tuple[str, int]]:
+        """Maker and size of each panel, makers first."""
+        return [(maker, size) for maker in self.makers for size in self.sizes]
 
     def learn(self, data: ProcedureData, split: Split, threads: int = 1) -> Learnt:
         """Learn everything from the training rows and predict the test rows.
@@ -192,20 +135,12 @@ class Procedure:
                 accepted="at least 2",
                 next_step="Draw inner folds for the training rows",
             )
-        selected = self.select(data, split, threads)
+        # first the inner folds: where a fold has a matrix of its own, one is held
         tuning = self.tune(data, split, threads)
-        n_folds = len(split.inner)
-        # A ridge penalty on the mean loss is 1 / (n * prior variance): it was tuned on
-        # fewer rows than it is used on.
-        grid = np.array(self.ridge_penalties) * (n_folds - 1) / n_folds
-        penalties = grid[tuning.best.ravel()]
-        return Learnt(
-            selected=selected,
-            tuning=tuning,
-            chosen=self.choose(tuning, n_folds),
-            penalties=penalties,
-            log_odds=_predict(selected, data, split, penalties[:, None])[:, 0],
-        )
+        selected = self.select(data, split, threads)
+        penalties = self.penalties(tuning, len(split.inner))
+        predicted = self.predict(selected, data, split, penalties[:, None])
+        return Learnt(selected, tuning, penalties, predicted[:, 0])
 
     def select(self, data: ProcedureData, split: Split, threads: int = 1) -> Selected:
         """Learn preparation, stability and panels from the training rows.
@@ -229,11 +164,12 @@ class Procedure:
         FitError
             A fit that is not possible or did not converge.
         """
-        state = self.recipe.learn(data.base, split.training, data.barred)
-        view = self.recipe.view(state, data.base)
+        _state, view = self.recipe.prepare(
+            data.base, split.training, data.barred, data.context
+        )
         stability = select_markers(
             view,
-            data.y,
+            data.task.outcome(),
             split.training,
             data.subjects,
             data.weights,
@@ -241,31 +177,58 @@ class Procedure:
             self.rules,
             always=data.always,
             threads=threads,
+            family=data.task.family,
+            allowed=data.allowed,
         )
-        evidence = evidence_of(stability)
+        evidence = self._evidence(stability, view, data, split.training)
         panels = [
-            maker_named(name)(evidence, size)
+            panel
             for name in self.makers
-            for size in self.sizes
+            for panel in maker_named(name)(evidence, self.sizes)
         ]
-        return Selected(view, stability, panels)
+        return Selected(view, stability, evidence, panels)
 
-    def choose(self, tuning: Tuning, n_folds: int) -> tuple[int, int]:
-        """Return maker and size position that the primary rule takes.
+    def _evidence(
+        self,
+        stability: Stability,
+        view: DesignView,
+        data: ProcedureData,
+        training: NDArray[np.int64],
+    ) -> Evidence:
+        """Return what makers may know; fits are made when a maker asks for them."""
+        objective: list[TrainingObjective] = []
 
-        Parameters
-        ----------
-        tuning : Tuning
-            Judgement of inner folds.
-        n_folds : int
-            Their number.
+        def judged(panels: Sequence[NDArray[np.int64]]) -> NDArray[np.float64]:
+            if not objective:
+                candidates = stability.candidates
+                markers = self.markers(view, data, training)
+                objective.append(TrainingObjective(markers, candidates, data, training))
+            return objective[0](panels)
 
-        Returns
-        -------
-        maker, size : int
-            Positions.
-        """
-        return choose_within_one_se(tuning.area, 1.0 / (n_folds - 1))
+        def entry_order(weights: NDArray[np.float64]) -> NDArray[np.int64]:
+            paths = fit_paths(
+                view,
+                data.task.outcome(),
+                subsamples=[training],
+                family=data.task.family,
+                penalty_floor=self.rules.penalty_floor,
+                max_markers=max(self.sizes),
+                feature_weights=weights,
+                weights=data.weights,
+            )
+            return paths.entry_order[0]
+
+        return Evidence(
+            candidates=stability.candidates,
+            frequency=stability.frequency,
+            t=stability.t,
+            group=stability.group,
+            group_frequency=stability.group_frequency,
+            price=data.price,
+            reliability=data.reliability,
+            objective=judged,
+            entry_order=entry_order,
+        )
 
     def tune(self, data: ProcedureData, split: Split, threads: int = 1) -> Tuning:
         """Repeat the selection in the inner folds and judge it there.
@@ -291,21 +254,75 @@ class Procedure:
         """
         shape = (len(self.makers), len(self.sizes))
         grid = np.tile(np.array(self.ridge_penalties), (shape[0] * shape[1], 1))
-        log_odds = [
-            _predict(self.select(data, inner, threads), data, inner, grid)
+        predicted = [
+            self.predict(self.select(data, inner, threads), data, inner, grid)
             for inner in split.inner
         ]
-        return judge(
-            log_odds,
-            [data.y[inner.test] for inner in split.inner],
-            [data.weights[inner.test] for inner in split.inner],
-            shape,
+        return judge(predicted, data, split.inner, shape)
+
+    def penalties(self, tuning: Tuning, n_folds: int) -> NDArray[np.float64]:
+        """Return the ridge penalty of each panel, shape (n_panels,).
+
+        A ridge penalty on the mean loss is 1 / (n * prior variance): it was tuned on
+        fewer rows than it is used on.
+        """
+        grid = np.array(self.ridge_penalties) * (n_folds - 1) / n_folds
+        return np.asarray(grid[tuning.best.ravel()], np.float64)
+
+    def predict(
+        self,
+        selected: Selected,
+        data: ProcedureData,
+        split: Split,
+        penalties: NDArray[np.float64],
+        panels: Sequence[NDArray[np.int64]] | None = None,
+    ) -> NDArray[np.float64]:
+        """Refit panels on the training rows and predict the test rows.
+
+        Parameters
+        ----------
+        selected : Selected
+            Preparation, and the panels unless others are given.
+        data : ProcedureData
+            Shared data.
+        split : Split
+            Training and test rows.
+        penalties : ndarray of shape (n_panels, n_penalties)
+            Ridge penalties, largest first.
+        panels : sequence of ndarray of int64, optional
+            Other panels.
+
+        Returns
+        -------
+        ndarray of shape (n_panels, n_penalties[, n_classes], n_test)
+            Linear predictors.
+
+        Raises
+        ------
+        FitError
+            A fit that is not possible or did not converge.
+        """
+        chosen = selected.panels if panels is None else panels
+        features = np.unique(np.concatenate([*chosen, np.empty(0, np.int64)]))
+        markers = self.markers(selected.view, data, split.training)
+        return refit(
+            columns_of(markers, features, data, split),
+            [np.searchsorted(features, panel) for panel in chosen],
+            data,
+            split,
+            penalties,
         )
+
+    def markers(
+        self, view: DesignView, data: ProcedureData, training: NDArray[np.int64]
+    ) -> MarkerValues:
+        """Return markers as their panel is fitted and scored with."""
+        return MarkerValues(self.assay, view, data, training)
 
     def ridge_on_all(
         self, data: ProcedureData, split: Split, view: DesignView
     ) -> NDArray[np.float64]:
-        """Return log-odds of the test rows by ridge on all included features.
+        """Return predictions of the test rows by ridge on all included features.
 
         Raises
         ------
@@ -313,50 +330,19 @@ class Procedure:
             No convergence.
         """
         kernel = kernel_matrix(view, split.training, data.weights)
+        task = data.task
         best = tune_ridge(
-            kernel, data.y, data.weights, split.pairs, RIDGE_PAIRS, RIDGE_PENALTIES
+            kernel, task, data.weights, split.pairs, RIDGE_PAIRS, RIDGE_PENALTIES
         )
-        # as in `learn`: fewer rows tuned it
+        # as in `penalties`: fewer rows tuned it
         ratio = len(split.pairs.rows[0]) / len(split.training)
         predicted = ridge_predictions(
             kernel,
-            data.y,
+            task.outcome(),
             data.weights,
             split.training,
             split.test,
             RIDGE_PENALTIES[best : best + 1] * ratio,
+            family=task.family,
         )
-        log_odds: NDArray[np.float64] = predicted[0]
-        return log_odds
-
-
-def _predict(
-    selected: Selected,
-    data: ProcedureData,
-    split: Split,
-    penalties: NDArray[np.float64],
-) -> NDArray[np.float64]:
-    """Refit each panel on the training rows; return log-odds of the test rows.
-
-    penalties: (panels, penalties); returns (panels, penalties, test rows).
-    """
-    training, test = split.training, split.test
-    panels = selected.panels
-    features = np.unique(np.concatenate(panels))
-    rows = np.concatenate([training, test])
-    n = len(training)
-    Z, _mean, _deviation = standardised(
-        selected.view.columns(features, rows), np.arange(n), data.weights[training]
-    )
-    taught, tested = Z[:, :n].copy(), Z[:, n:].copy()
-    log_odds = np.empty((len(panels), penalties.shape[1], len(test)))
-    for p, panel in enumerate(panels):
-        fits = fit_panels(
-            taught,
-            [np.searchsorted(features, panel)],
-            data.y[training],
-            data.weights[training],
-            penalties[p],
-        )
-        log_odds[p] = fits.linear_predictors(tested)[0]
-    return log_odds
+        return np.asarray(predicted[0], np.float64)

@@ -1,6 +1,7 @@
 """Penalty paths in lockstep, small refits, ridge on everything."""
 
 from panelkit.fits.budget import BudgetFit, fit_budget
+from panelkit.fits.families import Family
 from panelkit.fits.gap import duality_gap
 from panelkit.fits.paths import fit_paths
 from panelkit.fits.ridge import kernel_matrix, ridge_predictions
@@ -12,6 +13,7 @@ from panelkit.fits.univariate import Univariate, rank_univariate
 __all__ = [
     "ArraySource",
     "BudgetFit",
+    "Family",
     "PanelFits",
     "Univariate",
     "duality_gap",

@@ -3,6 +3,7 @@
 from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
 from panelkit.ingest.cohort_reader import read_cohort
+from panelkit.ingest.conflict_list import read_conflicts
 from panelkit.ingest.openings import read_openings, record_opening
 from panelkit.ingest.price_list import read_price_list
 from panelkit.ingest.reader import OpenedMatrix, Reader, ReadOptions
@@ -22,6 +23,7 @@ __all__ = [
     "guess_scale",
     "is_missing",
     "read_cohort",
+    "read_conflicts",
     "read_openings",
     "read_price_list",
     "record_opening",

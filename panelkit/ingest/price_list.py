@@ -1,13 +1,12 @@
 """Reading a price list."""
 
-import csv
-import io
 from collections.abc import Iterator, Sequence
 from datetime import date
 from itertools import pairwise
 from pathlib import Path
 
 from panelkit.errors import InputDataError, name_some
+from panelkit.ingest.csv_rows import read_header, read_lines, take_cells
 from panelkit.records import (
     PRICE_COLUMNS,
     AssayPrice,
@@ -47,13 +46,14 @@ def read_price_list(path: str | Path) -> PriceList:
         platform.
     """
     name = str(path)
-    lines = _read_lines(path)
-    header = _header(lines, name)
+    lines = read_lines(path)
+    header, head = read_header(lines, name, NEEDED_COLUMNS, PRICE_COLUMNS)
+    check_price_columns(header, head)
     rows: list[AssayPrice] = []
     places: dict[tuple[str, str], int] = {}
     for number, cells in lines:
         row = AssayPrice.from_row(
-            dict(zip(header, _cells(cells, header, name, number), strict=True)),
+            take_cells(cells, header, name, number),
             where=f"{name}, line {number}",
         )
         _check_key(row, places, name, number)
@@ -68,76 +68,6 @@ def read_price_list(path: str | Path) -> PriceList:
             next_step="Add prices",
         )
     return PriceList(tuple(rows), Findings(tuple(_findings(rows, places, name))))
-
-
-def _read_lines(path: str | Path) -> Iterator[tuple[int, list[str]]]:
-    try:
-        text = Path(path).read_text(encoding="utf-8-sig")
-    except (OSError, UnicodeDecodeError) as error:
-        raise InputDataError(
-            code="file-unreadable",
-            where=str(path),
-            what=f"the file cannot be read (got {error})",
-            accepted="a readable CSV file in UTF-8",
-            next_step="Check the path and the file",
-        ) from None
-    return _split_lines(text, str(path))
-
-
-def _split_lines(text: str, name: str) -> Iterator[tuple[int, list[str]]]:
-    reader = csv.reader(io.StringIO(text, newline=""), strict=True)
-    try:
-        for cells in reader:
-            stripped = [cell.strip() for cell in cells]
-            if any(stripped):
-                yield reader.line_num, stripped
-    except csv.Error as error:
-        raise InputDataError(
-            code="csv-unreadable",
-            where=f"{name}, line {reader.line_num}",
-            what=f"the line is not valid CSV (got {error})",
-            accepted='cells between commas, quoted with " where they hold one',
-            next_step="Correct the quotes of this line",
-        ) from None
-
-
-def _header(lines: Iterator[tuple[int, list[str]]], name: str) -> list[str]:
-    number, header = next(lines, (1, []))
-    where = f"{name}, line {number}"
-    repeated = sorted({column for column in header if header.count(column) > 1})
-    if repeated:
-        raise InputDataError(
-            code="column-repeated",
-            where=where,
-            what=f"a column is named twice (got {name_some(map(repr, repeated))})",
-            accepted="each column once",
-            next_step="Remove or rename one of them",
-        )
-    missing = [column for column in NEEDED_COLUMNS if column not in header]
-    if missing:
-        raise InputDataError(
-            code="column-missing",
-            where=where,
-            what=f"column {missing[0]} is missing (got {name_some(header) or 'none'})",
-            accepted=f"a comma-separated header with {' and '.join(NEEDED_COLUMNS)}; "
-            f"known are {', '.join(PRICE_COLUMNS)}",
-            next_step="Add the column, or separate the columns by commas",
-        )
-    check_price_columns(header, where)
-    return header
-
-
-def _cells(cells: list[str], header: list[str], name: str, number: int) -> list[str]:
-    if len(cells) != len(header):
-        raise InputDataError(
-            code="cells-miscounted",
-            where=f"{name}, line {number}",
-            what=f"the line has another number of cells than the header "
-            f"(got {len(cells)})",
-            accepted=f"{len(header)} cells, with a decimal point in numbers",
-            next_step="Add or remove commas; quote cells that hold one",
-        )
-    return cells
 
 
 def _check_key(

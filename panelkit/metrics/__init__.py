@@ -6,7 +6,8 @@ from panelkit.metrics.association import (
     cramers_v_corrected,
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
-from panelkit.metrics.discrimination import auc, auc_placements
+from panelkit.metrics.cross_validated import Measure, cross_validate
+from panelkit.metrics.discrimination import areas, auc, auc_placements
 from panelkit.metrics.intervals import (
     CrossValidated,
     corrected_se,
@@ -14,6 +15,7 @@ from panelkit.metrics.intervals import (
     naive_se,
     paired_interval,
 )
+from panelkit.metrics.numeric import linear_slope, r_squared, root_mean_square
 from panelkit.metrics.rank_tests import (
     auc_score_interval,
     false_discovery_adjusted,
@@ -28,29 +30,61 @@ from panelkit.metrics.reliability import (
     limits_of_agreement,
     reliability,
 )
+from panelkit.metrics.several_classes import (
+    class_areas,
+    hand_till,
+    log_loss_of_classes,
+    softmax,
+)
+from panelkit.metrics.survival import (
+    censoring_curve,
+    concordance,
+    horizon_auc,
+    horizon_brier,
+    uno_concordance,
+)
+from panelkit.metrics.utility import balanced_accuracy, best_threshold, net_benefit
 
 __all__ = [
     "CrossValidated",
     "LimitsOfAgreement",
+    "Measure",
     "Reliability",
+    "areas",
     "auc",
     "auc_placements",
     "auc_score_interval",
+    "balanced_accuracy",
+    "best_threshold",
     "brier",
     "calibration_slope",
+    "censoring_curve",
+    "class_areas",
     "coefficient_of_variation",
+    "concordance",
     "contingency_table",
     "corrected_se",
     "cramers_v",
     "cramers_v_corrected",
+    "cross_validate",
     "cross_validated_auc",
     "false_discovery_adjusted",
     "fisher_exact_many",
+    "hand_till",
     "holm_adjusted",
+    "horizon_auc",
+    "horizon_brier",
     "limits_of_agreement",
+    "linear_slope",
     "log_loss",
+    "log_loss_of_classes",
     "naive_se",
+    "net_benefit",
     "paired_interval",
+    "r_squared",
     "rank_sum_p",
     "reliability",
+    "root_mean_square",
+    "softmax",
+    "uno_concordance",
 ]

@@ -5,7 +5,9 @@ from numpy.typing import NDArray
 
 from panelkit.errors import FitError
 
-__all__ = ["auc", "auc_placements"]
+__all__ = ["areas", "auc", "auc_placements"]
+
+PAIRS_AT_ONCE = 1 << 20
 
 
 def _share_below(
@@ -58,13 +60,7 @@ def auc_placements(
     """
     case = outcome == 1.0
     if case.all() or not case.any():
-        raise FitError(
-            code="auc-one-class",
-            where="area under the ROC curve",
-            what=f"{int(case.sum())} cases and {int((~case).sum())} controls",
-            accepted="at least one of each",
-            next_step="Use folds stratified by the outcome",
-        )
+        raise _one_class(case)
     if np.isnan(scores).any():  # a missing score has no rank
         return float("nan"), np.full(len(scores), np.nan)
     share = np.ones(len(scores)) if weights is None else weights
@@ -101,3 +97,53 @@ def auc(
     Hanley & McNeil 1982, Radiology 143:29.
     """
     return auc_placements(scores, outcome, weights)[0]
+
+
+def areas(
+    scores: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    weights: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Return the areas under the ROC curve of many scores of the same samples.
+
+    Parameters
+    ----------
+    scores : ndarray of shape (n_scores, n_samples)
+        Higher points to class 1.
+    outcome, weights
+        As for `auc`.
+
+    Returns
+    -------
+    ndarray of shape (n_scores,)
+        NaN where a score is missing.
+
+    Raises
+    ------
+    FitError
+        One class only.
+    """
+    case = outcome == 1.0
+    if case.all() or not case.any():
+        raise _one_class(case)
+    share = weights[case][:, None] * weights[~case]
+    share = share / share.sum()
+    found = np.empty(len(scores))
+    step = max(1, PAIRS_AT_ONCE // share.size)
+    for start in range(0, len(scores), step):
+        some = scores[start : start + step]
+        high, low = some[:, case, None], some[:, None, ~case]
+        wins = (high > low) + 0.5 * (high == low)
+        found[start : start + step] = np.einsum("pij,ij->p", wins, share)
+    found[np.isnan(scores).any(axis=1)] = np.nan
+    return found
+
+
+def _one_class(case: NDArray[np.bool_]) -> FitError:
+    return FitError(
+        code="auc-one-class",
+        where="area under the ROC curve",
+        what=f"{int(case.sum())} cases and {int((~case).sum())} controls",
+        accepted="at least one of each",
+        next_step="Use folds stratified by the outcome",
+    )

@@ -104,7 +104,7 @@ def cross_validated_auc(
     share /= np.maximum(n_valid, 1) * len(means)
     influence = (share * (placements - mean)).sum(axis=0)
     se = _clustered_se(influence, outcome, subjects)
-    low, high = _log_odds_interval(mean, se, confidence)
+    low, high = log_odds_interval(mean, se, confidence)
     return CrossValidated(mean, low, high, per_fold)
 
 
@@ -125,9 +125,8 @@ def _clustered_se(
     return float(np.sqrt(variance))
 
 
-def _log_odds_interval(
-    mean: float, se: float, confidence: float
-) -> tuple[float, float]:
+def log_odds_interval(mean: float, se: float, confidence: float) -> tuple[float, float]:
+    """Return an interval symmetric on the log-odds scale; NaN where undefined."""
     if not 0.0 < mean < 1.0 or not se > 0.0:
         return float("nan"), float("nan")
     z = NormalDist().inv_cdf(0.5 + 0.5 * confidence)

@@ -1,96 +1,115 @@
 """The recipe: which steps, learnt on which rows, applied to which."""
 
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import PREPARATION
-from panelkit.errors import StudyFileError, name_some
-from panelkit.preparation.steps import PER_SAMPLE, fill_with_median, filter_features
+from panelkit.preparation.entries import (
+    check_assay,
+    check_order,
+    steps_from,
+    table_of,
+)
+from panelkit.preparation.references import ReferenceRatio
+from panelkit.preparation.step import FILTER, NeedsContext, PerSample, Step
+from panelkit.preparation.values import Values, starting_values
 from panelkit.preparation.view import DesignView
-from panelkit.records import RecipeState
+from panelkit.records import RecipeContext, RecipeState, StepState
 
-__all__ = ["LEARNT", "Recipe", "default_steps"]
+__all__ = ["Recipe"]
 
-LEARNT = ("filter", "median-fill")
-
-
-def default_steps(scale: str) -> tuple[str, ...]:
-    """Return the discovery steps for data on the scale that was found.
-
-    Parameters
-    ----------
-    scale : str
-        ``"linear"`` and ``"counts"`` get a logarithm first; everything else does not.
-
-    Returns
-    -------
-    tuple of str
-        Names of steps in order.
-    """
-    first = ("log2",) if scale in ("linear", "counts") else ()
-    return (*first, *LEARNT)
+NOTHING_KNOWN = RecipeContext()
 
 
 @dataclass(frozen=True, slots=True)
 class Recipe:
-    """The discovery part of a recipe.
+    """A list of steps: the discovery part or the assay part.
 
     Attributes
     ----------
-    steps : tuple of str
-        Per-sample steps, then learnt steps.
+    steps : sequence of str, mapping or Step
+        A step's name, or a table with ``step`` and its parameters, in order.
     log2_offset : float
-        Added before the logarithm.
+        Offset of ``log2`` where its entry gives none.
     max_missing_share : float
-        Largest share of training rows in which a feature may be missing.
+        Of ``filter`` where its entry gives none.
+    part : str
+        Key of [preparation] that it comes from, for errors.
+    chain : tuple of Step
+        The steps themselves.
 
     Raises
     ------
     StudyFileError
-        An unknown step, or a per-sample step behind a learnt one.
+        An unknown step or parameter, or an order without sense.
     """
 
-    steps: tuple[str, ...]
+    steps: Sequence[str | Mapping[str, Any] | Step]
     log2_offset: float = PREPARATION.log2_offset
     max_missing_share: float = PREPARATION.max_missing_share
+    part: str = "discovery"
+    chain: tuple[Step, ...] = field(init=False, repr=False)
 
     def __post_init__(self) -> None:
-        known = (*PER_SAMPLE, *LEARNT)
-        unknown = [step for step in self.steps if step not in known]
-        if unknown:
-            raise StudyFileError(
-                code="unknown-step",
-                where="[preparation] discovery",
-                what=f"no such step: {name_some(unknown)}",
-                accepted=f"steps are {name_some(known)}",
-                next_step="Correct the name or leave the key out for the default",
-            )
-        learnt = [step in LEARNT for step in self.steps]
-        if learnt != sorted(learnt):
-            raise StudyFileError(
-                code="step-order",
-                where="[preparation] discovery",
-                what=f"a per-sample step behind a learnt one (got {list(self.steps)})",
-                accepted="per-sample steps first, then learnt steps",
-                next_step="Put them in that order",
-            )
-        repeated = len(set(self.steps)) < len(self.steps)
-        if repeated or "median-fill" not in self.steps:
-            raise StudyFileError(
-                code="step-missing-or-repeated",
-                where="[preparation] discovery",
-                what=f"a step is repeated or 'median-fill' is missing (got "
-                f"{list(self.steps)})",
-                accepted="each step once, 'median-fill' among them, since every fit "
-                "needs a value in every cell",
-                next_step="Correct the list or leave the key out for the default",
-            )
+        defaults = {
+            "log2": {"offset": self.log2_offset},
+            "filter": {"max_missing_share": self.max_missing_share},
+        }
+        where = f"[preparation] {self.part}"
+        chain = steps_from(self.steps, defaults, where)
+        check_order(chain, where)
+        if self.part == "assay":
+            check_assay(chain, where)
+        object.__setattr__(self, "chain", chain)
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Names of the steps, in order."""
+        return tuple(step.name for step in self.chain)
+
+    def tables(self) -> list[dict[str, Any]]:
+        """Return the steps as the study file writes them, every parameter given."""
+        return [table_of(step) for step in self.chain]
+
+    def words(self) -> tuple[str, ...]:
+        """Return each step in words."""
+        return tuple(f"{step.name}: {step.words()}" for step in self.chain)
+
+    @property
+    def _n_shared(self) -> int:
+        """Number of leading steps that learn nothing: done once for all folds."""
+        count = 0
+        while count < len(self.chain) and isinstance(self.chain[count], PerSample):
+            count += 1
+        return count
+
+    def check(self, context: RecipeContext) -> None:
+        """Refuse a cohort that lacks what a step needs beside the values.
+
+        Raises
+        ------
+        InputDataError
+            No batches, analytes, references or replicates, as the step says.
+        """
+        for step in self.chain:
+            if isinstance(step, NeedsContext):
+                step.check(context)
+
+    def reference_candidates(self, context: RecipeContext) -> NDArray[np.int64]:
+        """Return the features that references are chosen among, ascending."""
+        found = [
+            step.candidates(context)
+            for step in self.chain
+            if isinstance(step, ReferenceRatio)
+        ]
+        return np.unique(np.concatenate([np.empty(0, np.int64), *found]))
 
     def base(self, values: NDArray[np.floating[Any]]) -> NDArray[np.floating[Any]]:
-        """Return the matrix after the per-sample steps, a copy where there are any.
+        """Return the matrix that all folds share, a copy where a step changes it.
 
         Parameters
         ----------
@@ -102,55 +121,136 @@ class Recipe:
         ndarray
             C-contiguous, of the same type.
         """
-        per_sample = [step for step in self.steps if step in PER_SAMPLE]
-        if not per_sample:
+        shared = self.chain[: self._n_shared]
+        if not shared:
             return np.ascontiguousarray(values)
         base = np.array(values, order="C", copy=True)
-        for step in per_sample:
-            PER_SAMPLE[step](base, self.log2_offset)
+        for step in shared:
+            if isinstance(step, PerSample):
+                step.change(base)
         return base
+
+    def prepare(
+        self,
+        base: NDArray[np.floating[Any]],
+        rows: NDArray[np.int64],
+        barred: NDArray[np.object_],
+        context: RecipeContext = NOTHING_KNOWN,
+    ) -> tuple[RecipeState, DesignView]:
+        """Learn from training rows, and return what the fits read.
+
+        Parameters
+        ----------
+        base : ndarray of shape (n_features, n_samples)
+            From `base`.
+        rows : ndarray of int64
+            Training rows; nothing of another row enters the state.
+        barred : ndarray of shape (n_features,), object
+            Reason why a feature may not be used whatever the data say, or ``""``.
+        context : RecipeContext
+            What steps may read beside the values.
+
+        Returns
+        -------
+        state : RecipeState
+            What was learnt.
+        view : DesignView
+            All rows, prepared.
+        """
+        rows = np.sort(rows)  # sums over rows then have one order
+        values = starting_values(base, barred)
+        learnt = []
+        for step in self.chain[self._n_shared :]:
+            found = step.learn(values, rows, context)
+            values = step.apply(values, found, context)
+            if step.place != FILTER and set(found) - {"fill"}:
+                learnt.append(StepState(step.name, found))
+            else:
+                learnt.append(StepState(step.name, {}))
+        fill = values.fill.copy()
+        reasons = values.reasons.copy()
+        unmeasured = np.isnan(fill)
+        reasons[unmeasured & (reasons == "")] = "not measured on any training row"
+        fill[unmeasured] = 0.0
+        state = RecipeState(
+            fill=fill, included=reasons == "", reasons=reasons, steps=tuple(learnt)
+        )
+        return state, _view(values, state)
 
     def learn(
         self,
         base: NDArray[np.floating[Any]],
         rows: NDArray[np.int64],
         barred: NDArray[np.object_],
+        context: RecipeContext = NOTHING_KNOWN,
     ) -> RecipeState:
-        """Learn from training rows.
-
-        Parameters
-        ----------
-        base : ndarray of shape (n_features, n_samples)
-            The matrix after the per-sample steps.
-        rows : ndarray of int64
-            Training rows; no value of another row is read.
-        barred : ndarray of shape (n_features,), object
-            Reason why a feature may not be used whatever the data say, or ``""``.
+        """Learn from training rows; see `prepare`.
 
         Returns
         -------
         RecipeState
-            Fills and which features stay.
+            Fills, which features stay, and what each step learnt.
         """
-        reasons = np.array(barred, object)
-        if "filter" in self.steps:
-            filtered = filter_features(base, rows, self.max_missing_share)
-            reasons = np.where(reasons == "", filtered, reasons)
-        fill = fill_with_median(base, rows)
-        unmeasured = np.isnan(fill)
-        reasons[unmeasured & (reasons == "")] = "not measured on any training row"
-        fill[unmeasured] = 0.0
-        return RecipeState(fill=fill, included=reasons == "", reasons=reasons)
+        return self.prepare(base, rows, barred, context)[0]
 
     def apply(
         self,
         state: RecipeState,
         base: NDArray[np.floating[Any]],
         rows: NDArray[np.int64],
+        context: RecipeContext = NOTHING_KNOWN,
     ) -> NDArray[np.float64]:
-        """Return the prepared matrix of any rows, features by rows, float64."""
-        return self.view(state, base).columns(np.arange(len(base)), rows)
+        """Return the prepared matrix of any rows, from those rows alone.
 
-    def view(self, state: RecipeState, base: NDArray[np.floating[Any]]) -> DesignView:
-        """Return the view through which a fold's fits read the shared base."""
-        return DesignView(base, state)
+        Parameters
+        ----------
+        state : RecipeState
+            From `learn`.
+        base : ndarray of shape (n_features, n_samples)
+            From `base`, of any samples.
+        rows : ndarray of int64
+            Which of them.
+        context : RecipeContext
+            Of the samples of `base`.
+
+        Returns
+        -------
+        ndarray of shape (n_features, n_rows), float64
+            Each sample the same bits whatever else is prepared with it.
+        """
+        part = np.take(base, rows, axis=1)
+        view = self.view(state, part, context.at(rows))
+        return view.columns(np.arange(len(base)), np.arange(len(rows)))
+
+    def view(
+        self,
+        state: RecipeState,
+        base: NDArray[np.floating[Any]],
+        context: RecipeContext = NOTHING_KNOWN,
+    ) -> DesignView:
+        """Return the view through which a fold's fits read the shared base.
+
+        Parameters
+        ----------
+        state : RecipeState
+            From `learn`.
+        base : ndarray of shape (n_features, n_samples)
+            From `base`, of any samples.
+        context : RecipeContext
+            Of the samples of `base`.
+
+        Returns
+        -------
+        DesignView
+            Shares `base` unless a step needs a matrix of the fold's own.
+        """
+        values = starting_values(base)
+        for step, found in zip(self.chain[self._n_shared :], state.steps, strict=False):
+            if found.arrays or isinstance(step, PerSample):
+                values = step.apply(values, found.arrays, context)
+        return _view(values, state)
+
+
+def _view(values: Values, state: RecipeState) -> DesignView:
+    corrections = (values.left, values.right) if values.left.shape[1] else None
+    return DesignView(values.matrix, state, corrections)

@@ -18,7 +18,8 @@ class DesignView:
     Attributes
     ----------
     base : ndarray of shape (n_features, n_samples), float32 or float64
-        After the per-sample steps; NaN where missing; shared by all folds.
+        NaN where missing; shared by all folds, or the fold's own where a step asks for
+        it.
     state : RecipeState
         Learnt from the fold's training rows.
     corrections : tuple of ndarray of shapes (n_features, rank) and (rank, n_samples)

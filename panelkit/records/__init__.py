@@ -9,7 +9,32 @@ from panelkit.records.accuracy import (
 )
 from panelkit.records.assays import AssayMap
 from panelkit.records.cohort import Cohort, Design, DesignKind
+from panelkit.records.conflicts import (
+    CONFLICT_COLUMNS,
+    NO_CONFLICTS,
+    Conflict,
+    Conflicts,
+)
+from panelkit.records.cost_answers import (
+    BreakEven,
+    Crossing,
+    Driver,
+    PriceQuestion,
+    Spares,
+    SplitCost,
+    Stair,
+    StepDown,
+)
 from panelkit.records.findings import Dropped, Finding, Findings, Flow, Severity
+from panelkit.records.fragility import (
+    AddedValue,
+    Aftermath,
+    Fragility,
+    Handling,
+    LearningPoint,
+    StandIn,
+    Subgroup,
+)
 from panelkit.records.frontier import (
     Choice,
     Frontier,
@@ -20,9 +45,17 @@ from panelkit.records.frontier import (
 from panelkit.records.matrix import MatrixSource
 from panelkit.records.openings import Opening
 from panelkit.records.outcome import Outcome, OutcomeKind
-from panelkit.records.panel_cost import CostLine, PanelCost
+from panelkit.records.panel_cost import LINE_WORDS, CostLine, KitPurchase, PanelCost
 from panelkit.records.paths import PathSet
-from panelkit.records.preparation import RecipeState
+from panelkit.records.preparation import RecipeContext, RecipeState, StepState
+from panelkit.records.price_answer import (
+    Assumption,
+    CostSheet,
+    PriceAnswer,
+    ScenarioAnswer,
+    SheetAssay,
+    Variation,
+)
 from panelkit.records.prices import (
     ANY_MARKER,
     PRICE_COLUMNS,
@@ -33,26 +66,50 @@ from panelkit.records.prices import (
 from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
 from panelkit.records.replicates import ReplicateAgreement, Replicates
+from panelkit.records.shortlist_results import ShortlistResults
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
     Stability,
     SubsamplePlan,
 )
+from panelkit.records.stability_details import (
+    Agreement,
+    Companions,
+    Convergence,
+    NullShortlist,
+    PathFrequencies,
+    SelectorResult,
+)
 from panelkit.records.summary import RESEARCH_USE, RunSummary
 
 __all__ = [
     "ANY_MARKER",
+    "CONFLICT_COLUMNS",
+    "LINE_WORDS",
+    "NO_CONFLICTS",
     "PRICE_COLUMNS",
     "RESEARCH_USE",
+    "AddedValue",
+    "Aftermath",
+    "Agreement",
     "AssayMap",
     "AssayPrice",
+    "Assumption",
+    "BreakEven",
     "Choice",
     "Cohort",
+    "Companions",
     "Comparator",
+    "Conflict",
+    "Conflicts",
+    "Convergence",
     "CostLine",
+    "CostSheet",
+    "Crossing",
     "Design",
     "DesignKind",
+    "Driver",
     "Dropped",
     "ErrorBound",
     "Finding",
@@ -60,17 +117,26 @@ __all__ = [
     "Flow",
     "FoldPanels",
     "FoldPlan",
+    "Fragility",
     "Frontier",
     "FrontierRow",
+    "Handling",
     "Headline",
+    "KitPurchase",
+    "LearningPoint",
     "MatrixSource",
+    "NullShortlist",
     "Opening",
     "OutOfFold",
     "Outcome",
     "OutcomeKind",
     "PanelCost",
+    "PathFrequencies",
     "PathSet",
+    "PriceAnswer",
     "PriceList",
+    "PriceQuestion",
+    "RecipeContext",
     "RecipeState",
     "Record",
     "ReplicateAgreement",
@@ -78,11 +144,23 @@ __all__ = [
     "RuleChoice",
     "RunRecord",
     "RunSummary",
+    "ScenarioAnswer",
+    "SelectorResult",
     "Severity",
+    "SheetAssay",
+    "ShortlistResults",
     "ShortlistTable",
+    "Spares",
+    "SplitCost",
     "Stability",
+    "Stair",
+    "StandIn",
+    "StepDown",
+    "StepState",
+    "Subgroup",
     "SubsamplePlan",
     "TunedChoice",
+    "Variation",
     "check_price_columns",
     "frame",
     "read_only",

@@ -53,18 +53,14 @@ class OutOfFold(Record):
     size : int
         Panel size asked of the maker; 0 where the fold decides or size has no
         meaning.
-    log_odds : ndarray of shape (n_repeats, n_samples)
-        Each sample's prediction by the model that did not see its subject.
+    predicted : ndarray of shape (n_repeats[, n_classes], n_samples)
+        Each sample's linear predictor (log-odds, log chances of each class, value, log
+        hazard ratio) by the model that did not see its subject.
     """
 
     maker: str
     size: int
-    log_odds: NDArray[np.float64]
-
-    @property
-    def scores(self) -> NDArray[np.float64]:
-        """Predicted chance of the positive class, shape (n_repeats, n_samples)."""
-        return 1.0 / (1.0 + np.exp(-self.log_odds))
+    predicted: NDArray[np.float64]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -99,10 +95,13 @@ class TunedChoice(Record):
         Position of the maker.
     size : ndarray of shape (n_repeats, n_folds), int64
         Panel size.
+    met : ndarray of shape (n_repeats, n_folds), bool
+        False where no panel met the rule's demand and its nearest miss was taken.
     """
 
     maker: NDArray[np.int64]
     size: NDArray[np.int64]
+    met: NDArray[np.bool_]
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -38,6 +38,8 @@ PRICE_COLUMNS: Final = (
     "tiers",
     "slots",
     "class",
+    "channel",
+    "design_success",
     "fail_rate",
     "cv_pct",
     "concordance",
@@ -83,6 +85,11 @@ class AssayPrice(Record):
         Plex slots that the assay occupies.
     pool_class : str
         Assays of different class cannot share a pool.
+    channel : str
+        Detection channel that the assay is tied to; assays of one channel cannot
+        share a pool.
+    design_success : Decimal or None
+        Chance that the assay works once it is ordered; None takes the platform's.
     fail_rate : Decimal
         Chance that this assay forces a repeat.
     cv_pct : Decimal or None
@@ -109,6 +116,8 @@ class AssayPrice(Record):
     incremental: bool = False
     slots: int = 1
     pool_class: str = ""
+    channel: str = ""
+    design_success: Decimal | None = None
     fail_rate: Decimal = Decimal(0)
     cv_pct: Decimal | None = None
     concordance: Decimal | None = None
@@ -166,6 +175,8 @@ class AssayPrice(Record):
             incremental=incremental,
             slots=1 if slots is None else slots,
             pool_class=cells.text("class"),
+            channel=cells.text("channel"),
+            design_success=cells.chance("design_success"),
             fail_rate=cells.rate("fail_rate"),
             cv_pct=cells.amount("cv_pct"),
             concordance=cells.correlation("concordance"),
@@ -290,6 +301,18 @@ class _Cells:
                 next_step="Write the rate as a fraction",
             )
         return Decimal(0) if value is None else value
+
+    def chance(self, name: str) -> Decimal | None:
+        value = self.amount(name)
+        if value is not None and not 0 < value <= 1:
+            raise InputDataError(
+                code="chance-refused",
+                where=self.where(name),
+                what=f"the cell is no chance of success (got {value})",
+                accepted="a number above 0, up to 1 (90 % is 0.9), or an empty cell",
+                next_step="Correct the cell",
+            )
+        return value
 
     def correlation(self, name: str) -> Decimal | None:
         value = self.amount(name)
@@ -478,10 +501,14 @@ class PriceList(Record):
         In file order; marker and platform together are unique.
     findings : Findings
         What was noticed while reading.
+    analytes : mapping of str to str
+        Feature to what it measures: a feature without an own row takes the row of its
+        analyte, so that a list can be written by analyte.
     """
 
     rows: tuple[AssayPrice, ...]
     findings: Findings = field(default_factory=Findings)
+    analytes: Mapping[str, str] = field(default_factory=dict)
     _places: dict[str, dict[str, int]] = field(
         init=False, repr=False, default_factory=dict
     )
@@ -533,8 +560,8 @@ class PriceList(Record):
         -------
         tuple of AssayPrice
             Markers in file order, then those without an own row in the order
-            given (at the price for any marker, or without a price when the list
-            has none), then the platform's references in file order.
+            given (at the price of their analyte, else for any marker, else without
+            a price), then the platform's references in file order.
 
         Raises
         ------
@@ -570,8 +597,10 @@ class PriceList(Record):
         return (*(self.rows[place] for place in own), *others, *references)
 
     def _without_row(self, marker: str, platform: str) -> AssayPrice:
-        place = self._at(platform).get(ANY_MARKER)
-        if place is None:
+        places = self._at(platform)
+        analyte = self.analytes.get(marker, marker)
+        place = places.get(analyte, places.get(ANY_MARKER))
+        if place is None or self.rows[place].role == "reference":
             return AssayPrice(marker=marker, platform=platform)
         return replace(self.rows[place], marker=marker)
 

@@ -1,5 +1,6 @@
 """What stability selection found."""
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -51,6 +52,17 @@ class ErrorBound(Record):
         Largest expected number of shortlisted features whose selection chance is
         below average, whatever is picked (Shah & Samworth 2013, theorem 1); with the
         realised number of picks it is an estimate.
+    unimodal : float
+        The same for picks whose distribution over pairs has one mode (theorem 2); NaN
+        where it is not defined.
+    r_concave : float
+        The same for r-concave picks (equation 8); NaN unless asked for.
+    decides : str
+        The bound that had to be kept: worst-case, unimodal or r-concave.
+    n_pairs : int
+        Complementary pairs, fixed before the first fit.
+    full_share : float
+        Share of subsamples that reached the number asked for.
     """
 
     threshold: float
@@ -58,17 +70,46 @@ class ErrorBound(Record):
     realised: float
     n_features: int
     worst_case: float
+    unimodal: float
+    r_concave: float
+    decides: str
+    n_pairs: int
+    full_share: float
 
     def sentence(self) -> str:
         """Return what the bound says and does not say."""
+        shaped = ""
+        if not math.isnan(self.unimodal):
+            shaped = (
+                f" (at most about {self.unimodal:.3g} if the picks of pairs have a "
+                "distribution with one mode"
+            )
+        if shaped and not math.isnan(self.r_concave):
+            shaped += (
+                f", {self.r_concave:.3g} if it is r-concave, the strongest assumption"
+            )
+        shaped += ")" if shaped else ""
         return (
-            f"For independent people and random halves (ours are stratified), at most "
-            f"about {self.worst_case:.3g} features on average reach a frequency of "
-            f"{self.threshold:g} although their chance of being picked is below the "
-            f"average of all {self.n_features:,} features ({self.realised:.3g} picked "
-            "in a subsample). Features that are picked more often than the average, "
-            "true or not, are not counted. This speaks of the shortlist, not of a "
-            "panel."
+            "For independent people and random halves (ours are stratified), at most "
+            f"about {self.worst_case:.3g} features on average in the worst case{shaped}"
+            f" reach a frequency of {self.threshold:g} although their chance of being "
+            f"picked is below the average of all {self.n_features:,} features "
+            f"({self.realised:.3g} picked in a subsample, {self.asked} asked for). "
+            "Features that are picked more often than the average, true or not, are "
+            "not counted: a companion of a true marker is no error of this kind. This "
+            "speaks of the shortlist, not of a panel and not of other people. The "
+            f"number of subsamples ({2 * self.n_pairs}) was fixed before the first fit."
+        )
+
+    def saturation(self) -> str:
+        """Return what to know where subsamples did not give what was asked; or ""."""
+        if self.full_share >= 1.0:
+            return ""
+        return (
+            f"Asked for {self.asked} markers, subsamples stopped near "
+            f"{self.realised:.3g} ({1.0 - self.full_share:.0%} of them short): with so "
+            "few people the outcome is explained before, so the last picks follow the "
+            "order of the path rather than strength."
         )
 
 
@@ -82,8 +123,11 @@ class Stability(Record):
         Share of subsamples among whose first picks the feature is.
     low, high : ndarray of shape (n_features,)
         Interval of the frequency from pair averages.
+    simultaneous : ndarray of shape (n_features,)
+        Share of pairs whose halves both picked the feature.
     positive_share : ndarray of shape (n_features,)
-        Share of the picks with a positive coefficient; NaN where never picked.
+        Share of the picks with a positive coefficient; NaN where never picked or where
+        a feature has a coefficient for every class.
     picks : tuple of ndarray of int64
         Features of each subsample in order of entry.
     bound : ErrorBound
@@ -97,12 +141,14 @@ class Stability(Record):
     group_frequency : ndarray of shape (n_features,)
         Share of subsamples in which a member of the feature's group was picked.
     t : ndarray of shape (n_features,)
-        Welch's t, for the univariate ranking.
+        The univariate ranking's statistic: Welch's t, the Cox score, F, or the
+        correlation's t.
     """
 
     frequency: NDArray[np.float64]
     low: NDArray[np.float64]
     high: NDArray[np.float64]
+    simultaneous: NDArray[np.float64]
     positive_share: NDArray[np.float64]
     picks: tuple[NDArray[np.int64], ...]
     bound: ErrorBound
@@ -111,6 +157,34 @@ class Stability(Record):
     group: NDArray[np.int64]
     group_frequency: NDArray[np.float64]
     t: NDArray[np.float64]
+
+    @property
+    def picked(self) -> NDArray[np.bool_]:
+        """Whether each subsample picked each feature, (n_subsamples, n_features)."""
+        picked = np.zeros((len(self.picks), len(self.frequency)), np.bool_)
+        for row, features in zip(picked, self.picks, strict=True):
+            row[features] = True
+        return picked
+
+    def to_frame(self) -> "pd.DataFrame":
+        """Return one row a feature, in column order."""
+        shortlist, candidate = (np.zeros(len(self.frequency), np.bool_) for _ in "ab")
+        shortlist[self.shortlist] = True
+        candidate[self.candidates] = True
+        return frame(
+            {
+                "frequency": self.frequency,
+                "frequency_low": self.low,
+                "frequency_high": self.high,
+                "simultaneous": self.simultaneous,
+                "positive_share": self.positive_share,
+                "group": self.group,
+                "group_frequency": self.group_frequency,
+                "statistic": self.t,
+                "shortlist": shortlist,
+                "candidate": candidate,
+            }
+        )
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -134,13 +208,23 @@ class ShortlistTable(Record):
     picked, candidate : ndarray of bool
         In the shortlist; among the candidates.
     mean_level : ndarray of float64
-        Mean over all analysed samples, on the prepared scale.
+        Plain mean over all analysed samples, on the prepared scale: every sample
+        counts once, also where a subject has several.
     difference, difference_low, difference_high : ndarray of float64
         Positive minus negative class, with its 95 % interval (Welch).
     single_marker_auc : ndarray of float64
         Apparent: on the samples that chose the marker.
     missing_share : ndarray of float64
         Share of analysed samples without a value.
+    below_limit_share : ndarray of float64
+        Share of measured values below the feature's limit of detection; NaN where the
+        feature sheet gives none.
+    replicate_icc : ndarray of float64
+        Intraclass correlation of repeated measurements; NaN where there are none.
+    symbol : ndarray of object
+        As the feature sheet writes it, or ``""``.
+    assayable : ndarray of object
+        Platforms that have an assay, joined by ``;``; ``""`` where nothing is known.
     """
 
     feature: NDArray[np.object_]
@@ -159,6 +243,10 @@ class ShortlistTable(Record):
     difference_high: NDArray[np.float64]
     single_marker_auc: NDArray[np.float64]
     missing_share: NDArray[np.float64]
+    below_limit_share: NDArray[np.float64]
+    replicate_icc: NDArray[np.float64]
+    symbol: NDArray[np.object_]
+    assayable: NDArray[np.object_]
 
     def to_frame(self) -> "pd.DataFrame":
         """Return one row a feature."""

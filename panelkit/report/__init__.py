@@ -1,5 +1,13 @@
 """The report of a run: one page, its figures and the numbers behind them."""
 
 from panelkit.report.page import render
+from panelkit.report.price_pictures import draw_prices
+from panelkit.report.price_workbook import price_workbook
+from panelkit.report.shortlist_pictures import render_shortlist
 
-__all__ = ["render"]
+__all__ = [
+    "draw_prices",
+    "price_workbook",
+    "render",
+    "render_shortlist",
+]

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from panelkit.records import RunSummary
+from panelkit.records import RunSummary, ShortlistResults
 from panelkit.report.canvas import (
     FAINT,
     GRID,
@@ -21,12 +21,12 @@ LONGEST_LABEL = 22
 INCHES_PER_ROW = 0.185
 
 
-def draw_frequencies(summary: RunSummary) -> bytes:
+def draw_frequencies(summary: RunSummary | ShortlistResults) -> bytes:
     """Return features by falling selection frequency, with intervals.
 
     Parameters
     ----------
-    summary : RunSummary
+    summary : RunSummary or ShortlistResults
         With at least one row in the shortlist table.
 
     Returns

@@ -125,4 +125,5 @@ COST_LINES = {
     "runs": "Runs",
     "positions": "Positions",
     "assays": "Assays (reagents)",
+    "kits": "Kits",
 }

@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-from panelkit.records import RunSummary
+from panelkit.records import RunSummary, ShortlistResults
 from panelkit.report.canvas import settings
 from panelkit.report.draw_frontier import draw_accuracy, draw_cost
 from panelkit.report.draw_shortlist import N_DRAWN, draw_frequencies
@@ -15,7 +15,7 @@ from panelkit.report.tables import (
 )
 from panelkit.report.wording import interval, printable, shorten, three_figures
 
-__all__ = ["Picture", "draw_all"]
+__all__ = ["Picture", "draw_all", "frequency_caption"]
 
 LONGEST_IN_SENTENCE = 40
 
@@ -63,7 +63,7 @@ def draw_all(summary: RunSummary) -> tuple[Picture, ...]:
                 Picture(
                     name="selection_frequency",
                     title="How often features are picked",
-                    caption=_frequency_caption(summary),
+                    caption=frequency_caption(summary),
                     svg=draw_frequencies(summary),
                     table=csv_bytes(frequency_table(summary, N_DRAWN)),
                 )
@@ -91,7 +91,8 @@ def draw_all(summary: RunSummary) -> tuple[Picture, ...]:
     return tuple(pictures)
 
 
-def _frequency_caption(summary: RunSummary) -> str:
+def frequency_caption(summary: RunSummary | ShortlistResults) -> str:
+    """Return what the picture of the frequencies shows."""
     table = summary.shortlist
     n_picked = int(table.picked.sum())
     few = {0: "No feature reaches", 1: "One feature reaches"}

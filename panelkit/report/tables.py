@@ -5,7 +5,7 @@ import io
 import math
 from collections.abc import Sequence
 
-from panelkit.records import RunSummary
+from panelkit.records import RunSummary, ShortlistResults
 from panelkit.report.picks import chosen_row, currency
 
 __all__ = ["accuracy_table", "cost_table", "csv_bytes", "frequency_table"]
@@ -44,7 +44,7 @@ def _cell(value: object) -> str:
     return str(value)
 
 
-def frequency_table(summary: RunSummary, n_rows: int) -> Table:
+def frequency_table(summary: RunSummary | ShortlistResults, n_rows: int) -> Table:
     """Return the drawn features with frequency, interval, threshold and marks."""
     table = summary.shortlist
     rows: Table = [

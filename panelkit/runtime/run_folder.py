@@ -4,7 +4,7 @@ import csv
 import io
 import json
 import time
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from decimal import Decimal
 from pathlib import Path
 from typing import Any
@@ -46,19 +46,24 @@ class RunFolder:
         self.path = path
         self._log: list[str] = []
 
-    def claim(self, record: bytes) -> bool:
+    def claim(
+        self, record: bytes, work: Callable[[bytes], bytes] | None = None
+    ) -> bool:
         """Take the folder for the run that this record describes.
 
         Parameters
         ----------
         record : bytes
             The content of ``record.json``.
+        work : callable, optional
+            From a record to the part of it that finished blocks depend on; a run
+            that differs elsewhere takes the folder over. None: all of it.
 
         Returns
         -------
         bool
-            True when the folder holds an earlier attempt at the same run, whose
-            finished blocks will be used.
+            True when the folder holds an earlier attempt at the same run, or the
+            same work for another purpose, whose finished blocks will be used.
 
         Raises
         ------
@@ -75,7 +80,11 @@ class RunFolder:
                 next_step="Name another folder by --out",
             )
         if kept.exists():
-            if kept.read_bytes() == record:
+            earlier = kept.read_bytes()
+            if earlier == record:
+                return True
+            if work is not None and work(earlier) == work(record):
+                self.write(RECORD, record)
                 return True
             raise RunFolderError(
                 code="run-folder-taken",

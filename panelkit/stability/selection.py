@@ -1,27 +1,37 @@
 """Stability selection: which markers are picked again and again."""
 
+import math
 from dataclasses import dataclass
+from typing import Any, Final
 
 import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.config import SHORTLIST
-from panelkit.errors import InputDataError
-from panelkit.fits import Univariate, fit_paths, rank_univariate
-from panelkit.records import (
-    ErrorBound,
-    MatrixSource,
-    PathSet,
-    Stability,
-    SubsamplePlan,
+from panelkit.errors import InputDataError, StudyFileError, name_some
+from panelkit.fits import Family, fit_paths
+from panelkit.records import ErrorBound, MatrixSource, Stability, SubsamplePlan
+from panelkit.stability.bounds import (
+    r_concave_bound,
+    unimodal_bound,
+    worst_case_bound,
 )
-from panelkit.stability.bounds import markers_for, worst_case_bound
 from panelkit.stability.companions import group_companions, group_frequencies
+from panelkit.stability.demand import Demand, settle_demand
+from panelkit.stability.ranking import feature_statistics
+from panelkit.stability.tally import frequency_intervals, positive_share
 
-__all__ = ["ShortlistRules", "select_markers"]
+__all__ = [
+    "SELECTORS",
+    "Picks",
+    "ShortlistRules",
+    "pick_markers",
+    "picked_matrix",
+    "select_markers",
+]
 
+SELECTORS: Final = ("lasso", "elastic-net", "univariate")
 POOL = 400  # features that are grouped: the most frequent and the most different
-Z_95 = 1.959963984540054
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,13 +40,21 @@ class ShortlistRules:
 
     Attributes
     ----------
-    threshold : float
-        Selection frequency from which a feature is shortlisted.
-    false_markers : float
-        Tolerated expected number of low-chance features in the shortlist.
+    threshold : float or None
+        Selection frequency from which a feature is shortlisted. None: it follows from
+        the next two.
+    false_markers : float or None
+        Tolerated expected number of low-chance features in the shortlist. With
+        `markers_per_subsample` and a threshold it follows from those.
     markers_per_subsample : int or None
-        Given: `false_markers` follows from it. None: it follows from
-        `false_markers`, at most half the rows of a subsample.
+        How many features a subsample may pick. None: it follows from the other two, at
+        most half the rows of a subsample.
+    bound : {"worst-case", "unimodal", "r-concave"}
+        The bound that decides.
+    selector : {"lasso", "elastic-net", "univariate"}
+        What picks in a subsample.
+    l1_share : float
+        Share of the L1 part of the elastic net.
     candidates : int
         Companion groups, and univariate features, that become candidates.
     companion_correlation : float
@@ -47,18 +65,69 @@ class ShortlistRules:
         Last penalty relative to the largest.
     """
 
-    threshold: float = SHORTLIST.threshold
-    false_markers: float = SHORTLIST.false_markers
+    threshold: float | None = SHORTLIST.threshold
+    false_markers: float | None = SHORTLIST.false_markers
     markers_per_subsample: int | None = None
+    bound: str = SHORTLIST.bound
+    selector: str = SHORTLIST.selector
+    l1_share: float = SHORTLIST.l1_share
     candidates: int = SHORTLIST.candidates
     companion_correlation: float = SHORTLIST.companion_correlation
     n_penalties: int = SHORTLIST.n_penalties
     penalty_floor: float = SHORTLIST.penalty_floor
 
+    def demand(self, n_features: int, plan: SubsamplePlan) -> Demand:
+        """Return markers, threshold and false markers for a number of features.
+
+        Parameters
+        ----------
+        n_features : int
+            Features that enter every subsample.
+        plan : SubsamplePlan
+            Complementary pairs.
+
+        Returns
+        -------
+        Demand
+            The third figure filled in.
+
+        Raises
+        ------
+        StudyFileError
+            No figure satisfies the other two.
+        """
+        markers = self.markers_per_subsample
+        both = markers is not None and self.threshold is not None
+        return settle_demand(
+            markers=markers if markers is None else min(markers, n_features),
+            threshold=self.threshold,
+            false_markers=None if both else self.false_markers,
+            n_features=n_features,
+            n_pairs=plan.n_pairs,
+            bound=self.bound,
+            most_markers=max(1, min(len(rows) for rows in plan.rows) // 2),
+        )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Picks:
+    """What each subsample picked.
+
+    Attributes
+    ----------
+    order : tuple of ndarray of int64
+        Features of each subsample, first pick first.
+    positive_share : ndarray of shape (n_features,)
+        Share of the picks with a positive sign; NaN where never picked.
+    """
+
+    order: tuple[NDArray[np.int64], ...]
+    positive_share: NDArray[np.float64]
+
 
 def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
     source: MatrixSource,
-    y: NDArray[np.float64],
+    y: Any,
     rows: NDArray[np.int64],
     subjects: NDArray[np.int64],
     weights: NDArray[np.float64],
@@ -66,15 +135,18 @@ def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
     rules: ShortlistRules,
     always: NDArray[np.int64] | None = None,
     threads: int = 1,
+    *,
+    family: Family = "binomial",
+    allowed: NDArray[np.bool_] | None = None,
 ) -> Stability:
-    """Repeat L1 fits over subsamples and say which features come back.
+    """Repeat fits over subsamples and say which features come back.
 
     Parameters
     ----------
     source : MatrixSource
         Prepared matrix; its `included` features enter every subsample.
-    y : ndarray of shape (n_samples,)
-        Outcome, 0 and 1.
+    y : ndarray of shape (n_samples,), or (time, event)
+        Outcome, as `fit_paths` takes it.
     rows : ndarray of int64
         Training rows; the plan's rows are among them.
     subjects : ndarray of shape (n_samples,), int64
@@ -89,11 +161,16 @@ def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
         Features that are candidates whatever happens.
     threads : int
         Threads of the engine; no bit of the result depends on it.
+    family : {"binomial", "gaussian", "cox", "multinomial"}
+        Kind of outcome.
+    allowed : ndarray of shape (n_features,), bool, optional
+        Features that may be candidates: those that a platform can assay. It changes no
+        frequency and no shortlist.
 
     Returns
     -------
     Stability
-        Frequencies, bound, shortlist, candidates.
+        Frequencies, bounds, shortlist, candidates.
 
     Raises
     ------
@@ -117,126 +194,180 @@ def select_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
             accepted="features that vary and are measured",
             next_step="Look at the findings of `panelkit check`",
         )
-    asked = _markers_asked(rules, n_included, plan)
-    paths = fit_paths(
-        source,
-        y,
-        subsamples=plan.rows,
-        n_penalties=rules.n_penalties,
-        penalty_floor=rules.penalty_floor,
-        max_markers=asked,
-        weights=weights,
-        threads=threads,
+    demand = rules.demand(n_included, plan)
+    picks = pick_markers(
+        source, y, family, subjects, weights, plan, rules, demand.markers, threads
     )
-    univariate = rank_univariate(source, y, rows, subjects, weights)
-    frequency, low, high = _frequencies(paths)
+    t = feature_statistics(source, y, family, rows, subjects, weights)
+    univariate = np.argsort(-np.abs(t), kind="stable")
+    picked = picked_matrix(picks.order, len(t))
+    frequency, low, high = frequency_intervals(picked)
     pool = _pool(frequency, univariate, always)
-    group, group_frequency = _companions(source, rows, paths, pool, rules)
-    realised = float(np.mean([len(picks) for picks in paths.entry_order]))
-    ranked = np.lexsort((np.arange(len(frequency)), -np.abs(univariate.t), -frequency))
+    group, group_frequency = _companions(source, rows, picked, pool, rules)
+    ranked = np.lexsort((np.arange(len(frequency)), -np.abs(t), -frequency))
+    open_to = np.ones(len(t), np.bool_) if allowed is None else allowed
     return Stability(
         frequency=frequency,
         low=low,
         high=high,
-        positive_share=_positive_share(paths),
-        picks=paths.entry_order,
-        bound=ErrorBound(
-            rules.threshold,
-            asked,
-            realised,
-            n_included,
-            worst_case_bound(realised, rules.threshold, n_included),
-        ),
-        shortlist=ranked[frequency[ranked] >= rules.threshold - 1e-12],
+        simultaneous=(picked[0::2] & picked[1::2]).mean(axis=0),
+        positive_share=picks.positive_share,
+        picks=picks.order,
+        bound=_bound(demand, picks, n_included, plan),
+        shortlist=ranked[frequency[ranked] >= demand.threshold - 1e-12],
         candidates=_candidates(
-            ranked, group, group_frequency, univariate, rules, always
+            ranked[open_to[ranked]],
+            group,
+            group_frequency,
+            univariate[open_to[univariate] & (t[univariate] != 0.0)],
+            rules.candidates,
+            always,
         ),
         group=group,
         group_frequency=group_frequency,
-        t=univariate.t,
+        t=t,
     )
 
 
-def _markers_asked(rules: ShortlistRules, n_included: int, plan: SubsamplePlan) -> int:
-    if rules.markers_per_subsample is not None:
-        return rules.markers_per_subsample
-    # A path saturates when its subsample separates: later picks are path order only.
-    ceiling = max(1, min(len(rows) for rows in plan.rows) // 2)
-    return min(ceiling, markers_for(rules.false_markers, rules.threshold, n_included))
+def picked_matrix(
+    order: tuple[NDArray[np.int64], ...], n_features: int
+) -> NDArray[np.bool_]:
+    """Return whether each subsample picked each feature."""
+    picked = np.zeros((len(order), n_features), np.bool_)
+    for row, features in zip(picked, order, strict=True):
+        row[features] = True
+    return picked
 
 
-def _frequencies(
-    paths: PathSet,
-) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]:
-    """Return frequency and a Wilson-type interval with pairs as units.
+def pick_markers(  # noqa: PLR0913 - data, plan, rules: each is one thing
+    source: MatrixSource,
+    y: Any,
+    family: Family,
+    subjects: NDArray[np.int64],
+    weights: NDArray[np.float64],
+    plan: SubsamplePlan,
+    rules: ShortlistRules,
+    markers: int,
+    threads: int = 1,
+) -> Picks:
+    """Return the first markers of every subsample by the asked selector.
 
-    The variance of a pair average gives the effective number of independent draws,
-    at least one and at most two a pair.
+    Parameters
+    ----------
+    source, y, family, subjects, weights, plan, rules, threads
+        As for `select_markers`.
+    markers : int
+        How many a subsample may pick.
+
+    Returns
+    -------
+    Picks
+        Order of entry, and signs.
+
+    Raises
+    ------
+    FitError
+        A subsample that cannot be fitted.
+    StudyFileError
+        An unknown selector.
     """
-    picked = paths.ever_selected
-    n_pairs = len(picked) // 2
-    frequency = picked.mean(axis=0)
-    pairs = 0.5 * (picked[0::2].astype(np.int8) + picked[1::2])
-    spread = pairs.var(axis=0, ddof=1) if n_pairs > 1 else np.zeros(len(frequency))
-    single = frequency * (1.0 - frequency)
-    with np.errstate(invalid="ignore", divide="ignore"):
-        draws = np.where(spread > 0.0, single / spread, 1.0)
-    n = n_pairs * np.clip(draws, 1.0, 2.0)
-    z2 = Z_95**2
-    centre = (frequency + z2 / (2.0 * n)) / (1.0 + z2 / n)
-    half = Z_95 * np.sqrt(single / n + z2 / (4.0 * n**2)) / (1.0 + z2 / n)
-    low = np.minimum(np.clip(centre - half, 0.0, 1.0), frequency)
-    high = np.maximum(np.clip(centre + half, 0.0, 1.0), frequency)
-    return frequency, low, high
+    if rules.selector not in SELECTORS:
+        raise StudyFileError(
+            code="unknown-selector",
+            where="[shortlist] selector",
+            what=f"no such selector (got {rules.selector!r})",
+            accepted=f"selectors are {name_some(SELECTORS)}",
+            next_step="Correct the name",
+        )
+    if rules.selector == "univariate":
+        return _pick_univariate(source, y, family, subjects, weights, plan, markers)
+    paths = fit_paths(
+        source,
+        y,
+        subsamples=plan.rows,
+        family=family,
+        n_penalties=rules.n_penalties,
+        penalty_floor=rules.penalty_floor,
+        max_markers=markers,
+        mixing=rules.l1_share if rules.selector == "elastic-net" else 1.0,
+        weights=weights,
+        threads=threads,
+    )
+    return Picks(paths.entry_order, positive_share(paths))
 
 
-def _positive_share(paths: PathSet) -> NDArray[np.float64]:
-    """Return the share of picks with a positive coefficient at the last penalty."""
-    positive = np.zeros(paths.n_features)
-    negative = np.zeros(paths.n_features)
-    for features, values, picks in zip(
-        paths.coefficient_features,
-        paths.coefficient_values,
-        paths.entry_order,
-        strict=True,
-    ):
-        # a feature's last stored value decides; later assignments win
-        last = np.zeros(paths.n_features)
-        last[features] = values
-        positive[picks] += last[picks] > 0
-        negative[picks] += last[picks] < 0
+def _pick_univariate(
+    source: MatrixSource,
+    y: Any,
+    family: Family,
+    subjects: NDArray[np.int64],
+    weights: NDArray[np.float64],
+    plan: SubsamplePlan,
+    markers: int,
+) -> Picks:
+    """Return the features with the largest statistics of every subsample."""
+    n_features = len(source.included)
+    positive, negative = np.zeros(n_features), np.zeros(n_features)
+    order = []
+    for rows in plan.rows:
+        t = feature_statistics(source, y, family, rows, subjects, weights)
+        first = np.argsort(-np.abs(t), kind="stable")[:markers]
+        first = first[t[first] != 0.0]
+        order.append(first)
+        positive[first] += t[first] > 0.0
+        negative[first] += t[first] < 0.0
+    if family == "multinomial":
+        return Picks(tuple(order), np.full(n_features, np.nan))
     with np.errstate(invalid="ignore"):
-        return positive / (positive + negative)
+        return Picks(tuple(order), positive / (positive + negative))
+
+
+def _bound(
+    demand: Demand, picks: Picks, n_features: int, plan: SubsamplePlan
+) -> ErrorBound:
+    sizes = np.array([len(features) for features in picks.order])
+    realised = float(sizes.mean())
+    at = (realised, demand.threshold, n_features, plan.n_pairs)
+    return ErrorBound(
+        threshold=demand.threshold,
+        asked=demand.markers,
+        realised=realised,
+        n_features=n_features,
+        worst_case=worst_case_bound(*at[:3]),
+        unimodal=unimodal_bound(*at),
+        r_concave=r_concave_bound(*at) if demand.bound == "r-concave" else math.nan,
+        decides=demand.bound,
+        n_pairs=plan.n_pairs,
+        full_share=float((sizes >= demand.markers).mean()),
+    )
 
 
 def _pool(
     frequency: NDArray[np.float64],
-    univariate: Univariate,
+    univariate: NDArray[np.int64],
     always: NDArray[np.int64] | None,
 ) -> NDArray[np.int64]:
     """Return the features worth grouping, in column order."""
     often = np.argsort(-frequency, kind="stable")[: POOL // 2]
     forced = np.empty(0, np.int64) if always is None else always
     return np.unique(
-        np.concatenate(
-            [often[frequency[often] > 0.0], univariate.order[: POOL // 2], forced]
-        )
+        np.concatenate([often[frequency[often] > 0.0], univariate[: POOL // 2], forced])
     )
 
 
 def _companions(
     source: MatrixSource,
     rows: NDArray[np.int64],
-    paths: PathSet,
+    picked: NDArray[np.bool_],
     pool: NDArray[np.int64],
     rules: ShortlistRules,
 ) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
-    group = np.full(paths.n_features, -1, np.int64)
-    shares = np.zeros(paths.n_features)
+    group = np.full(picked.shape[1], -1, np.int64)
+    shares = np.zeros(picked.shape[1])
     values = np.array([source.column(int(feature), rows) for feature in pool])
     code = group_companions(values, rules.companion_correlation)
     group[pool] = code
-    shares[pool] = group_frequencies(code, paths.ever_selected[:, pool])
+    shares[pool] = group_frequencies(code, picked[:, pool])
     return group, shares
 
 
@@ -244,8 +375,8 @@ def _candidates(
     ranked: NDArray[np.int64],
     group: NDArray[np.int64],
     group_frequency: NDArray[np.float64],
-    univariate: Univariate,
-    rules: ShortlistRules,
+    univariate: NDArray[np.int64],
+    n_candidates: int,
     always: NDArray[np.int64] | None,
 ) -> NDArray[np.int64]:
     """Return candidates: the best member of each top group, then univariate, forced."""
@@ -253,10 +384,8 @@ def _candidates(
     _, first = np.unique(group[grouped], return_index=True)
     leaders = grouped[np.sort(first)]  # most frequent member of each group
     leaders = leaders[np.argsort(-group_frequency[leaders], kind="stable")]
-    leaders = leaders[group_frequency[leaders] > 0.0][: rules.candidates]
-    best = univariate.order[: rules.candidates]
-    best = best[univariate.t[best] != 0.0]
+    leaders = leaders[group_frequency[leaders] > 0.0][:n_candidates]
     forced = np.empty(0, np.int64) if always is None else always
-    together = np.concatenate([leaders, best, forced])
+    together = np.concatenate([leaders, univariate[:n_candidates], forced])
     _, first = np.unique(together, return_index=True)
     return together[np.sort(first)]

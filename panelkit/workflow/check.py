@@ -11,7 +11,6 @@ from panelkit.ingest import check_usable
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
 from panelkit.workflow.procedure import draws_of, procedure_of
-from panelkit.workflow.supported import can_run, refuse_unsupported
 
 __all__ = ["CheckedStudy", "check_study", "checked"]
 
@@ -69,10 +68,7 @@ def check_study(study: "str | os.PathLike[str] | Study") -> Cohort:
         With exit codes 2, 3 and 4.
     """
     plan = study if isinstance(study, Study) else read_study(Path(study))
-    cohort = load_cohort(plan)
-    if not can_run(cohort):
-        return _settled_findings(plan, cohort, load_prices(plan)[2])
-    return _known(plan, cohort).cohort
+    return checked(plan).cohort
 
 
 def checked(plan: Study) -> CheckedStudy:
@@ -91,17 +87,12 @@ def checked(plan: Study) -> CheckedStudy:
     Raises
     ------
     StudyFileError, InputDataError, FitError
-        With exit codes 2, 3 and 4; 2 also for an outcome that can only be checked.
+        With exit codes 2, 3 and 4.
     """
     cohort = load_cohort(plan)
-    refuse_unsupported(plan, cohort)
-    return _known(plan, cohort)
-
-
-def _known(plan: Study, cohort: Cohort) -> CheckedStudy:
     procedure, data, size_findings = procedure_of(plan, cohort)
     draws = draws_of(plan, data)
-    pricer, price_hashes, price_findings = load_prices(plan)
+    pricer, price_hashes, price_findings = load_prices(plan, cohort)
     more = tuple(price_findings)
     if not any(item.code == "no-usable-feature" for item in cohort.findings):
         more = (*more, *check_usable(cohort, data.barred != ""))

@@ -1,5 +1,6 @@
 """From a study file to its cohort and its prices."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -8,9 +9,10 @@ from numpy.typing import NDArray
 from panelkit.config import Study
 from panelkit.costing import PanelPricer
 from panelkit.errors import InputDataError, StudyFileError, name_some
-from panelkit.ingest import read_cohort, read_price_list
-from panelkit.records import Cohort, Findings
+from panelkit.ingest import read_cohort, read_conflicts, read_price_list
+from panelkit.records import NO_CONFLICTS, Cohort, Findings, PriceList
 from panelkit.runtime import hash_of_file
+from panelkit.workflow.price_checks import conflict_findings, kit_findings
 
 __all__ = [
     "NEVER_ACCEPTED",
@@ -130,7 +132,26 @@ def refuse_stops(findings: Findings) -> None:
         )
 
 
-def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findings]:
+PRICED_BY = ("assay", "analyte", "symbol")
+"""Columns of features by which a list may price them, the closest first."""
+
+
+def _priced_as(cohort: Cohort, study: Study, prices: PriceList) -> dict[str, str]:
+    """Return the assay, analyte or symbol of each feature that prices or kits name."""
+    known = {row.marker for row in prices.rows}
+    known |= {name for kit in study.kits for name in kit.markers}
+    found: dict[str, str] = {}
+    for column in PRICED_BY:
+        names = cohort.feature_columns.get(column, ())
+        for feature, name in zip(cohort.features, names, strict=False):
+            if name in known:
+                found.setdefault(str(feature), str(name))
+    return found
+
+
+def load_prices(
+    study: Study, cohort: Cohort
+) -> tuple[PanelPricer | None, dict[str, str], Findings]:
     """Return what prices panels, the hashes of its files, and what was noticed.
 
     Raises
@@ -142,6 +163,7 @@ def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findi
         return None, {}, Findings()
     path = study.file(study.panels.prices)
     prices = read_price_list(path)
+    prices = replace(prices, analytes=_priced_as(cohort, study, prices))
     unknown = [name for name in study.platforms if name not in prices.platforms]
     if unknown:
         raise InputDataError(
@@ -153,8 +175,20 @@ def load_prices(study: Study) -> tuple[PanelPricer | None, dict[str, str], Findi
             next_step="Add a row for each marker, or one with marker '*'",
         )
     hashes = {"prices": hash_of_file(path)}
-    pricer = PanelPricer(study.programme, study.platforms, prices)
-    return pricer, hashes, prices.findings
+    conflicts = NO_CONFLICTS
+    if study.panels.conflicts is not None:
+        kept_apart = study.file(study.panels.conflicts)
+        conflicts = read_conflicts(kept_apart)
+        hashes["conflicts"] = hash_of_file(kept_apart)
+    pricer = PanelPricer(
+        study.programme, study.platforms, prices, study.kits, conflicts
+    )
+    noticed = [
+        *prices.findings,
+        *kit_findings(study.kits, prices, "study and platform files"),
+        *conflict_findings(conflicts, prices, "conflict list"),
+    ]
+    return pricer, hashes, Findings(tuple(noticed))
 
 
 def feature_positions(

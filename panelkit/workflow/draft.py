@@ -10,7 +10,7 @@ from typing import Any
 from panelkit.config import SEED, study_text
 from panelkit.errors import InputDataError
 from panelkit.ingest import guess_scale, is_missing, read_cohort
-from panelkit.preparation import default_steps
+from panelkit.preparation import DEFAULT_REASONS, default_steps
 from panelkit.workflow.draft_columns import (
     SurvivalPair,
     files_beside,
@@ -130,7 +130,7 @@ def draft_study(
     preparation = {
         "discovery": (
             f"The values look like {scale}; without this key the steps would be "
-            f"{', '.join(default_steps(scale))}."
+            f"{', '.join(default_steps(scale))}: {DEFAULT_REASONS[scale]}."
         )
     }
     return study_text(

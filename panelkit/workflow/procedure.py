@@ -1,22 +1,45 @@
 """What is repeated in every fold, as a study asks for it."""
 
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
 from panelkit.config import Study
 from panelkit.costing import (
+    BinaryTask,
+    ClassesTask,
+    Comparison,
     Draws,
+    NumberTask,
     Procedure,
     ProcedureData,
+    RandomPanels,
+    Rule,
+    SurvivalTask,
+    Task,
+    comparisons_for,
     draw_everything,
     given_folds,
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.ingest import guess_scale
-from panelkit.preparation import Recipe, default_steps
-from panelkit.records import Cohort, Finding
+from panelkit.records import Cohort, Finding, Outcome
+from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
+from panelkit.workflow.columns import coded_columns
+from panelkit.workflow.marker_facts import allowed_candidates
+from panelkit.workflow.recipes import assay_findings, context_of, recipes_of
 
-__all__ = ["draws_of", "procedure_of"]
+__all__ = [
+    "comparisons_of",
+    "draws_of",
+    "primary_rule",
+    "procedure_of",
+    "secondary_rules",
+]
 
 
 def procedure_of(
@@ -53,20 +76,22 @@ def procedure_of(
             code="outcome-missing",
             where="cohort",
             what="it has no outcome",
-            accepted="a binary outcome",
+            accepted="an outcome: outcome with positive, or time and event",
             next_step="Name outcome and positive",
         )
-    steps = plan.preparation.discovery
-    if steps is None:
-        steps = default_steps(guess_scale(cohort.values).kind)
-    recipe = Recipe(
-        steps, plan.preparation.log2_offset, plan.preparation.max_missing_share
-    )
+    context = context_of(cohort)
+    recipe, assay = recipes_of(plan, cohort)
+    for part in (recipe, assay):
+        if part is not None:
+            part.check(context)
     section = plan.shortlist
     rules = ShortlistRules(
         threshold=section.threshold,
         false_markers=section.false_markers,
         markers_per_subsample=section.markers_per_subsample,
+        bound=section.bound,
+        selector=section.selector,
+        l1_share=section.l1_share,
         candidates=section.candidates,
         companion_correlation=section.companion_correlation,
         n_penalties=section.n_penalties,
@@ -89,15 +114,23 @@ def procedure_of(
         )
     data = ProcedureData(
         base=recipe.base(cohort.values),
-        y=cohort.outcome.values,
+        task=task_of(cohort.outcome),
         weights=cohort.design.weights,
         subjects=cohort.design.subject,
         barred=barred,
         always=always,
+        covariates=coded_columns(cohort, plan.cohort.covariates),
+        nuisance=coded_columns(cohort, plan.cohort.nuisance),
+        controls=_controls(cohort),
+        context=context,
+        values=None if assay is None else cohort.values,
         blocks=cohort.design.blocks,
         folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
+        allowed=allowed_candidates(plan, cohort),
+        pair_site=_pair_site(plan, cohort),
     )
-    usable = min(section.candidates, int((barred == "").sum()))
+    free = (barred == "") & (True if data.allowed is None else data.allowed)
+    usable = min(section.candidates, int(free.sum()))
     sizes = tuple(size for size in plan.panels.sizes if size <= usable)
     if not sizes and usable:  # without any feature a finding has said so
         raise StudyFileError(
@@ -108,7 +141,7 @@ def procedure_of(
             "surely are",
             next_step="Name smaller sizes, or raise [shortlist] candidates",
         )
-    finding = []
+    finding = [] if assay is not None else assay_findings(recipe)
     if left := [size for size in plan.panels.sizes if size > usable]:
         finding.append(
             Finding(
@@ -120,7 +153,48 @@ def procedure_of(
                 "Raise [shortlist] candidates to have them",
             )
         )
-    return Procedure(recipe, rules, plan.panels.makers, sizes), data, finding
+    procedure = Procedure(recipe, rules, plan.panels.makers, sizes, assay=assay)
+    return procedure, data, finding
+
+
+def _pair_site(plan: Study, cohort: Cohort) -> NDArray[np.object_] | None:
+    """Return the sites by which halves are stratified, None where they are not.
+
+    Raises
+    ------
+    StudyFileError
+        Sites are asked for and none are named.
+    """
+    if not plan.shortlist.stratify_by_site:
+        return None
+    if cohort.design.site is None:
+        raise StudyFileError(
+            code="site-missing",
+            where=f"{plan.path}, [shortlist], key 'stratify_by_site'",
+            what="the study names no site",
+            accepted="a column of the sample sheet as [cohort] site",
+            next_step="Name it, or take the key out",
+        )
+    return cohort.design.site
+
+
+def task_of(outcome: Outcome) -> Task:
+    """Return what is predicted, and how predictions of it are judged."""
+    if outcome.kind == "classes":
+        return ClassesTask(outcome.values.astype(np.int64), outcome.classes)
+    if outcome.kind == "number":
+        return NumberTask(outcome.values)
+    if outcome.event is not None:
+        return SurvivalTask(outcome.values, outcome.event.astype(np.float64))
+    return BinaryTask(outcome.values)
+
+
+def _controls(cohort: Cohort) -> NDArray[np.int64]:
+    """Return the control features of the feature sheet."""
+    roles = cohort.feature_columns.get("role")
+    if roles is None:
+        return np.empty(0, np.int64)
+    return np.flatnonzero(np.array([str(role) == "control" for role in roles]))
 
 
 def draws_of(plan: Study, data: ProcedureData) -> Draws:
@@ -152,3 +226,42 @@ def draws_of(plan: Study, data: ProcedureData) -> Draws:
         subsamples=plan.shortlist.subsamples,
         inner_subsamples=plan.accuracy.inner_subsamples,
     )
+
+
+def comparisons_of(
+    plan: Study, procedure: Procedure, data: ProcedureData
+) -> Sequence[Comparison]:
+    """Return what is learnt beside the panels in every fold."""
+    usable = np.flatnonzero(data.barred == "")
+    random = RandomPanels.drawn(
+        procedure.sizes,
+        usable,
+        plan.accuracy.random_panels,
+        2 * plan.shortlist.candidates + len(data.always),
+        generator(plan.seed, "random-panels"),
+    )
+    return comparisons_for(data, random)
+
+
+def primary_rule(plan: Study) -> Rule:
+    """Return the rule of the headline."""
+    choice = plan.choice
+    return Rule(
+        choice.rule,
+        margin=choice.demand("margin") or 0.0,
+        budget=choice.demand("budget"),
+        required_accuracy=choice.demand("required_accuracy"),
+    )
+
+
+def secondary_rules(plan: Study) -> list[Rule]:
+    """Return the rules that are shown beside the primary one."""
+    own = primary_rule(plan)
+    names = ["smallest-within-one-se", "cheapest-within-one-se"]
+    if own.margin:
+        names += ["smallest-within-margin", "cheapest-within-margin"]
+    if own.budget is not None:
+        names.append("best-under-budget")
+    if own.required_accuracy is not None:
+        names.append("cheapest-above-accuracy")
+    return [replace(own, name=name) for name in names]

@@ -10,27 +10,24 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
 from panelkit.config import Study, read_study
-from panelkit.costing import (
-    Selected,
-    choose_for_everyone,
-    estimate_accuracy,
-)
+from panelkit.costing import estimate_accuracy, tune_on_everyone
+from panelkit.errors import NoPanelError
 from panelkit.records import (
     RESEARCH_USE,
-    Cohort,
-    Dropped,
     Findings,
     RunSummary,
 )
 from panelkit.report import render
 from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
+from panelkit.workflow.aftermath import learn_aftermath, write_aftermath
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
-from panelkit.workflow.record import record_bytes, run_record
-from panelkit.workflow.summary import summarise
+from panelkit.workflow.primary import primary_of
+from panelkit.workflow.procedure import comparisons_of
+from panelkit.workflow.recipes import preparation_tables
+from panelkit.workflow.record import record_bytes, run_record, without_prices
+from panelkit.workflow.summary import left_out, summarise
 from panelkit.workflow.tables import (
     choice_content,
     frontier_content,
@@ -129,36 +126,60 @@ def run_study(
     if pricer is not None:  # a price that is missing is told before the long work
         for panel in selected.panels:
             pricer.costs([str(cohort.features[j]) for j in panel])
-    inputs_read = {**(cohort.sources or {}), **known.price_hashes}
-    record = run_record(plan, inputs_read, len(cohort.openings))
+    record = run_record(
+        plan,
+        {**(cohort.sources or {}), **known.price_hashes},
+        preparation_tables(procedure.recipe, procedure.assay),
+        len(cohort.openings),
+    )
     content = record_bytes(record)
     folder = RunFolder(Path(out))
-    resumed = folder.claim(content)
+    resumed = folder.claim(content, without_prices)
     clock = _Clock(folder, listener)
     clock.seconds["reading"] = reading
     clock.seconds["shortlist"] = round(time.perf_counter() - start, 3)
     folder.log("resumed" if resumed else "started")
     listener(Progress("shortlist", 1, 1))
     findings = Findings((*cohort.findings, *known.size_findings)).ordered()
-    dropped = [*cohort.dropped, *_left_out(cohort, selected)]
+    dropped = [*cohort.dropped, *left_out(cohort, selected)]
     write_data_tables(folder, findings, dropped, cohort.flow)
     write_replicates(folder, cohort)
-    inputs, store = hashlib.sha256(content).hexdigest(), folder.store()
+    work = without_prices(content)
+    inputs, store = hashlib.sha256(work).hexdigest(), folder.store()
     how: dict[str, Any] = {"threads": n_threads, "listener": listener}
     start = time.perf_counter()
-    taken = choose_for_everyone(procedure, data, draws, inputs, store, **how)
+    everyone = tune_on_everyone(procedure, data, draws, inputs, store, **how)
     clock.seconds["choice"] = round(time.perf_counter() - start, 3)
     start = time.perf_counter()
-    accuracy = estimate_accuracy(procedure, data, draws, inputs, store, **how)
+    accuracy = estimate_accuracy(
+        procedure,
+        data,
+        draws,
+        inputs,
+        store,
+        comparisons=comparisons_of(plan, procedure, data),
+        **how,
+    )
     clock.seconds["accuracy"] = round(time.perf_counter() - start, 3)
     folder.log(f"accuracy: {clock.seconds['accuracy']:.2f} s")
+    primary = primary_of(plan, known, selected, everyone, accuracy)
+    start = time.perf_counter()
+    aftermath = learn_aftermath(
+        plan, known, selected, primary, accuracy, inputs, store, how
+    )
+    clock.seconds["stand-ins and learning curve"] = round(
+        time.perf_counter() - start, 3
+    )
     with clock.stage("pricing and choice"):
         summary = summarise(
             plan, cohort, record, findings, procedure, data, draws, selected,
-            taken, accuracy, pricer,
+            primary, accuracy, pricer,
         )  # fmt: skip
-        write_accuracy(folder, cohort, draws.folds, accuracy, pricer)
+        write_accuracy(
+            folder, cohort, draws.folds, accuracy, primary, data.task, pricer
+        )
         write_results(folder, summary)
+        write_aftermath(folder, aftermath)
     with clock.stage("report"):
         for name, page in render(summary).items():
             folder.write(name, page)
@@ -175,6 +196,16 @@ def run_study(
             "resumed": resumed,
         },
     )
+    if not primary.taken.met:
+        first = summary.choice.rules[0]
+        raise NoPanelError(
+            code="no-panel-meets-rule",
+            where=f"{plan.path}, [choice], rule {first.rule}",
+            what=first.sentence.split(". ")[0],
+            accepted="a demand that a panel of the study meets",
+            next_step=f"Read {folder.path / 'report.html'}; change the demand or offer "
+            "other panels",
+        )
     return Run(folder.path, summary)
 
 
@@ -198,11 +229,3 @@ def run_content(run: Run) -> dict[str, Any]:
         "report": str(run.path / "report.html"),
         "research_use": RESEARCH_USE,
     }
-
-
-def _left_out(cohort: Cohort, selected: Selected) -> list[Dropped]:
-    reasons = selected.view.state.reasons
-    return [
-        Dropped("feature", str(cohort.features[j]), "preparation", str(reasons[j]))
-        for j in np.flatnonzero(reasons != "")
-    ]

@@ -8,6 +8,7 @@ from panelkit.costing import ProcedureData, Selected
 from panelkit.fits import rank_univariate
 from panelkit.metrics import auc
 from panelkit.records import ShortlistTable
+from panelkit.workflow.marker_facts import MarkerFacts
 
 __all__ = ["shortlist_table"]
 
@@ -17,6 +18,7 @@ def shortlist_table(
     selected: Selected,
     features: NDArray[np.object_],
     confidence: float,
+    facts: MarkerFacts,
 ) -> ShortlistTable:
     """Return every feature that was ever picked or is a candidate, best first.
 
@@ -30,20 +32,22 @@ def shortlist_table(
         Feature ids.
     confidence : float
         Of the interval of the difference.
+    facts : MarkerFacts
+        Symbols, assays, limits, replicates.
 
     Returns
     -------
     ShortlistTable
-        Differences are positive minus negative class with Welch's interval, subjects
-        being the independent units; the single-marker area is apparent.
+        For two classes: differences are positive minus negative class with Welch's
+        interval, subjects being the independent units; the single-marker area is
+        apparent. NaN for other outcomes, whose sign is that of the coefficients.
 
     References
     ----------
     Welch 1947, Biometrika 34:28.
     """
     stability = selected.stability
-    rows = np.arange(len(data.y))
-    ranked = rank_univariate(selected.view, data.y, rows, data.subjects, data.weights)
+    rows = np.arange(data.n_samples)
     candidate = np.zeros(len(features), np.bool_)
     candidate[stability.candidates] = True
     picked = np.zeros(len(features), np.bool_)
@@ -54,18 +58,24 @@ def shortlist_table(
     )
     shown = shown[order]
     values = selected.view.columns(shown, rows)
-    share = data.weights / data.weights.sum()
-    difference = ranked.means[shown, 1] - ranked.means[shown, 0]
-    half = _half_width(data, ranked.variances[shown], confidence)
-    higher = difference > 0.0
-    area = np.array([auc(column, data.y, data.weights) for column in values])
     positive = stability.positive_share[shown]
+    if data.task.family == "binomial":
+        difference, half, area = _of_two_classes(
+            data, selected, shown, values, confidence
+        )
+        higher = difference > 0.0
+    else:
+        difference = half = area = np.full(len(shown), np.nan)
+        higher = np.nan_to_num(positive, nan=0.5) >= 0.5
+    sign = np.where(higher, "+", "-").astype(object)
+    if data.task.predictors:
+        sign[:] = ""  # several classes: a marker points to each in its own way
     return ShortlistTable(
         feature=features[shown],
         frequency=stability.frequency[shown],
         frequency_low=stability.low[shown],
         frequency_high=stability.high[shown],
-        sign=np.where(higher, "+", "-").astype(object),
+        sign=sign,
         sign_share=np.where(higher, positive, 1.0 - positive),
         group=stability.group[shown],
         group_frequency=np.where(
@@ -75,13 +85,33 @@ def shortlist_table(
         ),
         picked=picked[shown],
         candidate=candidate[shown],
-        mean_level=(values * share).sum(axis=1),
+        mean_level=values.mean(axis=1),
         difference=difference,
         difference_low=difference - half,
         difference_high=difference + half,
         single_marker_auc=np.where(higher, area, 1.0 - area),
         missing_share=np.isnan(data.base[shown]).mean(axis=1),
+        below_limit_share=facts.below_limit_share[shown],
+        replicate_icc=facts.replicate_icc[shown],
+        symbol=facts.symbol[shown],
+        assayable=facts.assayable[shown],
     )
+
+
+def _of_two_classes(
+    data: ProcedureData,
+    selected: Selected,
+    shown: NDArray[np.int64],
+    values: NDArray[np.float64],
+    confidence: float,
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]:
+    """Return difference, half width of its interval, and area, of features shown."""
+    y, rows = data.task.outcome(), np.arange(data.n_samples)
+    ranked = rank_univariate(selected.view, y, rows, data.subjects, data.weights)
+    difference = ranked.means[shown, 1] - ranked.means[shown, 0]
+    half = _half_width(data, ranked.variances[shown], confidence)
+    area = np.array([auc(column, y, data.weights) for column in values])
+    return difference, half, area
 
 
 def _half_width(
@@ -89,7 +119,7 @@ def _half_width(
 ) -> NDArray[np.float64]:
     """Return the half width of Welch's interval of a difference of two means."""
     units = np.array(
-        [len(np.unique(data.subjects[data.y == value])) for value in (0.0, 1.0)]
+        [len(np.unique(data.subjects[data.task.strata == value])) for value in (0, 1)]
     )
     parts = variances / units
     total = parts.sum(axis=1)

@@ -1,12 +1,14 @@
 """The tables of a run folder."""
 
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import astuple, fields
 from decimal import Decimal
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from panelkit.costing import HonestAccuracy, PanelPricer
+from panelkit.costing import HonestAccuracy, PanelPricer, Primary, Task
 from panelkit.ingest import replicate_agreement
 from panelkit.records import (
     Choice,
@@ -19,6 +21,7 @@ from panelkit.records import (
     FoldPlan,
     Frontier,
     FrontierRow,
+    OutOfFold,
     RunSummary,
     ShortlistTable,
 )
@@ -27,10 +30,12 @@ from panelkit.runtime import RunFolder
 __all__ = [
     "choice_content",
     "frontier_content",
+    "plain",
     "write_accuracy",
     "write_data_tables",
     "write_replicates",
     "write_results",
+    "write_shortlist",
 ]
 
 
@@ -77,6 +82,8 @@ def write_accuracy(
     cohort: Cohort,
     folds: FoldPlan,
     accuracy: HonestAccuracy,
+    primary: Primary,
+    task: Task,
     pricer: PanelPricer | None,
 ) -> None:
     """Write ``folds.csv``, ``predictions.csv`` and ``fold_panels.csv``.
@@ -103,17 +110,21 @@ def write_accuracy(
             for i, f in enumerate(folds.test_fold[r])
         ),
     )
-    outcome = _outcome(cohort)
-    everything = (*accuracy.panels, accuracy.primary, accuracy.ridge)
+    columns, classes = task.columns(), getattr(task, "names", ())
+    everything = (*accuracy.panels, primary.predictions, *accuracy.others.values())
     folder.table(
         "predictions.csv",
-        ["sample", "repeat", "fold", "maker", "size", "score", "outcome"],
-        (
-            (samples[i], r, folds.test_fold[r, i], each.maker, each.size, score, y)
-            for each in everything
-            for r in repeats
-            for i, (score, y) in enumerate(zip(each.scores[r], outcome, strict=True))
-        ),
+        [
+            "sample",
+            "repeat",
+            "fold",
+            "maker",
+            "size",
+            *(["class"] if classes else []),
+            "score",
+            *columns,
+        ],
+        _prediction_rows(everything, samples, folds, task, columns, classes),
     )
     folder.table(
         "fold_panels.csv",
@@ -128,20 +139,36 @@ def write_accuracy(
             "cost_total",
             "chosen_by_primary",
         ],
-        _fold_panels(cohort, folds, accuracy, pricer),
+        _fold_panels(cohort, folds, accuracy, primary, pricer),
     )
 
 
-def _outcome(cohort: Cohort) -> list[int]:
-    if cohort.outcome is None:
-        return []
-    return [int(value) for value in cohort.outcome.values]
+def _prediction_rows(
+    everything: Sequence[OutOfFold],
+    samples: NDArray[np.object_],
+    folds: FoldPlan,
+    task: Task,
+    columns: Mapping[str, NDArray[Any]],
+    classes: Sequence[str],
+) -> Iterator[tuple[Any, ...]]:
+    """Yield one row a prediction; one a class where there are several."""
+    own = list(zip(*columns.values(), strict=True))
+    for each in everything:
+        scores = task.scores(each.predicted)
+        for r in range(folds.n_repeats):
+            for i, fold in enumerate(folds.test_fold[r]):
+                lead = (samples[i], r, fold, each.maker, each.size)
+                if not classes:
+                    yield (*lead, scores[r, i], *own[i])
+                for k, name in enumerate(classes):
+                    yield (*lead, name, scores[r, k, i], *own[i])
 
 
 def _fold_panels(
     cohort: Cohort,
     folds: FoldPlan,
     accuracy: HonestAccuracy,
+    primary: Primary,
     pricer: PanelPricer | None,
 ) -> list[tuple[Any, ...]]:
     makers = list(dict.fromkeys(panels.maker for panels in accuracy.members))
@@ -151,8 +178,8 @@ def _fold_panels(
             members = panels.members[repeat, fold]
             markers = [str(cohort.features[j]) for j in members if j >= 0]
             chosen = (
-                accuracy.chosen.size[repeat, fold] == panels.size
-                and makers[accuracy.chosen.maker[repeat, fold]] == panels.maker
+                primary.chosen.size[repeat, fold] == panels.size
+                and makers[primary.chosen.maker[repeat, fold]] == panels.maker
             )
             costs = pricer.costs(markers) if pricer is not None and chosen else ()
             rows.append(
@@ -179,7 +206,7 @@ def write_results(folder: RunFolder, summary: RunSummary) -> None:
     RunFolderError
         A file cannot be written.
     """
-    _write_shortlist(folder, summary.shortlist)
+    write_shortlist(folder, summary.shortlist)
     _write_frontier(folder, summary.frontier)
     folder.table(
         "comparators.csv",
@@ -199,7 +226,14 @@ def write_results(folder: RunFolder, summary: RunSummary) -> None:
     folder.json("choice.json", choice_content(summary.choice))
 
 
-def _write_shortlist(folder: RunFolder, table: ShortlistTable) -> None:
+def write_shortlist(folder: RunFolder, table: ShortlistTable) -> None:
+    """Write ``shortlist.csv``.
+
+    Raises
+    ------
+    RunFolderError
+        The file cannot be written.
+    """
     names = _names(ShortlistTable)
     columns = [getattr(table, name) for name in names]
     folder.table("shortlist.csv", names, zip(*columns, strict=True))

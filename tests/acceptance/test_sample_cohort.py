@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from panelkit.config import read_study
-from panelkit.costing import Judge, draw_everything, estimate_accuracy
+from panelkit.costing import BinaryTask, Judge, draw_everything, estimate_accuracy
 from panelkit.fits import fit_panels, rank_univariate, standardised
 from panelkit.metrics import auc
 from panelkit.runtime import MemoryStore
@@ -86,15 +86,15 @@ def test_shuffled_labels_give_one_half_and_outside_selection_flatters(cohort):
     for seed in range(8):
         rng = np.random.default_rng(seed)
         classes = rng.permutation(_class_of_subjects(data))
-        shuffled = replace(narrow, y=classes[data.subjects])
+        shuffled = replace(narrow, task=BinaryTask(classes[data.subjects]))
         draws = draws_of(shuffled, seed, subsamples=20, n_inner=2)
         judge = Judge(
-            shuffled.y, shuffled.subjects, shuffled.weights, draws.folds, 0.95
+            shuffled.task, shuffled.subjects, shuffled.weights, draws.folds, 0.95
         )
         found = estimate_accuracy(
             procedure, shuffled, draws, f"shuffle {seed}", MemoryStore(), threads=2
         )
-        honest.append(judge.area(found.panels[1]).mean)
+        honest.append(judge.metric(found.panels[1]).mean)
         flattering.append(_selected_outside(procedure, shuffled, draws))
     assert abs(np.mean(honest) - 0.5) < 0.06
     assert np.mean(flattering) > 0.65
@@ -103,15 +103,15 @@ def test_shuffled_labels_give_one_half_and_outside_selection_flatters(cohort):
 
 def _class_of_subjects(data):
     first = np.unique(data.subjects, return_index=True)[1]
-    return data.y[first]
+    return data.task.y[first]
 
 
 def _selected_outside(procedure, data, draws):
     """Cross-validate ten markers that were chosen with all labels: the error."""
-    everyone = np.arange(len(data.y))
+    everyone = np.arange(data.n_samples)
     state = procedure.recipe.learn(data.base, everyone, data.barred)
     view = procedure.recipe.view(state, data.base)
-    ranked = rank_univariate(view, data.y, everyone, data.subjects, data.weights)
+    ranked = rank_univariate(view, data.task.y, everyone, data.subjects, data.weights)
     columns = view.columns(ranked.order[:10], everyone)
     areas = []
     for split in draws.splits.values():
@@ -119,10 +119,10 @@ def _selected_outside(procedure, data, draws):
         fits = fit_panels(
             z[:, split.training],
             [np.arange(10)],
-            data.y[split.training],
+            data.task.y[split.training],
             data.weights[split.training],
             np.array([0.1]),
         )
         log_odds = fits.linear_predictors(z[:, split.test])[0, 0]
-        areas.append(auc(log_odds, data.y[split.test]))
+        areas.append(auc(log_odds, data.task.y[split.test]))
     return np.mean(areas)

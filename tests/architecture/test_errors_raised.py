@@ -15,12 +15,20 @@ CODE_FROM_ELSEWHERE = {
 }
 CODE_IN_A_VARIABLE = {"fits/arguments.py"}
 CAUGHT_AS_AN_ANSWER = {
+    ("costing/learning_curve.py", "FitError"): "a share of the people is too few to "
+    "learn from: the curve starts later",
     ("costing/panel_prices.py", "NoPanelError"): "one of several platforms cannot run "
     "the panel",
+    ("costing/pricing.py", "NoPanelError"): "kits may run what single assays cannot",
+    ("costing/pricing.py", "InputDataError"): "kits need no quote of single assays",
     ("fits/budget.py", "FitError"): "separable data: no solution without a penalty",
 }
 BUILTIN_RAISED = {
     ("__init__.py", "AttributeError"): "PEP 562: what a module's __getattr__ owes",
+    ("stability/__init__.py", "AttributeError"): "PEP 562, as above",
+    ("stability/sklearn_selector.py", "ValueError"): "scikit-learn's way of refusing "
+    "input; its checks of estimators want no other",
+    ("config/kits.py", "ValueError"): "pydantic's way of refusing inside a validator",
     ("config/study.py", "ValueError"): "pydantic's way of refusing inside a validator",
 }
 

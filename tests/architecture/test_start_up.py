@@ -37,7 +37,7 @@ def test_help_loads_nothing_but_click():
     """Pinned: one import at the top of a command would bring the lot."""
     tops, shown = loaded_by(HELP)
     assert "Usage: panelkit" in shown
-    assert all(name in shown for name in ("draft", "check", "run"))
+    assert all(name in shown for name in ("draft", "check", "price", "run"))
     assert tops == {"click", "panelkit"}
 
 

@@ -16,7 +16,10 @@ OWNERS = {
     "matplotlib": {"report/*": "owner"},
     "numba": {"fits/kernel*": "owner"},
     "numpy": {"*": "arrays are what records carry"},
-    "openpyxl": {"ingest/*": "owner"},
+    "openpyxl": {
+        "ingest/*": "owner",
+        "report/price_workbook.py": "spreadsheets with live formulas",
+    },
     "pandas": {"ingest/*": "owner", "records/*": "to_frame"},
     "pyarrow": {"ingest/*": "owner"},
     "pydantic": {"config/*": "owner"},
@@ -29,7 +32,7 @@ OWNERS = {
         "metrics/*": "distributions of test statistics",
         "preparation/*": "no other package of ours has them",
         "sizing/*": "distributions",
-        "stability/*": "hierarchical clustering of companions",
+        "stability/*": "clustering of companions, their ranks",
         "workflow/shortlist.py": "Student's quantile of the marker table",
     },
     "sklearn": {

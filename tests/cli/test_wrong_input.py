@@ -181,18 +181,6 @@ def test_one_sentence_and_its_exit_code(panelkit, files, command, spoil):
     assert not out.exists()
 
 
-def test_an_outcome_that_can_be_checked_only(panelkit, files):
-    survival(files)
-    path, out = files.write(), files.folder / "out"
-    assert panelkit("check", path, "--quiet").code == 0
-    answer = panelkit("run", path, "--out", out, "--quiet")
-    assert answer.code == 2
-    assert "a survival outcome" in answer.err
-    assert "a binary outcome" in answer.err
-    clear(answer)
-    assert not out.exists()
-
-
 @pytest.mark.parametrize("command", ["check", "run"])
 def test_missing_study(panelkit, tmp_path, command):
     options = ("--out", tmp_path / "out") if command == "run" else ()

@@ -185,7 +185,15 @@ def test_shortlist_rules_are_the_section():
     """Each rule with its default; the section adds what draws and forces."""
     shown = section_defaults("shortlist")
     rules = {each.name: each.default for each in fields(ShortlistRules)}
-    assert set(shown) - set(rules) == {"subsamples", "always", "never"}
+    assert set(shown) - set(rules) == {
+        "subsamples",
+        "always",
+        "never",
+        "candidates_on",
+        "precision",
+        "shuffles",
+        "stratify_by_site",
+    }
     assert rules == {key: shown[key] for key in rules}
 
 

@@ -1,74 +1,18 @@
 """The whole procedure: nothing leaks, nothing depends on threads, noise stays noise."""
 
-import dataclasses
-from dataclasses import dataclass
-
 import numpy as np
 import pytest
 
-from panelkit.costing import Procedure, ProcedureData, Split, draw_folds
+from panelkit.costing import (
+    BinaryTask,
+    Procedure,
+)
 from panelkit.fits import fit_panels, standardised
 from panelkit.metrics import auc
 from panelkit.preparation import Recipe
-from panelkit.stability import ShortlistRules, draw_pairs
+from panelkit.stability import ShortlistRules
 
 LEARNT = ("filter", "median-fill")
-
-
-@dataclass
-class Cohort:
-    """Data, and the splits drawn for it before anything is fitted."""
-
-    base: np.ndarray  # features by samples
-    y: np.ndarray
-    subjects: np.ndarray
-    weights: np.ndarray
-
-    @classmethod
-    def drawn(cls, seed, n, p, signals=0, rows_per_subject=1, missing=0.0):
-        draws = np.random.default_rng(seed)
-        n_rows = n * rows_per_subject
-        subjects = np.repeat(np.arange(n), rows_per_subject)
-        y = (subjects % 2).astype(float)
-        base = draws.normal(size=(p, n_rows))
-        base[:signals] += 1.5 * y
-        base[draws.random(base.shape) < missing] = np.nan
-        return cls(base, y, subjects, np.full(n_rows, 1.0 / rows_per_subject))
-
-    def data(self, base=None, **changes):
-        p = len(self.base)
-        return dataclasses.replace(
-            ProcedureData(
-                base=self.base if base is None else base,
-                y=self.y,
-                weights=self.weights,
-                subjects=self.subjects,
-                barred=np.full(p, "", object),
-                always=np.empty(0, np.int64),
-            ),
-            **changes,
-        )
-
-    def folds(self, n_folds, seed=0):
-        generators = [np.random.default_rng([seed, 1])]
-        return draw_folds(self.subjects, self.y, n_folds, generators)
-
-    def split(self, training, test, seed=0, n_inner=3, n_pairs=5):
-        pairs = draw_pairs(
-            training, self.subjects, self.y, n_pairs, np.random.default_rng([seed, 2])
-        )
-        inner = []
-        if n_inner:
-            plan = draw_folds(
-                self.subjects[training],
-                self.y[training],
-                n_inner,
-                [np.random.default_rng([seed, 3])],
-            )
-            for fold in range(n_inner):
-                teach, judge = (training[rows] for rows in plan.split(0, fold))
-                inner.append(self.split(teach, judge, seed, 0, n_pairs))
-        return Split(training, test, pairs, tuple(inner))
 
 
 @pytest.fixture
@@ -103,19 +47,20 @@ def everything(learnt):
     found["state"] = learnt.selected.view.state.digest()
     found["panels"] = [panel.tolist() for panel in learnt.selected.panels]
     found["penalties"] = learnt.penalties.tolist()
-    found["chosen"] = learnt.chosen
     found["best"] = learnt.tuning.best.tobytes()
-    found["area"] = learnt.tuning.area.tobytes()
+    found["area"] = learnt.tuning.metric.tobytes()
     return found
 
 
 @pytest.mark.parametrize("kind", [np.float32, np.float64])
 @pytest.mark.parametrize("change", ["random", "missing", "huge"])
 @pytest.mark.parametrize("fold", [0, 2])
-def test_held_out_rows_change_no_bit_of_what_is_learnt(kind, change, fold, procedure):
+def test_held_out_rows_change_no_bit_of_what_is_learnt(
+    kind, change, fold, procedure, drawn_cohort
+):
     # signals are weak and many cells missing, so that frequencies, fills, penalties and
     # the chosen size all sit where a single leaked value would move them
-    cohort = Cohort.drawn(1, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
+    cohort = drawn_cohort(1, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
     cohort.base = cohort.base.astype(kind)
     training, test = cohort.folds(4).split(0, fold)
     split = cohort.split(training, test)
@@ -129,13 +74,13 @@ def test_held_out_rows_change_no_bit_of_what_is_learnt(kind, change, fold, proce
     other = procedure.learn(cohort.data(changed), split)
     assert everything(one) == everything(other)
     if change == "random":
-        assert one.log_odds.tobytes() != other.log_odds.tobytes()  # it was applied
+        assert one.predicted.tobytes() != other.predicted.tobytes()  # it was applied
 
 
 @pytest.mark.parametrize("seed", [2, 4])
-def test_held_out_rows_of_a_large_matrix_change_no_bit(seed, monkeypatch):
+def test_held_out_rows_of_a_large_matrix_change_no_bit(seed, monkeypatch, drawn_cohort):
     monkeypatch.setattr("panelkit.fits.product.COPY_LIMIT", 0)
-    cohort = Cohort.drawn(seed, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
+    cohort = drawn_cohort(seed, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
     rules = ShortlistRules(markers_per_subsample=4, n_penalties=6, candidates=10)
     procedure = Procedure(Recipe(LEARNT), rules, ("frequency", "univariate"), (1, 3, 6))
     training, test = cohort.folds(4).split(0, 0)
@@ -148,8 +93,8 @@ def test_held_out_rows_of_a_large_matrix_change_no_bit(seed, monkeypatch):
 
 
 @pytest.mark.parametrize("threads", [1, 2])
-def test_held_out_outcomes_change_nothing_at_all(threads, procedure):
-    cohort = Cohort.drawn(2, 40, 300, signals=4)
+def test_held_out_outcomes_change_nothing_at_all(threads, procedure, drawn_cohort):
+    cohort = drawn_cohort(2, 40, 300, signals=4)
     training, test = cohort.folds(4).split(0, 1)
     split = cohort.split(training, test)
     other = cohort.y.copy()
@@ -157,14 +102,16 @@ def test_held_out_outcomes_change_nothing_at_all(threads, procedure):
     weights = cohort.weights.copy()
     weights[test] = 100.0
     one = procedure.learn(cohort.data(), split, threads)
-    two = procedure.learn(cohort.data(y=other, weights=weights), split, threads)
+    two = procedure.learn(
+        cohort.data(task=BinaryTask(other), weights=weights), split, threads
+    )
     assert everything(one) == everything(two)
-    assert one.log_odds.tobytes() == two.log_odds.tobytes()
+    assert one.predicted.tobytes() == two.predicted.tobytes()
 
 
-def test_a_training_value_does_change_what_is_learnt(procedure):
+def test_a_training_value_does_change_what_is_learnt(procedure, drawn_cohort):
     # the guard of the leak tests: they would pass on a procedure that learns nothing
-    cohort = Cohort.drawn(1, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
+    cohort = drawn_cohort(1, 36, 300, signals=4, rows_per_subject=2, missing=0.1)
     training, test = cohort.folds(4).split(0, 0)
     split = cohort.split(training, test)
     changed = cohort.base.copy()
@@ -175,8 +122,8 @@ def test_a_training_value_does_change_what_is_learnt(procedure):
         assert one[name] != other[name]
 
 
-def test_inner_test_rows_do_not_teach_the_selection_they_judge(procedure):
-    cohort = Cohort.drawn(3, 40, 300, signals=4, missing=0.1)
+def test_inner_test_rows_do_not_teach_the_selection_they_judge(procedure, drawn_cohort):
+    cohort = drawn_cohort(3, 40, 300, signals=4, missing=0.1)
     training, test = cohort.folds(4).split(0, 0)
     inner = cohort.split(training, test).inner[1]
     changed = cohort.base.copy()
@@ -188,18 +135,18 @@ def test_inner_test_rows_do_not_teach_the_selection_they_judge(procedure):
     assert [p.tolist() for p in one.panels] == [p.tolist() for p in other.panels]
 
 
-def test_threads_change_no_bit(procedure, monkeypatch):
+def test_threads_change_no_bit(procedure, monkeypatch, drawn_cohort):
     monkeypatch.setattr("panelkit.fits.product.TILE", 64)
-    cohort = Cohort.drawn(4, 40, 500, signals=4, missing=0.05)
+    cohort = drawn_cohort(4, 40, 500, signals=4, missing=0.05)
     split = cohort.split(*cohort.folds(4).split(0, 2))
     one = procedure.learn(cohort.data(), split, threads=1)
     two = procedure.learn(cohort.data(), split, threads=2)
     assert everything(one) == everything(two)
-    assert one.log_odds.tobytes() == two.log_odds.tobytes()
+    assert one.predicted.tobytes() == two.predicted.tobytes()
 
 
-def test_predictions_come_from_a_refit_on_the_training_rows(procedure):
-    cohort = Cohort.drawn(5, 40, 200, signals=4, missing=0.1)
+def test_predictions_come_from_a_refit_on_the_training_rows(procedure, drawn_cohort):
+    cohort = drawn_cohort(5, 40, 200, signals=4, missing=0.1)
     training, test = cohort.folds(4).split(0, 0)
     split = cohort.split(training, test)
     learnt = procedure.learn(cohort.data(), split)
@@ -216,23 +163,25 @@ def test_predictions_come_from_a_refit_on_the_training_rows(procedure):
             learnt.penalties[p : p + 1],
         )
         expected = fits.linear_predictors(Z[:, test])[0, 0]
-        assert learnt.log_odds[p] == pytest.approx(expected, abs=1e-12)
+        assert learnt.predicted[p] == pytest.approx(expected, abs=1e-12)
         # tuned on fewer rows than it is used on
         ratio = (len(split.inner) - 1) / len(split.inner)
         grid = np.array(procedure.ridge_penalties) * ratio
         assert np.isclose(grid, learnt.penalties[p], rtol=1e-12).any()
 
 
-def test_panels_come_from_the_candidates_in_order_of_maker_and_size(procedure):
-    cohort = Cohort.drawn(6, 40, 200, signals=4)
+def test_panels_come_from_the_candidates_in_order_of_maker_and_size(
+    procedure, drawn_cohort
+):
+    cohort = drawn_cohort(6, 40, 200, signals=4)
     learnt = procedure.learn(cohort.data(), cohort.split(*cohort.folds(4).split(0, 0)))
     assert [len(panel) for panel in learnt.selected.panels] == [1, 3, 6, 1, 3, 6]
     for panel in learnt.selected.panels:
         assert np.isin(panel, learnt.selected.stability.candidates).all()
 
 
-def test_barred_features_never_reach_a_panel(procedure):
-    cohort = Cohort.drawn(7, 40, 200, signals=4)
+def test_barred_features_never_reach_a_panel(procedure, drawn_cohort):
+    cohort = drawn_cohort(7, 40, 200, signals=4)
     barred = np.full(200, "", object)
     barred[:4] = "barred by the study"  # the signals themselves
     split = cohort.split(*cohort.folds(4).split(0, 0))
@@ -241,47 +190,49 @@ def test_barred_features_never_reach_a_panel(procedure):
         assert not np.isin(panel, np.arange(4)).any()
 
 
-def test_forced_features_are_candidates_in_every_fold(procedure):
-    cohort = Cohort.drawn(8, 40, 200, signals=4)
+def test_forced_features_are_candidates_in_every_fold(procedure, drawn_cohort):
+    cohort = drawn_cohort(8, 40, 200, signals=4)
     data = cohort.data(always=np.array([150]))
     for fold in range(4):
         split = cohort.split(*cohort.folds(4).split(0, fold), n_inner=0)
         assert 150 in procedure.select(data, split).stability.candidates
 
 
-def test_no_test_rows_are_no_predictions(procedure):
-    cohort = Cohort.drawn(9, 40, 100, signals=4)
+def test_no_test_rows_are_no_predictions(procedure, drawn_cohort):
+    cohort = drawn_cohort(9, 40, 100, signals=4)
     split = cohort.split(np.arange(40), np.empty(0, np.int64))
     learnt = procedure.learn(cohort.data(), split)
-    assert learnt.log_odds.shape == (6, 0)
+    assert learnt.predicted.shape == (6, 0)
 
 
 @pytest.mark.parametrize("seed", [0, 1])
-def test_ridge_on_all_reads_no_held_out_outcome_and_learns_a_signal(seed, procedure):
-    cohort = Cohort.drawn(10 + seed, 60, 100, signals=20)
+def test_ridge_on_all_reads_no_held_out_outcome_and_learns_a_signal(
+    seed, procedure, drawn_cohort
+):
+    cohort = drawn_cohort(10 + seed, 60, 100, signals=20)
     training, test = cohort.folds(3).split(0, seed)
     split = cohort.split(training, test, n_inner=0)
     view = procedure.select(cohort.data(), split).view
     found = procedure.ridge_on_all(cohort.data(), split, view)
     other = cohort.y.copy()
     other[test] = 1.0 - other[test]
-    again = procedure.ridge_on_all(cohort.data(y=other), split, view)
+    again = procedure.ridge_on_all(cohort.data(task=BinaryTask(other)), split, view)
     assert found.tobytes() == again.tobytes()
     assert auc(found, cohort.y[test]) > 0.8
 
 
-def test_signal_is_found_out_of_fold(procedure):
-    cohort = Cohort.drawn(12, 60, 300, signals=4)
+def test_signal_is_found_out_of_fold(procedure, drawn_cohort):
+    cohort = drawn_cohort(12, 60, 300, signals=4)
     folds = cohort.folds(3)
     areas = []
     for fold in range(3):
         training, test = folds.split(0, fold)
         learnt = procedure.learn(cohort.data(), cohort.split(training, test))
-        areas.append([auc(eta, cohort.y[test]) for eta in learnt.log_odds])
+        areas.append([auc(eta, cohort.y[test]) for eta in learnt.predicted])
     assert np.mean(areas, axis=0)[2] > 0.85  # six markers by frequency
 
 
-def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
+def test_noise_is_worth_one_half_unless_the_selection_sees_every_row(drawn_cohort):
     # Ambroise & McLachlan 2002, PNAS 99:6562: selecting on all rows and validating
     # afterwards flatters pure noise. 30 data sets of 40 samples and 500 features; the
     # standard error of an honest mean is about 0.02
@@ -294,7 +245,7 @@ def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
     )
     honest, flattering = np.zeros((30, 2)), np.zeros((30, 2))
     for seed in range(30):
-        cohort = Cohort.drawn([99, seed], 40, 500)
+        cohort = drawn_cohort([99, seed], 40, 500)
         data, folds = cohort.data(), cohort.folds(5, seed)
         no_rows = np.empty(0, np.int64)
         whole = procedure.select(
@@ -305,7 +256,7 @@ def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
             split = cohort.split(training, test, seed)
             learnt = procedure.learn(data, split)
             for maker in range(2):
-                honest[seed, maker] += auc(learnt.log_odds[maker], data.y[test]) / 5
+                honest[seed, maker] += auc(learnt.predicted[maker], cohort.y[test]) / 5
                 panel = whole.panels[maker]
                 Z, _, _ = standardised(
                     whole.view.columns(panel, np.arange(40)),
@@ -315,11 +266,11 @@ def test_noise_is_worth_one_half_unless_the_selection_sees_every_row():
                 fits = fit_panels(
                     Z[:, training],
                     [np.arange(len(panel))],
-                    data.y[training],
+                    cohort.y[training],
                     np.ones(len(training)),
                     learnt.penalties[maker : maker + 1],
                 )
                 eta = fits.linear_predictors(Z[:, test])[0, 0]
-                flattering[seed, maker] += auc(eta, data.y[test]) / 5
+                flattering[seed, maker] += auc(eta, cohort.y[test]) / 5
     assert honest.mean(axis=0) == pytest.approx([0.5, 0.5], abs=0.06)
     assert (flattering.mean(axis=0) > 0.85).all()

@@ -32,9 +32,6 @@ from panelkit.records.prices import AssayPrice
 DATA = Path(__file__).parent / "data"
 CASES = {case["id"]: case for case in json.loads((DATA / "cases.json").read_text())}
 
-OUT_OF_SCOPE: list[str] = []
-"""Cases that need kits, conflicts or break-even: none of the 19 does."""
-
 
 def rows_of(groups):
     """Return the rows that the short form of a case stands for."""
@@ -68,10 +65,9 @@ def vary(name, *, programme=None, platform=None, counts=None):
 
 def test_all_cases_are_accounted_for():
     assert len(CASES) == 19
-    assert set(OUT_OF_SCOPE) <= set(CASES)
 
 
-@pytest.mark.parametrize("name", [name for name in CASES if name not in OUT_OF_SCOPE])
+@pytest.mark.parametrize("name", CASES)
 def test_case(name):
     # panelkit cost model, the example that the id names
     case = CASES[name]
@@ -544,12 +540,6 @@ PLATES = {"positions": 8, "groups": 1}
             "platforms-mixed",
         ),
         (
-            [ONE[0], {"marker": "m2", "slots": 2, "dev": 1, "test": 1}],
-            PLATES | {"plex": 4},
-            UsageError,
-            "slot-sizes-mixed",
-        ),
-        (
             [*ONE, {"marker": "r", "role": "reference", "dev": 1, "test": 1}],
             PLATES | {"refs_scope": "pool"},
             StudyFileError,
@@ -668,7 +658,6 @@ def test_programme_file_is_refused(tmp_path, text, code):
     [
         ("[programme]", "platform-missing"),
         ("[platform]\npositions = 3", "platform-missing"),
-        ("[platform.a]\npositions = 3\n[[kit]]\n", "kits-not-priced"),
         ("[platform.a]\npositions = -3", "value-refused"),
     ],
 )

@@ -146,7 +146,8 @@ def test_cells_that_are_refused(write, column, cell, code):
     row |= {"marker": "m1", "platform": "pcr"}
     row |= {"pack": "10", "pack_price": "5"} if packed else {}
     row |= {column: cell}
-    path = write(f"{HEADER}\nm0,pcr{',' * 15}\n{','.join(row.values())}\n")
+    empty = "," * (len(PRICE_COLUMNS) - 2)
+    path = write(f"{HEADER}\nm0,pcr{empty}\n{','.join(row.values())}\n")
     with pytest.raises(InputDataError) as caught:
         read_price_list(path)
     assert (caught.value.code, caught.value.exit_code) == (code, 3)

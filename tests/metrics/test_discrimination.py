@@ -5,7 +5,7 @@ import pytest
 from sklearn.metrics import roc_auc_score
 
 from panelkit.errors import FitError
-from panelkit.metrics import auc, auc_placements
+from panelkit.metrics import areas, auc, auc_placements
 
 # two markers on 7 cases and 8 controls, with ties within and between the classes:
 # areas and variances are exact (DeLong, DeLong & Clarke-Pearson 1988, Biometrics
@@ -100,3 +100,15 @@ def test_a_score_that_is_not_a_number_is_no_area():
     scores = MARKER_A.copy()
     scores[3] = np.nan
     assert np.isnan(auc(scores, OUTCOME))
+
+
+def test_areas_of_many_scores_are_the_single_ones():
+    draws = np.random.default_rng(5)
+    scores = draws.normal(size=(30, 17)).round(1)  # ties
+    outcome = (np.arange(17) % 3 == 0) * 1.0
+    weights = draws.uniform(0.5, 2.0, 17)
+    many = areas(scores, outcome, weights)
+    single = [auc(row, outcome, weights) for row in scores]
+    assert many == pytest.approx(single)
+    scores[3, 2] = np.nan
+    assert np.isnan(areas(scores, outcome, weights)[3])

@@ -7,10 +7,27 @@ from hypothesis import strategies as st
 from hypothesis.extra import numpy as hnp
 
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.preparation import DesignView, Recipe, default_steps
-from panelkit.preparation.steps import fill_with_median, filter_features
+from panelkit.preparation import (
+    DEFAULT_REASONS,
+    DesignView,
+    Recipe,
+    default_steps,
+)
+from panelkit.preparation.filter import MeasuredAndVarying
+from panelkit.preparation.missing import medians
+from panelkit.preparation.values import starting_values
+from panelkit.records import RecipeContext
 
 LEARNT = ("filter", "median-fill")
+
+
+def fill_with_median(values, rows):
+    return medians(starting_values(values), rows)
+
+
+def filter_features(values, rows, max_missing_share):
+    step = MeasuredAndVarying(max_missing_share)
+    return step.learn(starting_values(values), rows, RecipeContext())["reasons"]
 
 
 def free(n_features):
@@ -32,7 +49,7 @@ def matrix(seed=0, p=40, n=25, missing=0.2, kind=np.float64):
 @pytest.mark.parametrize("kind", [np.float32, np.float64])
 @pytest.mark.parametrize("n_rows", [1, 8, 13])  # odd and even numbers of values
 def test_fill_is_the_median_of_the_measured_values(kind, n_rows, monkeypatch):
-    monkeypatch.setattr("panelkit.preparation.steps.TILE", 7)
+    monkeypatch.setattr("panelkit.preparation.values.TILE", 7)
     values = matrix(kind=kind)
     rows = np.random.default_rng(1).permutation(25)[:n_rows]
     found = fill_with_median(values, rows)
@@ -117,7 +134,7 @@ def test_missing_values_are_filled_with_what_training_rows_taught():
 def test_held_out_values_change_no_bit_of_the_state(steps, held_out, monkeypatch):
     # some features are constant or missing by one row only, so that a single value
     # read from another row would turn them
-    monkeypatch.setattr("panelkit.preparation.steps.TILE", 8)
+    monkeypatch.setattr("panelkit.preparation.values.TILE", 8)
     values = matrix(2)
     training = np.sort(np.random.default_rng(2).permutation(25)[:16])
     values[1, training] = 4.0
@@ -205,7 +222,7 @@ def test_view_shares_the_base():
 
 
 def test_logarithm_is_taken_of_each_value_and_the_cohort_is_left_alone(monkeypatch):
-    monkeypatch.setattr("panelkit.preparation.steps.TILE", 7)
+    monkeypatch.setattr("panelkit.preparation.scale.TILE", 7)
     values = matrix(7)
     before = values.copy()
     recipe = Recipe(("log2", *LEARNT), log2_offset=0.5)
@@ -253,7 +270,7 @@ def test_logarithm_of_nothing_is_nothing():
     ("code", "steps"),
     [
         ("unknown-step", ("log",)),
-        ("unknown-step", ("log2", "quantile")),
+        ("unknown-step", ("log2", "quantiles")),
         ("step-order", ("filter", "log2")),
         ("step-order", ("log2", "median-fill", "log2")),
         ("step-missing-or-repeated", ("log2", "filter")),
@@ -273,10 +290,19 @@ def test_a_step_written_twice_is_refused():
 
 
 @pytest.mark.parametrize(
-    ("scale", "first"), [("linear", True), ("counts", True), ("log2", False)]
+    ("scale", "first"),
+    [
+        ("linear", ("log2",)),
+        ("counts", ("log-cpm",)),
+        ("log2", ()),
+        ("z-scores", ()),
+        ("beta-values", ()),
+        ("unknown", ()),
+    ],
 )
 def test_default_steps_follow_the_scale(scale, first):
     steps = default_steps(scale)
-    assert (steps[0] == "log2") == first
+    assert steps[:-2] == first
+    assert scale in DEFAULT_REASONS
     assert steps[-2:] == LEARNT
     Recipe(steps)

@@ -92,7 +92,9 @@ def replicate_agreement():
 
 
 def bound():
-    return records.ErrorBound(0.75, 3, 2.5, N_FEATURES, 0.8)
+    return records.ErrorBound(
+        0.75, 3, 2.5, N_FEATURES, 0.8, 0.4, np.nan, "worst-case", 2, 0.5
+    )
 
 
 def stability():
@@ -100,6 +102,7 @@ def stability():
         frequency=floats(N_FEATURES),
         low=floats(N_FEATURES),
         high=floats(N_FEATURES),
+        simultaneous=floats(N_FEATURES),
         positive_share=floats(N_FEATURES),
         picks=(whole(2), whole(1)),
         bound=bound(),
@@ -118,9 +121,66 @@ def shortlist_table():
         "group": whole(2),
         "picked": np.array([True, False]),
         "candidate": np.array([True, True]),
+        "symbol": objects("", "ABL1"),
+        "assayable": objects("wells", ""),
     }
     names = records.ShortlistTable.__dataclass_fields__
     return records.ShortlistTable(**{n: kinds.get(n, floats(2)) for n in names})
+
+
+def agreement():
+    return records.Agreement(0.4, 0.3, 0.5, np.nan, 0.2, 4)
+
+
+def convergence():
+    return records.Convergence(
+        whole(2) + 1, whole(1), floats(2, 1), whole(2), whole(1), 0.75, 0.1, 0.1, 72
+    )
+
+
+def path_frequencies():
+    return records.PathFrequencies(
+        np.array([1.0, 0.5]), whole(2), floats(2, 2), floats(2), floats(2)
+    )
+
+
+def companions():
+    return records.Companions(
+        *(whole(2) for _ in range(3)),
+        *(floats(2) for _ in range(5)),
+        np.array([True, False]),
+    )
+
+
+def null_shortlist():
+    return records.NullShortlist(
+        whole(4), floats(4), floats(4), 1, 0.9, 0.9, 0.2, 0.2, 0.2,
+        floats(N_FEATURES), floats(N_FEATURES), floats(N_FEATURES),
+    )  # fmt: skip
+
+
+def selector_result():
+    return records.SelectorResult("lasso", bound(), whole(1), 0, 0.9, agreement())
+
+
+def shortlist_results():
+    return records.ShortlistResults(
+        study="study.toml",
+        outcome="response: yes against no",
+        n_samples=N_SAMPLES,
+        n_subjects=3,
+        features=cohort().features,
+        n_candidates_asked=2,
+        findings=findings(),
+        bound=bound(),
+        shortlist=shortlist_table(),
+        paths=path_frequencies(),
+        convergence=convergence(),
+        companions=companions(),
+        null=null_shortlist(),
+        selectors=(selector_result(),),
+        agreement=agreement(),
+    )
 
 
 def frontier_row(maker="frequency", size=2):
@@ -240,14 +300,40 @@ def run_summary():
     )
 
 
+TEN = Decimal("10.00")
+
+
+def break_even():
+    crossing = records.Crossing(2, "B", TEN)
+    return records.BreakEven(2, (crossing,), 2, 3, (1, 2), (TEN, TEN), (TEN, TEN))
+
+
+def cost_sheet():
+    row = records.SheetAssay(
+        "F0", "marker", 1, TEN, TEN, None, None, (), False, Decimal(0), 1
+    )
+    return records.CostSheet(
+        "A", panel_cost(), 2, (("samples", 10),), ((0, TEN),), (1,), (row,)
+    )
+
+
+def scenario():
+    return records.ScenarioAnswer(
+        "A", ("F0",), (panel_cost(),), (), None, (), None, (), (), cost_sheet()
+    )
+
+
 MADE = {
     "AssayMap": lambda: records.AssayMap(
         objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
     ),
+    "Agreement": agreement,
     "AssayPrice": assay,
     "Choice": choice,
     "Cohort": cohort,
     "Comparator": comparator,
+    "Companions": companions,
+    "Convergence": convergence,
     "CostLine": lambda: panel_cost().lines[0],
     "Design": design,
     "Dropped": lambda: cohort().dropped[0],
@@ -263,11 +349,16 @@ MADE = {
     "FrontierRow": frontier_row,
     "Headline": headline,
     "Opening": lambda: records.Opening.of(["S1"], "the panel is locked"),
+    "NullShortlist": null_shortlist,
     "OutOfFold": lambda: records.OutOfFold("frequency", 2, floats(2, N_SAMPLES)),
     "Outcome": outcome,
     "PanelCost": panel_cost,
+    "PathFrequencies": path_frequencies,
     "PathSet": path_set,
     "PriceList": lambda: records.PriceList((assay(),), findings()),
+    "RecipeContext": lambda: records.RecipeContext(
+        features=objects("F1", "F2", "F3"), batch=objects("a", "a", "b", "b")
+    ),
     "RecipeState": lambda: records.RecipeState(
         floats(N_FEATURES), np.ones(N_FEATURES, bool), objects("", "", "constant")
     ),
@@ -278,10 +369,53 @@ MADE = {
         1, "0.1.0", {"seed": 1}, {"samples": "0" * 64}, {"python": "3.11"}
     ),
     "RunSummary": run_summary,
+    "SelectorResult": selector_result,
+    "ShortlistResults": shortlist_results,
     "ShortlistTable": shortlist_table,
     "Stability": stability,
+    "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
-    "TunedChoice": lambda: records.TunedChoice(whole(2, 2), whole(2, 2)),
+    "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
+    "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "Fragility": lambda: records.Fragility(
+        "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
+    ),
+    "Handling": lambda: records.Handling("run", "1", 20, "spearman", 0.1, 0.6),
+    "LearningPoint": lambda: records.LearningPoint(0.4, 20.0, 0.7, 0.6, 0.8, 0.05),
+    "StandIn": lambda: records.StandIn(
+        "F1", "F2", "maker", 0.9, 0.01, 0.0, 0.02, "by role", 0.5, None
+    ),
+    "Subgroup": lambda: records.Subgroup("site", "A", 20, 8, 0.8, 0.7, 0.9, "words"),
+    "TunedChoice": lambda: records.TunedChoice(
+        whole(2, 2), whole(2, 2), np.ones((2, 2), bool)
+    ),
+}
+
+
+MADE |= {
+    "Assumption": lambda: records.Assumption("samples", "10", "given"),
+    "BreakEven": break_even,
+    "Conflict": lambda: records.Conflict("F0", "F1"),
+    "Conflicts": lambda: records.Conflicts((records.Conflict("F0", "F1"),)),
+    "CostSheet": cost_sheet,
+    "Crossing": lambda: break_even().crossings[0],
+    "Driver": lambda: records.Driver("F0", TEN, TEN, None, ""),
+    "KitPurchase": lambda: records.KitPurchase("K", 1, TEN, TEN, ("F0",), ()),
+    "PriceAnswer": lambda: records.PriceAnswer("EUR", 10, 12, (scenario(),)),
+    "PriceQuestion": lambda: records.PriceQuestion("F0", "wells", None, "Ask."),
+    "ScenarioAnswer": scenario,
+    "SheetAssay": lambda: cost_sheet().assays[0],
+    "Spares": lambda: records.Spares(
+        1, 0.95, 2, ("S",), 0.96, 0.8, TEN, TEN, True, True
+    ),
+    "SplitCost": lambda: records.SplitCost(
+        (panel_cost(),), (("F0",),), TEN, TEN, Fraction(10), TEN, True
+    ),
+    "Stair": lambda: records.Stair(1, "F0", TEN, TEN, None, ""),
+    "StepDown": lambda: records.StepDown(1, ("F0",), "1 pool", TEN),
+    "Variation": lambda: records.Variation(
+        "A", "samples", "10", "wells", TEN, TEN, 1, Fraction(1, 8), 1
+    ),
 }
 
 

@@ -74,6 +74,10 @@ def shortlist():
         difference_high=difference + 0.3,
         single_marker_auc=0.5 + 0.3 * frequency,
         missing_share=np.where(np.arange(n) == 2, 0.031, 0.0),
+        below_limit_share=np.full(n, np.nan),
+        replicate_icc=np.full(n, np.nan),
+        symbol=np.full(n, "", object),
+        assayable=np.full(n, "wells", object),
     )
 
 
@@ -190,7 +194,16 @@ def summary():
             Flow("", 3, 2, 0, 0, 0),
         ),
         bound=ErrorBound(
-            threshold=0.75, asked=40, realised=39.6, n_features=17990, worst_case=0.174
+            threshold=0.75,
+            asked=40,
+            realised=39.6,
+            n_features=17990,
+            worst_case=0.174,
+            unimodal=0.0889,
+            r_concave=np.nan,
+            decides="worst-case",
+            n_pairs=50,
+            full_share=0.98,
         ),
         shortlist=shortlist(),
         frontier=Frontier(frontier_rows()),

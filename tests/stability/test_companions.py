@@ -4,9 +4,17 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from scipy.stats import rankdata, spearmanr
 
-from panelkit.stability import group_companions
-from panelkit.stability.companions import group_frequencies
+from panelkit.fits import ArraySource
+from panelkit.stability import (
+    ShortlistRules,
+    describe_companions,
+    draw_pairs,
+    group_companions,
+    select_markers,
+)
+from panelkit.stability.companions import correlations, group_frequencies
 
 # permutations of 1 to 8, so that Pearson's r is Spearman's: rationals over 42, exact
 # arithmetic; merge heights as scipy 1.17.1 linkage finds them
@@ -118,3 +126,49 @@ def test_a_group_is_picked_when_any_member_is():
     )
     found = group_frequencies(groups, picked)
     assert found.tolist() == [0.75, 0.25, 0.75, 0.0]
+
+
+def test_spearman_of_the_worked_columns_with_ties():
+    # average ranks; exact: .7631578947 (scipy 1.17.1 spearmanr)
+    ranks = rankdata(np.array([[1, 2, 2, 4, 5], [3, 1, 4, 4, 6]]), axis=1)
+    assert correlations(ranks)[0, 1] == pytest.approx(0.7631578947, abs=1e-10)
+
+
+def test_pairs_of_companions_are_described(draw):
+    drawn = draw(21, 60, 80, signals=1, difference=1.5)
+    X = drawn.X.copy()
+    X[:, 1] = np.exp(X[:, 0] + 0.1 * X[:, 1])  # another scale: ranks agree better
+    found = drawn.select(X, markers_per_subsample=3, companion_correlation=0.6)
+    told = describe_companions(ArraySource(X), np.arange(60), found).to_frame()
+    pair = told[(told["first"] == 0) & (told["second"] == 1)].iloc[0]
+    assert pair["group"] == found.group[0] >= 0
+    assert pair["pearson"] == pytest.approx(np.corrcoef(X[:, 0], X[:, 1])[0, 1])
+    assert pair["spearman"] == pytest.approx(spearmanr(X[:, 0], X[:, 1]).statistic)
+    assert pair["spearman"] > pair["pearson"]
+    both = (found.picked[:, 0] & found.picked[:, 1]).mean()
+    assert pair["together"] == both
+    assert pair["expected"] == pytest.approx(found.frequency[0] * found.frequency[1])
+    assert (pair["z"] < 0) == (both < pair["expected"])
+
+
+def test_twins_split_their_votes_and_exclude_each_other():
+    """Four nearly equal markers, one pick a subsample: none alone reaches 0.6."""
+    draws = np.random.default_rng(8)
+    y = np.arange(80) % 2 * 1.0
+    X = draws.normal(size=(80, 60))
+    X[:, :4] = (y + 0.8 * draws.normal(size=80))[:, None] + 0.12 * X[:, :4]
+    rows = np.arange(80)
+    found = select_markers(
+        ArraySource(X), y, rows, rows, np.ones(80),
+        draw_pairs(rows, rows, y, 50, draws),
+        ShortlistRules(markers_per_subsample=1, threshold=0.6),
+    )  # fmt: skip
+    assert found.frequency.max() < 0.6
+    assert len(found.shortlist) == 0
+    assert found.group_frequency[0] > 0.9
+    told = describe_companions(ArraySource(X), rows, found).to_frame()
+    twins = told[(told["first"] < 4) & (told["second"] < 4)]
+    assert len(twins) == 6
+    assert twins["vote_split"].all()
+    assert (twins["together"] == 0.0).all()
+    assert (twins["z"] < 0.0).any()

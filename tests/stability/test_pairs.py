@@ -6,7 +6,12 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from panelkit.errors import FitError
-from panelkit.stability import draw_pairs, unit_strata
+from panelkit.stability import (
+    draw_pairs,
+    outcome_strata,
+    resampling_units,
+    unit_strata,
+)
 
 
 def drawn(seed, n_controls, n_cases, rows_per_subject, n_pairs=3, share=1.0):
@@ -122,3 +127,73 @@ def test_strata_of_units():
     assert holding.tolist() == [2, 2]
     strata, _ = unit_strata(np.array([1, 2]), np.array([0.0, 1.0]))
     assert [each.tolist() for each in strata] == [[1], [2]]
+
+
+def test_every_half_has_its_share_of_every_site():
+    rows = np.arange(80)
+    y = np.repeat([0.0, 1.0], 40)
+    site = np.array(["a", "b", "c", "d", "d"], object)[np.arange(80) % 5]
+    plan = draw_pairs(rows, rows, y, 20, np.random.default_rng(0), site=site)
+    for side in plan.rows:
+        for name, share in (("a", 4), ("b", 4), ("c", 4), ("d", 8)):
+            for outcome in (0.0, 1.0):
+                assert ((site[side] == name) & (y[side] == outcome)).sum() == share
+
+
+def test_odd_ones_of_sites_are_halved_together():
+    # five sites with three people of each class: only one of fifteen sits out
+    rows, y = np.arange(30), np.repeat([0.0, 1.0], 15)
+    site = np.arange(30) % 5
+    plan = draw_pairs(rows, rows, y, 20, np.random.default_rng(1), site=site)
+    for side in plan.rows:
+        assert (y[side] == 0.0).sum() == (y[side] == 1.0).sum() == 7
+        assert all((site[side] == k).sum() >= 2 for k in range(5))
+
+
+def test_matched_sets_stay_whole():
+    # pairs, and triples with two controls; each kind is halved
+    matched = np.concatenate(
+        [np.repeat(np.arange(8), 2), np.repeat(np.arange(8, 14), 3)]
+    )
+    first = np.unique(matched, return_index=True)[1]
+    y = np.zeros(len(matched))
+    y[first] = 1.0
+    rows = np.arange(len(matched))
+    plan = draw_pairs(rows, rows, y, 10, np.random.default_rng(2), matched_set=matched)
+    for b in range(10):
+        left, right = plan.rows[2 * b], plan.rows[2 * b + 1]
+        assert not np.intersect1d(matched[left], matched[right]).size
+        for side in (left, right):
+            sets = np.unique(matched[side])
+            assert np.isin(matched, sets).sum() == len(side)
+            assert ((sets < 8).sum(), (sets >= 8).sum()) == (4, 3)
+
+
+def test_sets_that_share_a_person_go_together():
+    subjects = np.array([0, 1, 1, 2, 3, 4])
+    matched = np.array([0, 0, 1, 1, 2, -1])
+    units = resampling_units(subjects, matched)
+    assert len(set(units[:4])) == 1
+    assert len(set(units.tolist())) == 3
+
+
+@pytest.mark.parametrize(
+    ("family", "outcome", "expected"),
+    [
+        ("binomial", np.array([0.0, 1.0]), [0.0, 1.0]),
+        ("multinomial", np.array(["a", "b"]), ["a", "b"]),
+        ("cox", (np.array([3.0, 4.0]), np.array([1.0, 0.0])), [1.0, 0.0]),
+        ("gaussian", np.array([0.3, 0.7]), [0.0, 0.0]),
+    ],
+)
+def test_what_halves_are_stratified_by(family, outcome, expected):
+    assert outcome_strata(outcome, family).tolist() == expected
+
+
+def test_events_are_shared_out():
+    # 4 events among 40 people: a random half has none in 5 of 100 draws
+    # (hypergeometric: 0.0530145530)
+    event = np.zeros(40)
+    event[:4] = 1.0
+    plan = draw_pairs(np.arange(40), np.arange(40), event, 50, np.random.default_rng(3))
+    assert {int(event[side].sum()) for side in plan.rows} == {2}

@@ -37,22 +37,27 @@ def survival(tiny):
 
 
 @pytest.mark.parametrize("kind", [number, classes, survival])
-def test_other_outcomes_are_checked_and_not_run(tiny, tmp_path, kind):
+def test_other_outcomes_run_from_end_to_end(tiny, tmp_path, kind):
     keys = kind(tiny)
     cohort = tiny.sections["cohort"]
     del cohort["outcome"], cohort["positive"]
     cohort.update(keys)
+    tiny.sections["accuracy"].update(folds=5, inner_folds=3, repeats=1)
     path = tiny.write()
     checked = check_study(path)
     assert checked.outcome.kind == kind.__name__
     assert checked.findings.of("stop") == ()
-    with pytest.raises(StudyFileError) as refused:
-        run_study(path, tmp_path / "out", threads=1)
-    assert refused.value.code == "outcome-not-supported"
-    assert refused.value.exit_code == 2
-    assert kind.__name__ in refused.value.what
-    assert "binary" in refused.value.accepted
-    assert not (tmp_path / "out").exists()
+    run = run_study(path, tmp_path / "out", threads=1)
+    frontier = run.summary.frontier.to_frame()
+    assert np.isfinite(frontier["metric"]).all()
+    assert frontier["size"].max() > 1
+    words = {"number": "R squared", "classes": "pairs of classes"}
+    assert (
+        words.get(kind.__name__, "concordance") in run.summary.choice.headline.sentence
+    )
+    table = pd.read_csv(tmp_path / "out" / "predictions.csv")
+    assert ("class" in table) == (kind is classes)
+    assert ("event" in table) == (kind is survival)
 
 
 def set_aside(tiny, n_last=6):

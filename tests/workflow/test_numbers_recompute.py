@@ -8,6 +8,8 @@ import pytest
 from sklearn.linear_model import LogisticRegression
 from sklearn.metrics import roc_auc_score
 
+LASSO = ("lasso-on-all", "lasso-on-all-one-se")
+
 
 def areas(predictions):
     """Return the area within each test fold, repeats by folds."""
@@ -34,7 +36,10 @@ def test_every_procedure_is_there(finished, procedures):
     frontier = finished.table("frontier.csv")
     expected = set(zip(frontier["maker"], frontier["size"], strict=True))
     assert len(expected) == 6
-    assert set(procedures) == expected | {("primary-rule", 0), ("ridge-on-all", 0)}
+    assert set(procedures) == expected | {
+        (name, 0)
+        for name in ("primary-rule", "ridge-on-all", "control-features", *LASSO)
+    }
 
 
 def test_frontier_recomputes(finished, procedures):
@@ -90,12 +95,14 @@ def test_comparators_recompute(finished, procedures):
     table = finished.table("comparators.csv").set_index("name")
     expected = {
         "ridge on all features": ("ridge-on-all", 0),
-        "single marker chosen by |t| in each fold": ("univariate", 1),
+        "one marker, the most different in each fold": ("univariate", 1),
+        "lasso on all features, smallest loss": ("lasso-on-all", 0),
+        "lasso on all features, one SE": ("lasso-on-all-one-se", 0),
     }
     for name, key in expected.items():
         value = areas(procedures[key]).mean()
         assert table.loc[name, "metric"] == pytest.approx(value, abs=1e-12)
-    assert table.loc["majority class", "metric"] == 0.5
+    assert table.loc["no feature at all", "metric"] == 0.5
 
 
 def test_the_choice_recomputes(finished, procedures):

@@ -28,7 +28,7 @@ def test_every_sample_once_per_repeat_and_procedure(predictions, study):
     names = [line.partition(",")[0] for line in sheet]
     for _, rows in predictions.groupby(KEYS):
         assert sorted(rows["sample"]) == sorted(names[1:])
-    assert predictions.groupby(KEYS).ngroups == 2 * 8
+    assert predictions.groupby(KEYS).ngroups == 2 * 11
     assert predictions["score"].between(0.0, 1.0, inclusive="neither").all()
 
 
@@ -114,5 +114,5 @@ def test_values_of_held_out_people_change_nothing_that_is_learnt(
         of_fold(table[table["sample"].isin(samples)], 1, ["maker", "size", "score"])
         for table in (predictions, other.table("predictions.csv"))
     )
-    assert len(before) == 8 * len(samples)
+    assert len(before) == 11 * len(samples)
     assert after.equals(before)

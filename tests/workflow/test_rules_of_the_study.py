@@ -1,10 +1,12 @@
 """What a study bars, forces and accepts is kept to, and said."""
 
+import json
+
 import numpy as np
 import pytest
 
 from panelkit import check_study, run_study
-from panelkit.errors import InputDataError, StudyFileError
+from panelkit.errors import InputDataError, NoPanelError, StudyFileError
 
 BARRED = {
     "F58": "its role is control",
@@ -106,3 +108,20 @@ def test_a_matrix_without_information_is_refused(tiny, tmp_path, value):
     tiny.expression.iloc[:, :] = value
     with pytest.raises(InputDataError):
         run_study(tiny.write(), tmp_path / "out", threads=1)
+
+
+def test_a_demand_that_nothing_meets_ends_with_the_nearest_miss(tiny, tmp_path):
+    tiny.sections["accuracy"].update(repeats=1, learning_curve=False)
+    tiny.sections["panels"]["sizes"] = [1, 2]
+    tiny.sections["choice"] = {
+        "primary": {"rule": "cheapest-above-accuracy", "required_accuracy": 0.9999}
+    }
+    out = tmp_path / "out"
+    with pytest.raises(NoPanelError) as missed:
+        run_study(tiny.write(), out, threads=1)
+    assert missed.value.exit_code == 5
+    assert "No panel meets the demand: the cheapest panel" in str(missed.value)
+    first = json.loads((out / "choice.json").read_text())["rules"][0]
+    assert first["panel"] == ""
+    assert "nearest miss has" in first["sentence"]
+    assert (out / "report.html").exists()
