@@ -342,7 +342,10 @@ class PanelsSection(Section):
     sizes : tuple of int
         Markers a panel, ascending.
     makers : tuple of str
-        Procedures that propose panels: frequency, univariate.
+        Procedures that propose panels: frequency, univariate, groups, forward,
+        exhaustive, price-weighted, own.
+    own : tuple of str
+        Markers of the maker ``own``, in the order in which smaller panels are cut.
     prices : str or None
         Price list (CSV).
     platforms : tuple of str
@@ -355,6 +358,7 @@ class PanelsSection(Section):
         default=PANELS.sizes, min_length=1
     )
     makers: tuple[str, ...] = Field(default=PANELS.makers, min_length=1)
+    own: tuple[str, ...] = ()
     prices: str | None = None
     platforms: tuple[str, ...] = ()
     conflicts: str | None = None
@@ -375,6 +379,8 @@ class AccuracySection(Section):
         Random panels of each size and kind, to compare with.
     learning_curve : bool
         Whether the headline is repeated with fewer training people.
+    leave_out : {"site"} or None
+        Each site is an outer fold, instead of folds that are drawn.
     metric : {"auc"}
         Area under the ROC curve.
     confidence : float
@@ -387,6 +393,7 @@ class AccuracySection(Section):
     inner_subsamples: int = Field(default=ACCURACY.inner_subsamples, ge=4, le=100_000)
     random_panels: int = Field(default=ACCURACY.random_panels, ge=20, le=10_000)
     learning_curve: bool = ACCURACY.learning_curve
+    leave_out: Literal["site"] | None = None
     metric: Literal["auc"] = ACCURACY.metric
     confidence: Share = ACCURACY.confidence
 

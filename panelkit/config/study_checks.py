@@ -72,7 +72,24 @@ def check_cohort_section(sections: Mapping[str, Any], path: str) -> None:
         outcome_kind(cohort.kind, cohort.time, cohort.event, cohort.classes),
         f"{path}, [design]",
     )
-    drawn = {"folds", "repeats"} & sections["accuracy"].model_fields_set
+    accuracy = sections["accuracy"]
+    drawn = {"folds", "repeats"} & accuracy.model_fields_set
+    if accuracy.leave_out is not None and cohort.site is None:
+        raise StudyFileError(
+            code="leave-out-without-site",
+            where=f"{path}, [accuracy], key 'leave_out'",
+            what="sites are to be left out in turn, and no site is named",
+            accepted="[cohort] site beside leave_out",
+            next_step="Name the column with the sites, or take leave_out away",
+        )
+    if accuracy.leave_out is not None and (cohort.folds is not None or drawn):
+        raise StudyFileError(
+            code="folds-twice",
+            where=f"{path}, [accuracy], key 'leave_out'",
+            what="sites are the folds, and folds are given or drawn as well",
+            accepted="leave_out, or [cohort] folds, or folds and repeats",
+            next_step="Remove one of them",
+        )
     if cohort.folds is not None and drawn:
         raise StudyFileError(
             code="folds-twice",

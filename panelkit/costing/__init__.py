@@ -31,7 +31,14 @@ from panelkit.costing.honest_accuracy import (
     tune_on_everyone,
 )
 from panelkit.costing.learning_curve import learning_curve
-from panelkit.costing.makers import MAKERS, Evidence, Maker, maker_named, register_maker
+from panelkit.costing.makers import (
+    MAKERS,
+    USING_PRICES,
+    Evidence,
+    Maker,
+    maker_named,
+    register_maker,
+)
 from panelkit.costing.money import format_money, round_money
 from panelkit.costing.panel_prices import PanelPricer
 from panelkit.costing.pricing import programme_cost
@@ -63,6 +70,7 @@ from panelkit.costing.weaknesses import fragility_of, stand_ins_of
 __all__ = [
     "MAKERS",
     "RULES",
+    "USING_PRICES",
     "BinaryTask",
     "ClassesTask",
     "Comparison",

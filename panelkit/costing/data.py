@@ -45,6 +45,8 @@ class ProcedureData:
         What each marker costs alone; NaN where unknown.
     reliability : ndarray of shape (n_features,) or None
         Intraclass correlation of technical replicates; NaN where unknown.
+    own : ndarray of int64 or None
+        The user's own list of markers, in the order given.
     context : RecipeContext
         What preparation may read beside the values.
     values : ndarray of shape (n_features, n_samples), or None
@@ -70,6 +72,7 @@ class ProcedureData:
     controls: NDArray[np.int64] = field(default_factory=lambda: np.empty(0, np.int64))
     price: NDArray[np.float64] | None = None
     reliability: NDArray[np.float64] | None = None
+    own: NDArray[np.int64] | None = None
     context: RecipeContext = NOTHING_KNOWN
     values: NDArray[np.floating[Any]] | None = None
     blocks: NDArray[np.int64] | None = None

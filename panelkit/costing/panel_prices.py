@@ -3,9 +3,12 @@
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 
+import numpy as np
+from numpy.typing import NDArray
+
 from panelkit.config import KitSection, PlatformSection, ProgrammeSection
 from panelkit.costing.pricing import programme_cost
-from panelkit.errors import NoPanelError, UsageError, name_some
+from panelkit.errors import InputDataError, NoPanelError, UsageError, name_some
 from panelkit.records import NO_CONFLICTS, Conflicts, PanelCost, PriceList
 
 __all__ = ["PanelPricer"]
@@ -130,6 +133,39 @@ class PanelPricer:
         return PanelPricer(
             self.programme, self.platforms, prices, self.kits, self.conflicts
         )
+
+    def alone(self, features: Sequence[str]) -> NDArray[np.float64]:
+        """Return what each feature costs as a panel of its own; NaN where unknown.
+
+        Parameters
+        ----------
+        features : sequence of str
+            Features of the cohort.
+
+        Returns
+        -------
+        ndarray of shape (n_features,), float64
+            On the cheapest platform. Features without a row of their own share the
+            price for any marker.
+        """
+        named = {row.marker for row in self.prices.rows}
+        common: float | None = None
+        found = np.empty(len(features))
+        for place, feature in enumerate(features):
+            analyte = self.prices.analytes.get(feature, feature)
+            if feature in named or analyte in named:
+                found[place] = self._alone(feature)
+                continue
+            if common is None:
+                common = self._alone(feature)
+            found[place] = common
+        return found
+
+    def _alone(self, feature: str) -> float:
+        try:
+            return self.lowest([feature])
+        except (InputDataError, UsageError):  # a missing quote, or a reference
+            return float("nan")
 
     def lowest(self, markers: Iterable[str]) -> float:
         """Return the cost on the cheapest platform; NaN where none can run the panel.

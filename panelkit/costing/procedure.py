@@ -226,6 +226,7 @@ class Procedure:
             group_frequency=stability.group_frequency,
             price=data.price,
             reliability=data.reliability,
+            own=None if data.own is None else data.own[view.included[data.own]],
             objective=judged,
             entry_order=entry_order,
         )

@@ -5,11 +5,21 @@ from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from pathlib import Path
 
+import numpy as np
+from numpy.typing import NDArray
+
 from panelkit.config import Study, read_study
-from panelkit.costing import Draws, PanelPricer, Procedure, ProcedureData
+from panelkit.costing import (
+    USING_PRICES,
+    Draws,
+    PanelPricer,
+    Procedure,
+    ProcedureData,
+)
 from panelkit.ingest import check_usable
 from panelkit.records import Cohort, Finding, Findings
 from panelkit.workflow.cohort import NEVER_ACCEPTED, load_cohort, load_prices
+from panelkit.workflow.marker_facts import marker_facts
 from panelkit.workflow.procedure import draws_of, procedure_of
 
 __all__ = ["CheckedStudy", "check_study", "checked"]
@@ -93,6 +103,11 @@ def checked(plan: Study) -> CheckedStudy:
     procedure, data, size_findings = procedure_of(plan, cohort)
     draws = draws_of(plan, data)
     pricer, price_hashes, price_findings = load_prices(plan, cohort)
+    data = replace(
+        data,
+        price=_prices_alone(plan, cohort, pricer),
+        reliability=marker_facts(plan, cohort).replicate_icc,
+    )
     more = tuple(price_findings)
     if not any(item.code == "no-usable-feature" for item in cohort.findings):
         more = (*more, *check_usable(cohort, data.barred != ""))
@@ -105,6 +120,15 @@ def checked(plan: Study) -> CheckedStudy:
         pricer,
         price_hashes,
     )
+
+
+def _prices_alone(
+    plan: Study, cohort: Cohort, pricer: PanelPricer | None
+) -> NDArray[np.float64] | None:
+    """Return what each marker costs alone, where a maker weighs it."""
+    if pricer is None or not set(USING_PRICES) & set(plan.panels.makers):
+        return None
+    return pricer.alone([str(feature) for feature in cohort.features])
 
 
 def _settled_findings(plan: Study, cohort: Cohort, found: Iterable[Finding]) -> Cohort:

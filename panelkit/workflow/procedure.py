@@ -25,7 +25,7 @@ from panelkit.costing import (
     maker_named,
 )
 from panelkit.errors import InputDataError, StudyFileError
-from panelkit.records import Cohort, Finding, Outcome
+from panelkit.records import Cohort, Finding, FoldPlan, Outcome
 from panelkit.runtime import generator
 from panelkit.stability import ShortlistRules
 from panelkit.workflow.cohort import barred_features, feature_positions
@@ -122,10 +122,11 @@ def procedure_of(
         covariates=coded_columns(cohort, plan.cohort.covariates),
         nuisance=coded_columns(cohort, plan.cohort.nuisance),
         controls=_controls(cohort),
+        own=_own_list(plan, cohort, barred),
         context=context,
         values=None if assay is None else cohort.values,
         blocks=cohort.design.blocks,
-        folds=None if cohort.design.fold is None else given_folds(cohort.design.fold),
+        folds=_outer_folds(plan, cohort),
         allowed=allowed_candidates(plan, cohort),
         pair_site=_pair_site(plan, cohort),
     )
@@ -187,6 +188,59 @@ def task_of(outcome: Outcome) -> Task:
     if outcome.event is not None:
         return SurvivalTask(outcome.values, outcome.event.astype(np.float64))
     return BinaryTask(outcome.values)
+
+
+def _outer_folds(plan: Study, cohort: Cohort) -> FoldPlan | None:
+    """Return the user's own folds, or one a site; None has them drawn.
+
+    Raises
+    ------
+    StudyFileError
+        Fewer than two sites, or everybody of a class at one of them.
+    """
+    site = cohort.design.site
+    if plan.accuracy.leave_out is None or site is None:
+        fold = cohort.design.fold
+        return None if fold is None else given_folds(fold)
+    sites, codes = np.unique(site.astype(str), return_inverse=True)
+    units = cohort.design.blocks
+    spread = [len(np.unique(codes[units == unit])) for unit in np.unique(units)]
+    if len(sites) < 2 or max(spread) > 1:
+        raise StudyFileError(
+            code="sites-cannot-be-folds",
+            where=f"{plan.path}, [accuracy], key 'leave_out'",
+            what=f"{len(sites)} sites, {sum(n > 1 for n in spread)} people (or matched "
+            "sets) at several of them",
+            accepted="at least two sites, each person at one",
+            next_step="Correct the sites, or draw folds instead",
+        )
+    return given_folds(codes.astype(np.int64))
+
+
+def _own_list(
+    plan: Study, cohort: Cohort, barred: NDArray[np.object_]
+) -> NDArray[np.int64] | None:
+    """Return the features of the maker ``own``.
+
+    Raises
+    ------
+    InputDataError
+        A marker that the cohort does not have, or that may not enter a panel.
+    """
+    if not plan.panels.own:
+        return None
+    where = f"{plan.path}, [panels], key 'own'"
+    own = feature_positions(cohort, plan.panels.own, where)
+    if (barred[own] != "").any():
+        first = own[barred[own] != ""][0]
+        raise InputDataError(
+            code="own-barred",
+            where=where,
+            what=f"{cohort.features[first]} may not enter a panel: {barred[first]}",
+            accepted="features that may be markers",
+            next_step="Remove it, or change its role in the feature sheet",
+        )
+    return own
 
 
 def _controls(cohort: Cohort) -> NDArray[np.int64]:

@@ -8,6 +8,7 @@ from importlib.metadata import version
 from typing import Any
 
 from panelkit.config import Study
+from panelkit.costing import USING_PRICES
 from panelkit.records import RunRecord
 from panelkit.runtime import json_bytes
 
@@ -63,9 +64,9 @@ def record_bytes(record: RunRecord) -> bytes:
 def without_prices(content: bytes) -> bytes:
     """Return what the finished folds of a run depend on: its record without prices.
 
-    No maker and no rule of a fold uses prices, so that other quotes need no fold to be
-    learnt again; whether anything is priced stays, since it decides which files there
-    are.
+    Unless a maker weighs prices no fold uses them, so that other quotes need no fold
+    to be learnt again; whether anything is priced stays, since it decides which files
+    there are.
 
     Parameters
     ----------
@@ -81,6 +82,9 @@ def without_prices(content: bytes) -> bytes:
         record = json.loads(content)
         study, inputs = dict(record["study"]), dict(record["inputs"])
     except (ValueError, KeyError, TypeError):
+        return content
+    makers = study.get("panels", {}).get("makers", ())
+    if set(USING_PRICES) & set(makers):
         return content
     for name in ("platform", "kit"):
         study.pop(name, None)

@@ -131,7 +131,12 @@ def outcome_words(cohort: Cohort) -> str:
 
 def _scheme(plan: Study, data: ProcedureData, draws: Draws) -> str:
     section = plan.accuracy
-    if plan.cohort.folds is None:
+    if section.leave_out is not None:
+        outer = (
+            f"{draws.folds.n_folds} folds, each a {section.leave_out} of the column "
+            f"{plan.cohort.site!r}"
+        )
+    elif plan.cohort.folds is None:
         outer = (
             f"{section.folds} folds, drawn {section.repeats} times, stratified by "
             "outcome and grouped by subject"

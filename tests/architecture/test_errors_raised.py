@@ -17,6 +17,9 @@ CODE_IN_A_VARIABLE = {"fits/arguments.py"}
 CAUGHT_AS_AN_ANSWER = {
     ("costing/learning_curve.py", "FitError"): "a share of the people is too few to "
     "learn from: the curve starts later",
+    ("costing/panel_prices.py", "InputDataError"): "a marker without a quote has no "
+    "price of its own",
+    ("costing/panel_prices.py", "UsageError"): "a reference is no panel",
     ("costing/panel_prices.py", "NoPanelError"): "one of several platforms cannot run "
     "the panel",
     ("costing/pricing.py", "NoPanelError"): "kits may run what single assays cannot",

@@ -19,7 +19,13 @@ def evidence():
     t = np.zeros(10)
     frequency[[0, 8, 3, 5, 2]] = 1.0, 0.4, 0.9, 0.9, 0.4
     t[[0, 8, 3, 5, 2]] = 99.0, -2.0, 1.0, -3.0, 2.0
-    return Evidence(np.array([8, 3, 5, 2]), frequency, t, price=np.full(10, 7.0))
+    return Evidence(
+        np.array([8, 3, 5, 2]),
+        frequency,
+        t,
+        price=np.full(10, 7.0),
+        own=np.array([3, 2, 8, 5]),
+    )
 
 
 @pytest.mark.parametrize(

@@ -3,6 +3,7 @@
 import json
 
 import numpy as np
+import pandas as pd
 import pytest
 
 from panelkit import check_study, run_study
@@ -125,3 +126,45 @@ def test_a_demand_that_nothing_meets_ends_with_the_nearest_miss(tiny, tmp_path):
     assert first["panel"] == ""
     assert "nearest miss has" in first["sentence"]
     assert (out / "report.html").exists()
+
+
+def test_each_site_is_left_out_in_turn(tiny, tmp_path):
+    clinics = ["North", "South", "West"]
+    tiny.samples["clinic"] = [clinics[k % 30 % 3] for k in range(40)]
+    tiny.sections["cohort"]["site"] = "clinic"
+    tiny.sections["accuracy"] = {
+        "leave_out": "site",
+        "inner_folds": 2,
+        "inner_subsamples": 4,
+        "learning_curve": False,
+    }
+    tiny.sections["panels"]["sizes"] = [1, 2]
+    run = run_study(tiny.write(), tmp_path / "out", threads=1)
+    folds = pd.read_csv(tmp_path / "out" / "folds.csv")
+    sheet = tiny.samples.set_index(tiny.samples.columns[0])["clinic"]
+    pairs = {(sheet[row.sample], row.fold) for row in folds.itertuples()}
+    assert len(pairs) == 3
+    assert "each a site" in run.summary.scheme
+
+
+def test_the_users_own_list_is_cut_in_its_order(tiny, tmp_path):
+    tiny.sections["panels"].update(makers=["own"], own=["F20", "F03", "F11"])
+    tiny.sections["panels"]["sizes"] = [1, 2]
+    tiny.sections["accuracy"].update(repeats=1, learning_curve=False)
+    run_study(tiny.write(), tmp_path / "out", threads=1)
+    table = pd.read_csv(tmp_path / "out" / "frontier.csv")
+    assert table["markers"].tolist() == ["F20", "F20;F03"]
+    tiny.sections["panels"]["own"] = ["F58"]
+    with pytest.raises(InputDataError, match="F58 may not enter a panel"):
+        run_study(tiny.write(), tmp_path / "other", threads=1)
+
+
+def test_price_weighted_panels_are_cheaper_and_tied_to_their_prices(tiny, tmp_path):
+    tiny.sections["panels"].update(makers=["frequency", "price-weighted"], sizes=[2, 3])
+    tiny.sections["accuracy"].update(repeats=1, learning_curve=False)
+    run_study(tiny.write(), tmp_path / "out", threads=1)
+    table = pd.read_csv(tmp_path / "out" / "frontier.csv").set_index("panel")
+    assert (
+        table.loc["price-weighted-3", "cost_total"]
+        <= table.loc["frequency-3", "cost_total"]
+    )

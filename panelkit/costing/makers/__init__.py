@@ -3,11 +3,19 @@
 from panelkit.costing.makers.contract import Evidence, Maker
 from panelkit.costing.makers.exhaustive import by_trying_all
 from panelkit.costing.makers.forward import by_forward_choice
+from panelkit.costing.makers.own_list import by_own_list
 from panelkit.costing.makers.price_weighted import by_weighted_price
 from panelkit.costing.makers.ranking import by_difference, by_frequency, by_group
 from panelkit.errors import StudyFileError, UsageError, name_some
 
-__all__ = ["MAKERS", "Evidence", "Maker", "maker_named", "register_maker"]
+__all__ = [
+    "MAKERS",
+    "USING_PRICES",
+    "Evidence",
+    "Maker",
+    "maker_named",
+    "register_maker",
+]
 
 MAKERS: dict[str, Maker] = {
     "frequency": by_frequency,
@@ -16,7 +24,11 @@ MAKERS: dict[str, Maker] = {
     "forward": by_forward_choice,
     "exhaustive": by_trying_all,
     "price-weighted": by_weighted_price,
+    "own": by_own_list,
 }
+
+USING_PRICES = ("groups", "price-weighted")
+"""Makers whose panels change with the prices."""
 
 
 def maker_named(name: str) -> Maker:

@@ -38,6 +38,8 @@ class Evidence:
         What each marker costs alone, NaN where unknown; None: nothing is priced.
     reliability : ndarray of shape (n_features,) or None
         Intraclass correlation of technical replicates, NaN where unknown.
+    own : ndarray of int64 or None
+        The user's own list, in the order given; None where there is none.
     objective : callable
         Panels (arrays of features) to the penalised loss of each one's fit on the
         training rows: smaller is better there, and too good elsewhere.
@@ -52,6 +54,7 @@ class Evidence:
     group_frequency: NDArray[np.float64] | None = None
     price: NDArray[np.float64] | None = None
     reliability: NDArray[np.float64] | None = None
+    own: NDArray[np.int64] | None = None
     objective: Callable[[Sequence[NDArray[np.int64]]], NDArray[np.float64]] = field(
         default=_no_fits
     )
