@@ -145,7 +145,7 @@ def random_figures(
     Parameters
     ----------
     figures : ndarray of shape (n_repeats, n_folds, n_sizes, n_panels)
-        The metric of each random panel in each fold.
+        The metric of each random panel in each fold; the first repeat counts.
     size : int
         Position of the size.
     observed : float
@@ -160,7 +160,7 @@ def random_figures(
     ----------
     Phipson & Smyth 2010, Stat Appl Genet Mol Biol 9:39 (why p is never 0).
     """
-    panels = np.nanmean(figures[:, :, size], axis=(0, 1))
+    panels = np.nanmean(figures[0, :, size], axis=0)
     low, high = np.quantile(panels, [0.05, 0.95])
     p = (1 + int((panels >= observed).sum())) / (len(panels) + 1)
     return float(panels.mean()), float(low), float(high), p
@@ -171,7 +171,7 @@ def no_better_than_random(
 ) -> bool:
     """Return whether the headline is reached by more than 5 % of random panels."""
     sizes = sorted({each.size for each in accuracy.panels})
-    observed = judge.metric(primary.predictions).mean
+    observed = _in_first_repeat(primary.predictions, judge)
     place = sizes.index(accuracy.panels[primary.taken.row].size)
     return random_figures(accuracy.figures[FROM_ALL], place, observed)[3] > ENOUGH
 
@@ -189,7 +189,7 @@ def _random(
             continue
         figures = accuracy.figures[key]
         for place, size in enumerate(sizes):
-            observed = judge.metric(own[size]).mean
+            observed = _in_first_repeat(own[size], judge)
             mean, low, high, p = random_figures(figures, place, observed)
             rows.append(
                 Comparator(
@@ -209,6 +209,11 @@ def _random(
                 )
             )
     return rows
+
+
+def _in_first_repeat(predictions: OutOfFold, judge: Judge) -> float:
+    """Return the metric on the folds on which random panels were learnt."""
+    return float(np.nanmean(judge.metric(predictions).per_fold[0]))
 
 
 def _markers(size: int) -> str:

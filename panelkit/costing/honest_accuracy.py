@@ -1,7 +1,7 @@
 """Honest accuracy: the whole procedure learnt again in every fold."""
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from typing import Any
 
 import numpy as np
@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from panelkit.costing.comparisons import Comparison, FoldWork
 from panelkit.costing.data import ProcedureData, Split
 from panelkit.costing.folds import draw_folds
-from panelkit.costing.procedure import Procedure
+from panelkit.costing.procedure import CandidateFacts, Procedure
 from panelkit.records import FoldPanels, FoldPlan, OutOfFold, SubsamplePlan
 from panelkit.runtime import (
     BlockResult,
@@ -36,6 +36,7 @@ __all__ = [
 
 PREDICTED = "predicted "  # names of blocks' arrays that hold predictions of others
 FIGURE = "figure "
+FACT = "fact "
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,6 +99,8 @@ class HonestAccuracy:
         Predictions of what is compared.
     figures : mapping of str to ndarray of shape (n_repeats, n_folds, ...)
         Further figures of each fold.
+    facts : mapping of (repeat, fold) to CandidateFacts
+        What the makers of each fold were given.
     """
 
     panels: tuple[OutOfFold, ...]
@@ -105,6 +108,7 @@ class HonestAccuracy:
     inner_metric: NDArray[np.float64]
     others: Mapping[str, OutOfFold]
     figures: Mapping[str, NDArray[np.float64]]
+    facts: Mapping[tuple[int, int], CandidateFacts]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -273,6 +277,8 @@ def estimate_accuracy(
     """
     width = max(procedure.sizes)
 
+    repeat_of = {id(split): repeat for (repeat, _), split in draws.splits.items()}
+
     def task(split: Split) -> BlockResult:
         learnt = procedure.learn(data, split)
         members = np.full((len(learnt.selected.panels), width), -1, np.int64)
@@ -282,9 +288,10 @@ def estimate_accuracy(
             "predicted": learnt.predicted,
             "members": members,
             "penalties": learnt.penalties,
+            **_stored(CandidateFacts.of(learnt.selected.stability)),
             "inner metric": learnt.tuning.metric.reshape(len(split.inner), -1),
         }
-        work = FoldWork(procedure, data, split, learnt)
+        work = FoldWork(procedure, data, split, learnt, repeat_of[id(split)])
         for comparison in comparisons:
             learnt_too = comparison(work)
             for name, predicted in learnt_too.predicted.items():
@@ -356,6 +363,19 @@ def tune_on_everyone(
     return Everyone(block["metric"], block["penalties"])
 
 
+def _stored(facts: CandidateFacts) -> dict[str, NDArray[Any]]:
+    """Return facts as arrays of a block."""
+    return {
+        f"{FACT}{field.name}": getattr(facts, field.name) for field in fields(facts)
+    }
+
+
+def _facts_of(block: BlockResult) -> CandidateFacts:
+    return CandidateFacts(
+        **{each.name: block[f"{FACT}{each.name}"] for each in fields(CandidateFacts)}
+    )
+
+
 def _assemble(
     procedure: Procedure,
     data: ProcedureData,
@@ -406,5 +426,9 @@ def _assemble(
             name.removeprefix(FIGURE): gathered(name)
             for name in first
             if name.startswith(FIGURE)
+        },
+        facts={
+            place: _facts_of(blocks[f"{place[0]}-{place[1]}"])
+            for place in np.ndindex(*grid)
         },
     )

@@ -1,5 +1,7 @@
 """How the headline would stand with fewer people: what more people may bring."""
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -51,7 +53,9 @@ def thinned(
         members = draws.permutation(units)
         kept.append(members[: max(1, round(share * len(members)))])
     rows = training[np.isin(data.units[training], np.concatenate(kept))]
-    return draw_split(data, rows, split.test, ("learning-curve", *place), rules)
+    # as many halves as inside the inner folds: a curve needs no finer frequencies
+    fewer = replace(rules, subsamples=rules.inner_subsamples)
+    return draw_split(data, rows, split.test, ("learning-curve", *place), fewer)
 
 
 def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs

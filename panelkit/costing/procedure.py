@@ -7,6 +7,7 @@ its training rows; the printed panels come from running it with all rows.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,7 +23,7 @@ from panelkit.preparation import DesignView, Recipe
 from panelkit.records import Stability
 from panelkit.stability import ShortlistRules, select_markers
 
-__all__ = ["Learnt", "Procedure", "Selected"]
+__all__ = ["CandidateFacts", "Learnt", "Procedure", "Selected"]
 
 RIDGE_PAIRS = 4  # pairs that tune ridge on all features
 RIDGE_PENALTIES = np.logspace(0.5, -3.5, 9)
@@ -48,6 +49,39 @@ class Selected:
     stability: Stability
     evidence: Evidence
     panels: list[NDArray[np.int64]]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CandidateFacts:
+    """What the makers were given about the candidates: enough to ask them again.
+
+    Attributes
+    ----------
+    candidates : ndarray of shape (n_candidates,), int64
+        Features.
+    frequency, t, group_frequency : ndarray of shape (n_candidates,), float64
+        As in `Evidence`.
+    group : ndarray of shape (n_candidates,), int64
+        Companion group.
+    """
+
+    candidates: NDArray[np.int64]
+    frequency: NDArray[np.float64]
+    t: NDArray[np.float64]
+    group: NDArray[np.int64]
+    group_frequency: NDArray[np.float64]
+
+    @classmethod
+    def of(cls, stability: Stability) -> "CandidateFacts":
+        """Return the facts of a stability selection."""
+        own = stability.candidates
+        return cls(
+            own,
+            stability.frequency[own],
+            stability.t[own],
+            stability.group[own],
+            stability.group_frequency[own],
+        )
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -139,7 +173,9 @@ class Procedure:
         tuning = self.tune(data, split, threads)
         selected = self.select(data, split, threads)
         penalties = self.penalties(tuning, len(split.inner))
-        predicted = self.predict(selected, data, split, penalties[:, None])
+        predicted = self.predict(
+            selected.view, data, split, penalties[:, None], selected.panels
+        )
         return Learnt(selected, tuning, penalties, predicted[:, 0])
 
     def select(self, data: ProcedureData, split: Split, threads: int = 1) -> Selected:
@@ -180,7 +216,8 @@ class Procedure:
             family=data.task.family,
             allowed=data.allowed,
         )
-        evidence = self._evidence(stability, view, data, split.training)
+        facts = CandidateFacts.of(stability)
+        evidence = self.evidence(facts, view, data, split.training)
         panels = [
             panel
             for name in self.makers
@@ -188,19 +225,41 @@ class Procedure:
         ]
         return Selected(view, stability, evidence, panels)
 
-    def _evidence(
+    def evidence(
         self,
-        stability: Stability,
+        facts: CandidateFacts,
         view: DesignView,
         data: ProcedureData,
         training: NDArray[np.int64],
     ) -> Evidence:
-        """Return what makers may know; fits are made when a maker asks for them."""
+        """Return what makers may know; fits are made when a maker asks for them.
+
+        Parameters
+        ----------
+        facts : CandidateFacts
+            Of the candidates that the training rows gave.
+        view : DesignView
+            Preparation learnt on them.
+        data : ProcedureData
+            Shared data.
+        training : ndarray of int64
+            The training rows.
+
+        Returns
+        -------
+        Evidence
+            For makers.
+        """
         objective: list[TrainingObjective] = []
+
+        def spread(values: NDArray[Any], blank: float) -> NDArray[Any]:
+            whole = np.full(len(view.included), blank, values.dtype)
+            whole[facts.candidates] = values
+            return whole
 
         def judged(panels: Sequence[NDArray[np.int64]]) -> NDArray[np.float64]:
             if not objective:
-                candidates = stability.candidates
+                candidates = facts.candidates
                 markers = self.markers(view, data, training)
                 objective.append(TrainingObjective(markers, candidates, data, training))
             return objective[0](panels)
@@ -219,11 +278,11 @@ class Procedure:
             return paths.entry_order[0]
 
         return Evidence(
-            candidates=stability.candidates,
-            frequency=stability.frequency,
-            t=stability.t,
-            group=stability.group,
-            group_frequency=stability.group_frequency,
+            candidates=facts.candidates,
+            frequency=spread(facts.frequency, 0.0),
+            t=spread(facts.t, 0.0),
+            group=spread(facts.group, -1),
+            group_frequency=spread(facts.group_frequency, 0.0),
             price=data.price,
             reliability=data.reliability,
             own=None if data.own is None else data.own[view.included[data.own]],
@@ -255,10 +314,10 @@ class Procedure:
         """
         shape = (len(self.makers), len(self.sizes))
         grid = np.tile(np.array(self.ridge_penalties), (shape[0] * shape[1], 1))
-        predicted = [
-            self.predict(self.select(data, inner, threads), data, inner, grid)
-            for inner in split.inner
-        ]
+        predicted = []
+        for inner in split.inner:
+            found = self.select(data, inner, threads)
+            predicted.append(self.predict(found.view, data, inner, grid, found.panels))
         return judge(predicted, data, split.inner, shape)
 
     def penalties(self, tuning: Tuning, n_folds: int) -> NDArray[np.float64]:
@@ -272,26 +331,26 @@ class Procedure:
 
     def predict(
         self,
-        selected: Selected,
+        view: DesignView,
         data: ProcedureData,
         split: Split,
         penalties: NDArray[np.float64],
-        panels: Sequence[NDArray[np.int64]] | None = None,
+        panels: Sequence[NDArray[np.int64]],
     ) -> NDArray[np.float64]:
         """Refit panels on the training rows and predict the test rows.
 
         Parameters
         ----------
-        selected : Selected
-            Preparation, and the panels unless others are given.
+        view : DesignView
+            Preparation learnt on the training rows.
         data : ProcedureData
             Shared data.
         split : Split
             Training and test rows.
         penalties : ndarray of shape (n_panels, n_penalties)
             Ridge penalties, largest first.
-        panels : sequence of ndarray of int64, optional
-            Other panels.
+        panels : sequence of ndarray of int64
+            Features of each panel.
 
         Returns
         -------
@@ -303,12 +362,11 @@ class Procedure:
         FitError
             A fit that is not possible or did not converge.
         """
-        chosen = selected.panels if panels is None else panels
-        features = np.unique(np.concatenate([*chosen, np.empty(0, np.int64)]))
-        markers = self.markers(selected.view, data, split.training)
+        features = np.unique(np.concatenate([*panels, np.empty(0, np.int64)]))
+        markers = self.markers(view, data, split.training)
         return refit(
             columns_of(markers, features, data, split),
-            [np.searchsorted(features, panel) for panel in chosen],
+            [np.searchsorted(features, panel) for panel in panels],
             data,
             split,
             penalties,

@@ -12,12 +12,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from panelkit.costing.data import ProcedureData, Split
-from panelkit.costing.honest_accuracy import Draws
-from panelkit.costing.makers import maker_named
-from panelkit.costing.procedure import Procedure, Selected
+from panelkit.costing.honest_accuracy import Draws, HonestAccuracy
+from panelkit.costing.makers import Evidence, maker_named
+from panelkit.costing.procedure import CandidateFacts, Procedure
 from panelkit.costing.refits import columns_of
 from panelkit.fits import fit_panels
-from panelkit.records import FoldPanels, OutOfFold
+from panelkit.preparation import DesignView
+from panelkit.records import OutOfFold
 from panelkit.runtime import (
     BlockResult,
     BlockStore,
@@ -52,13 +53,13 @@ class RoleLosses:
 
 
 def refill(
-    selected: Selected, maker: str, panel: NDArray[np.int64], feature: int
+    evidence: Evidence, maker: str, panel: NDArray[np.int64], feature: int
 ) -> NDArray[np.int64]:
     """Return the panel that the maker takes where one of its markers is forbidden.
 
     Parameters
     ----------
-    selected : Selected
+    evidence : Evidence
         What was learnt on the training rows; frequencies are not learnt again.
     maker : str
         Name of the maker.
@@ -72,12 +73,11 @@ def refill(
     ndarray of int64
         As many markers where there are candidates enough.
     """
-    evidence = selected.evidence.without(feature)
-    return maker_named(maker)(evidence, [len(panel)])[0]
+    return maker_named(maker)(evidence.without(feature), [len(panel)])[0]
 
 
 def closest_companion(
-    selected: Selected,
+    view: DesignView,
     panel: NDArray[np.int64],
     feature: int,
     rows: NDArray[np.int64],
@@ -86,7 +86,7 @@ def closest_companion(
 
     Parameters
     ----------
-    selected : Selected
+    view : DesignView
         Preparation learnt on the rows.
     panel : ndarray of int64
         Its markers cannot stand in.
@@ -102,7 +102,6 @@ def closest_companion(
     correlation : float
         Pearson, with its sign.
     """
-    view = selected.view
     own = view.column(feature, rows)
     own = own - own.mean()
     length = float(np.sqrt((own**2).sum()))
@@ -122,11 +121,12 @@ def closest_companion(
     return best, found
 
 
-def learn_roles(
+def learn_roles(  # noqa: PLR0913 - what was learnt, and how work runs
     procedure: Procedure,
     data: ProcedureData,
     draws: Draws,
-    panels: FoldPanels,
+    accuracy: HonestAccuracy,
+    row: int,
     inputs: str,
     store: BlockStore,
     *,
@@ -139,8 +139,10 @@ def learn_roles(
     ----------
     procedure, data, draws, inputs, store, threads, listener
         As for `estimate_accuracy`.
-    panels : FoldPanels
-        Each fold's panel of one maker and size, with its ridge penalty.
+    accuracy : HonestAccuracy
+        Each fold's panels, and what its makers were given.
+    row : int
+        Which maker and size.
 
     Returns
     -------
@@ -152,6 +154,7 @@ def learn_roles(
     FitError
         A fit that is not possible or did not converge.
     """
+    panels = accuracy.members[row]
     place = {
         (split.training.tobytes(), split.test.tobytes()): key
         for key, split in draws.splits.items()
@@ -164,6 +167,7 @@ def learn_roles(
             procedure,
             data,
             split,
+            accuracy.facts[repeat, fold],
             panels.maker,
             panel[panel >= 0],
             panels.size,
@@ -206,23 +210,27 @@ def _of_fold(
     procedure: Procedure,
     data: ProcedureData,
     split: Split,
+    facts: CandidateFacts,
     maker: str,
     panel: NDArray[np.int64],
     size: int,
     penalty: float,
 ) -> BlockResult:
-    selected = procedure.select(data, split)
+    _state, view = procedure.recipe.prepare(
+        data.base, split.training, data.barred, data.context
+    )
+    evidence = procedure.evidence(facts, view, data, split.training)
     shape = (len(VARIANTS), size, *data.task.predictors, len(split.test))
     predicted = np.full(shape, np.nan)
     replaced = np.full((len(VARIANTS), size), -1, np.int64)
     fewer, refilled, swapped = [], [], []
     for role, feature in enumerate(panel):
         fewer.append(panel[panel != feature])
-        instead = refill(selected, maker, panel, int(feature))
+        instead = refill(evidence, maker, panel, int(feature))
         refilled.append(instead)
         came = instead[~np.isin(instead, panel)]
         replaced[2, role] = came[0] if len(came) else -1
-        companion, _r = closest_companion(selected, panel, int(feature), split.training)
+        companion, _r = closest_companion(view, panel, int(feature), split.training)
         replaced[3, role] = companion
         swapped.append(
             panel[panel != feature]
@@ -232,17 +240,17 @@ def _of_fold(
     roles = len(panel)
     both = [*fewer, *refilled, *swapped]
     grid = np.full((len(both), 1), penalty)
-    found = procedure.predict(selected, data, split, grid, both)[:, 0]
+    found = procedure.predict(view, data, split, grid, both)[:, 0]
     predicted[0, :roles] = found[:roles]
     predicted[2, :roles] = found[roles : 2 * roles]
     predicted[3, :roles] = found[2 * roles :]
-    predicted[1, :roles] = _imputed(procedure, selected, data, split, panel, penalty)
+    predicted[1, :roles] = _imputed(procedure, view, data, split, panel, penalty)
     return {"predicted": predicted, "replaced by": replaced}
 
 
 def _imputed(
     procedure: Procedure,
-    selected: Selected,
+    view: DesignView,
     data: ProcedureData,
     split: Split,
     panel: NDArray[np.int64],
@@ -250,7 +258,7 @@ def _imputed(
 ) -> NDArray[np.float64]:
     """Return predictions by the whole panel's model with each marker at its mean."""
     features = np.sort(panel)
-    markers = procedure.markers(selected.view, data, split.training)
+    markers = procedure.markers(view, data, split.training)
     columns = columns_of(markers, features, data, split)
     fits = fit_panels(
         columns.taught,

@@ -64,9 +64,9 @@ def stand_ins_of(
     rows = np.arange(len(judge.weights))
     found = []
     for role, feature in enumerate(panel):
-        instead = refill(selected, whole.maker, panel, int(feature))
+        instead = refill(selected.evidence, whole.maker, panel, int(feature))
         came = instead[~np.isin(instead, panel)]
-        companion, _ = closest_companion(selected, panel, int(feature), rows)
+        companion, _ = closest_companion(selected.view, panel, int(feature), rows)
         for how, variant, other in (
             ("maker", "refilled", int(came[0]) if len(came) else -1),
             ("companion", "companion", companion),

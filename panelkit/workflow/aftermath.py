@@ -84,7 +84,14 @@ def learn_aftermath(
     row = primary.taken.row
     whole, panel = accuracy.panels[row], selected.panels[row]
     losses = learn_roles(
-        known.procedure, data, draws, accuracy.members[row], inputs, store, **how
+        known.procedure,
+        data,
+        draws,
+        accuracy,
+        row,
+        inputs,
+        store,
+        **how,
     )
     curve: tuple[LearningPoint, ...] = ()
     if plan.accuracy.learning_curve:

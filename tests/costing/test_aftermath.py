@@ -91,7 +91,7 @@ def done(drawn_cohort):
 
 def roles_of(done, row=0):
     _, data, procedure, draws, accuracy, *_, store = done
-    return learn_roles(procedure, data, draws, accuracy.members[row], "done", store)
+    return learn_roles(procedure, data, draws, accuracy, row, "done", store)
 
 
 def test_a_companion_stands_in_where_losing_the_marker_loses_everything(done):
@@ -139,7 +139,13 @@ def test_held_out_outcomes_reach_no_prediction_by_role(done):
     other[test] = 1.0 - other[test]
     changed = replace(data, task=BinaryTask(other))
     again = learn_roles(
-        procedure, changed, draws, accuracy.members[1], "other", MemoryStore()
+        procedure,
+        changed,
+        draws,
+        accuracy,
+        1,
+        "other",
+        MemoryStore(),
     )
     for key, one in roles_of(done, row=1).predictions.items():
         here = again.predictions[key].predicted[0, test]

@@ -27,12 +27,15 @@ class FoldWork:
         Training and test rows.
     learnt : Learnt
         Panels, tuning, predictions.
+    repeat : int
+        Which repeat of the folds this is.
     """
 
     procedure: Procedure
     data: ProcedureData
     split: Split
     learnt: Learnt
+    repeat: int = 0
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -22,10 +22,11 @@ TUNED_PAIRS = 2
 class RandomPanels:
     """Random panels at each size, from the filtered features and from the candidates.
 
-    A panel from all features is drawn once and is the same in every fold, where it is
-    refitted; features that a fold's filter leaves out count as absent. A panel from the
-    candidates is drawn among each fold's own. One ridge penalty for all panels of a
-    size is tuned on complementary halves: nothing was selected.
+    They are learnt on the folds of the first repeat. A panel from all features is drawn
+    once and is the same in every fold, where it is refitted; features that a fold's
+    filter leaves out count as absent. A panel from the candidates is drawn among each
+    fold's own. One ridge penalty for all panels of a size is tuned on complementary
+    halves: nothing was selected.
 
     Attributes
     ----------
@@ -81,7 +82,13 @@ class RandomPanels:
         return cls(sizes, from_all, generator.random((n_panels, n_places)))
 
     def __call__(self, work: FoldWork) -> LearntToo:
-        """Return the metric of every random panel, (n_sizes, n_panels) a kind."""
+        """Return the metric of every random panel, (n_sizes, n_panels) a kind.
+
+        NaN behind the first repeat: more folds would sharpen no comparison.
+        """
+        if work.repeat:
+            nothing = np.full((len(self.sizes), len(self.from_all)), np.nan)
+            return LearntToo(figures={FROM_ALL: nothing, FROM_CANDIDATES: nothing})
         candidates = work.learnt.selected.stability.candidates
         lots = self.from_candidates[:, : len(candidates)]
         chosen = candidates[np.argsort(lots, axis=1, kind="stable")]
