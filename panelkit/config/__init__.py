@@ -8,6 +8,7 @@ from panelkit.config.defaults import (
     DESIGN,
     ENGINE,
     KIT,
+    LOCK,
     PANELS,
     PLATFORM,
     PREPARATION,
@@ -42,6 +43,7 @@ from panelkit.config.study import (
     read_study,
 )
 from panelkit.config.template import TEMPLATE_SECTIONS, study_text
+from panelkit.config.validation_plan import ValidationPlan, read_validation_plan
 
 __all__ = [
     "ACCURACY",
@@ -51,6 +53,7 @@ __all__ = [
     "ENGINE",
     "FAMILY_PRESETS",
     "KIT",
+    "LOCK",
     "MINOR_DIGITS",
     "PANELS",
     "PLATFORM",
@@ -75,6 +78,7 @@ __all__ = [
     "ShortlistSection",
     "StatementSection",
     "Study",
+    "ValidationPlan",
     "check_design",
     "kit_sections",
     "outcome_kind",
@@ -85,5 +89,6 @@ __all__ = [
     "read_programme_file",
     "read_study",
     "read_toml",
+    "read_validation_plan",
     "study_text",
 ]

@@ -16,6 +16,7 @@ __all__ = [
     "DESIGN",
     "ENGINE",
     "KIT",
+    "LOCK",
     "PANELS",
     "PLATFORM",
     "PREPARATION",
@@ -140,6 +141,23 @@ class _Choice:
 
 
 @dataclass(frozen=True, slots=True)
+class _Lock:
+    """Locked panels: their cut-offs and how new people judge them."""
+
+    cutoffs: tuple[str, ...] = ("youden",)
+    confidence: float = 0.95
+    bootstrap: int = 1000
+    """Draws of subjects behind the intervals of a cut-off."""
+    grey_deviations: float = 1.0
+    """Standard errors of a cut-off, and of the assay, on either side of it."""
+    recalibration_folds: int = 5
+    """Folds that judge a recalibration on rows that did not fit it."""
+    small_group: int = 10
+    """Cases or controls below which a subgroup is called too small."""
+    calibration_groups: int = 5
+
+
+@dataclass(frozen=True, slots=True)
 class _Programme:
     horizon_months: int = 12
     deliveries: int = 1
@@ -204,6 +222,7 @@ SHORTLIST: Final = _Shortlist()
 PANELS: Final = _Panels()
 ACCURACY: Final = _Accuracy()
 CHOICE: Final = _Choice()
+LOCK: Final = _Lock()
 PROGRAMME: Final = _Programme()
 PLATFORM: Final = _Platform()
 KIT: Final = _Kit()

@@ -1,5 +1,13 @@
 """Arrays in, numbers out."""
 
+from panelkit.metrics.agreement import (
+    Recalibration,
+    calibration_in_the_large,
+    observed_over_expected,
+    recalibration,
+    scaled_brier,
+    spiegelhalter_z,
+)
 from panelkit.metrics.association import (
     contingency_table,
     cramers_v,
@@ -7,6 +15,7 @@ from panelkit.metrics.association import (
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
 from panelkit.metrics.cross_validated import Measure, cross_validate
+from panelkit.metrics.delong import Areas, area_interval, delong, hanley_mcneil_se
 from panelkit.metrics.discrimination import areas, auc, auc_placements
 from panelkit.metrics.intervals import (
     CrossValidated,
@@ -16,6 +25,16 @@ from panelkit.metrics.intervals import (
     paired_interval,
 )
 from panelkit.metrics.numeric import linear_slope, r_squared, root_mean_square
+from panelkit.metrics.proportions import (
+    LikelihoodRatio,
+    clopper_pearson,
+    likelihood_ratios,
+    lower_limit,
+    mcnemar_exact,
+    needed_without_a_miss,
+    predictive_values,
+    wilson,
+)
 from panelkit.metrics.rank_tests import (
     auc_score_interval,
     false_discovery_adjusted,
@@ -46,10 +65,14 @@ from panelkit.metrics.survival import (
 from panelkit.metrics.utility import balanced_accuracy, best_threshold, net_benefit
 
 __all__ = [
+    "Areas",
     "CrossValidated",
+    "LikelihoodRatio",
     "LimitsOfAgreement",
     "Measure",
+    "Recalibration",
     "Reliability",
+    "area_interval",
     "areas",
     "auc",
     "auc_placements",
@@ -57,9 +80,11 @@ __all__ = [
     "balanced_accuracy",
     "best_threshold",
     "brier",
+    "calibration_in_the_large",
     "calibration_slope",
     "censoring_curve",
     "class_areas",
+    "clopper_pearson",
     "coefficient_of_variation",
     "concordance",
     "contingency_table",
@@ -68,23 +93,35 @@ __all__ = [
     "cramers_v_corrected",
     "cross_validate",
     "cross_validated_auc",
+    "delong",
     "false_discovery_adjusted",
     "fisher_exact_many",
     "hand_till",
+    "hanley_mcneil_se",
     "holm_adjusted",
     "horizon_auc",
     "horizon_brier",
+    "likelihood_ratios",
     "limits_of_agreement",
     "linear_slope",
     "log_loss",
     "log_loss_of_classes",
+    "lower_limit",
+    "mcnemar_exact",
     "naive_se",
+    "needed_without_a_miss",
     "net_benefit",
+    "observed_over_expected",
     "paired_interval",
+    "predictive_values",
     "r_squared",
     "rank_sum_p",
+    "recalibration",
     "reliability",
     "root_mean_square",
+    "scaled_brier",
     "softmax",
+    "spiegelhalter_z",
     "uno_concordance",
+    "wilson",
 ]

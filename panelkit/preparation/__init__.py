@@ -8,6 +8,7 @@ from panelkit.preparation.default_steps import (
 )
 from panelkit.preparation.readiness import (
     assay_ready,
+    frozen_recipe,
     reference_features,
     refuse_unready,
 )
@@ -26,6 +27,7 @@ __all__ = [
     "assay_ready",
     "default_steps",
     "fitted_to_scale",
+    "frozen_recipe",
     "learn_covariates",
     "reference_features",
     "refuse_unready",

@@ -5,9 +5,10 @@ from numpy.typing import NDArray
 
 from panelkit.errors import StudyFileError, name_some
 from panelkit.preparation.recipe import Recipe
+from panelkit.preparation.step import COLLAPSE, FILTER
 from panelkit.records import RecipeContext, RecipeState
 
-__all__ = ["assay_ready", "reference_features", "refuse_unready"]
+__all__ = ["assay_ready", "frozen_recipe", "reference_features", "refuse_unready"]
 
 
 def reference_features(recipe: Recipe, state: RecipeState) -> NDArray[np.int64]:
@@ -76,6 +77,41 @@ def assay_ready(
                 f"not measure: {listed}"
             )
     return tuple(reasons)
+
+
+def frozen_recipe(recipe: Recipe) -> Recipe:
+    """Return the steps that one new sample goes through, as an assay part.
+
+    Parameters
+    ----------
+    recipe : Recipe
+        A discovery part that `refuse_unready` lets pass.
+
+    Returns
+    -------
+    Recipe
+        Without filters and choices among features: they decide what is in, and change
+        no value.
+
+    Raises
+    ------
+    StudyFileError
+        A step that one new sample cannot do with the panel's assays alone.
+    """
+    steps = [step for step in recipe.chain if step.place not in (FILTER, COLLAPSE)]
+    wrong = [step.name for step in steps if not step.assay]
+    if wrong:
+        raise StudyFileError(
+            code="recipe-not-assay-ready",
+            where=f"[preparation] {recipe.part}",
+            what=f"step '{wrong[0]}' cannot be done on one new sample with a panel's "
+            "assays alone",
+            accepted="steps that use the panel's markers, reference features and "
+            "frozen constants of single markers",
+            next_step="Name such steps under [preparation] assay, for example 'log2', "
+            "'reference-ratio' and 'median-fill'",
+        )
+    return Recipe(steps, part="assay")
 
 
 def refuse_unready(

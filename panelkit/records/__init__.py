@@ -42,6 +42,17 @@ from panelkit.records.frontier import (
     Headline,
     RuleChoice,
 )
+from panelkit.records.locked import (
+    AssayStep,
+    CutOff,
+    Fallback,
+    HonestFigures,
+    PanelContent,
+    PanelMarker,
+    PanelReference,
+    Parent,
+    TrainingRows,
+)
 from panelkit.records.matrix import MatrixSource
 from panelkit.records.openings import Opening
 from panelkit.records.outcome import Outcome, OutcomeKind
@@ -82,6 +93,12 @@ from panelkit.records.stability_details import (
     SelectorResult,
 )
 from panelkit.records.summary import RESEARCH_USE, RunSummary
+from panelkit.records.validation import (
+    MarkerShift,
+    Validation,
+    ValidationFigure,
+    Verdict,
+)
 
 __all__ = [
     "ANY_MARKER",
@@ -97,6 +114,7 @@ __all__ = [
     "AssayPrice",
     "Assumption",
     "BreakEven",
+    "AssayStep",
     "Choice",
     "Cohort",
     "Companions",
@@ -107,11 +125,13 @@ __all__ = [
     "CostLine",
     "CostSheet",
     "Crossing",
+    "CutOff",
     "Design",
     "DesignKind",
     "Driver",
     "Dropped",
     "ErrorBound",
+    "Fallback",
     "Finding",
     "Findings",
     "Flow",
@@ -123,15 +143,21 @@ __all__ = [
     "Handling",
     "Headline",
     "KitPurchase",
+    "HonestFigures",
     "LearningPoint",
+    "MarkerShift",
     "MatrixSource",
     "NullShortlist",
     "Opening",
     "OutOfFold",
     "Outcome",
     "OutcomeKind",
+    "PanelContent",
     "PanelCost",
     "PathFrequencies",
+    "PanelMarker",
+    "PanelReference",
+    "Parent",
     "PathSet",
     "PriceAnswer",
     "PriceList",
@@ -159,8 +185,12 @@ __all__ = [
     "StepState",
     "Subgroup",
     "SubsamplePlan",
+    "TrainingRows",
     "TunedChoice",
     "Variation",
+    "Validation",
+    "ValidationFigure",
+    "Verdict",
     "check_price_columns",
     "frame",
     "read_only",

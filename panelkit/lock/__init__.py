@@ -1,0 +1,33 @@
+"""Locked panels: freeze, cut-offs, panel file, scores, validation, recalibration."""
+
+from panelkit.lock.cutoffs import CutOffRule, cutoff_rule
+from panelkit.lock.freeze import ChosenPanel, TaughtOn, freeze_panel
+from panelkit.lock.panel_file import content_of, panel_bytes, parse_panel, read_panel
+from panelkit.lock.recalibration import Changed, recalibrate_panel
+from panelkit.lock.scoring import Scores, score_samples
+from panelkit.lock.validation import (
+    NewPeople,
+    refuse_other_plan,
+    refuse_overlap,
+    validate_panel,
+)
+
+__all__ = [
+    "Changed",
+    "ChosenPanel",
+    "CutOffRule",
+    "NewPeople",
+    "Scores",
+    "TaughtOn",
+    "content_of",
+    "cutoff_rule",
+    "freeze_panel",
+    "panel_bytes",
+    "parse_panel",
+    "read_panel",
+    "recalibrate_panel",
+    "refuse_other_plan",
+    "refuse_overlap",
+    "score_samples",
+    "validate_panel",
+]
