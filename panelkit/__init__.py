@@ -14,14 +14,20 @@ if TYPE_CHECKING:
     from panelkit.ingest import check_cohort, read_cohort, read_openings
     from panelkit.stability import StabilitySelector
     from panelkit.workflow import (
+        LockedPanel,
         check_study,
         draft_study,
+        lock_panel,
         open_set_aside,
         run_shortlist,
+        recalibrate_panel,
         run_study,
+        score_table,
+        validate_panel,
     )
 
 __all__ = [
+    "LockedPanel",
     "PanelkitError",
     "StabilitySelector",
     "cheapest_cover",
@@ -29,15 +35,20 @@ __all__ = [
     "check_study",
     "draft_study",
     "fit_paths",
+    "lock_panel",
     "open_set_aside",
     "programme_cost",
     "read_cohort",
     "read_openings",
     "run_shortlist",
+    "recalibrate_panel",
     "run_study",
+    "score_table",
+    "validate_panel",
 ]
 
 _HOMES = {
+    "LockedPanel": "panelkit.workflow",
     "PanelkitError": "panelkit.errors",
     "StabilitySelector": "panelkit.stability",
     "cheapest_cover": "panelkit.costing",
@@ -45,12 +56,16 @@ _HOMES = {
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
     "fit_paths": "panelkit.fits",
+    "lock_panel": "panelkit.workflow",
     "open_set_aside": "panelkit.workflow",
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
     "read_openings": "panelkit.ingest",
     "run_shortlist": "panelkit.workflow",
+    "recalibrate_panel": "panelkit.workflow",
     "run_study": "panelkit.workflow",
+    "score_table": "panelkit.workflow",
+    "validate_panel": "panelkit.workflow",
 }
 
 

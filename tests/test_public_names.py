@@ -12,6 +12,7 @@ import panelkit
 
 REPOSITORY = Path(__file__).parents[1]
 NAMES = {
+    "LockedPanel": "panelkit.workflow",
     "PanelkitError": "panelkit.errors",
     "StabilitySelector": "panelkit.stability",
     "cheapest_cover": "panelkit.costing",
@@ -19,12 +20,16 @@ NAMES = {
     "check_study": "panelkit.workflow",
     "draft_study": "panelkit.workflow",
     "fit_paths": "panelkit.fits",
+    "lock_panel": "panelkit.workflow",
     "open_set_aside": "panelkit.workflow",
     "programme_cost": "panelkit.costing",
     "read_cohort": "panelkit.ingest",
     "read_openings": "panelkit.ingest",
     "run_shortlist": "panelkit.workflow",
+    "recalibrate_panel": "panelkit.workflow",
     "run_study": "panelkit.workflow",
+    "score_table": "panelkit.workflow",
+    "validate_panel": "panelkit.workflow",
 }
 IMPORT = "import sys, panelkit\nassert {home!r} not in sys.modules\npanelkit.{name}\n"
 

@@ -20,6 +20,10 @@ COMMANDS: Final = {
     "shortlist": "Say which markers are picked again and again; no panels.",
     "price": "Price marker lists on platforms; needs no expression data.",
     "run": "Run the whole job: priced panels with honest accuracy.",
+    "lock": "Lock a panel of a run, with its cut-offs, into a panel file.",
+    "score": "Score new samples by a locked panel.",
+    "validate": "Judge a locked panel on people who did not teach it.",
+    "recalibrate": "Fit a locked panel's chances to new people, as a new panel file.",
 }
 
 

@@ -42,7 +42,12 @@ from panelkit.costing.makers import (
 from panelkit.costing.money import format_money, round_money
 from panelkit.costing.panel_prices import PanelPricer
 from panelkit.costing.pricing import programme_cost
-from panelkit.costing.primary import Primary, apply_rule, choose_for_everyone
+from panelkit.costing.primary import (
+    PRIMARY,
+    Primary,
+    apply_rule,
+    choose_for_everyone,
+)
 from panelkit.costing.procedure import Learnt, Procedure, Selected
 from panelkit.costing.roles import RoleLosses, learn_roles
 from panelkit.costing.rules import (
@@ -69,6 +74,7 @@ from panelkit.costing.weaknesses import fragility_of, stand_ins_of
 
 __all__ = [
     "MAKERS",
+    "PRIMARY",
     "RULES",
     "USING_PRICES",
     "BinaryTask",

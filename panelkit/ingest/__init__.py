@@ -4,6 +4,7 @@ from panelkit.ingest.cells import is_missing
 from panelkit.ingest.checks import check_cohort
 from panelkit.ingest.cohort_reader import read_cohort
 from panelkit.ingest.conflict_list import read_conflicts
+from panelkit.ingest.marker_table import MarkerTable, read_markers
 from panelkit.ingest.openings import read_openings, record_opening
 from panelkit.ingest.price_list import read_price_list
 from panelkit.ingest.reader import OpenedMatrix, Reader, ReadOptions
@@ -16,6 +17,7 @@ __all__ = [
     "OpenedMatrix",
     "ReadOptions",
     "Reader",
+    "MarkerTable",
     "ScaleGuess",
     "check_cohort",
     "check_usable",
@@ -24,6 +26,7 @@ __all__ = [
     "is_missing",
     "read_cohort",
     "read_conflicts",
+    "read_markers",
     "read_openings",
     "read_price_list",
     "record_opening",

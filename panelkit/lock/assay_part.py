@@ -8,14 +8,16 @@ from numpy.typing import NDArray
 
 from panelkit.errors import StudyFileError
 from panelkit.preparation import (
+    UNFROZEN,
     Recipe,
+    assay_ready,
     frozen_recipe,
     reference_features,
     refuse_unready,
 )
 from panelkit.records import AssayStep, PanelReference, RecipeContext, RecipeState
 
-__all__ = ["FrozenAssay", "freeze_assay"]
+__all__ = ["FrozenAssay", "assay_obstacles", "freeze_assay"]
 
 WITH_OFFSET = ("log2", "m-values")
 FILLS = ("median-fill", "half-minimum", "below-limit")
@@ -44,6 +46,36 @@ class FrozenAssay:
     reference_rows: NDArray[np.int64]
     features: tuple[str, ...]
     fill: NDArray[np.float64]
+
+
+def assay_obstacles(
+    discovery: Recipe,
+    assay: Recipe | None,
+    state: RecipeState,
+    markers: NDArray[np.int64],
+    context: RecipeContext,
+) -> tuple[str, ...]:
+    """Return why a panel's preparation cannot be frozen.
+
+    Parameters
+    ----------
+    discovery, assay, state, markers, context
+        As for `freeze_assay`.
+
+    Returns
+    -------
+    tuple of str
+        Empty where `freeze_assay` will not refuse.
+    """
+    found = () if assay is not None else assay_ready(discovery, state, markers, context)
+    recipe = discovery if assay is None else assay
+    freezable = (*WITH_OFFSET, *FILLS, "reference-ratio")
+    wrong = [
+        step.name
+        for step in recipe.chain
+        if step.place not in UNFROZEN and step.name not in freezable
+    ]
+    return (*found, *(f"step '{name}' cannot be frozen" for name in wrong))
 
 
 def freeze_assay(

@@ -26,6 +26,7 @@ KINDS: Final = (
     "youden",
     "net-benefit",
 )
+EDGE: Final = 1e-9  # beyond the outermost scores
 
 
 @dataclass(frozen=True, slots=True)
@@ -205,9 +206,9 @@ def choose_cutoff(rule: CutOffRule, judged: Judged) -> CutOff:
         positive_value=float(values[0]),
         negative_value=float(values[1]),
         net_benefit=float(benefit),
-        sentence=f"Positive from a chance of {chance:.3g} on ({rule.name}): out of fold "
-        f"sensitivity {sensitivity[at]:.3g}, specificity {specificity[at]:.3g}; it was "
-        "chosen on these same predictions, so expect less of both together.",
+        sentence=f"Positive from a chance of {chance:.3g} on ({rule.name}): out of "
+        f"fold sensitivity {sensitivity[at]:.3g}, specificity {specificity[at]:.3g}; "
+        "it was chosen on these same predictions, so expect less of both together.",
     )
 
 

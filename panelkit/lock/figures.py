@@ -222,7 +222,7 @@ def _of_cutoff(
         ]  # fmt: skip
     for name, ratio in zip(
         ("likelihood-ratio-positive", "likelihood-ratio-negative"),
-        likelihood_ratios(*counts, confidence),
+        likelihood_ratios(hits, misses, passes, alarms, confidence),
         strict=True,
     ):
         value = NOTHING if math.isinf(ratio.value) else ratio.value

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from panelkit.errors import PanelFileError
 from panelkit.fits import fit_panels, standardised
-from panelkit.lock.assay_part import FrozenAssay, freeze_assay
+from panelkit.lock.assay_part import FrozenAssay, assay_obstacles, freeze_assay
 from panelkit.lock.cutoffs import CutOffRule, Judged, choose_cutoff
 from panelkit.lock.panel_file import sealed
 from panelkit.lock.scoring import prepared_sample, single
@@ -29,7 +29,16 @@ from panelkit.records import (
     TrainingRows,
 )
 
-__all__ = ["ChosenPanel", "TaughtOn", "freeze_panel", "id_hash", "value_hash"]
+__all__ = [
+    "ChosenPanel",
+    "OutOfFoldRows",
+    "TaughtOn",
+    "freeze_panel",
+    "id_hash",
+    "reasons_against",
+    "value_hash",
+    "with_cutoffs",
+]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -64,12 +73,10 @@ class TaughtOn:
         That chances are to be stated for; NaN: the study's own.
     study : str
         Name of the study file.
-    record : bytes
-        Of ``record.json``.
+    record : mapping of str to object
+        Content of ``record.json``.
     seed : int
         Root of the draws.
-    versions, inputs : mapping of str to str
-        Of software; hashes of input files.
     """
 
     values: NDArray[np.floating[Any]]
@@ -88,10 +95,8 @@ class TaughtOn:
     design: str
     prevalence: float
     study: str
-    record: bytes
+    record: Mapping[str, Any]
     seed: int
-    versions: Mapping[str, str]
-    inputs: Mapping[str, str]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -188,7 +193,15 @@ def freeze_panel(
     slope of cross-validated predictions); Anderson 1972, Biometrika 59:19 (intercept
     of case-control data for another prevalence).
     """
-    shrinkage, slope = _shrinkage(panel, taught)
+    slope = _slope(panel.out_of_fold, taught.outcome, taught.weights)
+    if slope <= 0.0:
+        raise PanelFileError(
+            code="panel-without-accuracy",
+            where=f"panel {panel.name}",
+            what=_WRONG_WAY.format(slope),
+            accepted="a panel whose out-of-fold predictions follow the outcome",
+            next_step="Lock another panel, or gather more people",
+        )
     frozen = freeze_assay(
         taught.discovery,
         taught.assay,
@@ -197,49 +210,147 @@ def freeze_panel(
         panel.markers,
         taught.context,
     )
+    # NaN: separated, or constant
+    shrinkage = 1.0 if math.isnan(slope) else min(slope, 1.0)
     model = _Model(panel, taught, frozen, shrinkage)
     content = _content(panel, taught, model, slope)
-    log_odds = shrinkage * panel.out_of_fold
+    seen = OutOfFoldRows(
+        panel.out_of_fold, taught.outcome, taught.weights, taught.subjects
+    )
+    return with_cutoffs(content, seen, cutoffs, draws, assay_cv=assay_cv)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OutOfFoldRows:
+    """Out-of-fold predictions with the outcomes of the rows.
+
+    Attributes
+    ----------
+    log_odds : ndarray of shape (n_repeats, n_samples)
+        NaN for samples that were never tested.
+    outcome, weights : ndarray of shape (n_samples,)
+        0 and 1; 1 / samples of the subject.
+    subjects : ndarray of shape (n_samples,), int64
+        Codes.
+    """
+
+    log_odds: NDArray[np.float64]
+    outcome: NDArray[np.float64]
+    weights: NDArray[np.float64]
+    subjects: NDArray[np.int64]
+
+
+def with_cutoffs(
+    content: PanelContent,
+    seen: OutOfFoldRows,
+    cutoffs: Sequence[CutOffRule],
+    draws: np.random.Generator,
+    *,
+    prevalence: float = float("nan"),
+    assay_cv: float = 0.0,
+) -> PanelContent:
+    """Return a locked panel with cut-offs on its recalibrated out-of-fold chances.
+
+    Parameters
+    ----------
+    content : PanelContent
+        The panel; cut-offs that it has are replaced.
+    seen : OutOfFoldRows
+        What it is recalibrated on.
+    cutoffs : sequence of CutOffRule
+        May be empty.
+    draws : numpy.random.Generator
+        For the bootstrap.
+    prevalence : float
+        For predictive values; NaN: the panel's own, if stated.
+    assay_cv : float
+        As for `freeze_panel`.
+
+    Returns
+    -------
+    PanelContent
+        Sealed.
+
+    Raises
+    ------
+    UsageError
+        A cut-off that the number of people cannot support.
+    """
+    tested = ~np.isnan(seen.log_odds).any(axis=0)
+    log_odds = content.honest.shrinkage * seen.log_odds[:, tested]
+    y, weights = seen.outcome[tested], seen.weights[tested]
     repeats = len(log_odds)
     centre, _se = calibration_in_the_large(
-        log_odds.ravel(),
-        np.tile(taught.outcome, repeats),
-        np.tile(taught.weights, repeats),
+        log_odds.ravel(), np.tile(y, repeats), np.tile(weights, repeats)
     )
+    share = content.training.prevalence
+    own = content.prevalence if math.isnan(prevalence) else prevalence
+    offset = _offset(content.design, content.prevalence, share)
     judged = Judged(
-        log_odds + centre + model.offset,
-        taught.outcome,
-        taught.weights,
-        taught.subjects,
-        taught.prevalence,
+        log_odds + centre + offset,
+        y,
+        weights,
+        seen.subjects[tested],
+        own,
         _assay_deviation(content, assay_cv),
         draws,
     )
-    return sealed(
-        replace(content, cutoffs=tuple(choose_cutoff(rule, judged) for rule in cutoffs))
-    )
+    found = tuple(choose_cutoff(rule, judged) for rule in cutoffs)
+    return sealed(replace(content, cutoffs=found))
 
 
-def _shrinkage(panel: ChosenPanel, taught: TaughtOn) -> tuple[float, float]:
-    """Return what log-odds are multiplied by, and the slope that says so."""
-    repeats = len(panel.out_of_fold)
-    slope = recalibration(
-        panel.out_of_fold.ravel(),
-        np.tile(taught.outcome, repeats),
-        np.tile(taught.weights, repeats),
-    ).slope
-    if math.isnan(slope):  # separated, or constant
-        return 1.0, slope
-    if slope <= 0.0:
-        raise PanelFileError(
-            code="panel-without-accuracy",
-            where=f"panel {panel.name}",
-            what=f"out-of-fold predictions point the wrong way (calibration slope "
-            f"{slope:.2f}): there is no accuracy to be locked",
-            accepted="a panel whose out-of-fold predictions follow the outcome",
-            next_step="Lock another panel, or gather more people",
+def reasons_against(panel: ChosenPanel, taught: TaughtOn) -> tuple[str, ...]:
+    """Return why a panel cannot be locked.
+
+    Parameters
+    ----------
+    panel : ChosenPanel
+        What would be locked.
+    taught : TaughtOn
+        What it would be refitted on.
+
+    Returns
+    -------
+    tuple of str
+        Empty for a panel that can be.
+    """
+    found = list(
+        assay_obstacles(
+            taught.discovery, taught.assay, taught.state, panel.markers, taught.context
         )
-    return min(slope, 1.0), slope
+    )
+    slope = _slope(panel.out_of_fold, taught.outcome, taught.weights)
+    if slope <= 0.0:
+        found.append(_WRONG_WAY.format(slope))
+    return tuple(found)
+
+
+_WRONG_WAY = (
+    "out-of-fold predictions point the wrong way (calibration slope {:.2f}): there is "
+    "no accuracy to be locked"
+)
+
+
+def _offset(design: str, prevalence: float, share: float) -> float:
+    """Return what moves log-odds from the study's share of cases to a prevalence."""
+    if design == "cohort" or math.isnan(prevalence):
+        return 0.0
+    return math.log(prevalence / (1.0 - prevalence)) - math.log(share / (1.0 - share))
+
+
+def _slope(
+    out_of_fold: NDArray[np.float64],
+    outcome: NDArray[np.float64],
+    weights: NDArray[np.float64],
+) -> float:
+    """Return the calibration slope of out-of-fold predictions, repeats together."""
+    tested = ~np.isnan(out_of_fold).any(axis=0)
+    repeats = len(out_of_fold)
+    return recalibration(
+        out_of_fold[:, tested].ravel(),
+        np.tile(outcome[tested], repeats),
+        np.tile(weights[tested], repeats),
+    ).slope
 
 
 class _Model:
@@ -260,11 +371,8 @@ class _Model:
         self.raw = _prepared(frozen, self.measured)
         fill = frozen.fill[:, None]
         self.prepared = np.where(np.isnan(self.raw), fill, self.raw)
-        self.offset = 0.0
-        if taught.design != "cohort" and not math.isnan(taught.prevalence):
-            share = float(np.average(taught.outcome, weights=taught.weights))
-            p = taught.prevalence
-            self.offset = math.log(p / (1.0 - p)) - math.log(share / (1.0 - share))
+        share = float(np.average(taught.outcome, weights=taught.weights))
+        self.offset = _offset(taught.design, taught.prevalence, share)
         self.intercept, self.coefficients = self.fitted(list(range(len(panel.markers))))
         self.score = self.intercept + _dot(self.coefficients, self.prepared)
 
@@ -374,14 +482,19 @@ def _content(
             ),
             ids=_ids(taught),
             values=tuple(value_hash(row) for row in model.measured.T.tolist()),
-            sha256=dict(sorted(taught.inputs.items())),
+            sha256=dict(taught.record["inputs"]),
         ),
-        record_sha256=hashlib.sha256(taught.record).hexdigest(),
+        record_sha256=_record_hash(taught.record),
         seed=taught.seed,
-        versions=dict(sorted(taught.versions.items())),
+        versions={"panelkit": taught.record["panelkit"], **taught.record["versions"]},
         parent=None,
         cautions=_cautions(taught),
     )
+
+
+def _record_hash(record: Mapping[str, Any]) -> str:
+    text = json.dumps(record, sort_keys=True, separators=(",", ":"))
+    return hashlib.sha256(text.encode()).hexdigest()
 
 
 def _ids(taught: TaughtOn) -> tuple[str, ...]:

@@ -188,11 +188,7 @@ def parse_panel(data: bytes, where: str) -> PanelContent:
 
 def _document(data: bytes, where: str) -> dict[str, Any]:
     """Return the JSON object in some bytes; nothing lenient about it."""
-    try:
-        text = data.decode("utf-8")
-    except UnicodeDecodeError:
-        _refuse(where, "the bytes are no UTF-8 text")
-    _check_depth(text, where)
+    text = _text(data, where)
 
     def pairs(items: list[tuple[str, Any]]) -> dict[str, Any]:
         names = [name for name, _value in items]
@@ -231,6 +227,15 @@ def _document(data: bytes, where: str) -> dict[str, Any]:
     if not isinstance(found, dict):
         _refuse(where, "the JSON is no object")
     return found
+
+
+def _text(data: bytes, where: str) -> str:
+    try:
+        text = data.decode("utf-8")
+    except UnicodeDecodeError:
+        _refuse(where, "the bytes are no UTF-8 text")
+    _check_depth(text, where)
+    return text
 
 
 def _check_depth(text: str, where: str) -> None:

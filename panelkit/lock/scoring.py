@@ -56,6 +56,22 @@ class Scores:
     flags: tuple[str, ...]
     missing: str
 
+    def columns(self, panel: PanelContent) -> dict[str, Any]:
+        """Return the columns of a score file: one value a sample, no outcome."""
+        found: dict[str, Any] = {
+            "sample": self.samples,
+            "log_odds": self.log_odds,
+            "chance": self.chances,
+        }
+        for cut, calls in zip(panel.cutoffs, self.calls, strict=True):
+            found[f"call {cut.name}"] = calls
+        found["flags"] = self.flags
+        found["intercept"] = np.full(len(self.samples), self.intercept)
+        for marker, row in zip(panel.markers, self.contributions, strict=True):
+            found[f"contribution {marker.feature}"] = row
+        found["panel"] = (panel.content_sha256[:16],) * len(self.samples)
+        return found
+
 
 def single(value: float) -> float:
     """Return a measured value in single precision, as every table can hold it."""

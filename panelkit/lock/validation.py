@@ -159,8 +159,7 @@ def validate_panel(
     people: NewPeople,
     scores_sha256: str,
     *,
-    plan: ValidationPlan | None = None,
-    plan_sha256: str = "",
+    plan: tuple[ValidationPlan, str] | None = None,
     prevalence: float = float("nan"),
     against: tuple[PanelContent, Scores] | None = None,
     noticed: Sequence[str] = (),
@@ -177,10 +176,9 @@ def validate_panel(
         With outcomes.
     scores_sha256 : str
         Hash of the score file.
-    plan : ValidationPlan, optional
-        Written beforehand; without one the validation is exploratory.
-    plan_sha256 : str
-        Hash of the plan's file.
+    plan : tuple of ValidationPlan and str, optional
+        Written beforehand, and the hash of its file; without one the validation is
+        exploratory.
     prevalence : float
         For predictive values and net benefit; NaN: the panel's own, if stated.
     against : tuple of PanelContent and Scores, optional
@@ -198,7 +196,8 @@ def validate_panel(
     FitError
         One class only.
     """
-    confidence = LOCK.confidence if plan is None else plan.confidence
+    wanted = None if plan is None else plan[0]
+    confidence = LOCK.confidence if wanted is None else wanted.confidence
     scored = ~np.isnan(scores.log_odds)
     if against is not None:
         scored &= ~np.isnan(against[1].log_odds)
@@ -227,7 +226,7 @@ def validate_panel(
             confidence,
         )
     shifts = marker_shifts(panel, scores, people.outcome, confidence)
-    verdict, sentence = _verdict(panel, figures, plan, y)
+    verdict, sentence = _verdict(panel, figures, wanted, y)
     moved = [each.shift for each in shifts if not math.isnan(each.shift)]
     notes = [*noticed, *_notes(panel, scores, figures)]
     if len(np.unique(subjects)) < len(y):
@@ -238,7 +237,7 @@ def validate_panel(
     return Validation(
         panel=panel.name,
         panel_sha256=panel.content_sha256,
-        plan_sha256=plan_sha256,
+        plan_sha256="" if plan is None else plan[1],
         scores_sha256=scores_sha256,
         verdict=verdict,
         sentence=sentence,

@@ -98,8 +98,9 @@ def delong(
     sums, counts = [], []
     for own in (case, ~case):
         centred = np.array([p[own] for _area, p in placed]) - areas[:, None]
-        total = np.zeros((len(areas), int(people.max()) + 1))
-        np.add.at(total, (slice(None), people[own]), centred)
+        total = np.array(
+            [np.bincount(people[own], row, int(people.max()) + 1) for row in centred]
+        )
         there = np.unique(people[own])
         sums.append(total / own.sum())
         counts.append(len(there))

@@ -7,6 +7,7 @@ from panelkit.preparation.default_steps import (
     fitted_to_scale,
 )
 from panelkit.preparation.readiness import (
+    UNFROZEN,
     assay_ready,
     frozen_recipe,
     reference_features,
@@ -20,6 +21,7 @@ from panelkit.preparation.view import DesignView
 __all__ = [
     "DEFAULT_REASONS",
     "STEP_KINDS",
+    "UNFROZEN",
     "CovariateCoding",
     "DesignView",
     "Recipe",

@@ -8,7 +8,16 @@ from panelkit.preparation.recipe import Recipe
 from panelkit.preparation.step import COLLAPSE, FILTER
 from panelkit.records import RecipeContext, RecipeState
 
-__all__ = ["assay_ready", "frozen_recipe", "reference_features", "refuse_unready"]
+__all__ = [
+    "UNFROZEN",
+    "assay_ready",
+    "frozen_recipe",
+    "reference_features",
+    "refuse_unready",
+]
+
+UNFROZEN = (FILTER, COLLAPSE)
+"""Places of steps that decide which features are in, and change no value."""
 
 
 def reference_features(recipe: Recipe, state: RecipeState) -> NDArray[np.int64]:
@@ -98,7 +107,7 @@ def frozen_recipe(recipe: Recipe) -> Recipe:
     StudyFileError
         A step that one new sample cannot do with the panel's assays alone.
     """
-    steps = [step for step in recipe.chain if step.place not in (FILTER, COLLAPSE)]
+    steps = [step for step in recipe.chain if step.place not in UNFROZEN]
     wrong = [step.name for step in steps if not step.assay]
     if wrong:
         raise StudyFileError(

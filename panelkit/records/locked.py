@@ -295,7 +295,7 @@ class PanelContent:
     training : TrainingRows
         Rows that taught it.
     record_sha256 : str
-        Hash of the run's ``record.json``.
+        Hash of the content of the run's ``record.json``, keys sorted, no spaces.
     seed : int
         Root of the run's random draws.
     versions : mapping of str to str

@@ -19,14 +19,35 @@ __all__ = [
     "PriceSource",
     "Run",
     "ShortlistRun",
+from panelkit.workflow.lock import lock_panel
+from panelkit.workflow.locked_panel import LockedPanel, ScoredTable, score_table
+from panelkit.workflow.new_people import SheetColumns
+from panelkit.workflow.run import Run, run_content, run_study
+from panelkit.workflow.set_aside import open_set_aside
+from panelkit.workflow.validate import (
+    recalibrate_panel,
+    validate_panel,
+    validation_content,
+)
+
+__all__ = [
+    "LockedPanel",
+    "Run",
+    "ScoredTable",
+    "SheetColumns",
     "check_study",
     "draft_study",
+    "lock_panel",
     "open_set_aside",
     "price_content",
     "price_panels",
+    "recalibrate_panel",
     "run_content",
     "run_shortlist",
     "run_study",
     "shortlist_content",
     "write_prices",
+    "score_table",
+    "validate_panel",
+    "validation_content",
 ]

@@ -23,6 +23,7 @@ from panelkit.runtime import Listener, Progress, RunFolder, silent, thread_count
 from panelkit.workflow.aftermath import learn_aftermath, write_aftermath
 from panelkit.workflow.check import checked
 from panelkit.workflow.cohort import refuse_stops
+from panelkit.workflow.lock import write_panels
 from panelkit.workflow.primary import primary_of
 from panelkit.workflow.procedure import comparisons_of
 from panelkit.workflow.recipes import preparation_tables
@@ -180,6 +181,11 @@ def run_study(
         )
         write_results(folder, summary)
         write_aftermath(folder, aftermath)
+    with clock.stage("locking"):
+        write_panels(
+            folder, plan, known, selected, everyone, accuracy, primary,
+            (summary, aftermath), content,
+        )  # fmt: skip
     with clock.stage("report"):
         for name, page in render(summary).items():
             folder.write(name, page)

@@ -1,8 +1,8 @@
 """Write what is committed although it is generated.
 
 Run from anywhere: ``python tests/records/write_committed.py``. It writes the JSON
-Schemas of `record.json`, `choice.json` and the study file, and the signatures of the
-public functions; the tests only compare.
+Schemas of `record.json`, `choice.json`, panel files, validations and the study file,
+and the signatures of the public functions; the tests only compare.
 """
 
 import inspect
@@ -11,7 +11,7 @@ from pathlib import Path
 
 import panelkit
 from panelkit.config.study_schema import study_schema
-from panelkit.records import Choice, RunRecord
+from panelkit.records import Choice, PanelContent, RunRecord, Validation
 from panelkit.records.schema import json_schema
 
 REPOSITORY = Path(__file__).parents[2]
@@ -47,6 +47,8 @@ def committed():
     schemas = {
         "panelkit/records/schemas/record.json": json_schema(RunRecord),
         "panelkit/records/schemas/choice.json": json_schema(Choice),
+        "panelkit/records/schemas/panel.json": json_schema(PanelContent),
+        "panelkit/records/schemas/validation.json": json_schema(Validation),
         "panelkit/config/schemas/study.json": study_schema(),
     }
     texts = {
