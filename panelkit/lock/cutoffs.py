@@ -205,6 +205,7 @@ def choose_cutoff(rule: CutOffRule, judged: Judged) -> CutOff:
         specificity_high=float(np.quantile(spec, ends[1])),
         positive_value=float(values[0]),
         negative_value=float(values[1]),
+        prevalence=judged.prevalence,
         net_benefit=float(benefit),
         sentence=f"Positive from a chance of {chance:.3g} on ({rule.name}): out of "
         f"fold sensitivity {sensitivity[at]:.3g}, specificity {specificity[at]:.3g}; "

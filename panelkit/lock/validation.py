@@ -137,8 +137,8 @@ def refuse_other_plan(panel: PanelContent, plan: ValidationPlan | None) -> None:
         raise PanelFileError(
             code="plan-of-another-panel",
             where="the plan, key 'panel'",
-            what=f"it was written for another panel file (got {plan.panel[:16]}...)",
-            accepted=f"the content hash of this one, {panel.content_sha256[:16]}...",
+            what=f"it was written for another panel file (got {plan.panel!r})",
+            accepted=f"the content hash of this one, {panel.content_sha256!r}",
             next_step="Validate the panel that the plan names",
         )
     names = [cut.name for cut in panel.cutoffs]

@@ -117,7 +117,10 @@ class CutOff:
     specificity, specificity_low, specificity_high : float
         Likewise.
     positive_value, negative_value : float
-        Predictive values at the stated prevalence; null where none is stated.
+        Predictive values at `prevalence`; null where none is stated.
+    prevalence : float
+        Share of the positive class among the people the test is for; null where it is
+        not stated.
     net_benefit : float
         At the cut-off's chance, at the stated prevalence or the study's own.
     sentence : str
@@ -139,6 +142,7 @@ class CutOff:
     specificity_high: float
     positive_value: float
     negative_value: float
+    prevalence: float
     net_benefit: float
     sentence: str
 

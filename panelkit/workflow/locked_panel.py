@@ -7,7 +7,7 @@ import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 
@@ -21,10 +21,6 @@ from panelkit.lock import (
 )
 from panelkit.records import RESEARCH_USE, PanelContent, frame
 from panelkit.runtime import json_bytes, write_whole
-
-if TYPE_CHECKING:
-    import anndata
-    import pandas as pd
 
 __all__ = ["LockedPanel", "ScoredTable", "score_bytes", "score_table"]
 
@@ -67,7 +63,7 @@ class ScoredTable:
         """What is to be kept in mind of each sample; ``""`` for nothing."""
         return self.scores.flags
 
-    def to_frame(self) -> "pd.DataFrame":
+    def to_frame(self) -> Any:
         """Return one row a sample: score, calls, flags, contributions."""
         return frame(dict(self.scores.columns(self.panel)))
 
@@ -118,7 +114,7 @@ class LockedPanel:
 
     def score(
         self,
-        table: "str | os.PathLike[str] | anndata.AnnData | pd.DataFrame",
+        table: Any,
         *,
         unit: str | None = None,
     ) -> ScoredTable:

@@ -51,9 +51,9 @@ class PastRun:
         try:
             found = json.loads((self.path / name).read_text(encoding="utf-8"))
         except (OSError, ValueError) as error:
-            raise self._unfinished(name) from error
+            raise _unfinished(self.path, name) from error
         if not isinstance(found, dict):
-            raise self._unfinished(name)
+            raise _unfinished(self.path, name)
         return found
 
     def rows(self, name: str) -> list[dict[str, str]]:
@@ -68,16 +68,7 @@ class PastRun:
             with (self.path / name).open(newline="", encoding="utf-8") as file:
                 return list(csv.DictReader(file))
         except OSError as error:
-            raise self._unfinished(name) from error
-
-    def _unfinished(self, name: str) -> RunFolderError:
-        return RunFolderError(
-            code="no-finished-run",
-            where=f"{self.path}, {name}",
-            what="it is missing or cannot be read",
-            accepted="the folder of a finished `panelkit run`",
-            next_step="Name such a folder, or finish the run",
-        )
+            raise _unfinished(self.path, name) from error
 
     def panel_named(self, rule: str | None, panel: str | None) -> str:
         """Return the panel that a rule chose, or the one that is named.
@@ -143,7 +134,7 @@ class PastRun:
         for row in self.rows("panels/penalties.csv"):
             if row["panel"] == name:
                 return float(row["ridge_penalty"])
-        raise self._unfinished("panels/penalties.csv")
+        raise _unfinished(self.path, "panels/penalties.csv")
 
     def out_of_fold(self, name: str) -> OutOfFoldRows:
         """Return out-of-fold log-odds of a panel: nested ones for the primary choice.
@@ -180,7 +171,7 @@ class PastRun:
             if each["maker"] == maker and each["size"] == size
         ]
         if not own:
-            raise self._unfinished("predictions.csv")
+            raise _unfinished(self.path, "predictions.csv")
         repeats = 1 + max(int(each["repeat"]) for each in own)
         log_odds = np.full((repeats, len(order)), np.nan)
         outcome = np.zeros(len(order))
@@ -218,3 +209,13 @@ class PastRun:
                 accepted="the study file that made the run, and the same data",
                 next_step="Name that study, or run this one",
             )
+
+
+def _unfinished(path: Path, name: str) -> RunFolderError:
+    return RunFolderError(
+        code="no-finished-run",
+        where=f"{path}, {name}",
+        what="it is missing or cannot be read",
+        accepted="the folder of a finished `panelkit run`",
+        next_step="Name such a folder, or finish the run",
+    )

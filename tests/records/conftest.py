@@ -320,10 +320,83 @@ def cost_sheet():
 def scenario():
     return records.ScenarioAnswer(
         "A", ("F0",), (panel_cost(),), (), None, (), None, (), (), cost_sheet()
+def panel_content():
+    nan = float("nan")
+    return records.PanelContent(
+        panel_format=1,
+        content_sha256="0" * 64,
+        name="frequency-1",
+        study="study.toml",
+        outcome="response",
+        negative="no",
+        positive="yes",
+        design="cohort",
+        prevalence=nan,
+        steps=(records.AssayStep("log2", "log2", {"offset": 1.0}),),
+        references=(records.PanelReference("R1", 8.0),),
+        markers=(
+            records.PanelMarker(
+                "F1", "", "", 1.0, 8.0, 1.0, 9.0, 1.0, 9.0, 5.0, 1.0, (4.0, 6.0), 1.0
+            ),
+        ),
+        intercept=-5.0,
+        cutoffs=(
+            records.CutOff(
+                "youden", 0.5, 0.0, 0.4, 0.6, 0.45, 0.55, 0.8, 0.7, 0.9, 0.8, 0.7, 0.9,
+                nan, nan, nan, 0.2, "words",
+            ),
+        ),
+        fallbacks=(records.Fallback("F1", 0.0, {}, 0.7, 0.1, 0.0, 0.2, "words"),),
+        ridge_penalty=0.1,
+        honest=records.HonestFigures("procedure", 0.8, 0.7, 0.9, 0.9, 0.9, "words"),
+        training=records.TrainingRows(
+            10, 10, 5, 0.5, 0.0, 1.0, ("aa",), ("bb",), {"samples": "0" * 64}
+        ),
+        record_sha256="0" * 64,
+        seed=1,
+        versions={"panelkit": "0.1.0"},
+        parent=records.Parent("0" * 64, "intercept", 0.1, 1.0, 10, 5, "words"),
+        cautions=("research use",),
+    )  # fmt: skip
+
+
+def validation():
+    return records.Validation(
+        panel="frequency-1",
+        panel_sha256="0" * 64,
+        plan_sha256="",
+        scores_sha256="0" * 64,
+        verdict="exploratory",
+        sentence="words",
+        samples=10,
+        subjects=10,
+        cases=5,
+        controls=5,
+        left_out=0,
+        figures=(
+            records.ValidationFigure("auc", "all", 0.8, 0.7, 0.9, 10, 5, "DeLong", ""),
+        ),
+        shifts=(records.MarkerShift("F1", *[0.1] * 9),),
+        platform_shift=0.1,
+        notes=(),
+        openings=0,
+        research_use="words",
     )
 
 
 MADE = {
+    "AssayStep": lambda: panel_content().steps[0],
+    "CutOff": lambda: panel_content().cutoffs[0],
+    "Fallback": lambda: panel_content().fallbacks[0],
+    "HonestFigures": lambda: panel_content().honest,
+    "MarkerShift": lambda: validation().shifts[0],
+    "PanelContent": panel_content,
+    "PanelMarker": lambda: panel_content().markers[0],
+    "PanelReference": lambda: panel_content().references[0],
+    "Parent": lambda: panel_content().parent,
+    "TrainingRows": lambda: panel_content().training,
+    "Validation": validation,
+    "ValidationFigure": lambda: validation().figures[0],
     "AssayMap": lambda: records.AssayMap(
         objects("F0", "F1"), objects("CLDN3", "CLDN3"), objects("A1", "A1")
     ),

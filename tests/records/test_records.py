@@ -36,6 +36,18 @@ ROWS = {
     "RuleChoice": "part of Choice",
     "Choice": "choice.json: a document, no table",
     "RunRecord": "record.json: a document, no table",
+    "AssayStep": "part of a panel file",
+    "CutOff": "part of a panel file",
+    "Fallback": "part of a panel file",
+    "HonestFigures": "part of a panel file",
+    "MarkerShift": "a row of shifts.csv, held by Validation",
+    "PanelContent": "a panel file: a document, no table",
+    "PanelMarker": "part of a panel file",
+    "PanelReference": "part of a panel file",
+    "Parent": "part of a panel file",
+    "TrainingRows": "part of a panel file",
+    "Validation": "validation.json: a document, no table",
+    "ValidationFigure": "a row of figures.csv, held by Validation",
 }
 """Plain data without arrays; every other class is a `Record` with `to_frame`."""
 
