@@ -25,7 +25,7 @@ from panelkit.lock import (
 from panelkit.records import Aftermath, PanelContent, RecipeState, RunSummary
 from panelkit.runtime import RunFolder, generator, write_whole
 from panelkit.workflow.check import CheckedStudy, checked
-from panelkit.workflow.past_run import PastRun
+from panelkit.workflow.past_run import PastRun, log_odds_of
 
 __all__ = ["lock_panel", "write_panels"]
 
@@ -130,9 +130,11 @@ def write_panels(  # noqa: PLR0913 - a panel file holds something of everything
             name=name,
             markers=selected.panels[at],
             penalty=float(everyone.penalties[at]),
-            out_of_fold=(
-                primary.predictions if nested else accuracy.panels[at]
-            ).predicted,
+            out_of_fold=log_odds_of(
+                known.data.task.scores(
+                    (primary.predictions if nested else accuracy.panels[at]).predicted
+                )
+            ),
             metric_of=shown.metric_of,
             metric=shown.metric,
             metric_low=shown.metric_low,

@@ -7,6 +7,7 @@ from pathlib import Path
 from typing import Any, Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from panelkit.config import Study
 from panelkit.costing import PRIMARY
@@ -16,9 +17,18 @@ from panelkit.workflow.check import CheckedStudy
 from panelkit.workflow.recipes import preparation_tables
 from panelkit.workflow.record import run_record
 
-__all__ = ["PastRun"]
+__all__ = ["PastRun", "log_odds_of"]
 
 EDGE: Final = 1e-15  # chances of 0 and 1 as written
+
+
+def log_odds_of(chances: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return the log-odds of chances as ``predictions.csv`` holds them.
+
+    A run locks by these too, so that `lock` gives the same bits later.
+    """
+    p = np.clip(chances, EDGE, 1.0 - EDGE)
+    return np.asarray(np.log(p) - np.log1p(-p), np.float64)
 
 
 class PastRun:
@@ -173,16 +183,15 @@ class PastRun:
         if not own:
             raise _unfinished(self.path, "predictions.csv")
         repeats = 1 + max(int(each["repeat"]) for each in own)
-        log_odds = np.full((repeats, len(order)), np.nan)
+        chances = np.full((repeats, len(order)), np.nan)
         outcome = np.zeros(len(order))
         for each in own:
             i = place[each["sample"]]
             outcome[i] = float(each["outcome"])
             if each["score"]:
-                p = min(max(float(each["score"]), EDGE), 1.0 - EDGE)
-                log_odds[int(each["repeat"]), i] = np.log(p) - np.log1p(-p)
+                chances[int(each["repeat"]), i] = float(each["score"])
         return OutOfFoldRows(
-            log_odds,
+            log_odds_of(chances),
             outcome,
             np.array([weight for _subject, weight in order.values()]),
             np.array([people[subject] for subject, _w in order.values()], np.int64),
