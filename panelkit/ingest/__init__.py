@@ -14,10 +14,10 @@ from panelkit.ingest.scale import ScaleGuess, guess_scale
 from panelkit.ingest.usable import check_usable
 
 __all__ = [
+    "MarkerTable",
     "OpenedMatrix",
     "ReadOptions",
     "Reader",
-    "MarkerTable",
     "ScaleGuess",
     "check_cohort",
     "check_usable",

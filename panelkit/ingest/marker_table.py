@@ -12,7 +12,8 @@ from panelkit.config import COHORT
 from panelkit.errors import InputDataError, name_some
 from panelkit.ingest.alignment import orient
 from panelkit.ingest.expression_source import open_expression
-from panelkit.ingest.source_file import sha256
+from panelkit.ingest.matrix_table import values_of_samples
+from panelkit.ingest.reader import ReadOptions
 
 if TYPE_CHECKING:
     import anndata
@@ -58,8 +59,8 @@ def read_markers(
     Parameters
     ----------
     table : path, AnnData or pandas.DataFrame
-        CSV or TSV (plain or compressed), .h5ad, or an object in memory; other features
-        may stand beside. A file may be either way round: the features' ids decide.
+        A file of any format that `read_cohort` takes, or an object in memory; other
+        features may stand beside. A file may be either way round: the features' ids decide.
     features : sequence of str
         Which features, in the order of the result.
 
@@ -73,8 +74,8 @@ def read_markers(
     InputDataError
         The table cannot be read, or has none of the features.
     """
-    source = open_expression(table)
-    raw = source.matrix(COHORT.max_bad_cells)
+    source = open_expression(table, ReadOptions())
+    raw = source.opened.table(COHORT.max_bad_cells)
     wanted = set(features)
     in_columns = len(wanted & set(raw.column_ids))
     in_rows = len(wanted & set(raw.row_ids))
@@ -91,11 +92,12 @@ def read_markers(
         raw, None, "features-in-rows" if turned else "samples-in-rows"
     )
     place = {name: k for k, name in enumerate(matrix.features)}
+    read = values_of_samples(matrix.values, np.arange(len(matrix.samples)))
     values = np.full((len(features), len(matrix.samples)), np.nan)
     for k, name in enumerate(features):
         if name in place:
-            values[k] = matrix.values[place[name]]
-    own = source.own_sheet("var")
+            values[k] = read[place[name]]
+    own = source.opened.sheet("rows" if turned else "columns")
     units = [""] * len(features)
     if own is not None and "unit" in own.columns:
         said = dict(zip(map(str, own.ids), own.columns["unit"], strict=True))
@@ -106,5 +108,5 @@ def read_markers(
         values=values,
         missing=tuple(name for name in features if name not in place),
         units=tuple(units),
-        sha256="" if source.path is None else sha256(source.path),
+        sha256=source.hashes().get("expression", ""),
     )

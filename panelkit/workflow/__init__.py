@@ -2,6 +2,9 @@
 
 from panelkit.workflow.check import check_study
 from panelkit.workflow.draft import draft_study
+from panelkit.workflow.lock import lock_panel
+from panelkit.workflow.locked_panel import LockedPanel, ScoredTable, score_table
+from panelkit.workflow.new_people import SheetColumns
 from panelkit.workflow.price import PriceRequest, price_panels
 from panelkit.workflow.price_content import price_content
 from panelkit.workflow.price_files import write_prices
@@ -13,17 +16,6 @@ from panelkit.workflow.shortlist_run import (
     run_shortlist,
     shortlist_content,
 )
-
-__all__ = [
-    "PriceRequest",
-    "PriceSource",
-    "Run",
-    "ShortlistRun",
-from panelkit.workflow.lock import lock_panel
-from panelkit.workflow.locked_panel import LockedPanel, ScoredTable, score_table
-from panelkit.workflow.new_people import SheetColumns
-from panelkit.workflow.run import Run, run_content, run_study
-from panelkit.workflow.set_aside import open_set_aside
 from panelkit.workflow.validate import (
     recalibrate_panel,
     validate_panel,
@@ -32,9 +24,12 @@ from panelkit.workflow.validate import (
 
 __all__ = [
     "LockedPanel",
+    "PriceRequest",
+    "PriceSource",
     "Run",
     "ScoredTable",
     "SheetColumns",
+    "ShortlistRun",
     "check_study",
     "draft_study",
     "lock_panel",
@@ -45,9 +40,9 @@ __all__ = [
     "run_content",
     "run_shortlist",
     "run_study",
-    "shortlist_content",
-    "write_prices",
     "score_table",
+    "shortlist_content",
     "validate_panel",
     "validation_content",
+    "write_prices",
 ]

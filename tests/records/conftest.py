@@ -320,6 +320,9 @@ def cost_sheet():
 def scenario():
     return records.ScenarioAnswer(
         "A", ("F0",), (panel_cost(),), (), None, (), None, (), (), cost_sheet()
+    )
+
+
 def panel_content():
     nan = float("nan")
     return records.PanelContent(
