@@ -60,7 +60,8 @@ def read_markers(
     ----------
     table : path, AnnData or pandas.DataFrame
         A file of any format that `read_cohort` takes, or an object in memory; other
-        features may stand beside. A file may be either way round: the features' ids decide.
+        features may stand beside. A file may be either way round: the features' ids
+        decide.
     features : sequence of str
         Which features, in the order of the result.
 
