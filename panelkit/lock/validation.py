@@ -228,7 +228,12 @@ def validate_panel(
     shifts = marker_shifts(panel, scores, people.outcome, confidence)
     verdict, sentence = _verdict(panel, figures, wanted, y)
     moved = [each.shift for each in shifts if not math.isnan(each.shift)]
-    notes = [*noticed, *_notes(panel, scores, figures)]
+    platform_shift = float(np.median(moved)) if moved else float("nan")
+    notes = [
+        *noticed,
+        *_notes(panel, scores, figures),
+        *_mix_in_words(panel, figures, y, platform_shift),
+    ]
     if len(np.unique(subjects)) < len(y):
         notes.append(
             "Some people gave several samples: the interval of the AUC counts each "
@@ -248,7 +253,7 @@ def validate_panel(
         left_out=int((~scored).sum()),
         figures=tuple(figures),
         shifts=tuple(shifts),
-        platform_shift=float(np.median(moved)) if moved else float("nan"),
+        platform_shift=platform_shift,
         notes=tuple(notes),
         openings=people.openings,
         research_use=RESEARCH_USE,
@@ -282,6 +287,31 @@ def _case_mix(
         )
         for name, value in figures.items()
     ]  # fmt: skip
+
+
+def _mix_in_words(
+    panel: PanelContent,
+    figures: Sequence[ValidationFigure],
+    y: NDArray[np.float64],
+    platform_shift: float,
+) -> list[str]:
+    """Name what differs, however small: a reader has to see it beside the AUC."""
+    known = {f.measure: f.value for f in figures if f.of == "all"}
+    found = [
+        f"Cases are {100 * float(y.mean()):.0f} % here and "
+        f"{100 * panel.training.prevalence:.0f} % where the panel was learnt.",
+    ]
+    if not math.isnan(known["spread-ratio"]):
+        found.append(
+            f"Scores spread {known['spread-ratio']:.2f} times as wide as where the "
+            "panel was learnt; a narrower mix of people lowers every AUC."
+        )
+    if not math.isnan(platform_shift):
+        found.append(
+            f"The median marker lies {platform_shift:+.2f} from where it was learnt, "
+            "outcome held equal (prepared scale)."
+        )
+    return found
 
 
 def _verdict(

@@ -142,7 +142,9 @@ def test_another_mix_is_named(locked, people, tmp_path):
         share - training.prevalence
     )
     assert 0.5 < found.figure("spread-ratio").value < 2.0
-    assert any("Left out" in note or found.left_out == 0 for note in found.notes)
+    shown = f"Cases are {100 * share:.0f} % here"
+    assert any(shown in note for note in found.notes)
+    assert any("times as wide" in note for note in found.notes)
 
 
 @pytest.mark.parametrize(
