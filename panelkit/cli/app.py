@@ -23,7 +23,7 @@ COMMANDS: Final = {
     "lock": "Lock a panel of a run, with its cut-offs, into a panel file.",
     "score": "Score new samples by a locked panel.",
     "validate": "Judge a locked panel on people who did not teach it.",
-    "recalibrate": "Fit a locked panel's chances to new people, as a new panel file.",
+    "recalibrate": "Fit a locked panel's chances to new people.",
 }
 
 

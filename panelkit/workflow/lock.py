@@ -115,6 +115,7 @@ def write_panels(  # noqa: PLR0913 - a panel file holds something of everything
             [
                 (rule.panel, "panels are locked for two classes only so far")
                 for rule in summary.choice.rules
+                if rule.panel
             ],
         )
         return
@@ -122,9 +123,10 @@ def write_panels(  # noqa: PLR0913 - a panel file holds something of everything
     refused: list[tuple[str, str]] = []
     cutoffs = [cutoff_rule(text) for text in LOCK.cutoffs]
     names = [row.panel for row in rows]
-    for name in dict.fromkeys(rule.panel for rule in summary.choice.rules):
+    chosen = [rule.panel for rule in summary.choice.rules]
+    for name in dict.fromkeys(filter(None, chosen)):  # a rule may have found none
         at = names.index(name)
-        nested = at == primary.taken.row
+        nested = name == chosen[0]
         shown = summary.choice.headline if nested else rows[at]
         panel = ChosenPanel(
             name=name,

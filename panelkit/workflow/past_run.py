@@ -120,7 +120,16 @@ class PastRun:
         if panel is not None:
             return panel
         first = str(self._choice["rules"][0]["panel"])
-        return first if rule is None else str(rules[rule])
+        found = first if rule is None else str(rules[rule])
+        if not found:
+            raise UsageError(
+                code="rule-without-panel",
+                where=str(self.path),
+                what="no panel met the rule's demand",
+                accepted=f"a panel of the frontier: {name_some(names)}",
+                next_step="Name one by --panel, or run with another demand",
+            )
+        return found
 
     def frontier_row(self, name: str) -> dict[str, str]:
         """Return a panel's row of ``frontier.csv``."""

@@ -6,8 +6,8 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from panelkit import check_study, run_study
-from panelkit.errors import InputDataError, NoPanelError, StudyFileError
+from panelkit import check_study, lock_panel, run_study
+from panelkit.errors import InputDataError, NoPanelError, StudyFileError, UsageError
 
 BARRED = {
     "F58": "its role is control",
@@ -126,6 +126,8 @@ def test_a_demand_that_nothing_meets_ends_with_the_nearest_miss(tiny, tmp_path):
     assert first["panel"] == ""
     assert "nearest miss has" in first["sentence"]
     assert (out / "report.html").exists()
+    with pytest.raises(UsageError, match="no panel met the rule's demand"):
+        lock_panel(out, tmp_path / "panel.json")
 
 
 def test_each_site_is_left_out_in_turn(tiny, tmp_path):
