@@ -81,7 +81,7 @@ from panelkit.records.stability_details import (
     PathFrequencies,
     SelectorResult,
 )
-from panelkit.records.summary import RESEARCH_USE, RunSummary
+from panelkit.records.summary import RESEARCH_USE, CostOfFolds, RunSummary
 
 __all__ = [
     "ANY_MARKER",
@@ -105,6 +105,7 @@ __all__ = [
     "Conflicts",
     "Convergence",
     "CostLine",
+    "CostOfFolds",
     "CostSheet",
     "Crossing",
     "Design",

@@ -277,6 +277,10 @@ def path_set():
     )
 
 
+def cost_of_folds():
+    return records.CostOfFolds(Decimal(20), Decimal(10), Decimal(30), 6, 6)
+
+
 def run_summary():
     return records.RunSummary(
         study="study.toml",
@@ -297,6 +301,11 @@ def run_summary():
         costs=(panel_cost(),),
         statement={},
         provenance={},
+        aftermath=records.Aftermath((), (), (), (), (), ()),
+        metric="auc",
+        metric_words="area under the ROC curve",
+        no_skill=0.5,
+        fold_costs=cost_of_folds(),
     )
 
 
@@ -377,6 +386,7 @@ MADE = {
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
     "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
     "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "CostOfFolds": cost_of_folds,
     "Fragility": lambda: records.Fragility(
         "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
     ),
