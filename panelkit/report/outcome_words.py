@@ -14,9 +14,9 @@ class OutcomeWords:
     predicted : str
         What a score becomes.
     sign : str
-        What a plus in the shortlist means.
+        What a plus in the shortlist means; empty where a marker has no one sign.
     difference : str
-        What the difference in the shortlist is.
+        What the difference in the shortlist is; empty where there is none.
     loss : str
         The loss by which models are tuned.
     rarest : str
@@ -48,8 +48,8 @@ _WORDS = {
     ),
     "hand-till": OutcomeWords(
         "predicted chances",
-        "see the shortlist's own file",
-        "as in the shortlist's own file",
+        "",
+        "",
         "log loss of the classes",
         "of the rarest class",
         "class",
@@ -58,7 +58,7 @@ _WORDS = {
     "r-squared": OutcomeWords(
         "predicted values",
         "a higher value goes with a larger number",
-        "as in the shortlist's own file",
+        "",
         "squared error",
         "in the smallest quarter of the outcome",
         "quarter of the outcome",
@@ -67,7 +67,7 @@ _WORDS = {
     "concordance": OutcomeWords(
         "predicted hazards",
         "a higher value goes with an earlier event",
-        "as in the shortlist's own file",
+        "",
         "loss of the partial likelihood",
         "events",
         "group",
