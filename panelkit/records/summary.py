@@ -122,6 +122,11 @@ class RunSummary(Record):
     def doubt(self) -> str:
         """What the headline's interval says against any skill; empty for nothing."""
         headline, floor = self.choice.headline, self.no_skill
+        if headline.metric_high < floor:
+            return (
+                f"The whole interval of the headline lies below {floor:g} (no skill): "
+                "what was learnt misleads in new people."
+            )
         if not headline.metric_low <= floor <= headline.metric_high:
             return ""
         if headline.metric >= floor + VISIBLE * (1.0 - floor):

@@ -11,6 +11,20 @@ from panelkit.report.worry import Worry
 
 __all__ = ["worries_of"]
 
+NO_PANEL = "first rule"
+RANK = {
+    NO_PANEL: 0,
+    "accuracy": 1,
+    "random panels": 2,
+    "handling": 3,
+    "calibration": 4,
+    "fragility": 5,
+    "comparators": 6,
+    "subgroups": 7,
+    "people": 8,
+}
+"""Worries of the run itself in the order in which they undermine the answer."""
+
 
 def worries_of(summary: RunSummary) -> tuple[Worry, ...]:
     """Return what stands against the answer.
@@ -28,7 +42,9 @@ def worries_of(summary: RunSummary) -> tuple[Worry, ...]:
     """
     stops = [_of_finding(item) for item in summary.findings.of("stop")]
     warnings = [_of_finding(item) for item in summary.findings.of("warning")]
-    return (*stops, *_of_run(summary), *worries_of_tables(summary), *warnings)
+    own = [*_of_run(summary), *worries_of_tables(summary)]
+    own.sort(key=lambda worry: RANK.get(worry.where, len(RANK)))
+    return (*stops, *own, *warnings)
 
 
 def _of_finding(item: Finding) -> Worry:
@@ -42,7 +58,7 @@ def _of_run(summary: RunSummary) -> list[Worry]:
         found.append(
             Worry(
                 "warning",
-                "choice",
+                NO_PANEL,
                 f"No panel meets the first rule. {_nearest(summary)}".rstrip(),
                 "Read what the rule says and what the other rules chose",
             )

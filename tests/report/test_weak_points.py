@@ -161,6 +161,31 @@ def test_handling_that_tells_the_outcome_is_said(summary, kind, words):
     assert "handling and outcome are entangled" in render(other)["report.html"].decode()
 
 
+def test_what_undermines_the_answer_most_comes_first(summary):
+    """No panel, then no accuracy, then lots and handling, then weak spots."""
+    other = with_comparator(summary, "random-headline", p=0.31)
+    other = with_comparator(other, "nuisance", metric_low=0.6)
+    headline = replace(summary.choice.headline, metric_low=0.4)
+    rules = tuple(
+        replace(rule, panel="") if rule.primary else rule
+        for rule in summary.choice.rules
+    )
+    low = Subgroup("ward", "Fenmoor", 40, 14, 0.58, 0.44, 0.71, "Fenmoor.")
+    other = with_tables(
+        replace(other, choice=replace(summary.choice, headline=headline, rules=rules)),
+        subgroups=(low,),
+    )
+    places = [worry.where for worry in worries_of(other)]
+    n_stops = len(other.findings.of("stop"))
+    assert places[n_stops:][:5] == [
+        "first rule",
+        "accuracy",
+        "random panels",
+        "handling",
+        "subgroups",
+    ]
+
+
 def test_a_score_that_follows_a_column_is_judged_by_the_number_of_looks(summary):
     row = Handling("plate", "relapse", 60, "epsilon-squared", 0.2, 0.02)
     one = with_tables(summary, handling=(row,))
@@ -251,6 +276,11 @@ def test_small_cohorts_are_called_small_and_empty_ones_empty(summary):
 
     assert "because there are few people (20)" in worries(at(0.80))["accuracy"]
     assert "these data show no accuracy" in worries(at(0.56))["accuracy"]
+    headline = replace(
+        summary.choice.headline, metric=0.3, metric_low=0.2, metric_high=0.4
+    )
+    below = replace(summary, choice=replace(summary.choice, headline=headline))
+    assert "lies below 0.5" in worries(below)["accuracy"]
     assert summary.doubt == ""
 
 
