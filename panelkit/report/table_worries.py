@@ -60,14 +60,15 @@ def _random(summary: RunSummary) -> list[Worry]:
     row = named(summary, "random-headline")
     if row is None or not row.p > ENOUGH:
         return []
+    markers = "1 marker" if row.size == 1 else f"{row.size} markers"
     return [
         _warn(
             "random panels",
-            "The procedure is no better than panels drawn by lot: of random panels of "
-            f"{row.size} {'marker' if row.size == 1 else 'markers'}, one in twenty "
-            f"reaches {three_figures(row.metric_high)} or more (p = {row.p:.3g}).",
-            "Do not read the chosen markers as special: either nothing or nearly "
-            "everything carries the signal",
+            "The procedure is not shown to be better than panels drawn by lot: of "
+            f"random panels of {markers}, one in twenty reaches "
+            f"{three_figures(row.metric_high)} or more (p = {row.p:.3g}).",
+            "Do not read the chosen markers as special: nothing carries the signal, or "
+            "nearly everything does, or people are too few to tell",
         )
     ]
 
