@@ -1,4 +1,4 @@
-"""Open cohorts that may be used, but not committed: `pytest --cohorts DIR`.
+"""Open cohorts that may be used, but not committed: `pytest --cohorts=DIR`.
 
 DIR holds a folder a cohort, with `expression.csv.gz` and `samples.csv`. Without the
 option, or without the folder, tests marked `cohorts` are skipped and counted.
@@ -18,7 +18,7 @@ def pytest_addoption(parser):
 def pytest_collection_modifyitems(config, items):
     if config.getoption("--cohorts") is not None:
         return
-    skip = pytest.mark.skip(reason="needs --cohorts DIR")
+    skip = pytest.mark.skip(reason="needs --cohorts=DIR")
     for item in items:
         if item.get_closest_marker("cohorts"):
             item.add_marker(skip)
