@@ -1,9 +1,14 @@
 """Arrays in, numbers out."""
 
+from panelkit.metrics.assay_error import cv_to_log2_sd, log2_sd_to_cv
 from panelkit.metrics.association import (
     contingency_table,
     cramers_v,
     cramers_v_corrected,
+)
+from panelkit.metrics.auc_variance import (
+    binormal_auc_variance,
+    hanley_mcneil_variance,
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
 from panelkit.metrics.cross_validated import Measure, cross_validate
@@ -56,6 +61,7 @@ __all__ = [
     "auc_score_interval",
     "balanced_accuracy",
     "best_threshold",
+    "binormal_auc_variance",
     "brier",
     "calibration_slope",
     "censoring_curve",
@@ -68,14 +74,17 @@ __all__ = [
     "cramers_v_corrected",
     "cross_validate",
     "cross_validated_auc",
+    "cv_to_log2_sd",
     "false_discovery_adjusted",
     "fisher_exact_many",
     "hand_till",
+    "hanley_mcneil_variance",
     "holm_adjusted",
     "horizon_auc",
     "horizon_brier",
     "limits_of_agreement",
     "linear_slope",
+    "log2_sd_to_cv",
     "log_loss",
     "log_loss_of_classes",
     "naive_se",
