@@ -88,7 +88,9 @@ class SizingCurve(Record):
     marked : tuple of (str, float)
         Places along x that answer the question.
     logarithmic : bool
-        Whether x is drawn so.
+        Whether both axes are drawn so.
+    ticks : tuple of str
+        Words below 1, 2, ... along x; empty for numbers.
     """
 
     name: str
@@ -100,6 +102,7 @@ class SizingCurve(Record):
     target: float | None = None
     marked: tuple[tuple[str, float], ...] = ()
     logarithmic: bool = False
+    ticks: tuple[str, ...] = ()
 
     def to_frame(self) -> "pd.DataFrame":
         """Return the points of every line, one row a point."""

@@ -45,17 +45,19 @@ def draw_sizing(answer: SizingAnswer) -> tuple[Picture, ...]:
         axes.grid(axis="y")
         if curve.logarithmic:
             axes.set_xscale("log")
+            axes.set_yscale("log")
         for place, line in enumerate(curve.series):
             _draw_line(axes, line, place)
-        _reach(axes, curve)
+        if not curve.logarithmic:
+            _reach(axes, curve)
         if curve.target is not None:
             axes.axhline(
                 curve.target, color=FAINT, linestyle=(0, (1, 2)), linewidth=1.2
             )
         axes.set_xlabel(curve.x_label)
         axes.set_ylabel(curve.y_label)
-        for words, x in curve.marked:
-            _mark(axes, words, x)
+        for place, (words, x) in enumerate(curve.marked):
+            _mark(axes, curve, words, x, place)
         _ticks(axes, curve)
         columns = 2 if max(len(line.name) for line in curve.series) <= 26 else 1
         figure.legend(loc="outside upper left", ncols=columns, handlelength=3.2)
@@ -114,29 +116,45 @@ def _reach(axes: Axes, curve: SizingCurve) -> None:
     axes.set_ylim(bottom, min(top, 1.02) if probability and high > 0.9 else top)
 
 
-def _mark(axes: Axes, words: str, x: float) -> None:
+def _mark(axes: Axes, curve: SizingCurve, words: str, x: float, place: int) -> None:
+    """Draw a line across with its words, at the foot where lines rise to the top."""
     axes.axvline(x, color=INK, linewidth=1.0, linestyle=(0, (4, 2)))
-    low, high = axes.get_xlim()
-    right = (x - low) / (high - low) > 0.62
+    across = axes.transData.transform((x, 1.0))[0]
+    right = float(axes.transAxes.inverted().transform((across, 0.0))[0]) > 0.62
+    first = curve.series[0]
+    rises = first.y[-1] > first.y[0]
     axes.annotate(
         words,
-        (x, 0.97),
+        (x, 0.03 + 0.07 * place if rises else 0.97 - 0.07 * place),
         xycoords=("data", "axes fraction"),
         xytext=(-5 if right else 5, 0),
         textcoords="offset points",
         ha="right" if right else "left",
-        va="top",
+        va="bottom" if rises else "top",
         bbox={"facecolor": PAPER, "edgecolor": "none", "pad": 1.0},
     )
 
 
 def _ticks(axes: Axes, curve: SizingCurve) -> None:
+    if curve.ticks:
+        axes.set_xticks(range(1, len(curve.ticks) + 1))
+        axes.set_xticklabels(
+            [drawable(name, LONGEST_NAME) for name in curve.ticks],
+            rotation=25,
+            ha="right",
+        )
+        axes.margins(x=0.12)
+        axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:,g}"))
+        return
     places = sorted({x for line in curve.series for x in line.x})
-    few = len(places) <= 8 and all(float(x).is_integer() for x in places)
+    integer = all(float(x).is_integer() for x in places)
+    few = len(places) <= 8 and integer
     if few and all(b - a == 1.0 for a, b in pairwise(places)):
         axes.set_xticks(places)
         axes.margins(x=0.12)
     elif not curve.logarithmic:
-        axes.xaxis.set_major_locator(MaxNLocator(nbins=7))
+        axes.xaxis.set_major_locator(
+            MaxNLocator(nbins=7, steps=[1, 2, 2.5, 5, 10], integer=integer)
+        )
     axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:,g}"))
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:,g}"))

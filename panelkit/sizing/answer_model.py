@@ -219,6 +219,7 @@ def _developed(
             ),
             None,
             ((f"{whole(found.people)} people", float(parameters)),),
+            logarithmic=True,
         ),
         sources=(
             "Riley et al. 2020, BMJ 368:m441",

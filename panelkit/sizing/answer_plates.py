@@ -123,10 +123,8 @@ def answer_plates(
             "balance",
             "How evenly the plates are filled",
             "Association of plate and column (Cramer's V): this allocation against the "
-            "mean and 95th percentile of allocations by chance. Columns: "
-            + ", ".join(f"{k + 1} {b.column}" for k, b in enumerate(found.balance))
-            + ".",
-            "column",
+            "mean and 95th percentile of allocations by chance.",
+            "",
             "Cramer's V to the plate",
             (
                 SizingSeries(
@@ -144,6 +142,7 @@ def answer_plates(
                     points_only=True,
                 ),
             ),
+            ticks=tuple(b.column for b in found.balance),
         ),
         sources=(
             "Taves 1974, Clin Pharmacol Ther 15:443",

@@ -3,7 +3,7 @@
 import math
 from collections.abc import Callable
 
-from panelkit.errors import NoPanelError, UsageError
+from panelkit.errors import UsageError
 
 __all__ = [
     "LARGEST",
@@ -109,13 +109,13 @@ def smallest(enough: Callable[[int], bool], what: str, start: int = 2) -> int:
 
     Raises
     ------
-    NoPanelError
+    UsageError
         None up to a thousand million is.
     """
     high = start
     while not enough(high):
         if high > LARGEST:
-            raise NoPanelError(
+            raise UsageError(
                 code="size-out-of-reach",
                 where=what,
                 what=f"more than {LARGEST:,} people would be needed",

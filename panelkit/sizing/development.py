@@ -155,6 +155,7 @@ def develop_binary(
     et al. 2019, Stat Methods Med Res 28:2455, whose simulations had up to 30
     parameters.
     """
+    check_count("number of candidate parameters", parameters)
     largest = largest_cox_snell(prevalence)
     if not cox_snell < largest:
         raise UsageError(
