@@ -7,6 +7,7 @@ from typing import Any
 import click
 
 from panelkit.cli.screen import console, show_json, show_table
+from panelkit.errors import UsageError
 from panelkit.records import SizingAnswer, SizingTable
 from panelkit.workflow import sizing_content, with_costs, write_sizing
 
@@ -61,8 +62,12 @@ def numbers(
         try:
             return tuple(kind(part) for part in text.split(","))
         except ValueError:
-            raise click.BadParameter(
-                f"{text!r} are no numbers parted by commas, such as 100,200"
+            raise UsageError(
+                code="numbers-unreadable",
+                where=option.opts[0],
+                what=f"these are no numbers (got {text!r})",
+                accepted="numbers parted by commas, such as 100,200",
+                next_step="Correct the list",
             ) from None
 
     return read

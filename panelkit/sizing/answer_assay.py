@@ -6,7 +6,7 @@ from collections.abc import Callable, Sequence
 import numpy as np
 
 from panelkit.config import SIZING
-from panelkit.metrics import cv_to_log2_sd, log2_sd_to_cv
+from panelkit.metrics import cv_from_log2_sd, log2_sd_from_cv
 from panelkit.records import SizingAnswer, SizingCurve, SizingSeries, SizingTable
 from panelkit.sizing.bridging import BridgingSize, bridging_size, widths_of
 from panelkit.sizing.error_simulation import simulate_area
@@ -113,7 +113,7 @@ def answer_limits(
             seen = simulate_area(model, error, generator)
             checks.append(
                 (
-                    name, log2_sd_to_cv(spread), area_with_error(model, error),
+                    name, cv_from_log2_sd(spread), area_with_error(model, error),
                     seen.mean, seen.se, seen.low, seen.high,
                 )
             )  # fmt: skip
@@ -122,13 +122,13 @@ def answer_limits(
         question="What does the assay have to reach so that the panel loses no more?",
         sentence=f"The panel's area of {figures(model.area)} falls by "
         f"{figures(loss)} when every marker has an added CV of "
-        f"{percent(log2_sd_to_cv(own))}, or plates shift every marker with a CV of "
-        f"{percent(log2_sd_to_cv(shared))}. Strictest is {strictest.marker}: alone it "
-        f"may have {percent(strictest.alone_cv)}.",
+        f"{percent(cv_from_log2_sd(own))}, or plates shift every marker with a CV of "
+        f"{percent(cv_from_log2_sd(shared))}. Strictest is {strictest.marker}: alone "
+        f"it may have {percent(strictest.alone_cv)}.",
         figures={
             "area": model.area,
-            "all_cv": _number(log2_sd_to_cv(own)),
-            "all_plate_cv": _number(log2_sd_to_cv(shared)),
+            "all_cv": _number(cv_from_log2_sd(own)),
+            "all_plate_cv": _number(cv_from_log2_sd(shared)),
             "strictest": strictest.marker,
             "strictest_alone_cv": _number(strictest.alone_cv),
         },
@@ -161,7 +161,7 @@ def answer_limits(
                 ),
                 tuple(
                     (
-                        e.marker, e.weight, _number(log2_sd_to_cv(own)),
+                        e.marker, e.weight, _number(cv_from_log2_sd(own)),
                         _number(e.alone_cv), _number(e.alone_plate_cv),
                         e.all_correlation, e.alone_correlation,
                         _number(e.one_class_shift), _number(e.everybody_shift),
@@ -471,7 +471,7 @@ def answer_bridging(
     UsageError
         Values that no study can have.
     """
-    sd = math.hypot(cv_to_log2_sd(cv), cv_to_log2_sd(other_cv))
+    sd = math.hypot(log2_sd_from_cv(cv), log2_sd_from_cv(other_cv))
     size = bridging_size(sd, shift, correlation, confidence=confidence)
     rows = _bridging_rows(size)
     sizes = sizes_around(size.samples)

@@ -8,6 +8,7 @@ from panelkit.sizing.demands import check_share
 from panelkit.sizing.precision import (
     area_size_binormal,
     area_size_hanley_mcneil,
+    area_size_normal_scores,
     area_width,
     buderer_size,
     normal_quantile,
@@ -172,7 +173,7 @@ def answer_area(
     Returns
     -------
     SizingAnswer
-        By two variance formulas; the larger number is the answer.
+        By three variance formulas; the largest number is the answer.
 
     Raises
     ------
@@ -182,7 +183,8 @@ def answer_area(
     z = normal_quantile(confidence)
     one = area_size_hanley_mcneil(area, width, controls_per_case, confidence)
     exact, *two = area_size_binormal(area, width, controls_per_case, confidence)
-    cases, controls = max(one, (two[0], two[1]))
+    three = area_size_normal_scores(area, width, controls_per_case, confidence)
+    cases, controls = max(one, (two[0], two[1]), three)
     sizes = sizes_around(cases + controls)
     counts = [max(2, math.floor(n / (1.0 + controls_per_case))) for n in sizes]
     widths = [area_width(area, n, controls_per_case, z) for n in counts]
@@ -190,8 +192,9 @@ def answer_area(
         question="How many people measure an area under the ROC curve well enough?",
         sentence=f"{whole(cases)} cases and {whole(controls)} controls, together "
         f"{whole(cases + controls)}, for an interval at most {figures(width)} wide. "
-        f"Hanley and McNeil's variance asks for {whole(one[0])} cases, the binormal "
-        f"variance for {whole(two[0])}; the larger is taken.",
+        f"Hanley and McNeil's variance asks for {whole(one[0])} cases, Obuchowski's "
+        f"binormal variance for {whole(two[0])}, counting normal scores (what DeLong's "
+        f"estimate is on average) for {whole(three[0])}; the largest is taken.",
         figures={
             "people": cases + controls,
             "cases": cases,
@@ -201,6 +204,8 @@ def answer_area(
             "cases_binormal": two[0],
             "controls_binormal": two[1],
             "cases_binormal_exact": exact,
+            "cases_normal_scores": three[0],
+            "controls_normal_scores": three[1],
         },
         inputs={
             "area": area,
@@ -210,9 +215,10 @@ def answer_area(
         },
         assumptions=(
             f"The interval is area plus or minus {figures(z)} standard errors.",
-            "Hanley and McNeil's variance stands for scores with exponential tails, "
-            "Obuchowski's for normal scores with one variance in both classes; real "
-            "scores lie between or near them, and the two differ noticeably.",
+            "Hanley and McNeil's variance stands for scores with exponential tails. "
+            "Obuchowski's is an approximation for normal scores and on the safe side; "
+            "the third is exact for a counted area of normal scores with one variance "
+            "in both classes.",
             "The panel is locked; one sample a person; the area is as expected.",
             *SMALL_PRINT,
         ),
@@ -224,12 +230,19 @@ def answer_area(
                 (
                     ("Hanley-McNeil", one[0], one[1], sum(one)),
                     ("binormal (Obuchowski)", two[0], two[1], sum(two)),
+                    ("normal scores (expected DeLong)", *three, sum(three)),
                 ),
             ),
             SizingTable(
                 "range",
                 "width of the interval with other numbers of people",
-                ("people", "cases", "width_hanley_mcneil", "width_binormal"),
+                (
+                    "people",
+                    "cases",
+                    "width_hanley_mcneil",
+                    "width_binormal",
+                    "width_normal_scores",
+                ),
                 tuple(
                     (n, count, *each)
                     for n, count, each in zip(sizes, counts, widths, strict=True)
@@ -240,14 +253,14 @@ def answer_area(
             "area_width",
             "Precision of the area under the ROC curve",
             f"Width of the {figures(100 * confidence)} % interval against people, by "
-            "both variances; the dotted line is what was asked for.",
+            "three variances; the dotted line is what was asked for.",
             "cases and controls together",
             "width of the interval",
             tuple(
                 SizingSeries(
                     name, tuple(map(float, sizes)), tuple(w[k] for w in widths)
                 )
-                for k, name in enumerate(("Hanley-McNeil", "binormal"))
+                for k, name in enumerate(("Hanley-McNeil", "binormal", "normal scores"))
             ),
             width,
             ((f"{whole(cases + controls)} people", float(cases + controls)),),
@@ -255,5 +268,7 @@ def answer_area(
         sources=(
             "Hanley & McNeil 1982, Radiology 143:29",
             "Obuchowski 1994, J Clin Epidemiol 47:549",
+            "Bamber 1975, J Math Psychol 12:387",
+            "DeLong, DeLong & Clarke-Pearson 1988, Biometrics 44:837",
         ),
     )

@@ -6,7 +6,11 @@ from fractions import Fraction
 from statistics import NormalDist
 
 from panelkit.config import SIZING
-from panelkit.metrics import binormal_auc_variance, hanley_mcneil_variance
+from panelkit.metrics import (
+    auc_standard_error,
+    binormal_auc_variance,
+    normal_scores_auc_se,
+)
 from panelkit.sizing.demands import (
     check_area,
     check_between,
@@ -19,6 +23,7 @@ __all__ = [
     "CohortSize",
     "area_size_binormal",
     "area_size_hanley_mcneil",
+    "area_size_normal_scores",
     "area_width",
     "buderer_size",
     "normal_quantile",
@@ -169,8 +174,8 @@ def area_width(
     n_cases: int,
     controls_per_case: float,
     z: float,
-) -> tuple[float, float]:
-    """Return the full width of an area's interval by both variance formulas.
+) -> tuple[float, float, float]:
+    """Return the full width of an area's interval by three variance formulas.
 
     Parameters
     ----------
@@ -185,17 +190,19 @@ def area_width(
 
     Returns
     -------
-    hanley_mcneil, binormal : float
+    hanley_mcneil, binormal, normal_scores : float
         2 z SE.
 
     References
     ----------
-    Hanley & McNeil 1982, Radiology 143:29; Obuchowski 1994, J Clin Epidemiol 47:549.
+    Hanley & McNeil 1982, Radiology 143:29; Obuchowski 1994, J Clin Epidemiol 47:549;
+    Bamber 1975, J Math Psychol 12:387.
     """
     n_controls = _ceiling(controls_per_case * n_cases)
-    theirs = hanley_mcneil_variance(area, n_cases, n_controls)
+    theirs = auc_standard_error(area, n_cases, n_controls)
     binormal = binormal_auc_variance(area, controls_per_case) / n_cases
-    return 2.0 * z * math.sqrt(theirs), 2.0 * z * math.sqrt(binormal)
+    counted = normal_scores_auc_se(area, n_cases, n_controls)
+    return 2.0 * z * theirs, 2.0 * z * math.sqrt(binormal), 2.0 * z * counted
 
 
 def area_size_hanley_mcneil(
@@ -235,6 +242,42 @@ def area_size_hanley_mcneil(
     z = normal_quantile(confidence)
     n = smallest(
         lambda n: area_width(area, n, controls_per_case, z)[0] <= width, "width", 1
+    )
+    return n, _ceiling(controls_per_case * n)
+
+
+def area_size_normal_scores(
+    area: float,
+    width: float,
+    controls_per_case: float = SIZING.controls_per_case,
+    confidence: float = SIZING.confidence,
+) -> tuple[int, int]:
+    """Return the cases and controls for the width when normal scores are counted.
+
+    Parameters
+    ----------
+    area, width, controls_per_case, confidence
+        As for `area_size_hanley_mcneil`.
+
+    Returns
+    -------
+    n_cases, n_controls : int
+        Smallest number of cases; controls rounded up.
+
+    Raises
+    ------
+    UsageError
+        Values that no study can have.
+
+    References
+    ----------
+    Bamber 1975, J Math Psychol 12:387; DeLong, DeLong & Clarke-Pearson 1988,
+    Biometrics 44:837, whose estimate has this expectation.
+    """
+    _check_area_demand(area, width, controls_per_case)
+    z = normal_quantile(confidence)
+    n = smallest(
+        lambda n: area_width(area, n, controls_per_case, z)[2] <= width, "width", 1
     )
     return n, _ceiling(controls_per_case * n)
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from panelkit.config import SIZING
 from panelkit.errors import UsageError, name_some
-from panelkit.metrics import cv_to_log2_sd, log2_sd_to_cv
+from panelkit.metrics import cv_from_log2_sd, log2_sd_from_cv
 from panelkit.sizing.demands import check_count
 
 __all__ = [
@@ -220,8 +220,8 @@ class AssayError:
             On the log2 scale.
         """
         check_count("number of plates", n_plates)
-        own = cv_to_log2_sd(within, replicates)
-        shared = cv_to_log2_sd(between)
+        own = log2_sd_from_cv(within, replicates)
+        shared = log2_sd_from_cv(between)
         return cls((own,) * n_markers, (shared,) * n_markers, n_plates)
 
 
@@ -423,8 +423,8 @@ def assay_limits(
             MarkerLimits(
                 marker,
                 float(model.weights[j]),
-                log2_sd_to_cv(own_sd),
-                log2_sd_to_cv(plate_sd),
+                cv_from_log2_sd(own_sd),
+                cv_from_log2_sd(plate_sd),
                 1.0 / math.sqrt(1.0 + (own_sd / sd) ** 2),
                 1.0 / math.sqrt(1.0 + (common / sd) ** 2),
                 math.inf if free else step / weight,
