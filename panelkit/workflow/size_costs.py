@@ -4,11 +4,13 @@ from collections.abc import Sequence
 from dataclasses import replace
 from pathlib import Path
 
-from panelkit.config import read_study
-from panelkit.costing import PanelPricer
 from panelkit.errors import UsageError
-from panelkit.ingest import read_price_list
 from panelkit.records import SizingAnswer, SizingTable
+from panelkit.workflow.price_inputs import (
+    PriceSource,
+    apply_settings,
+    load_priceable,
+)
 
 __all__ = ["with_costs"]
 
@@ -37,26 +39,21 @@ def with_costs(
     Raises
     ------
     UsageError
-        Nothing says what is measured, or what it costs.
+        No panel is named, or nothing says what it costs.
     StudyFileError, InputDataError
         A file cannot be used.
     """
     if study is None:
         return answer
-    plan = read_study(study)
-    if plan.programme is None or plan.panels.prices is None or not markers:
+    if not markers:
         raise UsageError(
             code="size-not-priced",
-            where="--prices" if markers else "--markers",
-            what="nothing says what the assays cost"
-            if markers
-            else "the study is to be priced and no panel is named",
-            accepted="a study file with [programme], platforms and [panels] prices, "
-            "and "
-            "the markers",
-            next_step="Add them, or ask without prices",
+            where="--markers",
+            what="the people are to be priced and no panel is named",
+            accepted="the markers of the panel, parted by commas",
+            next_step="Add --markers, or ask without --prices",
         )
-    prices = read_price_list(plan.file(plan.panels.prices))
+    pricer = load_priceable(PriceSource(file=study)).pricer
     people: set[int] = set()
     for table in answer.tables:
         if table.header[0] == "people":
@@ -66,12 +63,12 @@ def with_costs(
         people.add(round(asked))
     found = {}
     for n in sorted(people):
-        programme = plan.programme.model_copy(update={"samples": n})
-        costs = PanelPricer(programme, plan.platforms, prices).costs(list(markers))
+        one, _ = apply_settings(pricer, [("samples", str(n))])
+        costs = one.costs(list(markers))
         if costs:
             best = costs[0]
             found[n] = (str(best.total), str(best.cost_per_result), best.platform)
-    currency = plan.programme.currency
+    currency = pricer.programme.currency
     tables = tuple(
         _priced(table, found, currency) if table.header[0] == "people" else table
         for table in answer.tables
