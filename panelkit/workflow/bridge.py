@@ -377,7 +377,8 @@ def bridge_choice(
     complete = np.asarray(np.isfinite(values).all(axis=1))
     rows = np.flatnonzero(complete)
     outcome = np.asarray(cohort.outcome.values, np.float64)
-    chosen = rows[choose_bridging_set(values[rows], outcome[rows], size)]
+    ranks = values[rows].argsort(axis=0, kind="stable").argsort(axis=0)
+    chosen = rows[choose_bridging_set(ranks.astype(float), outcome[rows], size)]
     covered: list[tuple[str | float, ...]] = [
         (
             marker,
@@ -395,8 +396,8 @@ def bridge_choice(
         inputs={"study": study.name, "panel": found.name, "size": size},
         assumptions=(
             "The lowest and highest sample of every marker come first, then always the "
-            "sample farthest from those chosen (markers scaled to SD 1), of the class "
-            "that is behind its share.",
+            "sample farthest from those chosen (distances of the markers' ranks, which "
+            "no scale distorts), of the class that is behind its share.",
             f"{len(complete) - len(rows)} samples with a missing marker are left out; "
             "whether material is left is for the laboratory to say.",
             "Samples at the ends of the range are over-represented on purpose: their "
