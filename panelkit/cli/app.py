@@ -20,6 +20,8 @@ COMMANDS: Final = {
     "shortlist": "Say which markers are picked again and again; no panels.",
     "price": "Price marker lists on platforms; needs no expression data.",
     "run": "Run the whole job: priced panels with honest accuracy.",
+    "size": "How large the next cohort has to be; which sample on which plate.",
+    "bridge": "What the assay has to reach; joining two platforms.",
 }
 
 

@@ -15,6 +15,7 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    SIZING,
     STEPS,
     DesignKind,
 )
@@ -59,6 +60,7 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "SIZING",
     "STEPS",
     "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",

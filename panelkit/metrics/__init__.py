@@ -1,9 +1,14 @@
 """Arrays in, numbers out."""
 
+from panelkit.metrics.assay_noise import cv_from_log2_sd, log2_sd_from_cv
 from panelkit.metrics.association import (
     contingency_table,
     cramers_v,
     cramers_v_corrected,
+)
+from panelkit.metrics.auc_variance import (
+    binormal_auc_variance,
+    normal_scores_auc_se,
 )
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
 from panelkit.metrics.cross_validated import Measure, cross_validate
@@ -36,6 +41,7 @@ from panelkit.metrics.several_classes import (
     log_loss_of_classes,
     softmax,
 )
+from panelkit.metrics.study_size import auc_standard_error
 from panelkit.metrics.survival import (
     censoring_curve,
     concordance,
@@ -54,8 +60,10 @@ __all__ = [
     "auc",
     "auc_placements",
     "auc_score_interval",
+    "auc_standard_error",
     "balanced_accuracy",
     "best_threshold",
+    "binormal_auc_variance",
     "brier",
     "calibration_slope",
     "censoring_curve",
@@ -68,6 +76,7 @@ __all__ = [
     "cramers_v_corrected",
     "cross_validate",
     "cross_validated_auc",
+    "cv_from_log2_sd",
     "false_discovery_adjusted",
     "fisher_exact_many",
     "hand_till",
@@ -76,10 +85,12 @@ __all__ = [
     "horizon_brier",
     "limits_of_agreement",
     "linear_slope",
+    "log2_sd_from_cv",
     "log_loss",
     "log_loss_of_classes",
     "naive_se",
     "net_benefit",
+    "normal_scores_auc_se",
     "paired_interval",
     "r_squared",
     "rank_sum_p",

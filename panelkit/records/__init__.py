@@ -67,6 +67,12 @@ from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
 from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.shortlist_results import ShortlistResults
+from panelkit.records.sizing import (
+    SizingAnswer,
+    SizingCurve,
+    SizingSeries,
+    SizingTable,
+)
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -151,6 +157,10 @@ __all__ = [
     "SheetAssay",
     "ShortlistResults",
     "ShortlistTable",
+    "SizingAnswer",
+    "SizingCurve",
+    "SizingSeries",
+    "SizingTable",
     "Spares",
     "SplitCost",
     "Stability",

@@ -25,6 +25,10 @@ def whole(*shape):
     return np.arange(int(np.prod(shape)), dtype=np.int64).reshape(shape)
 
 
+def sizing_series():
+    return records.SizingSeries("line", (1.0, 2.0), (0.4, 0.6))
+
+
 def findings():
     return records.Findings(
         (
@@ -381,6 +385,16 @@ MADE = {
     "SelectorResult": selector_result,
     "ShortlistResults": shortlist_results,
     "ShortlistTable": shortlist_table,
+    "SizingAnswer": lambda: records.SizingAnswer(
+        "question", "answer", {"people": 3}, {"width": 0.1}, ("words",), (), None, ()
+    ),
+    "SizingCurve": lambda: records.SizingCurve(
+        "name", "title", "caption", "x", "y", (sizing_series(),), 0.5
+    ),
+    "SizingSeries": lambda: sizing_series(),
+    "SizingTable": lambda: records.SizingTable(
+        "name", "title", ("a", "b"), ((1, 2.0),)
+    ),
     "Stability": stability,
     "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
