@@ -24,6 +24,8 @@ COMMANDS: Final = {
     "score": "Score new samples by a locked panel.",
     "validate": "Judge a locked panel on people who did not teach it.",
     "recalibrate": "Fit a locked panel's chances to new people.",
+    "size": "How large the next cohort has to be; samples to plates.",
+    "bridge": "What the assay has to reach; joining two platforms.",
 }
 
 

@@ -39,8 +39,8 @@ def _show(run: Run) -> None:
     summary = run.summary
     show_table(
         f"{summary.outcome}; {summary.n_subjects} people, "
-        f"{summary.n_features:,} features",
-        ["size", "maker", "AUC", "interval", "slope", *_price(summary)],
+        f"{summary.n_features:,} features; accuracy: {summary.metric_words}",
+        ["size", "maker", "accuracy", "interval", "slope", *_price(summary)],
         [_row(row, bool(summary.costs)) for row in _worth_showing(summary)],
         right=(0, 2, 4, 5, 6),
     )
@@ -56,8 +56,8 @@ def _show(run: Run) -> None:
     screen.print()
     headline = summary.choice.headline
     screen.print(headline.sentence, markup=False)
-    if headline.metric_low <= 0.5 <= headline.metric_high:
-        screen.print("That interval holds 0.5: these data show no accuracy.")
+    if summary.doubt:
+        screen.print(summary.doubt)
     screen.print(summary.choice.rules[0].sentence, markup=False)
     for other in summary.comparators[:2]:
         screen.print(other.sentence, markup=False)

@@ -16,6 +16,7 @@ from panelkit.config.defaults import (
     PROGRAMME,
     SEED,
     SHORTLIST,
+    SIZING,
     STEPS,
     DesignKind,
 )
@@ -62,6 +63,7 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "SIZING",
     "STEPS",
     "TEMPLATE_SECTIONS",
     "USUAL_REFERENCES",

@@ -24,6 +24,7 @@ __all__ = [
     "PROGRAMME",
     "SEED",
     "SHORTLIST",
+    "SIZING",
     "STEPS",
     "DesignKind",
 ]
@@ -213,9 +214,58 @@ class _Pricing:
     """Sizes above the panel's own that the staircase goes on for."""
 
 
+@dataclass(frozen=True, slots=True)
+class _Sizing:
+    confidence: float = 0.95
+    power: float = 0.8
+    significance: float = 0.05
+    controls_per_case: float = 1.0
+    shrinkage: float = 0.9
+    """Least expected shrinkage of a model under development (Riley et al. 2020)."""
+    optimism: float = 0.05
+    """Largest optimism of Nagelkerke's R2 (Riley et al. 2020)."""
+    risk_margin: float = 0.05
+    """Half-width of the interval of the overall risk (Riley et al. 2020)."""
+    prediction_error: float = 0.05
+    """Mean absolute prediction error (van Smeden et al. 2019)."""
+    ratio_width: float = 0.2
+    """Full width of the interval of observed over expected events."""
+    slope_width: float = 0.2
+    """Full width of the interval of the calibration slope."""
+    area_width: float = 0.1
+    """Full width of the interval of the area under the ROC curve."""
+    benefit_width: float = 0.2
+    """Full width of the interval of the standardised net benefit."""
+    r_squared_width: float = 0.1
+    simulations: int = 20
+    """Invented cohorts for each number of people."""
+    subsamples: int = 50
+    """Subsamples of each invented cohort."""
+    features: int = 2000
+    true_markers: int = 10
+    error_draws: int = 200
+    people_per_draw: int = 2000
+    plates: int = 8
+    cut_off_specificity: float = 0.9
+    point_loss: float = 0.05
+    """Largest loss of sensitivity or specificity at a locked cut-off."""
+    concordance_width: float = 0.1
+    """Full width of the interval of the correlation of two platforms."""
+    limits_width: float = 1.0
+    """Half-width of the interval of the limits of agreement, in SD of differences."""
+    wells: int = 96
+    controls: int = 8
+    """Wells of a plate kept for controls and references."""
+    chance_draws: int = 500
+    """Allocations by chance that an allocation is held against."""
+    attempts: int = 50
+    """Allocations that are drawn; the best balanced one is taken."""
+
+
 COHORT: Final = _Cohort()
 DESIGN: Final = _Design()
 PREPARATION: Final = _Preparation()
+SIZING: Final = _Sizing()
 STEPS: Final = _Steps()
 ENGINE: Final = _Engine()
 SHORTLIST: Final = _Shortlist()

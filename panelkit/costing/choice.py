@@ -58,6 +58,7 @@ def choose(
     *,
     primary: Primary,
     secondary: Sequence[Rule],
+    currency: str = "",
 ) -> tuple[Choice, Frontier]:
     """Return the headline with every rule's choice, and the frontier marked by it.
 
@@ -77,6 +78,8 @@ def choose(
         The rule of the headline and what it did.
     secondary : sequence of Rule
         Rules that read the curve.
+    currency : str
+        Of the costs; empty where nothing is priced.
 
     Returns
     -------
@@ -97,7 +100,11 @@ def choose(
             picks[rule.name + ON_CURVE] = (rule, pick(rule, curve))
     best = int(fold_means(per_fold).argmax())
     rules = [
-        _rule(name, rule, found, best, frontier, curve, judge)
+        _with_panel(
+            _rule(name, rule, found, best, frontier, curve, judge),
+            frontier.rows[found.row],
+            currency,
+        )
         for name, (rule, found) in picks.items()
     ]
     marked = tuple(
@@ -171,6 +178,21 @@ def _rule(
         panel=row.panel if found.met else "",
         figures=figures,
         sentence=f"{lead} {_against_best(row, best, frontier, gap, figures)}",
+    )
+
+
+def _with_panel(rule: RuleChoice, row: FrontierRow, currency: str) -> RuleChoice:
+    """Return a choice with its markers, platform and cost, where there is one."""
+    if not rule.panel:
+        return rule
+    priced = row.cost_total is not None
+    return replace(
+        rule,
+        markers=row.markers,
+        platform=row.platform,
+        currency=currency if priced else "",
+        cost_total=row.cost_total,
+        cost_per_result=row.cost_per_result,
     )
 
 

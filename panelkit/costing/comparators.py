@@ -51,46 +51,50 @@ def compare(
     """
     nested = judge.metric(primary.predictions)
     rows = [
-        _model(name, size, predictions, nested, judge)
-        for name, size, predictions in _models(accuracy, primary, n_features)
+        _model(kind, name, size, predictions, nested, judge)
+        for kind, name, size, predictions in _models(accuracy, primary, n_features)
     ]
     rows += _random(accuracy, judge, primary)
+    rows += _random_at_headline(accuracy, judge, primary)
     rows.append(_no_skill(judge))
     return tuple(rows)
 
 
 def _models(
     accuracy: HonestAccuracy, primary: Primary, n_features: int
-) -> list[tuple[str, int, OutOfFold]]:
+) -> list[tuple[str, str, int, OutOfFold]]:
     others = accuracy.others
-    found: list[tuple[str, int, OutOfFold]] = []
+    found: list[tuple[str, str, int, OutOfFold]] = []
 
-    def add(key: str, name: str, size: int) -> None:
+    def add(kind: str, key: str, name: str, size: int) -> None:
         if key in others:
-            found.append((name, size, others[key]))
+            found.append((kind, name, size, others[key]))
 
-    add(RIDGE, "ridge on all features", n_features)
+    add("ridge", RIDGE, "ridge on all features", n_features)
     if LASSO_SIZES in accuracy.figures:
         sizes = np.median(accuracy.figures[LASSO_SIZES], axis=(0, 1)).astype(int)
-        add(LASSO, "lasso on all features, smallest loss", int(sizes[0]))
-        add(LASSO_ONE_SE, "lasso on all features, one SE", int(sizes[1]))
+        add("lasso", LASSO, "lasso on all features, smallest loss", int(sizes[0]))
+        one_se = "lasso on all features, one SE"
+        add("lasso-one-se", LASSO_ONE_SE, one_se, int(sizes[1]))
     for predictions in accuracy.panels:
         if (predictions.maker, predictions.size) == ("univariate", 1):
             name = "one marker, the most different in each fold"
-            found.append((name, 1, predictions))
-    add(COVARIATES, "covariates alone", 0)
+            found.append(("one-marker", name, 1, predictions))
+    add("covariates", COVARIATES, "covariates alone", 0)
     panel = accuracy.panels[primary.taken.row]
     add(
+        "covariates-with-panel",
         f"{WITH_COVARIATES}{panel.maker}-{panel.size}",
         f"covariates with {panel.maker}-{panel.size}",
         panel.size,
     )
-    add(NUISANCE, "nuisance columns alone", 0)
-    add(CONTROLS, "control features alone", 0)
+    add("nuisance", NUISANCE, "nuisance columns alone", 0)
+    add("controls", CONTROLS, "control features alone", 0)
     return found
 
 
 def _model(
+    kind: str,
     name: str,
     size: int,
     predictions: OutOfFold,
@@ -98,13 +102,18 @@ def _model(
     judge: Judge,
 ) -> Comparator:
     found = judge.metric(predictions)
+    per_fold: NDArray[np.float64] = (found.per_fold - primary.per_fold).ravel()
+    difference = paired_interval(per_fold, judge.test_to_train, judge.confidence)
+    same = bool((per_fold[~np.isnan(per_fold)] == 0.0).all())
     return Comparator(
         name,
         size,
         found.mean,
         found.low,
         found.high,
-        _sentence(name, found, primary, judge),
+        _sentence(name, found, primary, difference, same, judge.confidence),
+        kind,
+        *difference,
     )
 
 
@@ -112,16 +121,21 @@ def _sentence(
     name: str,
     found: CrossValidated,
     primary: CrossValidated,
-    judge: Judge,
+    difference: tuple[float, float, float],
+    same: bool,
+    confidence: float,
 ) -> str:
-    difference: NDArray[np.float64] = (found.per_fold - primary.per_fold).ravel()
-    gap, low, high = paired_interval(difference, judge.test_to_train, judge.confidence)
+    gap, low, high = difference
     name = f"{name[0].upper()}{name[1:]}"
     figures = f"{found.mean:.3f} against {primary.mean:.3f}"
+    if same:
+        return (
+            f"{name}: identical to the primary rule in every fold ({found.mean:.3f})."
+        )
     if np.isnan(low):
         return f"{name}: {figures}; too few folds for an interval of the difference."
     spread = (
-        f"difference {gap:+.3f}, {100 * judge.confidence:g} % interval {low:+.3f} to "
+        f"difference {gap:+.3f}, {100 * confidence:g} % interval {low:+.3f} to "
         f"{high:+.3f}"
     )
     if low <= 0.0 <= high:
@@ -184,7 +198,10 @@ def _random(
     own = {each.size: each for each in accuracy.panels if each.maker == maker}
     sizes = sorted(own)
     rows = []
-    for key, source in ((FROM_ALL, "all features"), (FROM_CANDIDATES, "candidates")):
+    for key, kind, source in (
+        (FROM_ALL, "random-all", "all features"),
+        (FROM_CANDIDATES, "random-candidates", "candidates"),
+    ):
         if key not in accuracy.figures:
             continue
         figures = accuracy.figures[key]
@@ -206,6 +223,8 @@ def _random(
                         source,
                         p,
                     ),
+                    kind,
+                    p=p,
                 )
             )
     return rows
@@ -214,6 +233,36 @@ def _random(
 def _in_first_repeat(predictions: OutOfFold, judge: Judge) -> float:
     """Return the metric on the folds on which random panels were learnt."""
     return float(np.nanmean(judge.metric(predictions).per_fold[0]))
+
+
+def _random_at_headline(
+    accuracy: HonestAccuracy, judge: Judge, primary: Primary
+) -> list[Comparator]:
+    """Return random panels of the chosen size against the headline's procedure."""
+    if FROM_ALL not in accuracy.figures:
+        return []
+    sizes = sorted({each.size for each in accuracy.panels})
+    size = accuracy.panels[primary.taken.row].size
+    figures = accuracy.figures[FROM_ALL]
+    observed = _in_first_repeat(primary.predictions, judge)
+    mean, low, high, p = random_figures(figures, sizes.index(size), observed)
+    lead = (
+        f"{figures.shape[-1]} panels of {_markers(size)} drawn by lot from all "
+        f"features reach {mean:.3f} on average, one in twenty {high:.3f} or more, "
+        f"against {observed:.3f} of the headline's procedure on the same folds "
+        f"(p = {p:.3g})"
+    )
+    words = (
+        "the whole procedure is no better than random panels of the chosen size"
+        if p > ENOUGH
+        else "the whole procedure is better than random panels of the chosen size"
+    )
+    name = f"random panels of {size}, the chosen size, against the headline"
+    return [
+        Comparator(
+            name, size, mean, low, high, f"{lead}: {words}.", "random-headline", p=p
+        )
+    ]
 
 
 def _markers(size: int) -> str:
@@ -242,5 +291,11 @@ def _no_skill(judge: Judge) -> Comparator:
             f"{share:.0%} of the samples."
         )
     return Comparator(
-        "no feature at all", 0, task.no_skill, float("nan"), float("nan"), words
+        "no feature at all",
+        0,
+        task.no_skill,
+        float("nan"),
+        float("nan"),
+        words,
+        "no-feature",
     )

@@ -12,7 +12,7 @@ from panelkit.costing.primary import curve_of_folds
 from panelkit.costing.procedure import Procedure
 from panelkit.costing.rules import Rule, pick
 from panelkit.errors import FitError
-from panelkit.metrics import corrected_se
+from panelkit.metrics import CrossValidated, corrected_se, paired_interval
 from panelkit.records import FoldPlan, LearningPoint, OutOfFold
 from panelkit.runtime import (
     BlockResult,
@@ -133,7 +133,7 @@ def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs
         threads=threads,
         listener=listener,
     )
-    found = []
+    thin: list[tuple[float, float, CrossValidated]] = []
     first = Judge(data.task, data.subjects, data.weights, folds, judge.confidence)
     for share in shares:
         predicted = np.full((1, *data.task.predictors, data.n_samples), np.nan)
@@ -144,7 +144,7 @@ def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs
             predicted[0][..., test] = blocks[name]["predicted"]
             n_subjects.append(len(np.unique(data.subjects[splits[name].training])))
         one = OutOfFold("learning-curve", 0, predicted)
-        found.append(_point(share, float(np.mean(n_subjects)), one, first))
+        thin.append((share, float(np.mean(n_subjects)), first.metric(one)))
     everyone = float(
         np.mean(
             [
@@ -153,20 +153,32 @@ def learning_curve(  # noqa: PLR0913 - what was learnt, and how work runs
             ]
         )
     )
-    all_of_them = OutOfFold("learning-curve", 0, whole.predicted[:1])
-    found.append(_point(1.0, everyone, all_of_them, first))
-    return tuple(found)
+    all_of_them = first.metric(OutOfFold("learning-curve", 0, whole.predicted[:1]))
+    points = [_point(*each, first, all_of_them) for each in thin]
+    return (*points, _point(1.0, everyone, all_of_them, first, None))
 
 
 def _point(
-    share: float, n_subjects: float, predictions: OutOfFold, judge: Judge
+    share: float,
+    n_subjects: float,
+    found: CrossValidated,
+    judge: Judge,
+    whole: CrossValidated | None,
 ) -> LearningPoint:
-    area = judge.metric(predictions)
+    """Return a point; with what the whole has beyond it, unless it is the whole."""
+    gain = (float("nan"),) * 3
+    if whole is not None:
+        gain = paired_interval(
+            (whole.per_fold - found.per_fold).ravel(),
+            judge.test_to_train,
+            judge.confidence,
+        )
     return LearningPoint(
-        share=share,
-        n_subjects=float(n_subjects),
-        metric=area.mean,
-        metric_low=area.low,
-        metric_high=area.high,
-        metric_se_corrected=corrected_se(area.per_fold, judge.test_to_train),
+        share,
+        float(n_subjects),
+        found.mean,
+        found.low,
+        found.high,
+        corrected_se(found.per_fold, judge.test_to_train),
+        *gain,
     )

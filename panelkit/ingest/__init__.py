@@ -11,6 +11,7 @@ from panelkit.ingest.reader import OpenedMatrix, Reader, ReadOptions
 from panelkit.ingest.readers import format_names, register_reader
 from panelkit.ingest.replicate_checks import replicate_agreement
 from panelkit.ingest.scale import ScaleGuess, guess_scale
+from panelkit.ingest.sheet import Sheet, read_sheet
 from panelkit.ingest.usable import check_usable
 
 __all__ = [
@@ -19,6 +20,7 @@ __all__ = [
     "ReadOptions",
     "Reader",
     "ScaleGuess",
+    "Sheet",
     "check_cohort",
     "check_usable",
     "format_names",
@@ -29,6 +31,7 @@ __all__ = [
     "read_markers",
     "read_openings",
     "read_price_list",
+    "read_sheet",
     "record_opening",
     "register_reader",
     "replicate_agreement",

@@ -8,11 +8,13 @@ from panelkit.metrics.agreement import (
     scaled_brier,
     spiegelhalter_z,
 )
+from panelkit.metrics.assay_noise import cv_from_log2_sd, log2_sd_from_cv
 from panelkit.metrics.association import (
     contingency_table,
     cramers_v,
     cramers_v_corrected,
 )
+from panelkit.metrics.auc_variance import binormal_auc_variance, normal_scores_auc_se
 from panelkit.metrics.calibration import brier, calibration_slope, log_loss
 from panelkit.metrics.cross_validated import Measure, cross_validate
 from panelkit.metrics.delong import Areas, area_interval, delong, hanley_mcneil_se
@@ -79,6 +81,7 @@ __all__ = [
     "auc_score_interval",
     "balanced_accuracy",
     "best_threshold",
+    "binormal_auc_variance",
     "brier",
     "calibration_in_the_large",
     "calibration_slope",
@@ -93,6 +96,7 @@ __all__ = [
     "cramers_v_corrected",
     "cross_validate",
     "cross_validated_auc",
+    "cv_from_log2_sd",
     "delong",
     "false_discovery_adjusted",
     "fisher_exact_many",
@@ -104,6 +108,7 @@ __all__ = [
     "likelihood_ratios",
     "limits_of_agreement",
     "linear_slope",
+    "log2_sd_from_cv",
     "log_loss",
     "log_loss_of_classes",
     "lower_limit",
@@ -111,6 +116,7 @@ __all__ = [
     "naive_se",
     "needed_without_a_miss",
     "net_benefit",
+    "normal_scores_auc_se",
     "observed_over_expected",
     "paired_interval",
     "predictive_values",

@@ -8,6 +8,7 @@ from panelkit.errors import UsageError
 __all__ = [
     "cq_ratio",
     "cv_from_cq_sd",
+    "cv_from_log2_sd",
     "delta_cq_sd",
     "efficiency_from_slope",
     "excess_log2_sd",
@@ -165,6 +166,12 @@ def log2_sd_from_cv(cv: float, replicates: int = 1) -> float:
         sqrt(ln(1 + CV^2)) / ln 2 of one reading, over the root of the replicates.
     """
     return math.sqrt(math.log1p(cv**2)) / math.log(2) / math.sqrt(replicates)
+
+
+def cv_from_log2_sd(sd: float) -> float:
+    """Return the coefficient of variation, a fraction, from the SD of log2 readings."""
+    variance = (sd * math.log(2)) ** 2
+    return math.sqrt(math.expm1(variance)) if variance < 700 else math.inf
 
 
 def excess_log2_sd(new_sd: float, discovery_sd: float) -> float:

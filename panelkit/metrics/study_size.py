@@ -5,40 +5,16 @@ from collections.abc import Callable
 
 from scipy import stats
 
+from panelkit.metrics.delong import hanley_mcneil_se
+
 __all__ = [
     "auc_difference_se",
-    "auc_standard_error",
     "group_size_for_half_width",
     "group_size_not_worse",
     "positives_for_share",
     "sd_upper_factor",
     "size_without_failure",
 ]
-
-
-def auc_standard_error(area: float, n_positive: int, n_negative: int) -> float:
-    """Return the standard error of an area under the ROC curve.
-
-    Parameters
-    ----------
-    area : float
-        The area.
-    n_positive, n_negative : int
-        People in each class.
-
-    Returns
-    -------
-    float
-        By the negative-exponential approximation.
-
-    References
-    ----------
-    Hanley, J. A., McNeil, B. J. (1982). Radiology 143, 29-36, eq. 2.
-    """
-    q1, q2 = area / (2 - area), 2 * area**2 / (1 + area)
-    variance = area * (1 - area)
-    variance += (n_positive - 1) * (q1 - area**2) + (n_negative - 1) * (q2 - area**2)
-    return math.sqrt(variance / (n_positive * n_negative))
 
 
 def auc_difference_se(se_a: float, se_b: float, correlation: float) -> float:
@@ -83,7 +59,7 @@ def group_size_for_half_width(
         The smallest number.
     """
     z = float(stats.norm.ppf(0.5 + confidence / 2))
-    return _smallest(lambda n: z * auc_standard_error(area, n, n) <= half_width)
+    return _smallest(lambda n: z * hanley_mcneil_se(area, n, n) <= half_width)
 
 
 def group_size_not_worse(
@@ -116,8 +92,8 @@ def group_size_not_worse(
 
     def enough(n: int) -> bool:
         se = auc_difference_se(
-            auc_standard_error(area, n, n),
-            auc_standard_error(reference_area, n, n),
+            hanley_mcneil_se(area, n, n),
+            hanley_mcneil_se(reference_area, n, n),
             correlation,
         )
         return z * se <= room

@@ -78,6 +78,7 @@ from panelkit.records.provenance import RunRecord
 from panelkit.records.record import Record, frame, read_only
 from panelkit.records.replicates import ReplicateAgreement, Replicates
 from panelkit.records.shortlist_results import ShortlistResults
+from panelkit.records.sizing import SizingAnswer, SizingCurve, SizingSeries, SizingTable
 from panelkit.records.stability import (
     ErrorBound,
     ShortlistTable,
@@ -92,7 +93,7 @@ from panelkit.records.stability_details import (
     PathFrequencies,
     SelectorResult,
 )
-from panelkit.records.summary import RESEARCH_USE, RunSummary
+from panelkit.records.summary import RESEARCH_USE, CostOfFolds, RunSummary
 from panelkit.records.validation import (
     MarkerShift,
     Validation,
@@ -123,6 +124,7 @@ __all__ = [
     "Conflicts",
     "Convergence",
     "CostLine",
+    "CostOfFolds",
     "CostSheet",
     "Crossing",
     "CutOff",
@@ -176,6 +178,10 @@ __all__ = [
     "SheetAssay",
     "ShortlistResults",
     "ShortlistTable",
+    "SizingAnswer",
+    "SizingCurve",
+    "SizingSeries",
+    "SizingTable",
     "Spares",
     "SplitCost",
     "Stability",

@@ -1,5 +1,6 @@
 """Folds, out-of-fold predictions, and what each fold chose."""
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -118,6 +119,16 @@ class Comparator(Record):
         Honest accuracy on the same folds, with its interval.
     sentence : str
         What the comparison says.
+    kind : str
+        ``ridge``, ``lasso``, ``lasso-one-se``, ``one-marker``, ``covariates``,
+        ``covariates-with-panel``, ``nuisance``, ``controls``, ``random-all`` and
+        ``random-candidates`` (against the chosen maker at that size),
+        ``random-headline`` (against the headline) or ``no-feature``.
+    difference, difference_low, difference_high : float
+        Comparator minus primary rule, paired over folds, with its interval; NaN where
+        none is given.
+    p : float
+        Of random panels; NaN for all others.
     """
 
     name: str
@@ -126,6 +137,11 @@ class Comparator(Record):
     metric_low: float
     metric_high: float
     sentence: str
+    kind: str = ""
+    difference: float = math.nan
+    difference_low: float = math.nan
+    difference_high: float = math.nan
+    p: float = math.nan
 
     def to_frame(self) -> "pd.DataFrame":
         """Return the row as a data frame."""

@@ -1,5 +1,6 @@
 """What stands in for a marker, and what a panel loses with one."""
 
+import math
 from dataclasses import dataclass
 from decimal import Decimal
 
@@ -173,6 +174,9 @@ class LearningPoint(Record):
         The primary rule's nested metric on the first repeat's folds.
     metric_se_corrected : float
         Standard error over those folds.
+    gain, gain_low, gain_high : float
+        What all training subjects reach beyond this share, paired over the folds, with
+        its interval; NaN for all of them.
     """
 
     share: float
@@ -181,6 +185,9 @@ class LearningPoint(Record):
     metric_low: float
     metric_high: float
     metric_se_corrected: float
+    gain: float = math.nan
+    gain_low: float = math.nan
+    gain_high: float = math.nan
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -31,7 +31,7 @@ class FrontierRow:
         Always ``"procedure"``: the figure belongs to the maker at this size; the
         accuracy of the printed panel is unknown until new people are measured.
     metric, metric_low, metric_high : float
-        Area under the ROC curve within test folds, with its interval.
+        The outcome's metric within test folds, with its interval.
     metric_se_naive, metric_se_corrected : float
         Standard errors of the mean over folds.
     slope : float
@@ -95,11 +95,19 @@ class RuleChoice:
     primary : bool
         The rule that the headline follows; whether the study declared it is said there.
     panel : str
-        The row of the frontier.
+        The row of the frontier; empty where no row meets the rule.
     figures : mapping of str to float
         The figures that decided.
     sentence : str
         The choice in words.
+    markers : tuple of str
+        The panel learnt on all analysed samples; empty where no row meets the rule.
+    platform : str
+        Platform of the cost, the cheapest that can run the panel.
+    currency : str
+        Code of the programme's currency; empty where nothing was priced.
+    cost_total, cost_per_result : Decimal or None
+        None where nothing was priced or no row meets the rule.
     """
 
     rule: str
@@ -107,6 +115,11 @@ class RuleChoice:
     panel: str
     figures: Mapping[str, float]
     sentence: str
+    markers: tuple[str, ...] = ()
+    platform: str = ""
+    currency: str = ""
+    cost_total: Decimal | None = None
+    cost_per_result: Decimal | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -118,7 +131,7 @@ class Headline:
     metric_of : str
         What the figure belongs to, in words.
     metric, metric_low, metric_high : float
-        Nested area under the ROC curve with its interval.
+        The outcome's metric, nested, with its interval.
     declared : bool
         Whether the primary rule was written in the study file.
     sentence : str

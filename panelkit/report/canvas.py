@@ -94,6 +94,7 @@ _LOOK: Final[dict[Any, Any]] = {
     "grid.color": GRID,
     "grid.linewidth": 0.7,
     "legend.frameon": False,
+    "hatch.linewidth": 0.5,
     "lines.linewidth": 1.6,
 }
 

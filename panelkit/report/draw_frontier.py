@@ -4,11 +4,13 @@ import math
 from collections.abc import Sequence
 
 from matplotlib.axes import Axes
+from matplotlib.colors import to_rgba
 from matplotlib.ticker import MaxNLocator
 
 from panelkit.records import FrontierRow, RunSummary
 from panelkit.report.canvas import (
     FAINT,
+    GRID,
     INK,
     PAPER,
     SERIES,
@@ -16,16 +18,15 @@ from panelkit.report.canvas import (
     new_figure,
     svg_bytes,
 )
+from panelkit.report.contrasts import label_of, lines_across, random_band
 from panelkit.report.picks import chosen_row, currency
 
 __all__ = ["LABEL_STEP", "apart", "draw_accuracy", "draw_cost"]
 
 LONGEST_MAKER = 28
-LONGEST_COMPARATOR = 30
 DODGE = 0.12  # markers; keeps intervals of several makers apart
 MOST_TICKS = 15
 LABEL_STEP = 0.06  # smallest distance of two labels, as a share of the height
-ACCURACY = "area under the ROC curve"
 
 
 def draw_accuracy(summary: RunSummary) -> bytes:
@@ -41,8 +42,9 @@ def draw_accuracy(summary: RunSummary) -> bytes:
     bytes
         SVG.
     """
-    figure, axes = new_figure(4.3)
+    figure, axes = new_figure(4.6)
     axes.grid(axis="y")
+    _draw_bands(axes, summary)
     makers = _by_maker(summary.frontier.rows)
     for place, (maker, rows) in enumerate(makers.items()):
         shift = (place - (len(makers) - 1) / 2) * DODGE
@@ -59,8 +61,8 @@ def draw_accuracy(summary: RunSummary) -> bytes:
     else:
         axes.xaxis.set_major_locator(MaxNLocator(integer=True))
     axes.set_xlabel("panel size (markers)")
-    axes.set_ylabel(ACCURACY)
-    columns = _legend_columns(list(makers))
+    axes.set_ylabel(summary.metric_words)
+    columns = 2 if random_band(summary, "random-all") else _legend_columns(list(makers))
     figure.legend(loc="outside upper left", ncols=columns, handlelength=3.2)
     return svg_bytes(figure)
 
@@ -114,7 +116,7 @@ def draw_cost(summary: RunSummary) -> bytes:
         _mark_chosen(axes, _cost(chosen), chosen.metric)
     axes.margins(0.09, 0.12)
     axes.set_xlabel(f"cost per result ({currency(summary)})")
-    axes.set_ylabel(ACCURACY)
+    axes.set_ylabel(summary.metric_words)
     columns = _legend_columns([row.maker for row in priced])
     figure.legend(loc="outside upper left", ncols=columns)
     return svg_bytes(figure)
@@ -183,10 +185,33 @@ def _mark_chosen(axes: Axes, x: float, y: float) -> None:
     )
 
 
+def _draw_bands(axes: Axes, summary: RunSummary) -> None:
+    """Draw what nine in ten random panels of each size reach, as bands."""
+    looks = (
+        ("random-all", "drawn by lot, all features", GRID, None, 0.75),
+        ("random-candidates", "drawn by lot, candidates", FAINT, "//", 0.0),
+    )
+    for kind, label, colour, hatch, alpha in looks:
+        rows = random_band(summary, kind)
+        if len(rows) < 2:
+            continue
+        axes.fill_between(
+            [row.size for row in rows],
+            [row.metric_low for row in rows],
+            [row.metric_high for row in rows],
+            facecolor=to_rgba(colour, alpha),
+            edgecolor=colour,
+            hatch=hatch,
+            linewidth=0.6,
+            label=label,
+            zorder=0.6,
+        )
+
+
 def _draw_comparators(axes: Axes, summary: RunSummary) -> None:
     """Draw a thin line a comparator; names at the right, pushed apart."""
     others = sorted(
-        (other for other in summary.comparators if math.isfinite(other.metric)),
+        (other for other in lines_across(summary) if math.isfinite(other.metric)),
         key=lambda other: other.metric,
     )
     for other in others:
@@ -196,7 +221,7 @@ def _draw_comparators(axes: Axes, summary: RunSummary) -> None:
     wanted = [(other.metric - low) / (high - low) for other in others]
     for other, own, place in zip(others, wanted, apart(wanted), strict=True):
         axes.annotate(
-            drawable(other.name, LONGEST_COMPARATOR),
+            label_of(other),
             xy=(1.0, own),
             xytext=(1.03, place),
             xycoords="axes fraction",

@@ -1,5 +1,6 @@
 """The page: one HTML file that needs nothing beside itself."""
 
+from functools import partial
 from typing import Any
 
 from jinja2 import Environment, PackageLoader, StrictUndefined
@@ -7,14 +8,24 @@ from markupsafe import Markup
 
 from panelkit.records import RESEARCH_USE, RunSummary
 from panelkit.report import wording
+from panelkit.report.aftermath_view import view_of
+from panelkit.report.aftermath_words import (
+    event_words,
+    how_words,
+    signed,
+    signed_interval,
+    statistic_words,
+)
 from panelkit.report.canvas import inline
+from panelkit.report.contrasts import kept_rows, named
 from panelkit.report.methods import (
     CAUTIONS,
     COST_LINES,
-    METHODS,
-    SOURCES,
     STATEMENTS,
+    methods_of,
+    sources_of,
 )
+from panelkit.report.outcome_words import words_of
 from panelkit.report.picks import (
     MARKS,
     SLOPE_FLOOR,
@@ -36,6 +47,14 @@ __all__ = ["SECTIONS", "render"]
 
 N_SHORTLIST_ROWS = 40
 N_WORRIES = 5
+FIGURE_WORDS = {
+    "metric": "accuracy on the curve",
+    "best_metric": "the best of the curve",
+    "difference_to_best": "difference to the best",
+    "difference_se_corrected": "its standard error, corrected",
+    "difference_se_naive": "its standard error, plain",
+    "size": "markers",
+}
 SECTIONS = {
     "flow": "Participant flow",
     "findings": "Findings",
@@ -44,6 +63,12 @@ SECTIONS = {
     "panels": "Panels",
     "choice": "Choice",
     "comparators": "Comparators",
+    "stand-ins": "Stand-ins",
+    "fragility": "Fragility",
+    "people": "More people",
+    "subgroups": "Subgroups",
+    "added-value": "Added value",
+    "handling": "Handling check",
     "cost": "Cost of the chosen panel",
     "statement": "Statement of the study",
     "methods": "How it was done",
@@ -112,8 +137,14 @@ def _page(summary: RunSummary, pictures: tuple[Picture, ...]) -> bytes:
                 key.replace("_", " "): text for key, text in summary.statement.items()
             },
             expected_statements=STATEMENTS,
-            methods=METHODS,
-            sources=SOURCES,
+            methods=methods_of(summary),
+            sources=sources_of(summary),
+            after=view_of(summary),
+            kept_comparators=kept_rows(summary),
+            named=partial(named, summary),
+            outcome_words=words_of(summary.metric),
+            metric_title=sentence_case(summary.metric_words),
+            figure_words=FIGURE_WORDS,
             cautions=CAUTIONS,
         )
     )
@@ -121,9 +152,15 @@ def _page(summary: RunSummary, pictures: tuple[Picture, ...]) -> bytes:
     return f"{tidy}\n".encode("utf-8", errors="xmlcharrefreplace")
 
 
+def sentence_case(words: str) -> str:
+    """Return words with a capital at the start; capitals inside them stay."""
+    return words[:1].upper() + words[1:]
+
+
 def _ruler_of(summary: RunSummary) -> Markup:
     headline = summary.choice.headline
-    return ruler(headline.metric, headline.metric_low, headline.metric_high)
+    ends = headline.metric_low, headline.metric_high
+    return ruler(headline.metric, *ends, summary.no_skill)
 
 
 def _interval_of(summary: RunSummary) -> str:
@@ -150,6 +187,12 @@ def _environment() -> Environment:
         by_group=wording.by_group,
         decimals=wording.decimals,
         id=wording.identifier,
+        how=how_words,
+        event=event_words,
+        statistic=statistic_words,
+        signed=signed,
+        signed_interval=signed_interval,
+        sentence_case=sentence_case,
         interval=wording.interval,
         money=wording.money,
         three_figures=wording.three_figures,

@@ -3,9 +3,22 @@
 from dataclasses import dataclass
 
 from panelkit.records import RunSummary, ShortlistResults
+from panelkit.report.aftermath_tables import (
+    lost_markers_table,
+    people_table,
+    subgroup_table,
+)
+from panelkit.report.aftermath_words import (
+    fragility_caption,
+    learning_caption,
+    subgroup_caption,
+)
 from panelkit.report.canvas import settings
+from panelkit.report.draw_fragility import draw_fragility
 from panelkit.report.draw_frontier import draw_accuracy, draw_cost
+from panelkit.report.draw_learning import draw_learning
 from panelkit.report.draw_shortlist import N_DRAWN, draw_frequencies
+from panelkit.report.draw_subgroups import draw_subgroups
 from panelkit.report.picks import chosen_row, currency, is_priced
 from panelkit.report.tables import (
     accuracy_table,
@@ -54,7 +67,8 @@ def draw_all(summary: RunSummary) -> tuple[Picture, ...]:
     Returns
     -------
     tuple of Picture
-        Frequencies, accuracy by size and, where panels were priced, cost.
+        Frequencies, accuracy by size, cost where panels were priced, and what the
+        chosen panel loses with a marker, with people and within groups.
     """
     pictures = []
     with settings():
@@ -88,7 +102,44 @@ def draw_all(summary: RunSummary) -> tuple[Picture, ...]:
                     table=csv_bytes(cost_table(summary)),
                 )
             )
+        pictures += _aftermath(summary)
     return tuple(pictures)
+
+
+def _aftermath(summary: RunSummary) -> list[Picture]:
+    found = summary.aftermath
+    pictures = []
+    if any(row.marker for row in found.fragility):
+        pictures.append(
+            Picture(
+                name="lost_markers",
+                title="What is lost with each marker",
+                caption=fragility_caption(summary),
+                svg=draw_fragility(summary),
+                table=csv_bytes(lost_markers_table(summary)),
+            )
+        )
+    if len(found.learning_curve) > 1:
+        pictures.append(
+            Picture(
+                name="accuracy_by_people",
+                title="What more people bring",
+                caption=learning_caption(summary),
+                svg=draw_learning(summary),
+                table=csv_bytes(people_table(summary)),
+            )
+        )
+    if found.subgroups:
+        pictures.append(
+            Picture(
+                name="accuracy_by_group",
+                title="The headline within parts of the cohort",
+                caption=subgroup_caption(summary),
+                svg=draw_subgroups(summary),
+                table=csv_bytes(subgroup_table(summary)),
+            )
+        )
+    return pictures
 
 
 def frequency_caption(summary: RunSummary | ShortlistResults) -> str:
@@ -120,8 +171,9 @@ def _accuracy_caption(summary: RunSummary) -> str:
         )
     return (
         f"{found} Each point is the honest accuracy of a maker at one size, each bar "
-        "its interval; horizontal lines are comparators on the same folds. The "
-        "highest point of a curve flatters itself: read the headline figure instead."
+        "its interval; horizontal lines are comparators on the same folds, and bands "
+        "hold nine in ten panels drawn by lot. The highest "
+        "point of a curve flatters itself: read the headline figure instead."
     )
 
 

@@ -8,15 +8,18 @@ __all__ = ["ruler"]
 
 WIDTH, HEIGHT = 320, 46
 LEFT, RIGHT, LINE = 10, 310, 20
+LOWEST = -1.0  # a figure far below guessing is drawn at the edge
 
 
-def ruler(metric: float, low: float, high: float) -> Markup:
+def ruler(metric: float, low: float, high: float, no_skill: float) -> Markup:
     """Return a small drawing of an accuracy.
 
     Parameters
     ----------
     metric, low, high : float
-        Area under the ROC curve with its interval, NaN where there is none.
+        The figure with its interval, NaN where there is none; 1 is perfect.
+    no_skill : float
+        Where the scale starts, unless something lies below.
 
     Returns
     -------
@@ -26,7 +29,10 @@ def ruler(metric: float, low: float, high: float) -> Markup:
     if not math.isfinite(metric):
         return Markup("")
     ends = [end for end in (metric, low, high) if math.isfinite(end)]
-    start = 0.5 if min(ends) >= 0.5 else 0.0
+    start = no_skill
+    if min(ends) < no_skill:
+        start = min(0.0, math.floor(10 * min(ends)) / 10) if no_skill <= 0.0 else 0.0
+    start = max(start, LOWEST)
 
     def place(value: float) -> str:
         share = (min(max(value, start), 1.0) - start) / (1.0 - start)
@@ -42,7 +48,7 @@ def ruler(metric: float, low: float, high: float) -> Markup:
             f'<line x1="{at}" x2="{at}" y1="{LINE - tall}" y2="{LINE + tall}" '
             'class="scale"/>'
         )
-    for value, label, anchor in _labels(start):
+    for value, label, anchor in _labels(start, no_skill):
         parts.append(
             f'<text x="{place(value)}" y="{HEIGHT - 4}" text-anchor="{anchor}">'
             f"{label}</text>"
@@ -61,8 +67,9 @@ def ruler(metric: float, low: float, high: float) -> Markup:
     )
 
 
-def _labels(start: float) -> tuple[tuple[float, str, str], ...]:
+def _labels(start: float, no_skill: float) -> tuple[tuple[float, str, str], ...]:
     perfect = (1.0, "1 perfect", "end")
-    if start == 0.5:
-        return (0.5, "0.5 guessing", "start"), perfect
-    return (0.0, "0", "start"), (0.5, "0.5 guessing", "middle"), perfect
+    guess = f"{no_skill:g} guessing"
+    if start == no_skill:
+        return (no_skill, guess, "start"), perfect
+    return (start, f"{start:g}", "start"), (no_skill, guess, "middle"), perfect

@@ -1,35 +1,29 @@
 """What a reader of the first screen has to worry about, the gravest first."""
 
 import math
-from dataclasses import dataclass
 
 from panelkit.records import Finding, RunSummary
+from panelkit.report.outcome_words import words_of
 from panelkit.report.picks import SLOPE_FLOOR, chosen_row, primary_rule
+from panelkit.report.table_worries import worries_of_tables
 from panelkit.report.wording import three_figures
+from panelkit.report.worry import Worry
 
-__all__ = ["Worry", "worries_of"]
+__all__ = ["worries_of"]
 
-
-@dataclass(frozen=True, slots=True)
-class Worry:
-    """One thing to worry about.
-
-    Attributes
-    ----------
-    severity : {"stop", "warning"}
-        As of findings.
-    where : str
-        What it is about.
-    text : str
-        What was seen, and what to do.
-    next_step : str
-        What to do about it.
-    """
-
-    severity: str
-    where: str
-    text: str
-    next_step: str
+NO_PANEL = "first rule"
+RANK = {
+    NO_PANEL: 0,
+    "accuracy": 1,
+    "random panels": 2,
+    "handling": 3,
+    "calibration": 4,
+    "fragility": 5,
+    "comparators": 6,
+    "subgroups": 7,
+    "people": 8,
+}
+"""Worries of the run itself in the order in which they undermine the answer."""
 
 
 def worries_of(summary: RunSummary) -> tuple[Worry, ...]:
@@ -48,7 +42,9 @@ def worries_of(summary: RunSummary) -> tuple[Worry, ...]:
     """
     stops = [_of_finding(item) for item in summary.findings.of("stop")]
     warnings = [_of_finding(item) for item in summary.findings.of("warning")]
-    return (*stops, *_of_run(summary), *warnings)
+    own = [*_of_run(summary), *worries_of_tables(summary)]
+    own.sort(key=lambda worry: RANK.get(worry.where, len(RANK)))
+    return (*stops, *own, *warnings)
 
 
 def _of_finding(item: Finding) -> Worry:
@@ -57,13 +53,13 @@ def _of_finding(item: Finding) -> Worry:
 
 def _of_run(summary: RunSummary) -> list[Worry]:
     found = []
-    row = chosen_row(summary)
+    row, predicted = chosen_row(summary), words_of(summary.metric).predicted
     if row is None and primary_rule(summary) is not None:
         found.append(
             Worry(
                 "warning",
-                "choice",
-                "No panel meets the first rule.",
+                NO_PANEL,
+                f"No panel meets the first rule. {_nearest(summary)}".rstrip(),
                 "Read what the rule says and what the other rules chose",
             )
         )
@@ -73,11 +69,10 @@ def _of_run(summary: RunSummary) -> list[Worry]:
             Worry(
                 "warning",
                 "calibration",
-                f"Predicted chances are far too extreme: the out-of-fold calibration "
-                f"slope at the chosen panel is {three_figures(row.slope)}, and 1 would "
-                "be right.",
-                "Do not read a score as a chance before it is recalibrated on new "
-                "samples",
+                f"{predicted.capitalize()} are far too extreme: the out-of-fold "
+                f"calibration slope at the chosen panel is "
+                f"{three_figures(row.slope)}, and 1 would be right.",
+                f"Do not use {predicted} before they are recalibrated on new samples",
             )
         )
     if not summary.choice.headline.declared:
@@ -105,12 +100,12 @@ def _of_headline(summary: RunSummary) -> list[Worry]:
     """Return what the headline and the chosen row themselves give to worry about."""
     headline, row = summary.choice.headline, chosen_row(summary)
     found = []
-    if headline.metric_low <= 0.5 <= headline.metric_high:
+    if summary.doubt:
         found.append(
             Worry(
                 "warning",
                 "accuracy",
-                "The interval of the headline holds 0.5: these data show no accuracy.",
+                summary.doubt,
                 "Do not build a panel on this outcome and cohort",
             )
         )
@@ -142,7 +137,7 @@ def _of_headline(summary: RunSummary) -> list[Worry]:
                 "warning",
                 "calibration",
                 "The calibration slope could not be estimated at the chosen size.",
-                "Do not read a score as a chance",
+                f"Do not use {words_of(summary.metric).predicted}",
             )
         )
     sizes = [each.size for each in summary.frontier.rows]
@@ -158,3 +153,8 @@ def _of_headline(summary: RunSummary) -> list[Worry]:
             )
         )
     return found
+
+
+def _nearest(summary: RunSummary) -> str:
+    rule = primary_rule(summary)
+    return "" if rule is None else rule.sentence

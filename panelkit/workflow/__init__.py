@@ -1,5 +1,13 @@
 """The order of the stages."""
 
+from panelkit.workflow.bridge import (
+    PanelSource,
+    bridge_choice,
+    bridge_limits,
+    bridge_loss,
+    bridge_replicates,
+    bridge_samples,
+)
 from panelkit.workflow.check import check_study
 from panelkit.workflow.draft import draft_study
 from panelkit.workflow.lock import lock_panel
@@ -16,6 +24,18 @@ from panelkit.workflow.shortlist_run import (
     run_shortlist,
     shortlist_content,
 )
+from panelkit.workflow.size import (
+    size_accuracy,
+    size_area,
+    size_comparison,
+    size_detection,
+    size_development,
+    size_learning,
+    size_plates,
+    size_validation,
+)
+from panelkit.workflow.size_costs import with_costs
+from panelkit.workflow.size_files import sizing_content, write_sizing
 from panelkit.workflow.validate import (
     recalibrate_panel,
     validate_panel,
@@ -24,12 +44,18 @@ from panelkit.workflow.validate import (
 
 __all__ = [
     "LockedPanel",
+    "PanelSource",
     "PriceRequest",
     "PriceSource",
     "Run",
     "ScoredTable",
     "SheetColumns",
     "ShortlistRun",
+    "bridge_choice",
+    "bridge_limits",
+    "bridge_loss",
+    "bridge_replicates",
+    "bridge_samples",
     "check_study",
     "draft_study",
     "lock_panel",
@@ -42,7 +68,18 @@ __all__ = [
     "run_study",
     "score_table",
     "shortlist_content",
+    "size_accuracy",
+    "size_area",
+    "size_comparison",
+    "size_detection",
+    "size_development",
+    "size_learning",
+    "size_plates",
+    "size_validation",
+    "sizing_content",
     "validate_panel",
     "validation_content",
+    "with_costs",
     "write_prices",
+    "write_sizing",
 ]

@@ -1,6 +1,7 @@
 """What the chosen panel loses, gains and depends on: tables beside the answer."""
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -20,7 +21,7 @@ from panelkit.costing import (
     stand_ins_of,
     subgroups_of,
 )
-from panelkit.records import Aftermath, Cohort, LearningPoint
+from panelkit.records import Aftermath, Cohort, Handling, LearningPoint
 from panelkit.runtime import BlockStore, RunFolder
 from panelkit.workflow.check import CheckedStudy
 
@@ -117,8 +118,11 @@ def learn_aftermath(
             primary.predictions, judge, _columns(cohort, _group_columns(plan))
         ),
         added_value=added_value_of(accuracy, primary, judge),
-        handling=handling_of(
-            primary.predictions, judge, _columns(cohort, plan.cohort.nuisance)
+        handling=_named(
+            cohort,
+            handling_of(
+                primary.predictions, judge, _columns(cohort, plan.cohort.nuisance)
+            ),
         ),
         learning_curve=curve,
     )
@@ -133,6 +137,20 @@ def _group_columns(plan: Study) -> list[str]:
 
 def _columns(cohort: Cohort, names: Sequence[str]) -> dict[str, NDArray[np.object_]]:
     return {name: cohort.sample_columns[name] for name in names}
+
+
+def _named(cohort: Cohort, rows: tuple[Handling, ...]) -> tuple[Handling, ...]:
+    """Return rows whose group is the class as written, or a quarter of a number."""
+    names = () if cohort.outcome is None else cohort.outcome.groups[0]
+    return tuple(
+        replace(
+            row,
+            group=names[int(row.group)]
+            if names
+            else f"quarter {int(row.group) + 1} of the outcome",
+        )
+        for row in rows
+    )
 
 
 def write_aftermath(folder: RunFolder, found: Aftermath) -> None:

@@ -174,7 +174,7 @@ def run_study(
     with clock.stage("pricing and choice"):
         summary = summarise(
             plan, cohort, record, findings, procedure, data, draws, selected,
-            primary, accuracy, pricer,
+            primary, accuracy, pricer, aftermath,
         )  # fmt: skip
         write_accuracy(
             folder, cohort, draws.folds, accuracy, primary, data.task, pricer

@@ -16,7 +16,16 @@ from panelkit.costing import (
     choose,
     compare,
 )
-from panelkit.records import Cohort, Dropped, Findings, PanelCost, RunRecord, RunSummary
+from panelkit.records import (
+    Aftermath,
+    Cohort,
+    Dropped,
+    Findings,
+    PanelCost,
+    RunRecord,
+    RunSummary,
+)
+from panelkit.workflow.fold_costs import costs_of_folds
 from panelkit.workflow.marker_facts import marker_facts
 from panelkit.workflow.procedure import secondary_rules
 from panelkit.workflow.shortlist import shortlist_table
@@ -36,6 +45,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
     primary: Primary,
     accuracy: HonestAccuracy,
     pricer: PanelPricer | None,
+    aftermath: Aftermath,
 ) -> RunSummary:
     """Return everything that a report shows of a run, ready-made.
 
@@ -55,6 +65,7 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
         judge,
         primary=primary,
         secondary=secondary_rules(plan),
+        currency="" if pricer is None else pricer.programme.currency,
     )
     costs: tuple[PanelCost, ...] = ()
     if pricer is not None:
@@ -90,6 +101,11 @@ def summarise(  # noqa: PLR0913 - everything that a report shows comes together 
             **{f"input: {role}": digest for role, digest in record.inputs.items()},
             **record.versions,
         },
+        aftermath=aftermath,
+        metric=data.task.metric,
+        metric_words=data.task.metric_words,
+        no_skill=data.task.no_skill,
+        fold_costs=costs_of_folds(cohort, accuracy, primary, pricer),
     )
 
 

@@ -276,7 +276,7 @@ def choice_content(choice: Choice) -> dict[str, Any]:
     }
     rules = []
     for rule in choice.rules:
-        content = {name: getattr(rule, name) for name in _names(type(rule))}
+        content = {name: plain(getattr(rule, name)) for name in _names(type(rule))}
         content["figures"] = {k: plain(v) for k, v in rule.figures.items()}
         rules.append(content)
     return {"headline": headline, "rules": rules}

@@ -44,6 +44,7 @@ RINGS = {("panelkit.fits.families", "panelkit.fits.engine")}
 LOADS_BY_NAME = {
     "panelkit": "public names are loaded when they are first used",
     "panelkit.cli.app": "a command is loaded when it is called",
+    "panelkit.cli.size": "a question is loaded when it is asked",
 }
 
 

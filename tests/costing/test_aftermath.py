@@ -1,5 +1,7 @@
 """What the chosen panel loses, gains and depends on."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from scipy.stats import norm
@@ -12,6 +14,7 @@ from panelkit.costing import (
     Rule,
     added_value_of,
     apply_rule,
+    compare,
     comparisons_for,
     draw_everything,
     estimate_accuracy,
@@ -183,6 +186,47 @@ def test_the_learning_curve_ends_at_the_headline_of_the_first_repeat(done):
     first = judge_of(done[0].y, FoldPlan(draws.folds.test_fold[:1], 4))
     whole = OutOfFold("", 0, primary.predictions.predicted[:1])
     assert points[-1].metric == first.metric(whole).mean
+    assert np.isnan(points[-1].gain)
+    for point in points[:-1]:
+        assert point.gain == pytest.approx(points[-1].metric - point.metric)
+        assert point.gain_low < point.gain < point.gain_high
+
+
+def compared(done, primary=None):
+    _, _, _, _, accuracy, own, judge, _ = done
+    rows = compare(accuracy, judge, primary or own, 120)
+    return {(row.kind, row.size): row for row in rows}
+
+
+def test_a_comparator_that_is_the_panel_itself_is_called_identical(done):
+    accuracy, primary = done[4], done[5]
+    one = next(each for each in accuracy.panels if each.size == 1)
+    rows = compared(done, replace(primary, predictions=one))
+    same = rows["one-marker", 1]
+    assert "identical to the primary rule in every fold" in same.sentence
+    assert "+0.000" not in same.sentence
+    assert (same.difference, same.difference_low, same.difference_high) == (0, 0, 0)
+    assert not [
+        row
+        for key, row in rows.items()
+        if key[0] != "one-marker" and "identical" in row.sentence
+    ]
+
+
+def test_random_panels_are_held_against_the_headline_too(done):
+    """p = (1 + panels at least as good) / (panels + 1), Phipson & Smyth 2010."""
+    accuracy, primary, judge = done[4], done[5], done[6]
+    rows = compared(done)
+    size = accuracy.panels[primary.taken.row].size
+    row = rows["random-headline", size]
+    figures = accuracy.figures["random panels from all"]
+    drawn = np.nanmean(figures[:, :, (1, 3).index(size)], axis=(0, 1))
+    first = judge.metric(primary.predictions).per_fold[0].mean()
+    better = (drawn >= first).sum()
+    assert row.p == pytest.approx((1 + better) / (len(drawn) + 1))
+    assert row.metric == rows["random-all", size].metric
+    assert "better than random panels of the chosen size" in row.sentence
+    assert np.isnan(rows["ridge", 120].p)
 
 
 def test_thinned_folds_keep_test_rows_and_classes(done):

@@ -11,6 +11,7 @@ import pytest
 from scipy import stats
 
 from panelkit.errors import UsageError
+from panelkit.metrics import hanley_mcneil_se
 from panelkit.metrics.assay_noise import (
     cq_ratio,
     cv_from_cq_sd,
@@ -43,7 +44,6 @@ from panelkit.metrics.precision_designs import (
 )
 from panelkit.metrics.study_size import (
     auc_difference_se,
-    auc_standard_error,
     group_size_for_half_width,
     group_size_not_worse,
     positives_for_share,
@@ -195,7 +195,7 @@ def test_total_error_and_goals():
 
 def test_sizes_of_verification_studies():
     # EX19
-    assert round(auc_standard_error(0.85, 100, 100), 5) == 0.02752
+    assert round(hanley_mcneil_se(0.85, 100, 100), 5) == 0.02752
     assert group_size_for_half_width(0.85, 0.05) == 117
     sizes = [
         group_size_not_worse(0.85, 0.86, 0.03, r) for r in (0, 0.5, 0.8, 0.9, 0.95)

@@ -25,6 +25,10 @@ def whole(*shape):
     return np.arange(int(np.prod(shape)), dtype=np.int64).reshape(shape)
 
 
+def sizing_series():
+    return records.SizingSeries("line", (1.0, 2.0), (0.4, 0.6))
+
+
 def findings():
     return records.Findings(
         (
@@ -277,6 +281,10 @@ def path_set():
     )
 
 
+def cost_of_folds():
+    return records.CostOfFolds(Decimal(20), Decimal(10), Decimal(30), 6, 6)
+
+
 def run_summary():
     return records.RunSummary(
         study="study.toml",
@@ -297,6 +305,11 @@ def run_summary():
         costs=(panel_cost(),),
         statement={},
         provenance={},
+        aftermath=records.Aftermath((), (), (), (), (), ()),
+        metric="auc",
+        metric_words="area under the ROC curve",
+        no_skill=0.5,
+        fold_costs=cost_of_folds(),
     )
 
 
@@ -448,11 +461,22 @@ MADE = {
     "SelectorResult": selector_result,
     "ShortlistResults": shortlist_results,
     "ShortlistTable": shortlist_table,
+    "SizingAnswer": lambda: records.SizingAnswer(
+        "question", "answer", {"people": 3}, {"width": 0.1}, ("words",), (), None, ()
+    ),
+    "SizingCurve": lambda: records.SizingCurve(
+        "name", "title", "caption", "x", "y", (sizing_series(),), 0.5
+    ),
+    "SizingSeries": lambda: sizing_series(),
+    "SizingTable": lambda: records.SizingTable(
+        "name", "title", ("a", "b"), ((1, 2.0),)
+    ),
     "Stability": stability,
     "StepState": lambda: records.StepState("log-cpm", {"library": floats(1)}),
     "SubsamplePlan": lambda: records.SubsamplePlan((whole(2), whole(2) + 2)),
     "AddedValue": lambda: records.AddedValue("brier", 0.2, 0.15, 0.05, 0.01, 0.09),
     "Aftermath": lambda: records.Aftermath((), (), (), (), (), ()),
+    "CostOfFolds": cost_of_folds,
     "Fragility": lambda: records.Fragility(
         "lost-refitted", "F1", float("nan"), 0.8, 0.05, 0.0, 0.1, "by role", "words"
     ),

@@ -8,20 +8,28 @@ import numpy as np
 import pytest
 
 from panelkit.records import (
+    AddedValue,
+    Aftermath,
     Choice,
     Comparator,
     CostLine,
+    CostOfFolds,
     ErrorBound,
     Finding,
     Findings,
     Flow,
+    Fragility,
     Frontier,
     FrontierRow,
+    Handling,
     Headline,
+    LearningPoint,
     PanelCost,
     RuleChoice,
     RunSummary,
     ShortlistTable,
+    StandIn,
+    Subgroup,
 )
 
 SCRIPT = "<script>alert('x')</script>"
@@ -150,6 +158,79 @@ def panel_cost(platform, factor):
     )
 
 
+def random_panels(size):
+    middle = 0.5 + 0.005 * size
+    return Comparator(
+        f"random panels of {size} from all features",
+        size,
+        middle,
+        middle - 0.08,
+        middle + 0.08,
+        f"Lots of {size}.",
+        "random-all",
+        p=0.005,
+    )
+
+
+def lost(event, marker, loss, spread):
+    return Fragility(
+        event=event,
+        marker=marker,
+        level=np.nan,
+        metric=0.8088 - loss,
+        loss=loss,
+        loss_low=loss - spread,
+        loss_high=loss + spread,
+        kind="by role",
+        sentence=f"{marker} {event}.",
+    )
+
+
+def aftermath():
+    """Eight markers, the first of them clearly missed; the fold's people in parts."""
+    panel = FEATURES[:8]
+    stand_ins = []
+    for place, marker in enumerate(panel):
+        loss = 0.004 * place
+        stand_ins += [
+            StandIn(marker, "PLIM001", "maker", 0.41, loss, loss - 0.02, loss + 0.02,
+                    "by role", 0.24, Decimal("-310.20")),
+            StandIn(marker, "", "companion", np.nan, 0.0, -0.02, 0.02, "by role", 0.0,
+                    None),
+        ]  # fmt: skip
+    fragility = [
+        lost(event, marker, (0.09 - 0.01 * place) * factor, 0.03)
+        for event, factor in (("lost-refitted", 0.6), ("lost-imputed", 1.0))
+        for place, marker in enumerate(panel)
+    ]
+    return Aftermath(
+        stand_ins=tuple(stand_ins),
+        fragility=tuple(fragility),
+        subgroups=(
+            Subgroup("ward", "Tarnbeck", 70, 25, 0.81, 0.70, 0.89, "Tarnbeck."),
+            Subgroup("ward", SCRIPT, 52, 17, 0.76, 0.62, 0.86, "Script."),
+            Subgroup("ward", "Isle", 6, 2, np.nan, np.nan, np.nan, "Isle: too few."),
+            Subgroup("age", "20 to 45", 64, 21, 0.79, 0.66, 0.88, "Young."),
+            Subgroup("age", "46 to 80", 64, 23, 0.78, 0.65, 0.87, "Old."),
+        ),
+        added_value=(
+            AddedValue("loss", 0.671, 0.523, 0.148, 0.061, 0.235),
+            AddedValue("brier", 0.238, 0.171, 0.067, 0.024, 0.110),
+            AddedValue("net-benefit-at-0.2", 0.181, 0.214, 0.033, -0.004, 0.070),
+            AddedValue("auc", 0.642, 0.801, 0.159, 0.071, 0.247),
+        ),
+        handling=(
+            Handling("plate", "remission", 44, "epsilon-squared", 0.031, 0.58),
+            Handling("hours", "relapse", 84, "spearman", -0.11, 0.32),
+        ),
+        learning_curve=(
+            LearningPoint(0.4, 38.6, 0.71, 0.60, 0.80, 0.03, 0.07, -0.01, 0.15),
+            LearningPoint(0.8, 77.4, 0.785, 0.69, 0.86, 0.02, -0.005, -0.04, 0.03),
+            LearningPoint(1.0, 96.8, 0.78, 0.69, 0.85, 0.02),
+        ),
+    )
+
+
 @pytest.fixture(scope="session")
 def summary():
     findings = (
@@ -240,11 +321,36 @@ def summary():
             ),
         ),
         comparators=(
-            Comparator("ridge on all features", 17990, 0.821, 0.752, 0.874, "Dense."),
-            Comparator("lasso on all features", 17990, 0.794, 0.722, 0.852, "Sparse."),
-            Comparator("random panels of size 8", 8, 0.655, 0.601, 0.707, "Random."),
-            Comparator("age and sex alone", 2, 0.642, 0.551, 0.724, "Covariates."),
-            Comparator("majority class", 0, 0.5, np.nan, np.nan, "Guessing."),
+            Comparator(
+                "ridge on all features",
+                17990,
+                0.821,
+                0.752,
+                0.874,
+                "Dense.",
+                "ridge",
+                0.035,
+                -0.012,
+                0.082,
+            ),
+            Comparator(
+                "lasso on all features", 96, 0.79, 0.72, 0.85, "Sparse.", "lasso"
+            ),
+            Comparator("age and sex", 0, 0.64, 0.55, 0.72, "Covariates.", "covariates"),
+            Comparator("plates", 0, 0.48, 0.41, 0.55, "Nuisance.", "nuisance"),
+            Comparator("spikes", 0, 0.52, 0.45, 0.59, "Controls.", "controls"),
+            *(random_panels(size) for size in SIZES),
+            Comparator(
+                "random panels of 8, the chosen size, against the headline",
+                8,
+                0.55,
+                0.48,
+                0.62,
+                "Headline against lots.",
+                "random-headline",
+                p=0.005,
+            ),
+            Comparator("nothing", 0, 0.5, np.nan, np.nan, "Guessing.", "no-feature"),
         ),
         costs=(panel_cost("plate-384", 1), panel_cost("strip-8", 2)),
         statement={
@@ -256,6 +362,13 @@ def summary():
             "seed": "1",
             "study_hash": "9f2c" * 16,
         },
+        aftermath=aftermath(),
+        metric="auc",
+        metric_words="area under the ROC curve",
+        no_skill=0.5,
+        fold_costs=CostOfFolds(
+            Decimal("51200.25"), Decimal("42600.00"), Decimal("64650.00"), 50, 50
+        ),
     )
 
 
@@ -271,4 +384,4 @@ def unpriced(summary):
         )
         for row in summary.frontier.rows
     )
-    return replace(summary, frontier=Frontier(rows), costs=())
+    return replace(summary, frontier=Frontier(rows), costs=(), fold_costs=None)

@@ -9,12 +9,14 @@ import pytest
 
 from panelkit.records import (
     RESEARCH_USE,
+    Aftermath,
     Choice,
     Findings,
     Frontier,
     ShortlistTable,
 )
 from panelkit.report import render
+from panelkit.report.contrasts import kept_rows
 from panelkit.report.page import SECTIONS
 from panelkit.report.wording import printable
 
@@ -86,7 +88,14 @@ def test_the_users_own_drawing_settings_change_nothing(summary, files):
 
 
 def test_the_files_are_a_page_and_pairs_of_picture_and_table(files):
-    names = {"selection_frequency", "accuracy_by_size", "cost_and_accuracy"}
+    names = {
+        "selection_frequency",
+        "accuracy_by_size",
+        "cost_and_accuracy",
+        "lost_markers",
+        "accuracy_by_people",
+        "accuracy_by_group",
+    }
     assert set(files) == {"report.html"} | {
         path for name in names for path in (f"figures/{name}.svg", f"tables/{name}.csv")
     }
@@ -162,7 +171,7 @@ def test_sentences_of_the_summary_are_all_there(page, summary):
         *summary.statement.values(),
         *summary.provenance.values(),
         *(rule.sentence for rule in summary.choice.rules),
-        *(other.sentence for other in summary.comparators),
+        *(other.sentence for other in kept_rows(summary)),
         "missing: the study file does not say",
         "Meinshausen & Bühlmann 2010",
         "55,200.75",
@@ -215,6 +224,8 @@ def test_a_run_that_found_nothing_still_renders(summary):
         costs=(),
         statement={},
         provenance={},
+        aftermath=Aftermath((), (), (), (), (), ()),
+        fold_costs=None,
     )
     files = render(bare)
     page = Page(files["report.html"])

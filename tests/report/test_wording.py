@@ -75,10 +75,10 @@ def test_labels_stand_apart_inside_the_axes():
 
 
 def test_a_figure_below_guessing_widens_the_ruler():
-    assert "0.5 guessing" in ruler(0.8, 0.7, 0.9)
-    assert ">0</text>" in ruler(0.55, 0.42, 0.66)
-    assert "band" not in ruler(0.8, np.nan, np.nan)
-    assert ruler(np.nan, np.nan, np.nan) == ""
+    assert "0.5 guessing" in ruler(0.8, 0.7, 0.9, 0.5)
+    assert ">0</text>" in ruler(0.55, 0.42, 0.66, 0.5)
+    assert "band" not in ruler(0.8, np.nan, np.nan, 0.5)
+    assert ruler(np.nan, np.nan, np.nan, 0.5) == ""
 
 
 def test_text_in_a_picture_is_left_alone():

@@ -1,6 +1,7 @@
 """Every figure of a run follows from its own tables, by another library."""
 
 import math
+import statistics
 
 import numpy as np
 import pandas as pd
@@ -103,6 +104,49 @@ def test_comparators_recompute(finished, procedures):
         value = areas(procedures[key]).mean()
         assert table.loc[name, "metric"] == pytest.approx(value, abs=1e-12)
     assert table.loc["no feature at all", "metric"] == 0.5
+
+
+def test_differences_to_the_primary_rule_recompute(finished, procedures):
+    """Comparator minus primary rule, mean over folds; only models have one."""
+    table = finished.table("comparators.csv").set_index("kind")
+    primary = areas(procedures["primary-rule", 0])
+    for kind, name in (
+        ("ridge", "ridge-on-all"),
+        ("lasso", "lasso-on-all"),
+        ("controls", "control-features"),
+    ):
+        gap = areas(procedures[name, 0]) - primary
+        row = table.loc[kind]
+        assert row["difference"] == pytest.approx(gap.mean(), abs=1e-12)
+        assert row["difference_low"] <= row["difference"] <= row["difference_high"]
+    assert table.loc["random-headline", "p"] >= 1 / 201
+    assert np.isnan(table.loc["no-feature", "difference"])
+
+
+def test_a_rule_carries_its_panel_platform_and_cost(finished):
+    frontier = finished.table("frontier.csv").set_index("panel")
+    rules = finished.json("choice.json")["rules"]
+    assert len(rules) == 3
+    for rule in rules:
+        row = frontier.loc[rule["panel"]]
+        assert rule["markers"] == row["markers"].split(";")
+        assert rule["platform"] == row["platform"]
+        assert rule["currency"] == "EUR"
+        assert float(rule["cost_total"]) == pytest.approx(row["cost_total"])
+        assert float(rule["cost_per_result"]) == pytest.approx(row["cost_per_result"])
+
+
+def test_cost_of_what_the_folds_chose(finished):
+    """Median and range of the panels that the primary rule chose, on the page."""
+    panels = finished.table("fold_panels.csv")
+    costs = panels.loc[panels["chosen_by_primary"], "cost_total"].tolist()
+    assert len(costs) == 6
+    page = (finished.path / "report.html").read_text()
+    middle = statistics.median_low(costs)
+    assert (
+        f"costs {middle:,.2f} EUR at the median, {min(costs):,.2f} to "
+        f"{max(costs):,.2f}" in page
+    )
 
 
 def test_the_choice_recomputes(finished, procedures):

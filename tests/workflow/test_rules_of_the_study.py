@@ -170,3 +170,21 @@ def test_price_weighted_panels_are_cheaper_and_tied_to_their_prices(tiny, tmp_pa
         table.loc["price-weighted-3", "cost_total"]
         <= table.loc["frequency-3", "cost_total"]
     )
+
+
+def test_a_rule_that_nobody_meets_has_no_panel_but_a_sentence(tiny, tmp_path):
+    """Its row is empty in choice.json; the page names the nearest miss."""
+    tiny.sections["choice"]["required_accuracy"] = 0.9999
+    tiny.sections["cohort"]["nuisance"] = ["plate"]
+    tiny.sections["accuracy"].update(repeats=1)
+    out = run_study(tiny.write(), tmp_path / "out", threads=1).path
+    rules = json.loads((out / "choice.json").read_text())["rules"]
+    missed = next(r for r in rules if r["rule"].startswith("cheapest-above"))
+    assert (missed["panel"], missed["markers"], missed["platform"]) == ("", [], "")
+    assert missed["cost_total"] is missed["cost_per_result"] is None
+    assert "The nearest miss has" in missed["sentence"]
+    page = (out / "report.html").read_text()
+    assert "nobody meets it" in page
+    assert missed["sentence"] in page
+    handling = pd.read_csv(out / "handling.csv")
+    assert set(handling["group"]) == {"no", "yes"}
