@@ -158,8 +158,33 @@ class Task(Protocol):
         ...
 
 
+class _OneByOne:
+    """What holds of every task: many predictions are judged one by one."""
+
+    __slots__ = ()
+
+    def losses(
+        self: Task,
+        predicted: NDArray[np.float64],
+        rows: NDArray[np.int64],
+        weights: NDArray[np.float64],
+    ) -> NDArray[np.float64]:
+        """Return the loss of many predictions."""
+        return np.array([self.loss(one, rows, weights) for one in predicted])
+
+    def all_scores(
+        self: Task,
+        predicted: NDArray[np.float64],
+        training: NDArray[np.int64],
+        rows: NDArray[np.int64],
+        weights: NDArray[np.float64],
+    ) -> NDArray[np.float64]:
+        """Return the metric of many predictions."""
+        return np.array([self.score(one, training, rows, weights) for one in predicted])
+
+
 @dataclass(frozen=True, slots=True, eq=False)
-class BinaryTask:
+class BinaryTask(_OneByOne):
     """Two classes.
 
     Attributes
@@ -259,7 +284,7 @@ class BinaryTask:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class ClassesTask:
+class ClassesTask(_OneByOne):
     """Three or more classes.
 
     Attributes
@@ -301,15 +326,6 @@ class ClassesTask:
         """Return the log loss."""
         return log_loss_of_classes(predicted, self.y[rows], weights[rows])
 
-    def losses(
-        self,
-        predicted: NDArray[np.float64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> NDArray[np.float64]:
-        """Return the loss of many predictions."""
-        return np.array([self.loss(one, rows, weights) for one in predicted])
-
     def score(
         self,
         predicted: NDArray[np.float64],
@@ -325,16 +341,6 @@ class ClassesTask:
             One class only.
         """
         return hand_till(softmax(predicted), self.y[rows], weights[rows])[0]
-
-    def all_scores(
-        self,
-        predicted: NDArray[np.float64],
-        training: NDArray[np.int64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> NDArray[np.float64]:
-        """Return the metric of many predictions."""
-        return np.array([self.score(one, training, rows, weights) for one in predicted])
 
     def cross_validated(
         self,
@@ -394,7 +400,7 @@ class ClassesTask:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class NumberTask:
+class NumberTask(_OneByOne):
     """A measured number.
 
     Attributes
@@ -461,16 +467,6 @@ class NumberTask:
         """Return R squared against the training rows' mean."""
         return self._against_mean(predicted, training, rows, weights)[0]
 
-    def all_scores(
-        self,
-        predicted: NDArray[np.float64],
-        training: NDArray[np.int64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> NDArray[np.float64]:
-        """Return the metric of many predictions."""
-        return np.array([self.score(one, training, rows, weights) for one in predicted])
-
     def cross_validated(
         self,
         predicted: NDArray[np.float64],
@@ -507,7 +503,7 @@ class NumberTask:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class SurvivalTask:
+class SurvivalTask(_OneByOne):
     """A time that may be censored.
 
     Attributes
@@ -556,15 +552,6 @@ class SurvivalTask:
             return 0.0
         return float((mass * (top + np.log(total) - predicted)).sum() / mass.sum())
 
-    def losses(
-        self,
-        predicted: NDArray[np.float64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> NDArray[np.float64]:
-        """Return the loss of many predictions."""
-        return np.array([self.loss(one, rows, weights) for one in predicted])
-
     def score(
         self,
         predicted: NDArray[np.float64],
@@ -582,16 +569,6 @@ class SurvivalTask:
         return concordance(predicted, self.time[rows], self.event[rows], weights[rows])[
             0
         ]
-
-    def all_scores(
-        self,
-        predicted: NDArray[np.float64],
-        training: NDArray[np.int64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> NDArray[np.float64]:
-        """Return the metric of many predictions."""
-        return np.array([self.score(one, training, rows, weights) for one in predicted])
 
     def cross_validated(
         self,
