@@ -277,9 +277,8 @@ def estimate_accuracy(
     """
     width = max(procedure.sizes)
 
-    repeat_of = {id(split): repeat for (repeat, _), split in draws.splits.items()}
-
-    def task(split: Split) -> BlockResult:
+    def task(place: tuple[int, int]) -> BlockResult:
+        split = draws.splits[place]
         learnt = procedure.learn(data, split)
         members = np.full((len(learnt.selected.panels), width), -1, np.int64)
         for row, panel in zip(members, learnt.selected.panels, strict=True):
@@ -291,7 +290,7 @@ def estimate_accuracy(
             **_stored(CandidateFacts.of(learnt.selected.stability)),
             "inner metric": learnt.tuning.metric.reshape(len(split.inner), -1),
         }
-        work = FoldWork(procedure, data, split, learnt, repeat_of[id(split)])
+        work = FoldWork(procedure, data, split, learnt, repeat=place[0])
         for comparison in comparisons:
             learnt_too = comparison(work)
             for name, predicted in learnt_too.predicted.items():
@@ -300,9 +299,7 @@ def estimate_accuracy(
                 found[FIGURE + name] = figure
         return found
 
-    names = {
-        f"{repeat}-{fold}": split for (repeat, fold), split in draws.splits.items()
-    }
+    names = {f"{repeat}-{fold}": (repeat, fold) for repeat, fold in draws.splits}
     blocks = map_blocks(
         task,
         names,

@@ -155,28 +155,22 @@ def learn_roles(  # noqa: PLR0913 - what was learnt, and how work runs
         A fit that is not possible or did not converge.
     """
     panels = accuracy.members[row]
-    place = {
-        (split.training.tobytes(), split.test.tobytes()): key
-        for key, split in draws.splits.items()
-    }
 
-    def task(split: Split) -> BlockResult:
-        repeat, fold = place[split.training.tobytes(), split.test.tobytes()]
+    def task(place: tuple[int, int]) -> BlockResult:
+        repeat, fold = place
         panel = panels.members[repeat, fold]
         return _of_fold(
             procedure,
             data,
-            split,
-            accuracy.facts[repeat, fold],
+            draws.splits[place],
+            accuracy.facts[place],
             panels.maker,
             panel[panel >= 0],
             panels.size,
             float(panels.penalty[repeat, fold]),
         )
 
-    names = {
-        f"{repeat}-{fold}": split for (repeat, fold), split in draws.splits.items()
-    }
+    names = {f"{repeat}-{fold}": (repeat, fold) for repeat, fold in draws.splits}
     blocks = map_blocks(
         task,
         names,

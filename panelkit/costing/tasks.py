@@ -4,9 +4,10 @@ The procedure, the makers and the comparators know no kind of outcome: they ask 
 for the family of the fits, for a loss to tune by and for a metric to be judged by.
 """
 
+from abc import ABC, abstractmethod
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Any, Protocol
+from typing import Any, Literal, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -38,6 +39,7 @@ __all__ = [
     "Task",
 ]
 
+Scale = Literal["log-odds", "plain"]
 FLAT = 1e-8  # predictions that vary less than this have no slope
 
 
@@ -183,6 +185,67 @@ class _OneByOne:
         return np.array([self.score(one, training, rows, weights) for one in predicted])
 
 
+class _JudgedByFold(_OneByOne, ABC):
+    """A task whose metric comes with each row's influence on it."""
+
+    __slots__ = ()
+
+    scale: Scale
+
+    @abstractmethod
+    def judged(
+        self,
+        predicted: NDArray[np.float64],
+        training: NDArray[np.int64],
+        rows: NDArray[np.int64],
+        weights: NDArray[np.float64],
+    ) -> tuple[float, NDArray[np.float64]]:
+        """Return the metric on test rows, and each row's influence."""
+
+    def can_judge(self, rows: NDArray[np.int64]) -> bool:
+        """Return whether the metric is defined on test rows."""
+        return True
+
+    def score(
+        self,
+        predicted: NDArray[np.float64],
+        training: NDArray[np.int64],
+        rows: NDArray[np.int64],
+        weights: NDArray[np.float64],
+    ) -> float:
+        """Return the metric on test rows.
+
+        Raises
+        ------
+        FitError
+            Where the metric is not defined.
+        """
+        return self.judged(predicted, training, rows, weights)[0]
+
+    def cross_validated(
+        self,
+        predicted: NDArray[np.float64],
+        folds: FoldPlan,
+        subjects: NDArray[np.int64],
+        weights: NDArray[np.float64],
+        confidence: float,
+    ) -> CrossValidated:
+        """Return the metric within test folds; see `cross_validate`."""
+
+        def measure(
+            repeat: int, test: NDArray[np.int64]
+        ) -> tuple[float, NDArray[np.float64]] | None:
+            if not self.can_judge(test):
+                return None
+            fold = int(folds.test_fold[repeat, test[0]])
+            training = folds.split(repeat, fold)[0]
+            return self.judged(predicted[repeat][..., test], training, test, weights)
+
+        return cross_validate(
+            measure, folds.test_fold, subjects, confidence, self.scale
+        )
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class BinaryTask(_OneByOne):
     """Two classes.
@@ -284,7 +347,7 @@ class BinaryTask(_OneByOne):
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class ClassesTask(_OneByOne):
+class ClassesTask(_JudgedByFold):
     """Three or more classes.
 
     Attributes
@@ -302,6 +365,7 @@ class ClassesTask(_OneByOne):
     metric: str = "hand-till"
     metric_words: str = "mean area under the ROC curve over pairs of classes"
     no_skill: float = 0.5
+    scale: Scale = "log-odds"
 
     @property
     def predictors(self) -> tuple[int, ...]:
@@ -326,43 +390,25 @@ class ClassesTask(_OneByOne):
         """Return the log loss."""
         return log_loss_of_classes(predicted, self.y[rows], weights[rows])
 
-    def score(
+    def judged(
         self,
         predicted: NDArray[np.float64],
         training: NDArray[np.int64],
         rows: NDArray[np.int64],
         weights: NDArray[np.float64],
-    ) -> float:
-        """Return the mean area over pairs of classes.
+    ) -> tuple[float, NDArray[np.float64]]:
+        """Return the mean area over pairs of classes, and each row's influence.
 
         Raises
         ------
         FitError
             One class only.
         """
-        return hand_till(softmax(predicted), self.y[rows], weights[rows])[0]
+        return hand_till(softmax(predicted), self.y[rows], weights[rows])
 
-    def cross_validated(
-        self,
-        predicted: NDArray[np.float64],
-        folds: FoldPlan,
-        subjects: NDArray[np.int64],
-        weights: NDArray[np.float64],
-        confidence: float,
-    ) -> CrossValidated:
-        """Return the mean area over pairs of classes within test folds."""
-
-        def measure(
-            repeat: int, test: NDArray[np.int64]
-        ) -> tuple[float, NDArray[np.float64]] | None:
-            if len(np.unique(self.y[test])) < 2:
-                return None
-            chances = softmax(predicted[repeat][:, test])
-            return hand_till(chances, self.y[test], weights[test])
-
-        return cross_validate(
-            measure, folds.test_fold, subjects, confidence, "log-odds"
-        )
+    def can_judge(self, rows: NDArray[np.int64]) -> bool:
+        """Return whether two classes are there."""
+        return len(np.unique(self.y[rows])) > 1
 
     def slope(
         self, predicted: NDArray[np.float64], weights: NDArray[np.float64]
@@ -400,7 +446,7 @@ class ClassesTask(_OneByOne):
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class NumberTask(_OneByOne):
+class NumberTask(_JudgedByFold):
     """A measured number.
 
     Attributes
@@ -415,6 +461,7 @@ class NumberTask(_OneByOne):
     metric: str = "r-squared"
     metric_words: str = "share of variance explained (R squared)"
     no_skill: float = 0.0
+    scale: Scale = "plain"
     predictors: tuple[int, ...] = ()
 
     @property
@@ -447,45 +494,16 @@ class NumberTask(_OneByOne):
             np.average(square, axis=-1, weights=weights[rows]), np.float64
         )
 
-    def _against_mean(
+    def judged(
         self,
         predicted: NDArray[np.float64],
         training: NDArray[np.int64],
         rows: NDArray[np.int64],
         weights: NDArray[np.float64],
     ) -> tuple[float, NDArray[np.float64]]:
+        """Return R squared against the training rows' mean, and influences."""
         centre = float(np.average(self.y[training], weights=weights[training]))
         return r_squared(predicted, self.y[rows], centre, weights[rows])
-
-    def score(
-        self,
-        predicted: NDArray[np.float64],
-        training: NDArray[np.int64],
-        rows: NDArray[np.int64],
-        weights: NDArray[np.float64],
-    ) -> float:
-        """Return R squared against the training rows' mean."""
-        return self._against_mean(predicted, training, rows, weights)[0]
-
-    def cross_validated(
-        self,
-        predicted: NDArray[np.float64],
-        folds: FoldPlan,
-        subjects: NDArray[np.int64],
-        weights: NDArray[np.float64],
-        confidence: float,
-    ) -> CrossValidated:
-        """Return R squared within test folds."""
-
-        def measure(
-            repeat: int, test: NDArray[np.int64]
-        ) -> tuple[float, NDArray[np.float64]] | None:
-            fold = int(folds.test_fold[repeat, test[0]])
-            training = folds.split(repeat, fold)[0]
-            found = self._against_mean(predicted[repeat][test], training, test, weights)
-            return None if np.isnan(found[0]) else found
-
-        return cross_validate(measure, folds.test_fold, subjects, confidence, "plain")
 
     def slope(
         self, predicted: NDArray[np.float64], weights: NDArray[np.float64]
@@ -503,7 +521,7 @@ class NumberTask(_OneByOne):
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class SurvivalTask(_OneByOne):
+class SurvivalTask(_JudgedByFold):
     """A time that may be censored.
 
     Attributes
@@ -519,6 +537,7 @@ class SurvivalTask(_OneByOne):
     metric: str = "concordance"
     metric_words: str = "concordance"
     no_skill: float = 0.5
+    scale: Scale = "log-odds"
     predictors: tuple[int, ...] = ()
 
     @property
@@ -552,49 +571,25 @@ class SurvivalTask(_OneByOne):
             return 0.0
         return float((mass * (top + np.log(total) - predicted)).sum() / mass.sum())
 
-    def score(
+    def judged(
         self,
         predicted: NDArray[np.float64],
         training: NDArray[np.int64],
         rows: NDArray[np.int64],
         weights: NDArray[np.float64],
-    ) -> float:
-        """Return Harrell's concordance.
+    ) -> tuple[float, NDArray[np.float64]]:
+        """Return Harrell's concordance, and each row's influence.
 
         Raises
         ------
         FitError
             No pair can be compared.
         """
-        return concordance(predicted, self.time[rows], self.event[rows], weights[rows])[
-            0
-        ]
+        return concordance(predicted, self.time[rows], self.event[rows], weights[rows])
 
-    def cross_validated(
-        self,
-        predicted: NDArray[np.float64],
-        folds: FoldPlan,
-        subjects: NDArray[np.int64],
-        weights: NDArray[np.float64],
-        confidence: float,
-    ) -> CrossValidated:
-        """Return Harrell's concordance within test folds."""
-
-        def measure(
-            repeat: int, test: NDArray[np.int64]
-        ) -> tuple[float, NDArray[np.float64]] | None:
-            if not self.event[test].any():
-                return None
-            return concordance(
-                predicted[repeat][test],
-                self.time[test],
-                self.event[test],
-                weights[test],
-            )
-
-        return cross_validate(
-            measure, folds.test_fold, subjects, confidence, "log-odds"
-        )
+    def can_judge(self, rows: NDArray[np.int64]) -> bool:
+        """Return whether an event is there."""
+        return bool(self.event[rows].any())
 
     def slope(
         self, predicted: NDArray[np.float64], weights: NDArray[np.float64]

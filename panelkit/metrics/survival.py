@@ -165,11 +165,7 @@ def uno_concordance(
         raise _no_event(horizon)
     weight = np.zeros(len(time))
     weight[early] = 1.0 / under[early] ** 2
-    # two events of one time cannot be ordered; a censored one is later
-    later = (time[:, None] < time[None, :]) | (
-        (time[:, None] == time[None, :]) & (event[None, :] < 0.5)
-    )
-    pairs = weight[:, None] * later
+    pairs = weight[:, None] * _usable(time, event, None)
     return float((pairs * _concordant(risk)).sum() / pairs.sum())
 
 
